@@ -1,0 +1,1 @@
+"""Design: from plausible plants to gains that hold. Computes on values, opens no file."""

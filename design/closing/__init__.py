@@ -1,0 +1,1 @@
+"""Holding a prediction against a held-out record: prediction, verdict, gap."""

@@ -1,0 +1,170 @@
+"""What a fit hands on: the plant, its parameters with intervals, the noise, and the plausible plants."""
+
+from dataclasses import dataclass
+
+import numpy as np
+
+from .plant import Plant
+from .run import FloatArray
+
+
+@dataclass(frozen=True)
+class Parameter:
+    """One fitted parameter with its honest 95 % interval.
+
+    Attributes
+    ----------
+    name : str
+        "gain", "dead time", "time constant" (" 1", " 2"), "natural frequency", "damping ratio", "zero time".
+    value, std_error, low, high : float, in `unit`
+    unit : str
+    """
+
+    name: str
+    value: float
+    unit: str
+    std_error: float
+    low: float
+    high: float
+
+
+@dataclass(frozen=True)
+class Noise:
+    """Measurement noise of the response, an ARMA(1, 1) process: e[k] - rho e[k-1] = w[k] + c w[k-1].
+
+    Attributes
+    ----------
+    interval : float, s
+        Between samples of the record it was estimated on.
+    std : float, response unit
+        Of the noise itself.
+    innovation_std : float, response unit
+        Of w.
+    rho, c : float
+    """
+
+    interval: float
+    std: float
+    innovation_std: float
+    rho: float = 0.0
+    c: float = 0.0
+
+
+@dataclass(frozen=True, eq=False)
+class Plausible:
+    """Plants drawn from what the records leave open, of equal weight.
+
+    Attributes
+    ----------
+    plants : tuple of Plant, length p
+    operating_command : (p,) array, command unit
+        The command that holds the operating response, one a plant.
+    stiction : (p,) array, command unit
+        Change of command that friction swallows before the response moves; 0 where none was found.
+    """
+
+    plants: tuple[Plant, ...]
+    operating_command: FloatArray
+    stiction: FloatArray
+
+    def take(self, chosen: FloatArray | list[int] | slice) -> "Plausible":
+        """The chosen ones, by index."""
+        index = np.arange(len(self.plants))[chosen]  # type: ignore[index]
+        return Plausible(
+            tuple(self.plants[i] for i in index), self.operating_command[index], self.stiction[index]
+        )
+
+
+@dataclass(frozen=True)
+class Candidate:
+    """One structure that was tried: how well it explains the records, and the evidence for it.
+
+    Attributes
+    ----------
+    structure : str
+    misfit : float
+        rms of the residual / standard deviation of the response.
+    criterion : float
+        Bayesian information criterion on the whitened residual; smaller is better.
+    weight : float
+        Share of the evidence among the candidates.
+    note : str
+        Why it was dropped or kept, in words.
+    """
+
+    structure: str
+    misfit: float
+    criterion: float
+    weight: float
+    note: str = ""
+
+
+@dataclass(frozen=True, eq=False)
+class FittedRun:
+    """One fitted record beside its model.
+
+    Attributes
+    ----------
+    label : str
+    time : (n,) array, s
+    command, response, model : (n,) arrays
+        model: free run of the plant with the fitted offset of this record.
+    offset : float, response unit
+        Fitted level of the response at the operating command (integrating plants: at the record's start).
+    """
+
+    label: str
+    time: FloatArray
+    command: FloatArray
+    response: FloatArray
+    model: FloatArray
+    offset: float
+
+
+@dataclass(frozen=True, eq=False)
+class Fit:
+    """The whole answer of identification.
+
+    Attributes
+    ----------
+    structure : str
+        Name in words, as the catalogue has it.
+    plant : Plant
+    parameters : tuple of Parameter
+    covariance : (q, q) array
+        Of the parameters, in their order and units.
+    operating_command, operating_response : float
+        Where the deviations start from.
+    operating_command_interval : (low, high), command unit
+    noise : Noise
+    runs : tuple of FittedRun
+    misfit : float
+        rms of the residual over all fitted samples / standard deviation of the response.
+    candidates : tuple of Candidate, best first
+    ties : tuple of str
+        Structures that the records can't tell apart from the chosen one.
+    plausible : Plausible
+        At least 1,200 plants; of the tied structures too, in proportion to their evidence.
+    explanation : str
+        Why this structure, in a sentence or two.
+    cautions : tuple of str
+    drift : bool
+        The noise looks like a wandering level rather than a stationary one.
+    """
+
+    structure: str
+    plant: Plant
+    parameters: tuple[Parameter, ...]
+    covariance: FloatArray
+    operating_command: float
+    operating_response: float
+    operating_command_interval: tuple[float, float]
+    noise: Noise
+    runs: tuple[FittedRun, ...]
+    misfit: float
+    candidates: tuple[Candidate, ...]
+    ties: tuple[str, ...]
+    plausible: Plausible
+    explanation: str
+    cautions: tuple[str, ...] = ()
+    drift: bool = False

@@ -1,0 +1,1 @@
+"""What is wrong with a record: one file a finding."""

@@ -1,0 +1,55 @@
+"""One record of a rig as a value: time, command, response and what is known about them."""
+
+from dataclasses import dataclass
+from typing import Literal
+
+import numpy as np
+from numpy.typing import NDArray
+
+FloatArray = NDArray[np.float64]
+Between = Literal["held", "interpolated", "auto"]
+Excitation = Literal["step", "sweep", "random", "frequency-table", "auto"]
+
+
+@dataclass(frozen=True, eq=False)
+class Run:
+    """One record, in absolute readings.
+
+    Attributes
+    ----------
+    label : str
+        What people call it, usually the file's name. Never looked at by a computation.
+    time : (n,) array, s
+        From the record's first sample, strictly increasing.
+    command : (n,) array, command unit
+        Finite everywhere.
+    response : (n,) array, response unit
+        NaN where a sample is lost.
+    setpoint : (n,) array or None, response unit
+    between : {"held", "interpolated", "auto"}
+        What the command does between samples.
+    command_before : float or None, command unit
+        Steady command before the record began; None takes the first logged command.
+    excitation : {"step", "sweep", "random", "frequency-table", "auto"}
+    closed_loop : bool
+    """
+
+    label: str
+    time: FloatArray
+    command: FloatArray
+    response: FloatArray
+    setpoint: FloatArray | None = None
+    between: Between = "auto"
+    command_before: float | None = None
+    excitation: Excitation = "auto"
+    closed_loop: bool = False
+
+    @property
+    def valid(self) -> NDArray[np.bool_]:
+        """(n,) mask of the samples whose response was not lost."""
+        return np.isfinite(self.response)
+
+    @property
+    def start_command(self) -> float:
+        """Steady command before the first sample, command unit."""
+        return float(self.command[0]) if self.command_before is None else self.command_before

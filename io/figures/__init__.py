@@ -1,0 +1,1 @@
+"""Pictures: values in, a matplotlib Figure out."""

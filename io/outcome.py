@@ -1,0 +1,36 @@
+"""What a whole job returns: every value behind the sheet, nothing written yet."""
+
+from dataclasses import dataclass, field
+from typing import Any, Literal
+
+from ..design.closing.compared import Compared
+from ..design.designed import Design
+from ..ident.fitted import Fit
+from .record import Record
+from .rigfile.rig import Rig
+
+
+@dataclass(frozen=True, eq=False)
+class Outcome:
+    """A finished job.
+
+    Attributes
+    ----------
+    status : {"released", "held"}
+    reasons, cautions : tuple of str
+    design : Design or None
+        None when the job ended before a design (no plausible plant, no requirement that can be judged).
+    closing : tuple of Compared
+    provenance : dict
+        Ready for the sheet.
+    """
+
+    rig: Rig
+    records: tuple[Record, ...]
+    fit: Fit | None
+    design: Design | None
+    closing: tuple[Compared, ...]
+    status: Literal["released", "held"]
+    reasons: tuple[str, ...]
+    cautions: tuple[str, ...]
+    provenance: dict[str, Any] = field(default_factory=dict)

@@ -1,0 +1,1 @@
+"""Readers of record files, behind one door."""
