@@ -1,0 +1,51 @@
+"""A job with its results on disk: the output folder is held from start to end, and filled whole or not at all."""
+
+from pathlib import Path
+
+from ..ident.errors import RequestError
+from .outcome import Outcome
+from .progress import Progress, silent
+from .write_whole import SHEET, OutputFolder
+
+
+def deliver(rig_path: Path, folder: Path, *, with_report: bool = True, progress: Progress = silent) -> Outcome:
+    """Process a rig file and write gain sheet, dossier and report into `folder`.
+
+    Parameters
+    ----------
+    rig_path, folder : Path
+    with_report : bool
+    progress : Progress
+
+    Raises
+    ------
+    RequestError, RecordError
+        As `process_rig`; then `folder` holds no current gain sheet.
+    """
+    if not rig_path.is_file() and not folder.exists():
+        raise RequestError(
+            "there is no such rig file",
+            where=str(rig_path),
+            found="a folder" if rig_path.is_dir() else "nothing",
+            expected="a rig file (TOML)",
+            advice="check the path; `gainwright process --help` shows the call",
+        )
+    with OutputFolder(folder) as output:
+        from .job import process_rig  # imported late: an output folder that can't be used is said at once
+
+        outcome = process_rig(rig_path, progress)
+        progress("writing the results")
+        output.write(_contents(outcome, with_report))
+    return outcome
+
+
+def _contents(outcome: Outcome, with_report: bool) -> dict[str, bytes]:
+    from .dossier import dossier_bytes
+    from .sheet import sheet_bytes, sheet_of
+
+    contents = {SHEET: sheet_bytes(sheet_of(outcome)), "dossier.h5": dossier_bytes(outcome)}
+    if with_report:
+        from .report.page import report_html
+
+        contents["report.html"] = report_html(outcome).encode()
+    return contents

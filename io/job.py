@@ -1,0 +1,169 @@
+"""The whole job, and the only place where the stages meet: rig file in, values out, nothing written."""
+
+from collections.abc import Sequence
+from dataclasses import replace
+from pathlib import Path
+
+from threadpoolctl import threadpool_limits
+
+from ..design.closing.compared import Compared
+from ..design.closing.verdict import compare
+from ..design.design import design_gains
+from ..design.designed import Design
+from ..ident.errors import RecordError, RequestError
+from ..ident.fitted import Fit
+from ..ident.identify import identify
+from .cautions import cautions_for
+from .outcome import Outcome
+from .progress import Progress, silent
+from .provenance import provenance_of
+from .read_record import read_record, shares_samples
+from .record import Record
+from .release import reasons_to_hold
+from .rigfile.load import load_rig
+from .rigfile.rig import Rig
+
+
+def process_rig(rig_path: Path, progress: Progress = silent) -> Outcome:
+    """From a rig file to gains with a verdict: read, fit, design, close.
+
+    Parameters
+    ----------
+    rig_path : Path
+    progress : Progress
+        Called with each stage in words.
+
+    Returns
+    -------
+    Outcome
+        Released or held, with every value behind it; nothing has been written.
+
+    Raises
+    ------
+    RequestError
+        The rig file is wrong (exit code 2).
+    RecordError
+        A record can't be used (exit code 4).
+    """
+    with threadpool_limits(limits=1):  # small matrices: more threads only get into each other's way
+        progress("reading the rig file")
+        rig = load_rig(rig_path)
+        records = _read_all(rig, progress)
+        fit = _identify(rig, records, progress)
+        design = _design(rig, fit, progress)
+        twins = _twins(records)
+        closing = _close(rig, records, fit, design, twins, progress)
+    reasons = reasons_to_hold(rig, records, design, closing, twins)
+    return Outcome(
+        rig=rig,
+        records=records,
+        fit=fit,
+        design=design,
+        closing=closing,
+        status="held" if reasons else "released",
+        reasons=reasons,
+        cautions=_cautions(rig, records, fit, design, closing),
+        provenance=provenance_of(rig, records),
+    )
+
+
+def _read_all(rig: Rig, progress: Progress) -> tuple[Record, ...]:
+    records = []
+    for place, spec in enumerate(rig.runs):
+        progress(f"reading {spec.shown}", place / len(rig.runs))
+        record = read_record(spec, rig)
+        for finding in record.findings:
+            if finding.refuses == "stops":
+                raise RecordError(
+                    finding.kind,
+                    where=spec.shown,
+                    found=f"{finding.size}, {finding.where}",
+                    expected="a record that can be used",
+                    advice=finding.action,
+                )
+        records.append(record)
+    return tuple(records)
+
+
+def _identify(rig: Rig, records: Sequence[Record], progress: Progress) -> Fit:
+    fitted = [record.run for record in records if record.spec.use == "fit"]
+    if not fitted:
+        raise RequestError(
+            "no run is there to be fitted",
+            where=f"{rig.file.name}, [[runs]]",
+            found=", ".join(spec.use for spec in rig.runs) or "no runs",
+            expected='at least one run with use = "fit"',
+            advice="mark the run that holds the step or the sweep so",
+        )
+    progress("fitting the plant")
+    return identify(
+        fitted,
+        operating_command=rig.operating_command,
+        operating_response=rig.operating_response,
+        progress=progress,
+    )
+
+
+def _design(rig: Rig, fit: Fit, progress: Progress) -> Design:
+    progress("choosing gains")
+    return design_gains(
+        fit.plant,
+        fit.plausible,
+        operating_command=fit.operating_command,
+        operating_response=fit.operating_response,
+        noise=fit.noise,
+        requirements=rig.requirements,
+        limits=rig.limits,
+        setting=rig.setting,
+        command_unit=rig.command_unit,
+        response_unit=rig.response_unit,
+        progress=progress,
+    )
+
+
+def _twins(records: Sequence[Record]) -> tuple[tuple[Record, Record], ...]:
+    """Held-out records beside the fitted ones that hold the same samples, under whatever name."""
+    held_out = [record for record in records if record.spec.use == "held-out"]
+    fitted = [record for record in records if record.spec.use == "fit"]
+    return tuple((mine, other) for mine in held_out for other in fitted if shares_samples(mine, other))
+
+
+def _close(
+    rig: Rig,
+    records: Sequence[Record],
+    fit: Fit,
+    design: Design,
+    twins: Sequence[tuple[Record, Record]],
+    progress: Progress,
+) -> tuple[Compared, ...]:
+    closing = []
+    for record in records:
+        if record.spec.use != "held-out":
+            continue
+        progress(f"comparing with {record.spec.shown}")
+        compared = compare(
+            record.run,
+            fit,
+            design,
+            requirements=rig.requirements,
+            limits=rig.limits,
+            setting=rig.setting,
+            progress=progress,
+        )
+        twin = next((fitted for held_out, fitted in twins if held_out is record), None)
+        closing.append(compared if twin is None else _not_fresh(compared, twin))
+    return tuple(closing)
+
+
+def _not_fresh(compared: Compared, twin: Record) -> Compared:
+    """A record that was fitted says nothing about the fit, however well it agrees."""
+    return replace(compared, verdict="not comparable", why=f"its samples were fitted as {twin.spec.shown}")
+
+
+def _cautions(
+    rig: Rig, records: Sequence[Record], fit: Fit, design: Design, closing: Sequence[Compared]
+) -> tuple[str, ...]:
+    said = [f"{record.spec.shown}: {each.text}" for record in records for each in record.findings if each.refuses == "no"]
+    aside = [f"held-out {each.label} was not comparable: {each.why}" for each in closing if each.verdict == "not comparable"]
+    usual = cautions_for(rig, design)
+    return tuple(dict.fromkeys([*said, *fit.cautions, *design.cautions, *aside, *usual]))

@@ -1,0 +1,285 @@
+"""The gain sheet: an outcome as the JSON document that other programs read."""
+
+import json
+import math
+from collections.abc import Sequence
+from typing import Any
+
+from ..design.closing.compared import Compared
+from ..design.designed import Design, GainInterval, Judged, LimitJudged, Selection
+from ..design.gains import Gains
+from ..ident.fitted import Fit, Parameter
+from ..ident.law import Law
+from .forms_as_printed import forms_as_printed
+from .outcome import Outcome
+from .provenance import window_of
+from .record import Record
+from .unit_labels import gain_unit
+
+SCHEMA = "gainwright.gain-sheet/1"
+NO_LADDER = "no gain ladder was made: the first run on the rig starts at the responsible person's own discretion"
+
+
+class SheetFault(RuntimeError):
+    """A sheet that must not be written: a fault of the program, never of the person or the record."""
+
+
+def sheet_of(outcome: Outcome) -> dict[str, Any]:
+    """The whole gain sheet.
+
+    A released sheet carries `controller` and `selection`; a held one has null there and the same under `candidate`, so
+    that nothing loads them by mistake.
+
+    Parameters
+    ----------
+    outcome : Outcome
+
+    Returns
+    -------
+    dict
+        Of JSON values; every number finite.
+
+    Raises
+    ------
+    SheetFault
+        When a number is not finite, or the status contradicts the reasons.
+    """
+    released = outcome.status == "released"
+    if released == bool(outcome.reasons) or (released and outcome.design is None):
+        raise SheetFault(f"status {outcome.status} with {len(outcome.reasons)} reasons")
+    chosen = _chosen(outcome)
+    sheet = {
+        "schema": SCHEMA,
+        "status": outcome.status,
+        "reasons": list(outcome.reasons),
+        "cautions": [*outcome.cautions, NO_LADDER],
+        "rig": _rig(outcome),
+        "operating_point": _operating_point(outcome),
+        "plant": _plant(outcome),
+        "controller": chosen["controller"] if chosen and released else None,
+        "selection": chosen["selection"] if chosen and released else None,
+        "requirements": [_requirement(each) for each in outcome.design.judged] if outcome.design else [],
+        "checked": _checked(outcome.design, outcome.rig.requirements.confidence) if outcome.design else None,
+        "limits": [_limit(each) for each in outcome.design.limits] if outcome.design else [],
+        "ladder": [],
+        "change": None,
+        "closing": _closing(outcome),
+        "provenance": outcome.provenance,
+    }
+    if not released:
+        sheet["candidate"] = chosen
+    refuse_numbers_that_are_none(sheet)
+    return sheet
+
+
+def sheet_bytes(sheet: dict[str, Any]) -> bytes:
+    """The sheet as UTF-8 JSON; floats in their shortest form that reads back exactly (up to 17 digits)."""
+    return (json.dumps(sheet, indent=2, ensure_ascii=False, allow_nan=False) + "\n").encode()
+
+
+def refuse_numbers_that_are_none(value: Any, place: str = "sheet") -> None:
+    """Raise where a number is NaN or infinite, or a value is no JSON value; `place` names it.
+
+    Raises
+    ------
+    SheetFault
+
+    Examples
+    --------
+    >>> refuse_numbers_that_are_none({"plant": {"dead_time": float("nan")}})
+    Traceback (most recent call last):
+        ...
+    gainwright.io.sheet.SheetFault: sheet.plant.dead_time is nan, and a sheet holds finite numbers only
+    """
+    if isinstance(value, dict):
+        for key, item in value.items():
+            refuse_numbers_that_are_none(item, f"{place}.{key}")
+    elif isinstance(value, list | tuple):
+        for index, item in enumerate(value):
+            refuse_numbers_that_are_none(item, f"{place}[{index}]")
+    elif isinstance(value, float):
+        if not math.isfinite(value):
+            raise SheetFault(f"{place} is {value}, and a sheet holds finite numbers only")
+    elif not isinstance(value, str | int | None):
+        raise SheetFault(f"{place} is a {type(value).__name__}, and a sheet holds JSON values only")
+
+
+def _rig(outcome: Outcome) -> dict[str, Any]:
+    rig = outcome.rig
+    units = {"time": "s", "command": rig.command_unit, "response": rig.response_unit, "setpoint": rig.response_unit}
+    return {
+        "name": rig.name,
+        "signals": {
+            role: {"source": signal.source, "unit": signal.unit or units.get(role)}
+            for role, signal in rig.signals.items()
+        },
+    }
+
+
+def _operating_point(outcome: Outcome) -> dict[str, Any] | None:
+    fit, rig = outcome.fit, outcome.rig
+    if fit is None:
+        return None
+    return {
+        "command": {
+            "value": float(fit.operating_command),
+            "unit": rig.command_unit,
+            "interval_95": [float(bound) for bound in fit.operating_command_interval],
+        },
+        "response": {"value": float(fit.operating_response), "unit": rig.response_unit},
+    }
+
+
+def _plant(outcome: Outcome) -> dict[str, Any] | None:
+    fit, rig = outcome.fit, outcome.rig
+    if fit is None:
+        return None
+    return {
+        "structure": fit.structure,
+        "explanation": fit.explanation,
+        "numerator": [float(c) for c in fit.plant.numerator],
+        "denominator": [float(c) for c in fit.plant.denominator],
+        "command_unit": rig.command_unit,
+        "response_unit": rig.response_unit,
+        "dead_time": float(fit.plant.dead_time),
+        "parameters": {
+            each.name: _parameter(each, fit, rig.command_unit, rig.response_unit) for each in fit.parameters
+        },
+        "covariance": {
+            "parameters": [each.name for each in fit.parameters],
+            "matrix": [[float(c) for c in row] for row in fit.covariance],
+        },
+        "ties": list(fit.ties),
+        "misfit": float(fit.misfit),
+    }
+
+
+def _parameter(parameter: Parameter, fit: Fit, command_unit: str, response_unit: str) -> dict[str, Any]:
+    unit = parameter.unit
+    if parameter.name == "gain":
+        unit = gain_unit(response_unit, command_unit, per_second=fit.plant.integrators)
+    return {
+        "value": float(parameter.value),
+        "unit": unit,
+        "std_error": float(parameter.std_error),
+        "interval_95": [float(parameter.low), float(parameter.high)],
+    }
+
+
+def _chosen(outcome: Outcome) -> dict[str, Any] | None:
+    """Controller and selection, wherever on the sheet they belong."""
+    design, rig = outcome.design, outcome.rig
+    if design is None:
+        return None
+    controller = {
+        "structure": design.gains.structure,
+        "action": _action(design.gains),
+        "forms": forms_as_printed(design.gains, rig.command_unit, rig.response_unit),
+        "setpoint_weight": float(design.gains.setpoint_weight),
+        "difference_equation": _difference_equation(design.law),
+    }
+    return {"controller": controller, "selection": _selection(design.selection)}
+
+
+def _action(gains: Gains) -> str:
+    """Reverse: the command falls when the response rises, as it must where the plant's gain is positive."""
+    sign = next((each for each in (gains.integral, gains.proportional, gains.derivative) if each != 0.0), 0.0)
+    return "reverse" if sign > 0 else "direct"
+
+
+def _difference_equation(law: Law) -> dict[str, Any]:
+    clamp = law.clamp
+    return {
+        "update_interval": float(law.update_interval),
+        "command": [float(c) for c in law.command],
+        "setpoint": [float(c) for c in law.setpoint],
+        "response": [float(c) for c in law.response],
+        "memory": [float(c) for c in law.memory],
+        "clamp": {
+            "lowest": _bounded(clamp.lowest),
+            "highest": _bounded(clamp.highest),
+            "rate": _bounded(clamp.rate),
+        },
+    }
+
+
+def _selection(selection: Selection) -> dict[str, Any]:
+    return {
+        "loop_gain": float(selection.loop_gain),
+        "loop_gain_unit": selection.loop_gain_unit,
+        "pole": [float(selection.pole.real), float(selection.pole.imag)],
+        "sampled_pole": [float(selection.sampled_pole.real), float(selection.sampled_pole.imag)],
+        "angle_residual": float(selection.angle_residual_deg),
+        "intervals": _intervals(selection.intervals),
+        "intervals_plausible": _intervals(selection.intervals_plausible),
+        "rows": [{"requirement": name, "intervals": _intervals(found)} for name, found in selection.rows],
+    }
+
+
+def _intervals(intervals: Sequence[GainInterval]) -> list[list[float | None]]:
+    return [[_bounded(low), _bounded(high)] for low, high in intervals]
+
+
+def _requirement(judged: Judged) -> dict[str, Any]:
+    """In the unit the person wrote; an endless margin (no crossing at all) is null and said to be unbounded."""
+    requirement = judged.requirement
+    values = [judged.predicted, judged.low, judged.high]
+    predicted, low, high = (None if value is None else value * requirement.scale for value in values)
+    return {
+        "name": requirement.name,
+        "limit": float(requirement.limit * requirement.scale),
+        "predicted": _bounded(predicted),
+        "interval_95": [_bounded(low), _bounded(high)],
+        "unit": requirement.unit or "1",
+        "met": bool(judged.met),
+        "asked": not judged.floor,
+        "unbounded": requirement.sense == "at_least" and predicted is not None and math.isinf(predicted),
+    }
+
+
+def _checked(design: Design, confidence: float) -> dict[str, Any]:
+    return {
+        "plausible_plants": int(design.plants_checked),
+        "share_meeting": float(design.share_meeting),
+        "confidence": float(confidence),
+        "all_stable": bool(design.all_stable),
+        "limits_kept": bool(design.limits_kept),
+        "clamped_share": float(design.clamped_share),
+        "clamped_duration": float(design.clamped_duration),
+    }
+
+
+def _limit(limit: LimitJudged) -> dict[str, Any]:
+    return {
+        "name": limit.name,
+        "limit": _bounded(limit.limit),
+        "predicted_worst": float(limit.predicted_worst),
+        "unit": limit.unit,
+        "headroom": _bounded(limit.headroom),
+        "met": bool(limit.met),
+    }
+
+
+def _closing(outcome: Outcome) -> list[dict[str, Any]]:
+    held_out = [record for record in outcome.records if record.spec.use == "held-out"]
+    return [_compared(each, record) for each, record in zip(outcome.closing, held_out, strict=True)]
+
+
+def _compared(compared: Compared, record: Record) -> dict[str, Any]:
+    return {
+        "file": record.spec.shown,
+        "window": window_of(record),
+        "samples_sha256": record.samples_sha256,
+        "loop": record.spec.loop,
+        "misfit": float(compared.misfit),
+        "noise_floor": float(compared.noise_floor),
+        "coverage_95": float(compared.coverage_95),
+        "share_meeting": None if compared.share_meeting is None else float(compared.share_meeting),
+        "verdict": compared.verdict,
+        "why": compared.why,
+    }
+
+
+def _bounded(value: float | None) -> float | None:
+    """None for a bound that is not there; NaN stays, to be refused."""
+    return None if value is None or math.isinf(value) else float(value)
