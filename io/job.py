@@ -163,7 +163,9 @@ def _not_fresh(compared: Compared, twin: Record) -> Compared:
 def _cautions(
     rig: Rig, records: Sequence[Record], fit: Fit, design: Design, closing: Sequence[Compared]
 ) -> tuple[str, ...]:
-    said = [f"{record.spec.shown}: {each.text}" for record in records for each in record.findings if each.refuses == "no"]
-    aside = [f"held-out {each.label} was not comparable: {each.why}" for each in closing if each.verdict == "not comparable"]
+    findings = [(record.spec.shown, each) for record in records for each in record.findings]
+    said = [f"{shown}: {each.text}" for shown, each in findings if each.refuses == "no"]
+    left_out = [each for each in closing if each.verdict == "not comparable"]
+    aside = [f"held-out {each.label} was not comparable: {each.why}" for each in left_out]
     usual = cautions_for(rig, design)
     return tuple(dict.fromkeys([*said, *fit.cautions, *design.cautions, *aside, *usual]))

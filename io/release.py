@@ -113,8 +113,8 @@ def _from_limits(design: Design) -> Iterator[str]:
 
 def _limit_text(limit: LimitJudged) -> str:
     return (
-        f"the {limit.name} limit of {limit.limit:g} {limit.unit} is passed: {limit.predicted_worst:g} {limit.unit} on the "
-        "worst plausible plant; take a smaller test step, or ask for a slower loop"
+        f"the {limit.name} limit of {limit.limit:g} {limit.unit} is passed: {limit.predicted_worst:g} {limit.unit} "
+        "on the worst plausible plant; take a smaller test step, or ask for a slower loop"
     )
 
 
@@ -129,12 +129,12 @@ def _share_text(design: Design, confidence: float) -> str:
 
 def _floor_text(judged: Judged) -> str:
     requirement = judged.requirement
-    found = "none" if judged.predicted is None else f"{judged.predicted * requirement.scale:.3g} {requirement.unit}".strip()
-    words = requirement.sense.replace("_", " ")
+    unit = f" {requirement.unit}" if requirement.unit else ""
+    found = "none" if judged.predicted is None else f"{judged.predicted * requirement.scale:.3g}{unit}"
     return (
-        f"the floor for {requirement.name.replace('_', ' ')} is missed: {found}, and {words} "
-        f"{requirement.limit * requirement.scale:g} {requirement.unit}".rstrip()
-        + " holds where no margin is asked for (common practice, no source)"
+        f"the floor for {requirement.name.replace('_', ' ')} is missed: {found} for the fitted plant, and "
+        f"{requirement.sense.replace('_', ' ')} {requirement.limit * requirement.scale:g}{unit} holds where no margin "
+        "is asked for (common practice, no source)"
     )
 
 

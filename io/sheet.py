@@ -20,7 +20,7 @@ SCHEMA = "gainwright.gain-sheet/1"
 NO_LADDER = "no gain ladder was made: the first run on the rig starts at the responsible person's own discretion"
 
 
-class SheetFault(RuntimeError):
+class SheetError(RuntimeError):
     """A sheet that must not be written: a fault of the program, never of the person or the record."""
 
 
@@ -41,12 +41,12 @@ def sheet_of(outcome: Outcome) -> dict[str, Any]:
 
     Raises
     ------
-    SheetFault
+    SheetError
         When a number is not finite, or the status contradicts the reasons.
     """
     released = outcome.status == "released"
     if released == bool(outcome.reasons) or (released and outcome.design is None):
-        raise SheetFault(f"status {outcome.status} with {len(outcome.reasons)} reasons")
+        raise SheetError(f"status {outcome.status} with {len(outcome.reasons)} reasons")
     chosen = _chosen(outcome)
     sheet = {
         "schema": SCHEMA,
@@ -82,14 +82,14 @@ def refuse_numbers_that_are_none(value: Any, place: str = "sheet") -> None:
 
     Raises
     ------
-    SheetFault
+    SheetError
 
     Examples
     --------
     >>> refuse_numbers_that_are_none({"plant": {"dead_time": float("nan")}})
     Traceback (most recent call last):
         ...
-    gainwright.io.sheet.SheetFault: sheet.plant.dead_time is nan, and a sheet holds finite numbers only
+    gainwright.io.sheet.SheetError: sheet.plant.dead_time is nan, and a sheet holds finite numbers only
     """
     if isinstance(value, dict):
         for key, item in value.items():
@@ -99,9 +99,9 @@ def refuse_numbers_that_are_none(value: Any, place: str = "sheet") -> None:
             refuse_numbers_that_are_none(item, f"{place}[{index}]")
     elif isinstance(value, float):
         if not math.isfinite(value):
-            raise SheetFault(f"{place} is {value}, and a sheet holds finite numbers only")
+            raise SheetError(f"{place} is {value}, and a sheet holds finite numbers only")
     elif not isinstance(value, str | int | None):
-        raise SheetFault(f"{place} is a {type(value).__name__}, and a sheet holds JSON values only")
+        raise SheetError(f"{place} is a {type(value).__name__}, and a sheet holds JSON values only")
 
 
 def _rig(outcome: Outcome) -> dict[str, Any]:

@@ -2,4 +2,8 @@
 
 from .not_yet import not_yet
 
-batch = not_yet("batch", "Many jobs", "call `gainwright process` once a rig file")
+batch = not_yet(
+    "batch",
+    "Many jobs",
+    "call `gainwright process` once a rig file",
+)

@@ -2,4 +2,8 @@
 
 from .not_yet import not_yet
 
-draft = not_yet("draft", "A rig file to start from", "start from a rig file under sample_runs/")
+draft = not_yet(
+    "draft",
+    "A rig file to start from",
+    "start from a rig file under sample_runs/",
+)

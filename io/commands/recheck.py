@@ -2,4 +2,8 @@
 
 from .not_yet import not_yet
 
-recheck = not_yet("recheck", "Hold an earlier sheet against fresh measurements", "add the fresh run to the rig file as held-out, and process it")
+recheck = not_yet(
+    "recheck",
+    "Hold an earlier sheet against fresh measurements",
+    "add the fresh run to the rig file as held-out, and process it",
+)

@@ -2,4 +2,8 @@
 
 from .not_yet import not_yet
 
-retune = not_yet("retune", "After a mechanical change: what changed, and new gains", "inspect and process a rig file of the new runs")
+retune = not_yet(
+    "retune",
+    "After a mechanical change: what changed, and new gains",
+    "inspect and process a rig file of the new runs",
+)

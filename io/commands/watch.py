@@ -2,4 +2,8 @@
 
 from .not_yet import not_yet
 
-watch = not_yet("watch", "Process each completed run as it appears", "call `gainwright process` when a run is complete")
+watch = not_yet(
+    "watch",
+    "Process each completed run as it appears",
+    "call `gainwright process` when a run is complete",
+)
