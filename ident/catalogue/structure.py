@@ -1,0 +1,65 @@
+"""What a structure is: a formula with unit gain, the names of its parameters, and where their values may lie."""
+
+from collections.abc import Callable
+from dataclasses import dataclass
+
+Polynomials = tuple[tuple[float, ...], tuple[float, ...]]
+
+
+@dataclass(frozen=True)
+class Shape:
+    """One internal parameter of a structure, always positive, fitted by its logarithm.
+
+    Attributes
+    ----------
+    name : str
+    kind : {"time", "frequency", "ratio"}
+        time: from a fraction of a sample to the record's length; frequency: the same in rad/s; ratio: between low and high.
+    low, high : float
+        Bounds of a ratio.
+    steps : int
+        How many values the library of first guesses holds.
+    """
+
+    name: str
+    kind: str
+    low: float = 0.0
+    high: float = 0.0
+    steps: int = 16
+
+
+@dataclass(frozen=True)
+class Named:
+    """One parameter as people know it; unit "s", "rad/s", "1" or "gain"."""
+
+    name: str
+    unit: str
+
+
+@dataclass(frozen=True)
+class Structure:
+    """One structure of the catalogue.
+
+    Attributes
+    ----------
+    name : str
+        In words.
+    formula : str
+        Of G(s) without its dead time.
+    shapes : tuple of Shape
+    polynomials : callable
+        Shape values -> (numerator, denominator) with unit gain, highest power first, s in 1/s.
+    named : tuple of Named
+        Parameters for people, without gain and dead time.
+    values : callable
+        Shape values -> values of `named`, in order.
+    integrators : int
+    """
+
+    name: str
+    formula: str
+    shapes: tuple[Shape, ...]
+    polynomials: Callable[[tuple[float, ...]], Polynomials]
+    named: tuple[Named, ...]
+    values: Callable[[tuple[float, ...]], tuple[float, ...]]
+    integrators: int = 0

@@ -1,0 +1,138 @@
+"""Which structure the records support: every candidate fitted, weighed under one noise model."""
+
+from collections.abc import Callable, Sequence
+from dataclasses import dataclass
+
+import numpy as np
+
+from .catalogue import CATALOGUE, Structure
+from .noise import estimate_colour
+from .polish import polish
+from .regression import Regression, Solved
+from .run import FloatArray, Run
+from .start import first_guesses
+from .whiten import Colour
+
+Progress = Callable[[str, float], None]
+
+
+@dataclass(frozen=True, eq=False)
+class Fitted:
+    """One structure at the bottom of its valley.
+
+    Attributes
+    ----------
+    problem : Regression
+    theta : (s + 1,) array
+    solved : Solved
+        Under the colour it was last fitted with.
+    misfit : float
+        Unwhitened rms residual / standard deviation of the response.
+    criterion : float
+    """
+
+    problem: Regression
+    theta: FloatArray
+    solved: Solved
+    misfit: float
+    criterion: float
+
+    @property
+    def name(self) -> str:
+        """The structure's name; one formula is two structures, told apart by its damping ratio."""
+        return name_of(self.problem.structure, self.theta)
+
+
+def name_of(structure: Structure, theta: FloatArray) -> str:
+    """Name that these values deserve: a second order is a resonance below damping ratio one, else two lags."""
+    if structure.name in ("resonance", "two lags"):
+        return "two lags" if theta[1] >= 0 else "resonance"
+    return structure.name
+
+
+def fit_candidates(
+    runs: Sequence[Run],
+    reference: float,
+    fixed_command: bool,
+    structures: Sequence[Structure] = CATALOGUE,
+    progress: Progress | None = None,
+) -> tuple[list[Fitted], Colour]:
+    """Every structure fitted by least squares, then all again under the noise of the best; best first."""
+    fitted = []
+    for i, family in enumerate(_families(structures)):
+        if progress:
+            progress("fitting " + " or ".join(s.name for s in family), i / (len(structures) + 1))
+        fitted.append(_from_library(tuple(runs), reference, fixed_command, family))
+    fitted.sort(key=lambda f: f.criterion)
+    colour = colour_of(fitted[0])
+    recoloured = sorted((refit(f, colour) for f in fitted), key=lambda f: f.criterion)
+    if recoloured[0].problem is not fitted[0].problem:
+        colour = colour_of(recoloured[0])
+        recoloured = sorted((refit(f, colour) for f in recoloured), key=lambda f: f.criterion)
+    return recoloured, colour
+
+
+def colour_of(fitted: Fitted) -> Colour:
+    """Noise colour from one candidate's residual."""
+    problem = fitted.problem
+    coefficients = problem.solve(fitted.theta, Colour()).coefficients
+    model, columns = problem.full_columns(fitted.theta, coefficients)
+    return estimate_colour(columns, problem.measured - model, problem.stretches)
+
+
+def refit(fitted: Fitted, colour: Colour) -> Fitted:
+    """The same structure under another noise colour, from where it stands."""
+    theta, solved = polish(fitted.problem, fitted.theta, colour, rounds=12)
+    return _weighed(fitted.problem, theta, solved)
+
+
+def evidence(fitted: Sequence[Fitted]) -> FloatArray:
+    """(m,) shares of the evidence, exp(-criterion/2) normalised."""
+    criteria = np.array([f.criterion for f in fitted])
+    weight = np.exp(-0.5 * (criteria - criteria.min()))
+    return np.asarray(weight / weight.sum())
+
+
+def _families(structures: Sequence[Structure]) -> list[list[Structure]]:
+    """Structures that share a formula are fitted once, from the first guesses of all of them."""
+    families: list[list[Structure]] = []
+    for structure in structures:
+        for family in families:
+            if family[0].polynomials is structure.polynomials:
+                family.append(structure)
+                break
+        else:
+            families.append([structure])
+    return families
+
+
+def _from_library(
+    runs: tuple[Run, ...], reference: float, fixed_command: bool, family: Sequence[Structure]
+) -> Fitted:
+    ends = []
+    for structure in family:
+        problem = Regression(runs, structure, reference, fixed_command)
+        ends += [(problem, *polish(problem, theta)) for theta in first_guesses(problem)]
+    problem, theta, solved = min(ends, key=lambda end: end[2].cost)
+    return _weighed(problem, theta, solved)
+
+
+def _weighed(problem: Regression, theta: FloatArray, solved: Solved) -> Fitted:
+    n = len(problem.measured)
+    unknowns = len(theta) + len(solved.coefficients)
+    criterion = n * float(np.log(max(solved.cost, 1e-300) / n)) + unknowns * float(np.log(n))
+    model, _ = _model(problem, theta, solved)
+    spread = float(np.std(problem.measured))
+    rms = float(np.sqrt(np.mean((problem.measured - model) ** 2)))
+    return Fitted(problem, theta, solved, rms / spread if spread > 0 else np.inf, criterion)
+
+
+def _model(problem: Regression, theta: FloatArray, solved: Solved) -> tuple[FloatArray, FloatArray]:
+    shape, dead_time = problem.split(theta)
+    lead = problem.unit_response(shape, dead_time)
+    r = problem.fixed_columns.shape[1]
+    model = lead * solved.coefficients[0] + problem.fixed_columns @ solved.coefficients[1 : 1 + r]
+    initial = problem.initial_columns(shape)
+    if initial is not None:
+        model = model + initial @ solved.coefficients[1 + r :]
+    return model, lead

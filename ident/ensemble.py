@@ -1,0 +1,85 @@
+"""From draws to plausible plants, the tied structures in proportion to their evidence."""
+
+from dataclasses import dataclass
+
+import numpy as np
+
+from .choose import Fitted
+from .draw import draw
+from .fitted import Plausible
+from .noise import effective_samples
+from .plant import Plant
+from .profile import Profile, profile_dead_time
+from .run import FloatArray
+from .whiten import Colour
+
+
+@dataclass(frozen=True, eq=False)
+class Drawn:
+    """Draws of one structure.
+
+    Attributes
+    ----------
+    fitted : Fitted
+    profile : Profile
+    draws : (m, s + 1 + q) array
+        Log shapes, dead time, gain, levels, drift rate, initial states.
+    """
+
+    fitted: Fitted
+    profile: Profile
+    draws: FloatArray
+
+
+def draw_structure(fitted: Fitted, colour: Colour, count: int, seed: int) -> Drawn:
+    """Profile one structure's dead time and draw from it."""
+    problem = fitted.problem
+    unknowns = len(fitted.theta) + len(fitted.solved.coefficients)
+    freedom = max(effective_samples(len(problem.measured), colour) - unknowns, 4.0)
+    profile = profile_dead_time(problem, fitted.theta, colour, freedom)
+    return Drawn(fitted, profile, draw(profile, count, seed))
+
+
+def plant_of(fitted: Fitted, draw_row: FloatArray) -> Plant:
+    """Plant of one draw (log shapes, dead time, gain, ...)."""
+    s = len(fitted.theta) - 1
+    shape = tuple(float(v) for v in np.exp(draw_row[:s]))
+    numerator, denominator = fitted.problem.structure.polynomials(shape)
+    gain = float(draw_row[s + 1])
+    return Plant(tuple(gain * c for c in numerator), denominator, float(max(draw_row[s], 0.0)))
+
+
+def operating_commands(drawn: Drawn, operating_response: float) -> FloatArray:
+    """(m,) commands that hold the operating response, one a draw.
+
+    A plant that settles: the reference plus what the level lacks over the gain, the level of one of the runs in turn, so
+    that what the level does between runs is in the spread. An integrating plant: where its drift stops.
+    """
+    problem, draws = drawn.fitted.problem, drawn.draws
+    s = len(drawn.fitted.theta) - 1
+    gain = draws[:, s + 1]
+    runs = len(problem.runs)
+    if problem.structure.integrators:
+        if problem.fixed_command:
+            return np.full(len(draws), problem.reference)
+        return np.asarray(problem.reference - draws[:, s + 2 + runs] / gain)
+    turn = np.arange(len(draws)) % runs
+    level = draws[np.arange(len(draws)), s + 2 + turn]
+    return np.asarray(problem.reference + (operating_response - level) / gain)
+
+
+def plausible_plants(drawn: list[Drawn], weights: FloatArray, operating_response: float, count: int) -> Plausible:
+    """`count` plants of all drawn structures; each has its share of the evidence, shuffled evenly."""
+    shares = np.maximum(np.round(weights / weights.sum() * count).astype(int), 0)
+    shares[0] += count - shares.sum()
+    plants: list[tuple[float, Plant, float]] = []
+    for item, share in zip(drawn, shares, strict=True):
+        commands = operating_commands(item, operating_response)
+        for i in range(share):
+            plants.append(((i + 0.5) / share, plant_of(item.fitted, item.draws[i]), float(commands[i])))
+    plants.sort(key=lambda entry: entry[0])
+    return Plausible(
+        tuple(plant for _, plant, _ in plants),
+        np.array([command for _, _, command in plants]),
+        np.zeros(len(plants)),
+    )

@@ -1,0 +1,63 @@
+"""The only door to lmfit: the last minimisation, on the full model with every parameter free."""
+
+import lmfit
+import numpy as np
+
+from .regression import Regression
+from .run import FloatArray
+from .whiten import Colour, whiten
+
+
+def finish(
+    problem: Regression, theta: FloatArray, coefficients: FloatArray, colour: Colour
+) -> tuple[FloatArray, FloatArray, float]:
+    """Minimise the whitened residual of the full model from a point near its minimum.
+
+    Parameters
+    ----------
+    problem : Regression
+    theta : (s + 1,) array
+        Log shapes and dead time (s).
+    coefficients : (q,) array
+        Gain, levels, drift rate, initial states.
+    colour : Colour
+
+    Returns
+    -------
+    theta, coefficients, cost
+        The better of the start and lmfit's end; cost is the whitened sum of squares.
+    """
+    target = whiten(problem.measured, problem.stretches, colour)
+    sizes = np.where(coefficients == 0, 1.0, np.abs(coefficients))
+    dt = problem.interval
+    parameters = lmfit.Parameters()
+    for i, value in enumerate(theta[:-1]):
+        parameters.add(f"shape_{i}", value=float(value))
+    parameters.add("dead_time", value=max(float(theta[-1]) / dt, 1e-6), min=0.0)
+    for i, value in enumerate(coefficients / sizes):
+        parameters.add(f"linear_{i}", value=float(value))
+
+    def vectors(values: FloatArray) -> tuple[FloatArray, FloatArray]:
+        point = np.array([*values[: len(theta) - 1], values[len(theta) - 1] * dt])
+        return point, values[len(theta) :] * sizes
+
+    def residual(trial: lmfit.Parameters) -> FloatArray:
+        point, linear = vectors(np.array([p.value for p in trial.values()]))
+        shape, dead_time = problem.split(point)
+        lead = problem.unit_response(shape, dead_time)
+        initial = problem.initial_columns(shape)
+        r = problem.fixed_columns.shape[1]
+        model = lead * linear[0] + problem.fixed_columns @ linear[1 : 1 + r]
+        if initial is not None:
+            model = model + initial @ linear[1 + r :]
+        out = target - whiten(model, problem.stretches, colour)
+        return np.nan_to_num(out, nan=1e150, posinf=1e150, neginf=-1e150)
+
+    start = residual(parameters)
+    before = float(start @ start)
+    result = lmfit.minimize(residual, parameters, method="leastsq", max_nfev=40 * len(parameters), calc_covar=False)
+    after = float(np.sum(np.asarray(result.residual) ** 2))
+    if not after < before:
+        return theta, coefficients, before
+    point, linear = vectors(np.array([p.value for p in result.params.values()]))
+    return point, linear, after

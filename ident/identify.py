@@ -1,0 +1,229 @@
+"""Identification whole: runs in, a plant with honest intervals and its plausible siblings out."""
+
+from collections.abc import Sequence
+from dataclasses import replace
+
+import numpy as np
+
+from .between import settle_between
+from .catalogue import CATALOGUE, Structure
+from .choose import Fitted, Progress, colour_of, evidence, fit_candidates, name_of, refit
+from .ensemble import Drawn, draw_structure, operating_commands, plant_of, plausible_plants
+from .errors import RecordError
+from .fit import finish
+from .fitted import Candidate, Fit, FittedRun, Noise, Parameter
+from .run import FloatArray, Run
+from .whiten import Colour
+
+_TIED = 0.03
+_DRAWS = 2048
+_PLANTS = 1280
+
+
+def identify(
+    runs: Sequence[Run],
+    *,
+    operating_command: float | None = None,
+    operating_response: float | None = None,
+    structures: Sequence[Structure] = CATALOGUE,
+    seed: int = 0,
+    progress: Progress | None = None,
+) -> Fit:
+    """Fit all structures to the runs jointly and choose.
+
+    Parameters
+    ----------
+    runs : sequence of Run
+        At least one, with a command that moves.
+    operating_command, operating_response : float or None
+        As the rig file states them; None: the first run's steady command, and the response it holds.
+    structures : sequence of Structure
+    seed : int
+        Of the scrambled draws.
+
+    Returns
+    -------
+    Fit
+
+    Raises
+    ------
+    RecordError
+        No command of any run moves, or no structure explains anything.
+
+    Notes
+    -----
+    Least squares from the best first guesses; the noise's colour by restricted maximum likelihood; every structure again
+    under that colour, weighed by the Bayesian information criterion; the chosen one finished by lmfit; the dead time
+    profiled, and the plausible plants drawn from the mixture over it.
+    """
+    _require_movement(runs)
+    runs, between = settle_between(runs)
+    reference = runs[0].start_command if operating_command is None else operating_command
+    fitted, colour = fit_candidates(runs, reference, operating_command is not None, structures, progress)
+    chosen, colour = _finished(fitted[0], colour)
+    fitted = [chosen, *fitted[1:]]
+    weights = evidence(fitted)
+    if progress:
+        progress("drawing plausible plants", 0.8)
+    kept = [i for i in range(len(fitted)) if i == 0 or weights[i] >= _TIED]
+    drawn = [draw_structure(fitted[i], colour, _DRAWS, seed) for i in kept]
+    return _assembled(fitted, weights, drawn, weights[kept], colour, operating_response, between)
+
+
+def _require_movement(runs: Sequence[Run]) -> None:
+    if not runs:
+        raise RecordError("no run to fit", expected="at least one run with use = \"fit\"", advice="add one to the rig file")
+    if all(np.ptp(run.command) == 0 and run.start_command == run.command[0] for run in runs):
+        raise RecordError(
+            "the command never moves in any fit run",
+            where=", ".join(run.label for run in runs),
+            found=f"command constant at {runs[0].command[0]:g}",
+            expected="at least one step of the command",
+            advice="record a run in which the command is stepped, and check which column is the command",
+        )
+
+
+def _finished(best: Fitted, colour: Colour) -> tuple[Fitted, Colour]:
+    """The chosen structure ended by lmfit on the full model, and its noise once more."""
+    theta, coefficients, cost = finish(best.problem, best.theta, best.solved.coefficients, colour)
+    solved = best.problem.solve(theta, colour)
+    ended = replace(best, theta=theta, solved=solved) if solved.cost <= best.solved.cost else best
+    colour = colour_of(ended)
+    return refit(ended, colour), colour
+
+
+def _assembled(
+    fitted: list[Fitted],
+    weights: FloatArray,
+    drawn: list[Drawn],
+    shares: FloatArray,
+    colour: Colour,
+    operating_response: float | None,
+    between: str,
+) -> Fit:
+    chosen = fitted[0]
+    problem = chosen.problem
+    s = len(chosen.theta) - 1
+    row = np.concatenate([chosen.theta, chosen.solved.coefficients])
+    levels = row[s + 2 : s + 2 + len(problem.runs)]
+    response_there = float(levels[0]) if operating_response is None else operating_response
+    parameters, covariance = _parameters(drawn[0], row)
+    commands = operating_commands(drawn[0], response_there)
+    noise = _noise(chosen, colour)
+    candidates = tuple(
+        Candidate(f.name, f.misfit, f.criterion, float(w), _note(i, float(w))) for i, (f, w) in enumerate(zip(fitted, weights, strict=True))
+    )
+    ties = tuple(f.name for f, w in zip(fitted[1:], weights[1:], strict=True) if w >= _TIED) + _equal_lags(drawn[0])
+    return Fit(
+        structure=chosen.name,
+        plant=plant_of(chosen, row),
+        parameters=parameters,
+        covariance=covariance,
+        operating_command=_operating_command(chosen, row, response_there),
+        operating_response=response_there,
+        operating_command_interval=(float(np.quantile(commands, 0.025)), float(np.quantile(commands, 0.975))),
+        noise=noise,
+        runs=_fitted_runs(chosen, row),
+        misfit=chosen.misfit,
+        candidates=candidates,
+        ties=ties,
+        plausible=plausible_plants(drawn, shares, response_there, _PLANTS),
+        explanation=_explanation(candidates, ties, between),
+        cautions=_cautions(drawn[0], colour),
+        drift=colour.rho > 0.995,
+    )
+
+
+def _operating_command(chosen: Fitted, row: FloatArray, operating_response: float) -> float:
+    single = Drawn(chosen, None, row[None, :])  # type: ignore[arg-type]
+    return float(operating_commands(single, operating_response)[0])
+
+
+def _parameters(drawn: Drawn, row: FloatArray) -> tuple[tuple[Parameter, ...], FloatArray]:
+    structure = drawn.fitted.problem.structure
+    named = _named(drawn.fitted)
+    s = len(drawn.fitted.theta) - 1
+
+    def natural(rows: FloatArray) -> FloatArray:
+        shapes = np.exp(rows[:, :s])
+        values = np.array([named.values(tuple(shape)) for shape in shapes]).reshape(len(rows), -1)
+        return np.column_stack([rows[:, s + 1], rows[:, s], values])
+
+    draws = natural(drawn.draws)
+    best = natural(row[None, :])[0]
+    labels = [("gain", "gain/s" if structure.integrators else "gain"), ("dead time", "s")]
+    labels += [(n.name, n.unit) for n in named.named]
+    low, high = np.quantile(draws, 0.025, axis=0), np.quantile(draws, 0.975, axis=0)
+    covariance = np.atleast_2d(np.cov(draws.T))
+    errors = np.sqrt(np.diag(covariance))
+    parameters = tuple(
+        Parameter(name, float(v), unit, float(e), float(a), float(b))
+        for (name, unit), v, e, a, b in zip(labels, best, errors, low, high, strict=True)
+    )
+    return parameters, covariance
+
+
+def _named(fitted: Fitted) -> Structure:
+    name = name_of(fitted.problem.structure, fitted.theta)
+    return next((s for s in CATALOGUE if s.name == name), fitted.problem.structure)
+
+
+def _noise(chosen: Fitted, colour: Colour) -> Noise:
+    n = len(chosen.problem.measured)
+    unknowns = len(chosen.theta) + len(chosen.solved.coefficients)
+    white = np.sqrt(chosen.solved.cost / max(n - unknowns, 1))
+    std = float(white * np.sqrt(colour.variance_ratio))
+    return Noise(chosen.problem.interval, std, float(white), colour.rho, colour.c)
+
+
+def _fitted_runs(chosen: Fitted, row: FloatArray) -> tuple[FittedRun, ...]:
+    problem = chosen.problem
+    s = len(chosen.theta) - 1
+    model, _ = problem.full_columns(chosen.theta, row[s + 1 :])
+    out = []
+    for i, (run, part) in enumerate(zip(problem.runs, problem.parts, strict=True)):
+        whole = np.full(len(run.time), np.nan)
+        whole[run.valid] = model[part]
+        out.append(FittedRun(run.label, run.time, run.command, run.response, whole, float(row[s + 2 + i])))
+    return tuple(out)
+
+
+def _equal_lags(drawn: Drawn) -> tuple[str, ...]:
+    name = drawn.fitted.name
+    if name not in ("resonance", "two lags"):
+        return ()
+    low, high = np.quantile(drawn.draws[:, 1], [0.025, 0.975])
+    return (("resonance" if name == "two lags" else "two lags"),) if low < 0 < high else ()
+
+
+def _note(place: int, weight: float) -> str:
+    if place == 0:
+        return "chosen"
+    return "tied: the records can't tell it apart" if weight >= _TIED else "less supported"
+
+
+def _explanation(candidates: tuple[Candidate, ...], ties: tuple[str, ...], between: str) -> str:
+    best = candidates[0]
+    text = f"{best.structure}: residual {100 * best.misfit:.2g} % of the response's standard deviation"
+    if len(candidates) > 1:
+        second = candidates[1]
+        text += f"; next best {second.structure} ({100 * second.misfit:.2g} %), criterion worse by "
+        text += f"{second.criterion - best.criterion:.0f}"
+    if ties:
+        text += f"; the records can't tell it apart from: {', '.join(ties)}"
+    return text + (f"; {between}" if between else "")
+
+
+def _cautions(drawn: Drawn, colour: Colour) -> tuple[str, ...]:
+    out = []
+    s = len(drawn.fitted.theta) - 1
+    dead_time = drawn.draws[:, s]
+    if np.quantile(dead_time, 0.025) <= 1e-3 * drawn.fitted.problem.interval:
+        out.append(
+            f"the records leave open whether there is a dead time at all (95 %: up to {np.quantile(dead_time, 0.975):.3g} s)"
+        )
+    if colour.rho > 0.995:
+        out.append("the response wanders slowly by itself (drift): levels and gain are less certain than they look")
+    return tuple(out)
+
+

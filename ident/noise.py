@@ -1,0 +1,68 @@
+"""The noise's colour, estimated by restricted maximum likelihood beside the model's own columns."""
+
+import numpy as np
+from scipy.optimize import minimize
+
+from .run import FloatArray
+from .whiten import Colour, log_determinant, whiten
+
+_RHO_MOST = 0.9995
+_FIRST_RHO = (0.0, 0.4, 0.7, 0.85, 0.93, 0.97, 0.99)
+_FIRST_SHARE = (0.0, 0.5, 0.8, 0.95)
+
+
+def estimate_colour(columns: FloatArray, residual: FloatArray, stretches: list[slice]) -> Colour:
+    """Colour of the residual, free of the bias from fitting the columns.
+
+    Parameters
+    ----------
+    columns : (n, q) array
+        Derivatives of the model in every fitted parameter, at the solution.
+    residual : (n,) array
+        measured - model, response unit.
+    stretches : list of slice
+        Consecutive samples; the noise starts afresh in each.
+
+    Returns
+    -------
+    Colour
+
+    References
+    ----------
+    Harville, D. A., J. Am. Stat. Assoc. 72 (1977) 320-338: restricted likelihood (from memory).
+    """
+    scaled = columns / np.maximum(np.sqrt(np.einsum("ij,ij->j", columns, columns)), 1e-300)
+    both = np.column_stack([scaled, residual])
+
+    def loss(point: FloatArray) -> float:
+        return restricted_loss(both, stretches, _colour(point))
+
+    firsts = [np.array([np.arctanh(rho), share]) for rho in _FIRST_RHO for share in (_FIRST_SHARE if rho else (0.0,))]
+    values = [loss(point) for point in firsts]
+    best = firsts[int(np.argmin(values))]
+    found = minimize(loss, best, method="Nelder-Mead", options={"xatol": 3e-3, "fatol": 2e-2, "maxfev": 90})
+    return _colour(found.x)
+
+
+def _colour(point: FloatArray) -> Colour:
+    rho = float(np.clip(np.tanh(point[0]), -0.5, _RHO_MOST))
+    share = float(np.clip(point[1], -0.3, 0.98))
+    return Colour(rho, -share * rho)
+
+
+def restricted_loss(both: FloatArray, stretches: list[slice], colour: Colour) -> float:
+    """-2 log restricted likelihood, up to a constant, of the last column given the others; the size is profiled out."""
+    white = whiten(both, stretches, colour)
+    r = np.linalg.qr(white, mode="r")
+    diagonal = np.abs(np.diag(r))
+    q = both.shape[1] - 1
+    usable = diagonal[:q][diagonal[:q] > 1e-12]
+    freedom = len(both) - len(usable)
+    size = max(diagonal[q] ** 2, 1e-300)
+    return freedom * float(np.log(size)) + 2 * float(np.sum(np.log(usable))) + log_determinant(stretches, colour)
+
+
+def effective_samples(n: int, colour: Colour) -> float:
+    """How many independent samples tell as much about a level as n of this noise do."""
+    at_rest = ((1 + colour.c) / (1 - colour.rho)) ** 2
+    return float(np.clip(n * colour.variance_ratio / at_rest, 3.0, n))

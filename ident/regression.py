@@ -1,0 +1,207 @@
+"""All fit runs as one regression: unit-gain responses, levels, and what else enters linearly."""
+
+from dataclasses import dataclass
+from functools import cached_property
+
+import numpy as np
+from scipy.linalg import solve_triangular
+
+from .catalogue import Structure
+from .modes import Modes, modes_of
+from .run import FloatArray, Run
+from .simulate import Grid, grid_of, response
+from .whiten import Colour, stretches_of, whiten
+
+
+@dataclass(frozen=True, eq=False)
+class Solved:
+    """The best linear part at given shape and dead time.
+
+    Attributes
+    ----------
+    cost : float
+        Sum of squares of the whitened residual.
+    residual : (n,) array
+        Whitened.
+    coefficients : (q,) array
+        Gain first, then a level for each run, then the common drift rate of an integrating plant, then initial states.
+    """
+
+    cost: float
+    residual: FloatArray
+    coefficients: FloatArray
+
+
+@dataclass(frozen=True, eq=False)
+class Regression:
+    """Runs stacked for fitting one structure.
+
+    Attributes
+    ----------
+    runs : tuple of Run
+    structure : Structure
+    reference : float, command unit
+        Deviations of the command count from here.
+    fixed_command : bool
+        The operating command is stated, so an integrating plant has no drift rate of its own.
+    """
+
+    runs: tuple[Run, ...]
+    structure: Structure
+    reference: float
+    fixed_command: bool
+
+    @cached_property
+    def grids(self) -> tuple[Grid, ...]:
+        """One grid a run."""
+        return tuple(grid_of(run) for run in self.runs)
+
+    @cached_property
+    def measured(self) -> FloatArray:
+        """(n,) valid responses of all runs, response unit."""
+        return np.concatenate([run.response[run.valid] for run in self.runs])
+
+    @cached_property
+    def stretches(self) -> list[slice]:
+        """Consecutive valid samples, numbered in `measured`."""
+        out: list[slice] = []
+        at = 0
+        for run in self.runs:
+            out += [slice(part.start + at, part.stop + at) for part in stretches_of(run.valid)]
+            at += int(run.valid.sum())
+        return out
+
+    @cached_property
+    def parts(self) -> tuple[slice, ...]:
+        """Where each run lies in `measured`."""
+        ends = np.cumsum([int(run.valid.sum()) for run in self.runs])
+        return tuple(slice(int(a), int(b)) for a, b in zip(np.concatenate([[0], ends[:-1]]), ends, strict=True))
+
+    @cached_property
+    def unsettled(self) -> tuple[bool, ...]:
+        """Runs that do not begin with a stretch of rest: their initial state is fitted."""
+        return tuple(_starts_unsettled(run) for run in self.runs)
+
+    @cached_property
+    def interval(self) -> float:
+        """Typical sample interval, s."""
+        return float(np.median(np.concatenate([np.diff(grid.time) for grid in self.grids])))
+
+    @cached_property
+    def duration(self) -> float:
+        """Length of the longest run, s."""
+        return float(max(grid.time[-1] for grid in self.grids))
+
+    @cached_property
+    def fixed_columns(self) -> FloatArray:
+        """(n, r) columns that no shape changes: levels, and the drift of an integrating plant."""
+        n = len(self.measured)
+        columns = []
+        for part in self.parts:
+            level = np.zeros(n)
+            level[part] = 1.0
+            columns.append(level)
+        if self.structure.integrators and not self.fixed_command:
+            columns.append(np.concatenate([g.time[r.valid] for g, r in zip(self.grids, self.runs, strict=True)]))
+        return np.column_stack(columns)
+
+    def modes(self, shape: tuple[float, ...]) -> Modes:
+        """Modes of the unit-gain structure."""
+        return modes_of(*self.structure.polynomials(shape))
+
+    def unit_response(self, shape: tuple[float, ...], dead_time: float) -> FloatArray:
+        """(n,) response of the unit-gain structure to all commands, less its value at the reference command."""
+        modes = self.modes(shape)
+        out = []
+        for run, grid in zip(self.runs, self.grids, strict=True):
+            bias = run.start_command - self.reference
+            moved = response(modes, grid, dead_time)
+            moved = moved + bias * (grid.time if self.structure.integrators else 1.0)
+            out.append(moved[run.valid])
+        return np.concatenate(out)
+
+    def initial_columns(self, shape: tuple[float, ...]) -> FloatArray | None:
+        """(n, k) decays of the initial states of unsettled runs, or None."""
+        if not any(self.unsettled):
+            return None
+        modes = self.modes(shape)
+        n = len(self.measured)
+        columns = []
+        for run, grid, part, free in zip(self.runs, self.grids, self.parts, self.unsettled, strict=True):
+            for pole in modes.poles[modes.poles != 0] if free else ():
+                decay = np.exp(pole * grid.time[run.valid])
+                for piece in (decay.real, decay.imag) if pole.imag else (decay.real,):
+                    column = np.zeros(n)
+                    column[part] = piece
+                    columns.append(column)
+        return np.column_stack(columns) if columns else None
+
+    def solve(self, theta: FloatArray, colour: Colour) -> Solved:
+        """Best linear part at theta = (log shapes ..., dead time in s)."""
+        shape, dead_time = self.split(theta)
+        lead = self.unit_response(shape, dead_time)[:, None]
+        initial = self.initial_columns(shape)
+        moving = lead if initial is None else np.column_stack([lead, initial])
+        basis, target, fixed = self._whitened(colour)
+        white = whiten(moving, self.stretches, colour)
+        matrix = np.column_stack([white[:, :1], fixed, white[:, 1:]])
+        return _least_squares(matrix, target)
+
+    def split(self, theta: FloatArray) -> tuple[tuple[float, ...], float]:
+        """Shape values and dead time of theta."""
+        return tuple(float(v) for v in np.exp(theta[:-1])), float(theta[-1])
+
+    def _whitened(self, colour: Colour) -> tuple[None, FloatArray, FloatArray]:
+        cache = self.__dict__.setdefault("_white_cache", {})
+        if colour not in cache:
+            cache.clear()
+            both = np.column_stack([self.measured, self.fixed_columns])
+            white = whiten(both, self.stretches, colour)
+            cache[colour] = (None, np.ascontiguousarray(white[:, 0]), np.ascontiguousarray(white[:, 1:]))
+        found: tuple[None, FloatArray, FloatArray] = cache[colour]
+        return found
+
+    def full_columns(self, theta: FloatArray, coefficients: FloatArray) -> tuple[FloatArray, FloatArray]:
+        """Unwhitened model, (n,), and its derivatives, (n, s + 1 + q): log shapes, dead time, then the linear part."""
+        def linear(at: FloatArray) -> FloatArray:
+            shape, dead_time = self.split(at)
+            lead = self.unit_response(shape, dead_time)[:, None]
+            initial = self.initial_columns(shape)
+            tail = [] if initial is None else [initial]
+            return np.column_stack([lead, self.fixed_columns, *tail])
+
+        columns = linear(theta)
+        slopes = [
+            (linear(theta + step) - linear(theta - step)) @ coefficients / (2 * step.max()) for step in self.steps(theta)
+        ]
+        return columns @ coefficients, np.column_stack([*slopes, columns])
+
+    def steps(self, theta: FloatArray) -> list[FloatArray]:
+        """Difference steps, one vector a parameter of theta."""
+        sizes = np.full(len(theta), 1e-4)
+        sizes[-1] = min(0.02 * self.interval, max(theta[-1], 1e-3 * self.interval))
+        return [np.where(np.arange(len(theta)) == i, size, 0.0) for i, size in enumerate(sizes)]
+
+
+def _least_squares(matrix: FloatArray, target: FloatArray) -> Solved:
+    scale = np.sqrt(np.einsum("ij,ij->j", matrix, matrix))
+    scale[scale == 0] = 1.0
+    q, r = np.linalg.qr(matrix / scale)
+    diagonal = np.abs(np.diag(r))
+    weak = diagonal < 1e-11
+    r[weak, weak.nonzero()[0]] = 1.0
+    along = q.T @ target
+    along[weak] = 0.0
+    residual = target - q @ along
+    coefficients = solve_triangular(r, along) / scale
+    return Solved(float(residual @ residual), residual, coefficients)
+
+
+def _starts_unsettled(run: Run) -> bool:
+    """Whether the record begins without a stretch of rest long enough to trust that nothing was moving."""
+    if run.command_before is not None:
+        return False
+    span = np.ptp(run.command)
+    changes = np.flatnonzero(np.abs(run.command - run.command[0]) > 1e-3 * span) if span > 0 else np.array([])
+    first = int(changes[0]) if len(changes) else len(run.time)
+    return first < max(5, len(run.time) // 100)

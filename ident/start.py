@@ -1,0 +1,126 @@
+"""First guesses from the data: a library of unit-gain responses, held against the record at many dead times at once."""
+
+import itertools
+
+import numpy as np
+
+from .catalogue import Shape
+from .regression import Regression
+from .run import FloatArray
+from .simulate import response
+
+_ROWS = 1500
+
+
+def first_guesses(problem: Regression, count: int = 3) -> list[FloatArray]:
+    """The best `count` different thetas (log shapes, dead time) of the library, best first.
+
+    For each shape the response without dead time is shifted by whole samples; gain, levels and drift are then in closed
+    form, so one projection scores every dead time.
+    """
+    rows, basis, target = _thinned(problem)
+    shifts = _shifts(problem)
+    scored: list[tuple[float, FloatArray]] = []
+    for values in _library(problem):
+        costs = _costs(problem, values, shifts, rows, basis, target)
+        at = int(np.argmin(costs))
+        theta = np.array([*np.log(values), shifts[at] * problem.interval])
+        scored.append((float(costs[at]), theta))
+    scored.sort(key=lambda pair: pair[0])
+    return _different([theta for _, theta in scored], problem, count)
+
+
+def _different(thetas: list[FloatArray], problem: Regression, count: int) -> list[FloatArray]:
+    kept: list[FloatArray] = []
+    for theta in thetas:
+        far = all(
+            np.any(np.abs(theta[:-1] - other[:-1]) > 0.6)
+            or abs(theta[-1] - other[-1]) > max(4 * problem.interval, 0.3 * other[-1])
+            for other in kept
+        )
+        if far:
+            kept.append(theta)
+        if len(kept) == count:
+            break
+    return kept
+
+
+def _thinned(problem: Regression) -> tuple[list[FloatArray], FloatArray, FloatArray]:
+    """Rows of each run that the library looks at, an orthonormal basis of the fixed columns there, the target less it."""
+    total = sum(len(grid.time) for grid in problem.grids)
+    stride = max(1, total // _ROWS)
+    rows = []
+    picked = []
+    for run, part in zip(problem.runs, problem.parts, strict=True):
+        valid = np.flatnonzero(run.valid)
+        take = np.arange(0, len(valid), stride)
+        rows.append(valid[take])
+        picked.append(part.start + take)
+    index = np.concatenate(picked)
+    basis, _ = np.linalg.qr(problem.fixed_columns[index])
+    target = problem.measured[index]
+    return rows, basis, target - basis @ (basis.T @ target)
+
+
+def _shifts(problem: Regression) -> np.ndarray:
+    longest = max(len(grid.time) for grid in problem.grids)
+    share = np.linspace(0, 1, 36) ** 2
+    return np.unique(np.round(share * 0.4 * longest).astype(int))
+
+
+def _library(problem: Regression) -> list[tuple[float, ...]]:
+    axes = [_axis(shape, problem) for shape in problem.structure.shapes]
+    return list(itertools.product(*axes))
+
+
+def _axis(shape: Shape, problem: Regression) -> FloatArray:
+    if shape.kind == "time":
+        return np.geomspace(0.3 * problem.interval, 3 * problem.duration, shape.steps)
+    if shape.kind == "frequency":
+        spread = np.geomspace(1.0 / problem.duration, 1.5 / problem.interval, shape.steps)
+        return np.concatenate([spread, _peaks(problem)])
+    return np.geomspace(shape.low, shape.high, shape.steps)
+
+
+def _peaks(problem: Regression) -> FloatArray:
+    """Up to three frequencies, rad/s, at which the differenced response of the longest run rings most."""
+    run = max(problem.runs, key=lambda r: len(r.time))
+    y = run.response[run.valid]
+    if len(y) < 64:
+        return np.zeros(0)
+    change = np.diff(y)
+    power = np.abs(np.fft.rfft((change - change.mean()) * np.hanning(len(change)))) ** 2
+    smooth = np.convolve(power, np.ones(5) / 5, mode="same")
+    found: list[int] = []
+    for at in np.argsort(smooth)[::-1][:400]:
+        if at > 2 and all(abs(np.log(at / other)) > 0.25 for other in found):
+            found.append(int(at))
+        if len(found) == 3:
+            break
+    return 2 * np.pi * np.array(found, dtype=float) / (len(change) * problem.interval)
+
+
+def _costs(
+    problem: Regression,
+    values: tuple[float, ...],
+    shifts: np.ndarray,
+    rows: list[FloatArray],
+    basis: FloatArray,
+    target: FloatArray,
+) -> FloatArray:
+    modes = problem.modes(values)
+    blocks = []
+    for run, grid, index in zip(problem.runs, problem.grids, rows, strict=True):
+        moved = response(modes, grid, 0.0)
+        at = np.asarray(index)[:, None] - shifts[None, :]
+        late = np.where(at >= 0, moved[np.maximum(at, 0)], 0.0)
+        if problem.structure.integrators:
+            late = late + (run.start_command - problem.reference) * grid.time[np.asarray(index)][:, None]
+        blocks.append(late)
+    matrix = np.concatenate(blocks)
+    matrix = matrix - basis @ (basis.T @ matrix)
+    power = np.einsum("ij,ij->j", matrix, matrix)
+    along = target @ matrix
+    total = float(target @ target)
+    safe = power > 1e-12 * max(float(power.max()), 1e-300)
+    return np.where(safe, total - along**2 / np.where(safe, power, 1.0), total)
