@@ -106,9 +106,7 @@ def _families(structures: Sequence[Structure]) -> list[list[Structure]]:
     return families
 
 
-def _from_library(
-    runs: tuple[Run, ...], reference: float, fixed_command: bool, family: Sequence[Structure]
-) -> Fitted:
+def _from_library(runs: tuple[Run, ...], reference: float, fixed_command: bool, family: Sequence[Structure]) -> Fitted:
     ends = []
     for structure in family:
         problem = Regression(runs, structure, reference, fixed_command)

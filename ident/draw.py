@@ -10,8 +10,8 @@ from .run import FloatArray
 def draw(profile: Profile, count: int, seed: int = 0) -> FloatArray:
     """(count, s + 1 + q) draws: log shapes, dead time in s, linear coefficients.
 
-    The dead time comes from its mixed density, the rest from a Student t about its best at that dead time. The points are
-    a scrambled Sobol sequence, so that a thousand of them fill the distribution evenly.
+    The dead time comes from its mixed density, the rest from a Student t about its best at that dead time. The points
+    are a scrambled Sobol sequence, so that a thousand of them fill the distribution evenly.
     """
     shapes_and_linear = profile.centres.shape[1]
     with_noise = qmc.Sobol(shapes_and_linear + 2, seed=seed).random(1 << int(np.ceil(np.log2(count))))[:count]
@@ -20,9 +20,7 @@ def draw(profile: Profile, count: int, seed: int = 0) -> FloatArray:
     spread = np.sqrt(profile.variance * profile.freedom / chi2.ppf(uniform[:, 1], profile.freedom))
     normal = norm.ppf(uniform[:, 2:])
     at = np.abs(profile.dead_times[:, None] - dead_time[None, :]).argmin(axis=0)
-    centre = np.column_stack(
-        [np.interp(dead_time, profile.dead_times, column) for column in profile.centres.T]
-    )
+    centre = np.column_stack([np.interp(dead_time, profile.dead_times, column) for column in profile.centres.T])
     rest = centre + spread[:, None] * np.einsum("nij,nj->ni", profile.factors[at], normal)
     shapes = _shape_count(profile, rest)
     return np.column_stack([rest[:, :shapes], dead_time, rest[:, shapes:]])

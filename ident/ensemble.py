@@ -52,8 +52,8 @@ def plant_of(fitted: Fitted, draw_row: FloatArray) -> Plant:
 def operating_commands(drawn: Drawn, operating_response: float) -> FloatArray:
     """(m,) commands that hold the operating response, one a draw.
 
-    A plant that settles: the reference plus what the level lacks over the gain, the level of one of the runs in turn, so
-    that what the level does between runs is in the spread. An integrating plant: where its drift stops.
+    A plant that settles: the reference plus what the level lacks over the gain, the level of one of the runs in turn,
+    so that what the level does between runs is in the spread. An integrating plant: where its drift stops.
     """
     problem, draws = drawn.fitted.problem, drawn.draws
     s = len(drawn.fitted.theta) - 1
@@ -75,8 +75,7 @@ def plausible_plants(drawn: list[Drawn], weights: FloatArray, operating_response
     plants: list[tuple[float, Plant, float]] = []
     for item, share in zip(drawn, shares, strict=True):
         commands = operating_commands(item, operating_response)
-        for i in range(share):
-            plants.append(((i + 0.5) / share, plant_of(item.fitted, item.draws[i]), float(commands[i])))
+        plants += [((i + 0.5) / share, plant_of(item.fitted, item.draws[i]), float(commands[i])) for i in range(share)]
     plants.sort(key=lambda entry: entry[0])
     return Plausible(
         tuple(plant for _, plant, _ in plants),

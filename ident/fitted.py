@@ -1,6 +1,6 @@
 """What a fit hands on: the plant, its parameters with intervals, the noise, and the plausible plants."""
 
-from dataclasses import dataclass
+from dataclasses import dataclass, field
 
 import numpy as np
 
@@ -70,9 +70,7 @@ class Plausible:
     def take(self, chosen: FloatArray | list[int] | slice) -> "Plausible":
         """The chosen ones, by index."""
         index = np.arange(len(self.plants))[chosen]  # type: ignore[index]
-        return Plausible(
-            tuple(self.plants[i] for i in index), self.operating_command[index], self.stiction[index]
-        )
+        return Plausible(tuple(self.plants[i] for i in index), self.operating_command[index], self.stiction[index])
 
 
 @dataclass(frozen=True)
@@ -150,6 +148,8 @@ class Fit:
     cautions : tuple of str
     drift : bool
         The noise looks like a wandering level rather than a stationary one.
+    draws : (m, s + 2) array
+        Draws of the chosen structure's internal parameters: log shapes, dead time (s), gain.
     """
 
     structure: str
@@ -168,3 +168,4 @@ class Fit:
     explanation: str
     cautions: tuple[str, ...] = ()
     drift: bool = False
+    draws: FloatArray = field(default_factory=lambda: np.zeros((0, 0)))

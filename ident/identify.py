@@ -52,9 +52,9 @@ def identify(
 
     Notes
     -----
-    Least squares from the best first guesses; the noise's colour by restricted maximum likelihood; every structure again
-    under that colour, weighed by the Bayesian information criterion; the chosen one finished by lmfit; the dead time
-    profiled, and the plausible plants drawn from the mixture over it.
+    Least squares from the best first guesses; the noise's colour by restricted maximum likelihood; every structure
+    again under that colour, weighed by the Bayesian information criterion; the chosen one finished by lmfit; the dead
+    time profiled, and the plausible plants drawn from the mixture over it.
     """
     _require_movement(runs)
     runs, between = settle_between(runs)
@@ -72,7 +72,9 @@ def identify(
 
 def _require_movement(runs: Sequence[Run]) -> None:
     if not runs:
-        raise RecordError("no run to fit", expected="at least one run with use = \"fit\"", advice="add one to the rig file")
+        raise RecordError(
+            "no run to fit", expected='at least one run with use = "fit"', advice="add one to the rig file"
+        )
     if all(np.ptp(run.command) == 0 and run.start_command == run.command[0] for run in runs):
         raise RecordError(
             "the command never moves in any fit run",
@@ -85,7 +87,7 @@ def _require_movement(runs: Sequence[Run]) -> None:
 
 def _finished(best: Fitted, colour: Colour) -> tuple[Fitted, Colour]:
     """The chosen structure ended by lmfit on the full model, and its noise once more."""
-    theta, coefficients, cost = finish(best.problem, best.theta, best.solved.coefficients, colour)
+    theta = finish(best.problem, best.theta, best.solved.coefficients, colour)[0]
     solved = best.problem.solve(theta, colour)
     ended = replace(best, theta=theta, solved=solved) if solved.cost <= best.solved.cost else best
     colour = colour_of(ended)
@@ -111,7 +113,8 @@ def _assembled(
     commands = operating_commands(drawn[0], response_there)
     noise = _noise(chosen, colour)
     candidates = tuple(
-        Candidate(f.name, f.misfit, f.criterion, float(w), _note(i, float(w))) for i, (f, w) in enumerate(zip(fitted, weights, strict=True))
+        Candidate(f.name, f.misfit, f.criterion, float(w), _note(i, float(w)))
+        for i, (f, w) in enumerate(zip(fitted, weights, strict=True))
     )
     ties = tuple(f.name for f, w in zip(fitted[1:], weights[1:], strict=True) if w >= _TIED) + _equal_lags(drawn[0])
     return Fit(
@@ -131,6 +134,7 @@ def _assembled(
         explanation=_explanation(candidates, ties, between),
         cautions=_cautions(drawn[0], colour),
         drift=colour.rho > 0.995,
+        draws=drawn[0].draws[:, : s + 2],
     )
 
 
@@ -219,11 +223,8 @@ def _cautions(drawn: Drawn, colour: Colour) -> tuple[str, ...]:
     s = len(drawn.fitted.theta) - 1
     dead_time = drawn.draws[:, s]
     if np.quantile(dead_time, 0.025) <= 1e-3 * drawn.fitted.problem.interval:
-        out.append(
-            f"the records leave open whether there is a dead time at all (95 %: up to {np.quantile(dead_time, 0.975):.3g} s)"
-        )
+        most = np.quantile(dead_time, 0.975)
+        out.append(f"the records leave open whether there is a dead time at all (95 %: up to {most:.3g} s)")
     if colour.rho > 0.995:
         out.append("the response wanders slowly by itself (drift): levels and gain are less certain than they look")
     return tuple(out)
-
-

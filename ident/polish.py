@@ -4,7 +4,7 @@ import numpy as np
 
 from .regression import Regression, Solved
 from .run import FloatArray
-from .whiten import Colour
+from .whiten import WHITE, Colour
 
 
 def bounds_of(problem: Regression) -> tuple[FloatArray, FloatArray]:
@@ -39,7 +39,7 @@ def jacobian(problem: Regression, theta: FloatArray, colour: Colour, free: Float
 def polish(
     problem: Regression,
     theta: FloatArray,
-    colour: Colour = Colour(),
+    colour: Colour = WHITE,
     *,
     hold_dead_time: bool = False,
     rounds: int = 25,

@@ -134,7 +134,8 @@ def _with_conditionals(
     rise = (costs - costs.min()) / variance
     log_density = -0.5 * (freedom + 1) * np.log1p(rise / freedom) + np.array(log_volumes)
     grid = np.array([theta[-1] for theta in thetas])
-    return Profile(grid, log_density, np.array(centres), np.array(factors), float(variance), freedom, len(solved.coefficients))
+    linear_count = len(solved.coefficients)
+    return Profile(grid, log_density, np.array(centres), np.array(factors), float(variance), freedom, linear_count)
 
 
 def _root_of_covariance(white: FloatArray) -> tuple[FloatArray, float]:

@@ -142,7 +142,7 @@ class Regression:
         lead = self.unit_response(shape, dead_time)[:, None]
         initial = self.initial_columns(shape)
         moving = lead if initial is None else np.column_stack([lead, initial])
-        basis, target, fixed = self._whitened(colour)
+        target, fixed = self._whitened(colour)
         white = whiten(moving, self.stretches, colour)
         matrix = np.column_stack([white[:, :1], fixed, white[:, 1:]])
         return _least_squares(matrix, target)
@@ -151,18 +151,23 @@ class Regression:
         """Shape values and dead time of theta."""
         return tuple(float(v) for v in np.exp(theta[:-1])), float(theta[-1])
 
-    def _whitened(self, colour: Colour) -> tuple[None, FloatArray, FloatArray]:
-        cache = self.__dict__.setdefault("_white_cache", {})
+    def _whitened(self, colour: Colour) -> tuple[FloatArray, FloatArray]:
+        """Measured response and fixed columns under the last colour asked for; every solve needs them again."""
+        cache = self._white_cache
         if colour not in cache:
             cache.clear()
             both = np.column_stack([self.measured, self.fixed_columns])
             white = whiten(both, self.stretches, colour)
-            cache[colour] = (None, np.ascontiguousarray(white[:, 0]), np.ascontiguousarray(white[:, 1:]))
-        found: tuple[None, FloatArray, FloatArray] = cache[colour]
-        return found
+            cache[colour] = (np.ascontiguousarray(white[:, 0]), np.ascontiguousarray(white[:, 1:]))
+        return cache[colour]
+
+    @cached_property
+    def _white_cache(self) -> dict[Colour, tuple[FloatArray, FloatArray]]:
+        return {}
 
     def full_columns(self, theta: FloatArray, coefficients: FloatArray) -> tuple[FloatArray, FloatArray]:
         """Unwhitened model, (n,), and its derivatives, (n, s + 1 + q): log shapes, dead time, then the linear part."""
+
         def linear(at: FloatArray) -> FloatArray:
             shape, dead_time = self.split(at)
             lead = self.unit_response(shape, dead_time)[:, None]
@@ -172,7 +177,8 @@ class Regression:
 
         columns = linear(theta)
         slopes = [
-            (linear(theta + step) - linear(theta - step)) @ coefficients / (2 * step.max()) for step in self.steps(theta)
+            (linear(theta + step) - linear(theta - step)) @ coefficients / (2 * step.max())
+            for step in self.steps(theta)
         ]
         return columns @ coefficients, np.column_stack([*slopes, columns])
 

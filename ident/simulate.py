@@ -9,8 +9,8 @@ from .modes import Modes, modes_of
 from .plant import ComplexArray, Plant
 from .run import FloatArray, Run
 
-# Stamps within this share of an interval of an even grid are taken as even: the response moves by less than that share of
-# what it does in one sample.
+# Stamps within this share of an interval of an even grid are taken as even: the response moves by less than that share
+# of what it does in one sample.
 _EVEN = 2e-3
 
 
@@ -196,8 +196,8 @@ def free_run(plant: Plant, run: Run, operating_command: float, level: float) -> 
 
     Notes
     -----
-    A plant that settles starts where the steady command before the run holds it; an integrating one starts at `level` and
-    moves from there with the difference between that command and the operating one.
+    A plant that settles starts where the steady command before the run holds it; an integrating one starts at `level`
+    and moves from there with the difference between that command and the operating one.
 
     Examples
     --------

@@ -46,7 +46,7 @@ def _different(thetas: list[FloatArray], problem: Regression, count: int) -> lis
 
 
 def _thinned(problem: Regression) -> tuple[list[FloatArray], FloatArray, FloatArray]:
-    """Rows of each run that the library looks at, an orthonormal basis of the fixed columns there, the target less it."""
+    """Rows of each run that the library looks at, a basis of the fixed columns there, and the target less it."""
     total = sum(len(grid.time) for grid in problem.grids)
     stride = max(1, total // _ROWS)
     rows = []

@@ -22,6 +22,9 @@ class Colour:
         return (1 + 2 * self.rho * self.c + self.c**2) / (1 - self.rho**2)
 
 
+WHITE = Colour()
+
+
 def stretches_of(valid: NDArray[np.bool_]) -> list[slice]:
     """Runs of consecutive valid samples, numbered among the valid ones only."""
     edges = np.flatnonzero(np.diff(np.concatenate([[0], valid.astype(int), [0]])))

@@ -9,4 +9,14 @@ from .two_lags import TWO_LAGS
 
 CATALOGUE: tuple[Structure, ...] = (LAG, TWO_LAGS, RESONANCE, INTEGRATOR, INTEGRATOR_WITH_LAG)
 
-__all__ = ["CATALOGUE", "INTEGRATOR", "INTEGRATOR_WITH_LAG", "LAG", "RESONANCE", "TWO_LAGS", "Named", "Shape", "Structure"]
+__all__ = [
+    "CATALOGUE",
+    "INTEGRATOR",
+    "INTEGRATOR_WITH_LAG",
+    "LAG",
+    "RESONANCE",
+    "TWO_LAGS",
+    "Named",
+    "Shape",
+    "Structure",
+]

@@ -14,7 +14,7 @@ class Shape:
     ----------
     name : str
     kind : {"time", "frequency", "ratio"}
-        time: from a fraction of a sample to the record's length; frequency: the same in rad/s; ratio: between low and high.
+        time: from a fraction of a sample to the record's length; frequency: the same in rad/s; ratio: low to high.
     low, high : float
         Bounds of a ratio.
     steps : int

@@ -1,0 +1,65 @@
+"""Prediction of a record that was not fitted: free run of the plant, with the band that parameters and noise leave."""
+
+from dataclasses import dataclass, replace
+
+import numpy as np
+
+from ...ident.fitted import Fit
+from ...ident.run import FloatArray, Run
+from ...ident.simulate import free_run
+
+_PLANTS = 120
+_NORMAL_95 = 1.959964
+
+
+@dataclass(frozen=True, eq=False)
+class Prediction:
+    """What the model says the record should show.
+
+    Attributes
+    ----------
+    predicted, low, high : (n,) arrays, response unit
+    level : float, response unit
+        Where the free run starts from.
+    """
+
+    predicted: FloatArray
+    low: FloatArray
+    high: FloatArray
+    level: float
+
+
+def predict(run: Run, fit: Fit) -> Prediction:
+    """Free run of the fitted plant under the record's command, the operating point not refitted.
+
+    A plant that settles stands where the fitted operating point puts it. An integrating one has no such place: it starts
+    at the mean response of the rest before the first move of the command.
+    """
+    if run.between == "auto":
+        run = replace(run, between="held")
+    level = _start_level(run) if fit.plant.integrators else fit.operating_response
+    predicted = free_run(fit.plant, run, fit.operating_command, level)
+    spread = _spread(run, fit, level)
+    half = _NORMAL_95 * np.sqrt(spread**2 + fit.noise.std**2)
+    return Prediction(predicted, predicted - half, predicted + half, level)
+
+
+def _start_level(run: Run) -> float:
+    moved = np.flatnonzero(run.command != run.start_command)
+    first = int(moved[0]) if len(moved) else len(run.time)
+    rest = run.response[: max(first, 1)]
+    rest = rest[np.isfinite(rest)]
+    if len(rest) == 0:
+        return float(run.response[run.valid][0])
+    return float(np.mean(rest[-max(len(rest) // 2, 1) :]))
+
+
+def _spread(run: Run, fit: Fit, level: float) -> FloatArray:
+    """(n,) standard deviation over plausible plants, each about its own operating command."""
+    plausible = fit.plausible.take(slice(0, _PLANTS))
+    runs = [
+        free_run(plant, run, float(command), level) if plant.integrators == fit.plant.integrators else None
+        for plant, command in zip(plausible.plants, plausible.operating_command, strict=True)
+    ]
+    kept = [r for r in runs if r is not None]
+    return np.asarray(np.std(kept, axis=0)) if len(kept) > 1 else np.zeros(len(run.time))

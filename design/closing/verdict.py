@@ -1,0 +1,189 @@
+"""The verdict on a held-out record: do the gains still hold on the plants that this record makes plausible?
+
+Size decides, not significance: a difference that no gain would notice is said and let pass.
+"""
+
+from collections.abc import Callable
+from dataclasses import dataclass
+from typing import Literal
+
+import numpy as np
+
+from ...ident.confront import Change, Confronted, confront
+from ...ident.fitted import Fit
+from ...ident.run import Run
+from ..designed import Design
+from ..judge import judge_plants
+from ..requirements import ControllerSetting, Limits, Requirements
+from .compared import Compared
+from .prediction import Prediction, predict
+
+Verdict = Literal["agrees", "disagrees", "not comparable"]
+
+# A difference is real below this chance of none.
+_REAL = 0.005
+# A real difference of this size means another plant, whatever the gains do on it.
+_ANOTHER_PLANT = 0.25
+# A record that leaves the gain this uncertain could not have shown a change that matters.
+_BLIND = 0.4
+# A residual of the record's own best fit above this multiple of the fitted noise is not noise.
+_NOT_NOISE = 3.0
+_JUDGED = 400
+
+
+@dataclass(frozen=True)
+class _Finding:
+    verdict: Verdict
+    why: str
+    share: float | None
+
+
+def compare(
+    run: Run,
+    fit: Fit,
+    design: Design,
+    *,
+    requirements: Requirements,
+    limits: Limits,
+    setting: ControllerSetting,
+    progress: Callable[[str, float], None] | None = None,
+) -> Compared:
+    """Hold one fresh record against the fitted plant and the chosen gains.
+
+    Parameters
+    ----------
+    run : Run
+        None of whose samples was fitted.
+    fit, design
+        Of the job.
+    requirements, limits, setting
+        As the gains were designed for.
+
+    Returns
+    -------
+    Compared
+    """
+    if progress:
+        progress(f"comparing with {run.label}", 0.0)
+    prediction = predict(run, fit)
+    valid = run.valid
+    spread = float(np.std(run.response[valid]))
+    error = float(np.sqrt(np.mean((run.response - prediction.predicted)[valid] ** 2)))
+    inside = (run.response >= prediction.low) & (run.response <= prediction.high)
+    found = _judge(run, fit, design, prediction, requirements, limits, setting)
+    return Compared(
+        label=run.label,
+        time=run.time,
+        command=run.command,
+        response=run.response,
+        predicted=prediction.predicted,
+        low=prediction.low,
+        high=prediction.high,
+        misfit=error / spread if spread > 0 else float("inf"),
+        noise_floor=fit.noise.std / spread if spread > 0 else float("inf"),
+        coverage_95=float(np.mean(inside[valid])),
+        verdict=found.verdict,
+        why=found.why,
+        share_meeting=found.share,
+    )
+
+
+def _judge(
+    run: Run,
+    fit: Fit,
+    design: Design,
+    prediction: Prediction,
+    requirements: Requirements,
+    limits: Limits,
+    setting: ControllerSetting,
+) -> _Finding:
+    if np.ptp(run.command) == 0 and run.start_command == run.command[0]:
+        return _Finding("not comparable", "the command never moves in this run: take one with steps of it", None)
+    moved = float(np.ptp(prediction.predicted))
+    if moved < 4 * fit.noise.std:
+        return _Finding(
+            "not comparable",
+            f"the response should move by {moved:.3g}, hardly more than the noise ({fit.noise.std:.3g} rms): "
+            "take a run with larger steps",
+            None,
+        )
+    alone = confront(run, fit)
+    share = _share(alone, fit, design, requirements, limits, setting)
+    return _decide(run, fit, alone, share, requirements.confidence)
+
+
+def _share(
+    alone: Confronted,
+    fit: Fit,
+    design: Design,
+    requirements: Requirements,
+    limits: Limits,
+    setting: ControllerSetting,
+) -> float:
+    verdicts = judge_plants(
+        design.gains,
+        alone.plausible.take(slice(0, _JUDGED)),
+        operating_command=fit.operating_command,
+        operating_response=fit.operating_response,
+        noise=fit.noise,
+        requirements=requirements,
+        limits=limits,
+        setting=setting,
+    )
+    return float(np.mean(verdicts.meets_all))
+
+
+def _decide(run: Run, fit: Fit, alone: Confronted, share: float, confidence: float) -> _Finding:
+    real = alone.p_value < _REAL
+    shown = _shown(alone.changes, fit)
+    response = run.response[run.valid]
+    if alone.noise_std > _NOT_NOISE * fit.noise.std and alone.noise_std > 0.05 * float(np.std(response)):
+        return _Finding(
+            "disagrees",
+            f"no plant of this structure explains the run: residual {alone.noise_std:.3g} rms, noise in the fitted runs "
+            f"{fit.noise.std:.3g} rms; look for clipping, friction, a disturbance or a lost sensor",
+            share,
+        )
+    if not real and alone.gain_spread > _BLIND:
+        return _Finding(
+            "not comparable",
+            f"the run leaves the plant's gain uncertain by {100 * alone.gain_spread:.0f} %: "
+            "take a longer one with larger steps",
+            share,
+        )
+    if not real:
+        return _Finding("agrees", f"no change of the plant is visible (p = {alone.p_value:.2g})", share)
+    large = [change for change in alone.changes if abs(np.log(max(change.ratio, 1e-9))) > _ANOTHER_PLANT]
+    large = [change for change in large if abs(change.score) > 3]
+    if large:
+        return _Finding("disagrees", f"another plant than the fitted one: {shown}", share)
+    if share < confidence:
+        return _Finding(
+            "disagrees",
+            f"the plant has changed ({shown}), and the gains meet everything on {100 * share:.0f} % only of the plants "
+            "that this run makes plausible",
+            share,
+        )
+    return _Finding(
+        "agrees",
+        f"the plant differs measurably ({shown}), yet the gains meet everything on {100 * share:.0f} % of the plants "
+        "that this run makes plausible",
+        share,
+    )
+
+
+def _shown(changes: tuple[Change, ...], fit: Fit) -> str:
+    """The changes in words, the surest first."""
+    parts = []
+    for change in sorted(changes, key=lambda c: -abs(c.score)):
+        if change.name == "dead time":
+            scale = fit.plant.dead_time + _slowest(fit)
+            parts.append(f"dead time {(change.ratio - 1) * scale:+.3g} s")
+        else:
+            parts.append(f"{change.name} {100 * (change.ratio - 1):+.1f} %")
+    return ", ".join(parts[:3])
+
+
+def _slowest(fit: Fit) -> float:
+    moving = fit.plant.poles[fit.plant.poles != 0]
+    return float(np.max(1.0 / np.maximum(np.abs(moving), 1e-300), initial=0.0))

@@ -1,0 +1,146 @@
+"""A record that was not fitted, fitted by itself: the plants it makes plausible, and whether they are others."""
+
+from dataclasses import dataclass, replace
+
+import numpy as np
+from scipy.stats import f as fisher
+
+from .catalogue import CATALOGUE
+from .choose import Fitted, colour_of
+from .ensemble import Drawn, draw_structure, plausible_plants
+from .fitted import Fit, Plausible
+from .noise import effective_samples
+from .polish import polish
+from .regression import Regression
+from .run import FloatArray, Run
+from .start import first_guesses
+from .whiten import WHITE, Colour
+
+_DRAWS = 1024
+
+
+@dataclass(frozen=True, eq=False)
+class Change:
+    """One parameter in the earlier fit and in the new record.
+
+    Attributes
+    ----------
+    name : str
+    ratio : float
+        New over fitted; for the dead time 1 + difference over (fitted dead time + slowest time of the plant).
+    score : float
+        Difference over its standard error.
+    """
+
+    name: str
+    ratio: float
+    score: float
+
+
+@dataclass(frozen=True, eq=False)
+class Confronted:
+    """What a fresh record says by itself.
+
+    Attributes
+    ----------
+    plausible : Plausible
+        Plants that this record makes plausible.
+    p_value : float
+        Of no change, in all parameters jointly; honest under coloured noise as far as the intervals are.
+    changes : tuple of Change
+    noise_std : float, response unit
+        Residual of this record's own fit.
+    gain_spread : float
+        Half the width of the gain's 95 % interval over the gain: how much the record can see.
+    log_weights : (p,) array
+        Log likelihood that this record gives to each draw of the earlier fit, up to a constant.
+    """
+
+    plausible: Plausible
+    p_value: float
+    changes: tuple[Change, ...]
+    noise_std: float
+    gain_spread: float
+    log_weights: FloatArray
+
+
+def confront(run: Run, fit: Fit, seed: int = 1) -> Confronted:
+    """Fit the chosen structure to one fresh record and compare.
+
+    The level of the response, and for an integrating plant its drift, are free: a held-out record tells about the plant
+    whatever the operating point did.
+    """
+    structure = next(s for s in CATALOGUE if s.name == fit.structure)
+    if run.between == "auto":
+        run = replace(run, between="held")
+    problem = Regression((run,), structure, fit.operating_command, False)
+    centre = np.median(fit.draws, axis=0)
+    starts = [centre[:-1], *first_guesses(problem, 2)]
+    ends = [polish(problem, theta) for theta in starts]
+    theta, solved = min(ends, key=lambda end: end[1].cost)
+    alone = Fitted(problem, theta, solved, 0.0, 0.0)
+    colour = colour_of(alone)
+    theta, solved = polish(problem, theta, colour, rounds=12)
+    alone = Fitted(problem, theta, solved, 0.0, 0.0)
+    drawn = draw_structure(alone, colour, _DRAWS, seed)
+    return _compared(fit, drawn, colour)
+
+
+def _compared(fit: Fit, drawn: Drawn, colour: Colour) -> Confronted:
+    before, after = _logged(fit.draws), _logged(drawn.draws[:, : fit.draws.shape[1]])
+    spread = _robust_covariance(before) + _robust_covariance(after)
+    difference = np.median(after, axis=0) - np.median(before, axis=0)
+    distance = float(difference @ np.linalg.solve(spread, difference))
+    n = len(drawn.fitted.problem.measured)
+    freedom = max(effective_samples(n, colour) - len(difference) - 1, 4.0)
+    p_value = float(fisher.sf(distance / len(difference), len(difference), freedom))
+    return Confronted(
+        plausible=plausible_plants([drawn], np.ones(1), fit.operating_response, _DRAWS),
+        p_value=p_value,
+        changes=_changes(fit, difference, np.sqrt(np.diag(spread))),
+        noise_std=_own_residual(drawn.fitted),
+        gain_spread=_gain_spread(drawn.draws[:, fit.draws.shape[1] - 1]),
+        log_weights=_log_likelihood(before, after),
+    )
+
+
+def _logged(draws: FloatArray) -> FloatArray:
+    """Draws with the gain's size by its logarithm."""
+    out = draws.copy()
+    out[:, -1] = np.log(np.maximum(np.abs(draws[:, -1]), 1e-300))
+    return out
+
+
+def _robust_covariance(draws: FloatArray) -> FloatArray:
+    """Covariance with heavy tails cut at the 1 and 99 % quantiles."""
+    low, high = np.quantile(draws, [0.01, 0.99], axis=0)
+    return np.atleast_2d(np.cov(np.clip(draws, low, high).T)) + 1e-18 * np.eye(draws.shape[1])
+
+
+def _log_likelihood(before: FloatArray, after: FloatArray) -> FloatArray:
+    away = before - np.median(after, axis=0)
+    precision = np.linalg.pinv(_robust_covariance(after))
+    return np.asarray(-0.5 * np.einsum("ni,ij,nj->n", away, precision, away))
+
+
+def _changes(fit: Fit, difference: FloatArray, errors: FloatArray) -> tuple[Change, ...]:
+    structure = next(s for s in CATALOGUE if s.name == fit.structure)
+    shapes = len(difference) - 2
+    slowest = float(np.max(1.0 / np.maximum(np.abs(fit.plant.poles[fit.plant.poles != 0]), 1e-300), initial=0.0))
+    scale = fit.plant.dead_time + slowest
+    out = [Change("gain", float(np.exp(difference[-1])), float(difference[-1] / errors[-1]))]
+    lag = 1.0 + float(difference[shapes]) / scale if scale > 0 else 1.0
+    out.append(Change("dead time", lag, float(difference[shapes] / errors[shapes])))
+    for i, shape in enumerate(structure.shapes):
+        out.append(Change(shape.name, float(np.exp(difference[i])), float(difference[i] / errors[i])))
+    return tuple(out)
+
+
+def _own_residual(alone: Fitted) -> float:
+    solved = alone.problem.solve(alone.theta, WHITE)
+    return float(np.sqrt(solved.cost / max(len(alone.problem.measured), 1)))
+
+
+def _gain_spread(gains: FloatArray) -> float:
+    low, middle, high = np.quantile(gains, [0.025, 0.5, 0.975])
+    return float(0.5 * (high - low) / max(abs(middle), 1e-300))
