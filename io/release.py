@@ -5,11 +5,12 @@ from collections.abc import Iterator, Sequence
 
 from ..design.closing.compared import Compared
 from ..design.designed import Design, Judged, LimitJudged
+from ..design.requirements import RequirementName
 from .record import Record
 from .rigfile.rig import Rig
 
 FEWEST_PLANTS = 1000
-MARGINS = ("gain_margin", "phase_margin", "peak_sensitivity")
+MARGINS: tuple[RequirementName, ...] = ("gain_margin", "phase_margin", "peak_sensitivity")
 
 
 def reasons_to_hold(
