@@ -1,0 +1,102 @@
+"""Measures of a response to a step, on many columns at once: peak, settling, rise and recovery."""
+
+import numpy as np
+from numpy.typing import NDArray
+
+from ..ident.run import FloatArray
+
+
+def overshoot(response: FloatArray, final: FloatArray) -> FloatArray:
+    """(peak - final)/|final - start| in the direction of the step; never below zero.
+
+    Parameters
+    ----------
+    response : (q, c) array, response unit
+        Even steps in time, start at zero before the first row.
+    final : (c,) array, response unit
+        Steady change of the response.
+
+    Returns
+    -------
+    (c,) array
+        A fraction; the peak is refined by a parabola through its neighbours.
+    """
+    return np.maximum(peak(response / final) - 1.0, 0.0)
+
+
+def peak(response: FloatArray) -> FloatArray:
+    """(c,) largest value of (q, c) `response`, refined by a parabola; zero at the start counts."""
+    columns = np.arange(response.shape[1])
+    top = response.argmax(axis=0)
+    middle = np.clip(top, 1, max(response.shape[0] - 2, 1))
+    left, here, right = (response[middle + i, columns] for i in (-1, 0, 1))
+    bend = left - 2.0 * here + right
+    inside = (middle == top) & (bend < 0.0)
+    lift = np.where(inside, -((right - left) ** 2) / (8.0 * np.where(inside, bend, -1.0)), 0.0)
+    return np.maximum(response[top, columns] + lift, 0.0)
+
+
+def settling_time(response: FloatArray, final: FloatArray, band: float, spacing: float) -> FloatArray:
+    """Last entry into +-band of |final - start| about final, s; inf where the last row is outside.
+
+    Parameters
+    ----------
+    response : (q, c) array
+        Row i stands at time (i + 1) `spacing`; the start, zero, at time 0.
+    final : (c,) array
+    band : float
+        A fraction of the step.
+    spacing : float, s
+    """
+    return last_entry(np.abs(response / final - 1.0), band, spacing, start=1.0)
+
+
+def last_entry(distance: FloatArray, band: float, spacing: float, start: float = 0.0) -> FloatArray:
+    """Time of the last crossing into `band`, s, interpolated between rows; 0 if never outside, inf if outside at the end.
+
+    Parameters
+    ----------
+    distance : (q, c) array
+        Row i stands at (i + 1) `spacing`.
+    start : float
+        Distance at time 0.
+    """
+    outside = ~(distance <= band)
+    rows, columns = distance.shape[0], np.arange(distance.shape[1])
+    last = rows - 1 - outside[::-1].argmax(axis=0)
+    ever = outside.any(axis=0)
+    index = np.where(ever, last, -1)
+    after = distance[np.minimum(index + 1, rows - 1), columns]
+    before = np.where(index >= 0, distance[np.maximum(index, 0), columns], start)
+    gap = before - after
+    share = np.where(gap > 0.0, (before - band) / np.where(gap > 0.0, gap, 1.0), 1.0)
+    time = spacing * (index + 1 + np.clip(share, 0.0, 1.0))
+    time = np.where(ever | (start > band), time, 0.0)
+    return np.where(outside[-1], np.inf, time)
+
+
+def rise_time(response: FloatArray, final: FloatArray, spacing: float) -> FloatArray:
+    """From the first 10 % to the first 90 % of the step, s; inf where 90 % is never reached."""
+    share = response / final
+    late = first_reach(share, 0.9, spacing)
+    early = np.where(np.isfinite(late), first_reach(share, 0.1, spacing), 0.0)
+    return late - early
+
+
+def first_reach(share: FloatArray, level: float, spacing: float) -> FloatArray:
+    """Time at which each column first reaches `level`, s, interpolated; inf where it does not."""
+    reached = share >= level
+    columns = np.arange(share.shape[1])
+    index = reached.argmax(axis=0)
+    after = share[index, columns]
+    before = np.where(index > 0, share[np.maximum(index - 1, 0), columns], 0.0)
+    part = (level - before) / np.where(after > before, after - before, 1.0)
+    return np.where(reached.any(axis=0), spacing * (index + np.clip(part, 0.0, 1.0)), np.inf)
+
+
+def still_moving(limited: NDArray[np.bool_] | None, count: int) -> NDArray[np.bool_]:
+    """(c,) whether the clamp still acts in the last tenth of the record: such a column has not settled."""
+    if limited is None:
+        return np.zeros(count, dtype=bool)
+    tail = max(limited.shape[0] // 10, 1)
+    return np.asarray(limited[-tail:].all(axis=0))

@@ -1,0 +1,301 @@
+"""What gains do on plants: every requirement's value and every extreme, a column for each pair of plant and law."""
+
+from dataclasses import dataclass, field
+
+import numpy as np
+from numpy.typing import NDArray
+
+from ..ident.fitted import Plausible
+from ..ident.run import FloatArray
+from . import step_metrics
+from .discretise import GainColumns, LawColumns, law_columns
+from .sampled.bank import Bank, IndexArray, build_bank
+from .sampled.frequency import Margins, Spectra, command_noise, margins_of, spectra_of
+from .sampled.loop import Clamps, History, simulate
+from .sampled.poles import poles_of, starting_poles
+from .sampled.pulse import law_response, setpoint_response
+from .situation import DISTURBED, STEP, Situation
+from .steady import rest_at, stiction_error
+
+_RAMP = 1e-3  # of the lowest grid frequency: where the limit z -> 1 of the ramp error is taken
+
+
+@dataclass(frozen=True, eq=False)
+class Bench:
+    """Plants made ready: the exact loop for stability and margins, and the one that is run in time.
+
+    Attributes
+    ----------
+    plausible : Plausible
+    situation : Situation
+    exact : Bank
+    spectra : Spectra
+    running : Bank
+        The exact bank, or a stand-in of longer interval and the same total delay for the search.
+    samples : int
+        Of `running`, over the horizon.
+    coarse : Bank
+        Few enough samples in the dead time that eigenvalues can start the search for poles.
+    """
+
+    plausible: Plausible
+    situation: Situation
+    exact: Bank
+    spectra: Spectra
+    running: Bank
+    samples: int
+    coarse: Bank
+
+
+@dataclass(frozen=True, eq=False)
+class Values:
+    """(c,) arrays of one evaluation.
+
+    Attributes
+    ----------
+    stable : array of bool
+    of : dict of requirement name to array, base units; inf: never
+    extremes : dict of limit name to array, absolute readings; rates as magnitudes
+    clamped : array, s
+        How long the clamp acted during the test step.
+    settled : array, s
+        Settling time into 2 %, whether asked for or not; inf: not within the horizon; NaN without a step.
+    margins : Margins
+    """
+
+    stable: NDArray[np.bool_]
+    of: dict[str, FloatArray]
+    extremes: dict[str, FloatArray]
+    clamped: FloatArray
+    settled: FloatArray
+    margins: Margins
+    history: History | None = field(default=None, repr=False)
+
+
+def bench_of(
+    plausible: Plausible, situation: Situation, horizon: float, *, stand_in: bool = False, most: int = 20_000
+) -> Bench:
+    """Discretise the plants for a horizon in s; `stand_in` allows a coarser interval, for the search only."""
+    setting = situation.setting
+    exact = _bank(plausible, situation, setting.update_interval, _points(horizon / setting.update_interval))
+    least = float(exact.delay.min())
+    running = exact
+    if stand_in and horizon > 500 * setting.update_interval:
+        longest = setting.update_interval + 2.0 * least + 0.002 * horizon
+        running = _bank(plausible, situation, min(horizon / 400, longest), 4)
+    samples = int(min(np.ceil(horizon / running.interval) + 1, most))
+    return Bench(plausible, situation, exact, spectra_of(exact), running, samples, _coarse(plausible, situation, exact))
+
+
+def _bank(plausible: Plausible, situation: Situation, interval: float, points: int) -> Bank:
+    """Sampling at another interval keeps the sum of computation delay and half the hold."""
+    setting = situation.setting
+    delay = setting.computation_delay + 0.5 * (setting.update_interval - interval)
+    filter_time = setting.response_filter_time
+    return build_bank(plausible.plants, interval, computation_delay=delay, filter_time=filter_time, points=points)
+
+
+def _points(samples: float) -> int:
+    return 8 if samples < 300 else 4 if samples < 3000 else 2
+
+
+def _coarse(plausible: Plausible, situation: Situation, exact: Bank) -> Bank:
+    if exact.lag.max() <= 24:
+        return exact
+    return _bank(plausible, situation, float(exact.delay.max()) / 16, 1)
+
+
+def values_of(
+    bench: Bench, which: IndexArray, gains: GainColumns, *, refine: bool = True, law: LawColumns | None = None
+) -> Values:
+    """Judge gains[i] on plant which[i].
+
+    Parameters
+    ----------
+    refine : bool
+        Refine margins on the exact loop; else interpolate on the grid.
+    law : LawColumns, optional
+        Coefficients to use instead of those made from the gains (a law given from outside).
+    """
+    exact = law_columns(gains, bench.exact.interval) if law is None else law
+    running = exact if bench.running is bench.exact else law_columns(gains, bench.running.interval)
+    margins = margins_of(bench.spectra, which, exact, exact=refine)
+    of: dict[str, FloatArray] = {
+        "gain_margin": margins.gain,
+        "phase_margin": margins.phase,
+        "peak_sensitivity": margins.sensitivity,
+    }
+    of |= _linear_values(bench, which, exact, margins.stable)
+    stepped = _Stepped(bench, which, running, margins.stable)
+    of |= stepped.values
+    return Values(margins.stable, of, stepped.extremes, stepped.clamped, stepped.settled, margins, stepped.history)
+
+
+def _linear_values(
+    bench: Bench, which: IndexArray, law: LawColumns, stable: NDArray[np.bool_]
+) -> dict[str, FloatArray]:
+    """Command noise, damping ratio and ramp error: of the loop without its clamp."""
+    situation, found = bench.situation, {}
+    if situation.asks(("command_noise",)) and situation.noise is not None:
+        filter_time = situation.setting.response_filter_time
+        found["command_noise"] = command_noise(bench.spectra, which, law, situation.noise, filter_time)
+    if situation.asks(("damping_ratio",)):
+        found["damping_ratio"] = _damping(bench, which, law, stable)
+    ramp = situation.requirements.find("ramp_error")
+    if ramp is not None:
+        found["ramp_error"] = abs(ramp.ramp or 0.0) * following_time(bench.spectra, which, law)
+    return found
+
+
+def _damping(bench: Bench, which: IndexArray, law: LawColumns, stable: NDArray[np.bool_]) -> FloatArray:
+    ratio = np.full(which.size, -1.0)
+    chosen = np.flatnonzero(stable)
+    if chosen.size:
+        part = law.take(chosen)
+        starts = starting_poles(bench.coarse, which[chosen], part)
+        delay = bench.exact.delay[which[chosen]]
+        ratio[chosen] = poles_of(bench.spectra, which[chosen], part, starts, delay).damping
+    return ratio
+
+
+def following_time(spectra: Spectra, which: IndexArray, law: LawColumns) -> FloatArray:
+    """(c,) steady lag behind a ramp, s: limit of (1 - y/r) T/(z - 1) as z -> 1; inf without integral action in the loop."""
+    lags = []
+    for share in (_RAMP, 0.5 * _RAMP):
+        near = 1.0 + share * spectra.frequency[0, which] * spectra.interval
+        z = near.astype(np.complex128)
+        plant = spectra.pulse.at(z, which)
+        tracked = setpoint_response(law, z) * plant / (1.0 + law_response(law, z) * plant)
+        lags.append((1.0 - tracked.real) * spectra.interval / (near - 1.0))
+    first, second = lags
+    steady = np.abs(2.0 * second - first)
+    return np.where(np.abs(second) > 1.7 * np.abs(first), np.where(steady > 1e3 * spectra.interval, np.inf, steady), steady)
+
+
+class _Stepped:
+    """Everything that is read off simulated steps; unstable columns are not run and get `never`."""
+
+    def __init__(self, bench: Bench, which: IndexArray, law: LawColumns, stable: NDArray[np.bool_]) -> None:
+        self.bench, self.situation = bench, bench.situation
+        self.count, self.chosen = which.size, np.flatnonzero(stable)
+        self.which, self.law = which[self.chosen], law.take(self.chosen)
+        self.offset = self.situation.operating_command - bench.plausible.operating_command[self.which]
+        self.values: dict[str, FloatArray] = {}
+        self.extremes: dict[str, FloatArray] = {}
+        self.clamped, self.settled = np.zeros(self.count), np.full(self.count, np.nan)
+        self.history: History | None = None
+        if self.situation.step != 0.0:
+            self._both_steps()
+        self._disturbances()
+
+    def _both_steps(self) -> None:
+        step = self.situation.step
+        if not (self.situation.asks(STEP) or self._limited_anywhere()):
+            return
+        first = self._step(step)
+        self.history = first
+        if self.situation.requirements.both_directions:
+            self._step(-step)
+
+    def _limited_anywhere(self) -> bool:
+        limits = self.situation.limits
+        bounds = (limits.response_lowest, limits.response_highest, limits.response_rate)
+        others = (limits.command_lowest, limits.command_highest, limits.command_rate)
+        return any(bound is not None for bound in bounds + others)
+
+    def _step(self, step: float) -> History:
+        here = np.full(self.chosen.size, self.situation.start)
+        before = rest_at(self.bench.running, self.which, self.law, here, self.offset)
+        after = rest_at(self.bench.running, self.which, self.law, here + step, self.offset)
+        history = self._run(np.full(here.size, step), np.zeros(here.size), before.command)
+        self._read_step(history, after.response - before.response, here + step - before.response)
+        self._read_extremes(history, before.response, before.command)
+        if history.limited is not None:
+            time = history.limited.sum(axis=0) * self.bench.running.interval
+            self.clamped[self.chosen] = np.maximum(self.clamped[self.chosen], time)
+        return history
+
+    def _run(self, setpoint: FloatArray, disturbance: FloatArray, command: FloatArray) -> History:
+        clamp = self.situation.clamp
+        low = -np.inf if clamp.lowest is None else clamp.lowest
+        high = np.inf if clamp.highest is None else clamp.highest
+        change = np.inf if clamp.rate is None else clamp.rate * self.bench.running.interval
+        return simulate(
+            self.bench.running,
+            self.which,
+            self.law,
+            setpoint=setpoint,
+            disturbance=disturbance,
+            clamps=Clamps(low - command, high - command, change),
+            samples=self.bench.samples,
+            rates=self.situation.limits.response_rate is not None,
+        )
+
+    def _read_step(self, history: History, final: FloatArray, goal: FloatArray) -> None:
+        """`goal`: the new setpoint as seen from the response's start."""
+        bank, moving = self.bench.running, step_metrics.still_moving(history.limited, self.chosen.size)
+        spacing = bank.interval / bank.points
+        settle = self.situation.requirements.find("settling_time")
+        usual = step_metrics.settling_time(history.response, final, 0.02, spacing)
+        usual = np.where(moving, np.inf, usual)
+        self._keep_settled(usual)
+        if settle is not None:
+            band = settle.band or 0.02
+            time = usual if band == 0.02 else step_metrics.settling_time(history.response, final, band, spacing)
+            self._keep("settling_time", np.where(moving, np.inf, time))
+        if self.situation.asks(("overshoot",)):
+            self._keep("overshoot", step_metrics.overshoot(history.response, final))
+        if self.situation.asks(("rise_time",)):
+            self._keep("rise_time", step_metrics.rise_time(history.response, final, spacing))
+        if self.situation.asks(("steady_state_error",)):
+            tail = history.response[-max(history.response.shape[0] // 5, 1) :]
+            wandering = np.abs(goal - tail).max(axis=0) if tail.size else np.abs(goal)
+            remaining = np.where(np.isfinite(usual), np.abs(goal - final), wandering)
+            stiction = self.bench.plausible.stiction[self.which]
+            self._keep("steady_state_error", remaining + stiction_error(bank, self.which, self.law, stiction))
+
+    def _keep_settled(self, time: FloatArray) -> None:
+        known = self.settled[self.chosen]
+        self.settled[self.chosen] = np.where(np.isnan(known), time, np.maximum(known, time))
+
+    def _keep(self, name: str, value: FloatArray) -> None:
+        """Keep the worse of what is known and what is new; unstable columns never get there."""
+        held = self.values.setdefault(name, np.where(np.isin(np.arange(self.count), self.chosen), -np.inf, np.inf))
+        held[self.chosen] = np.maximum(held[self.chosen], np.where(np.isnan(value), np.inf, value))
+
+    def _read_extremes(self, history: History, response: FloatArray, command: FloatArray) -> None:
+        level = self.situation.operating_response + response
+        sent = self.situation.operating_command + command
+        steps = np.abs(np.diff(history.command, axis=0, prepend=0.0)).max(axis=0) / self.bench.running.interval
+        self._widen("response highest", level + step_metrics.peak(history.response))
+        self._widen("response lowest", level - step_metrics.peak(-history.response), lowest=True)
+        self._widen("command highest", sent + np.maximum(history.command.max(axis=0), 0.0))
+        self._widen("command lowest", sent + np.minimum(history.command.min(axis=0), 0.0), lowest=True)
+        self._widen("command rate", steps)
+        if history.rate is not None:
+            self._widen("response rate", history.rate)
+
+    def _widen(self, name: str, value: FloatArray, *, lowest: bool = False) -> None:
+        held = self.extremes.setdefault(name, np.full(self.count, np.nan))
+        known = held[self.chosen]
+        further = np.fmin(known, value) if lowest else np.fmax(known, value)
+        held[self.chosen] = further
+
+    def _disturbances(self) -> None:
+        for size in {item.command_step for item in self.situation.items if item.name in DISTURBED}:
+            here = np.full(self.chosen.size, self.situation.start)
+            before = rest_at(self.bench.running, self.which, self.law, here, self.offset)
+            history = self._run(np.zeros(here.size), np.full(here.size, size or 0.0), before.command)
+            self._read_disturbance(history, size)
+            self._read_extremes(history, before.response, before.command)
+
+    def _read_disturbance(self, history: History, size: float | None) -> None:
+        spacing = self.bench.running.interval / self.bench.running.points
+        away = np.abs(history.response)
+        for item in self.situation.items:
+            if item.command_step != size or item.name not in DISTURBED:
+                continue
+            if item.name == "disturbance_peak":
+                self._keep(item.name, step_metrics.peak(away))
+            else:
+                self._keep(item.name, step_metrics.last_entry(away, item.band or 0.0, spacing))
