@@ -70,6 +70,8 @@ def main(arguments: Sequence[str] | None = None) -> int:
         return _tell(error, WRONG_CALL)
     except RecordError as error:
         return _tell(error, BAD_RECORD)
+    except GainwrightError as error:  # neither the person's nor the record's doing, and yet in words
+        return _tell(error, FAULT)
     return code if isinstance(code, int) else RELEASED
 
 

@@ -1,8 +1,15 @@
 """`gainwright process`: the whole job, from a rig file to a gain sheet with its dossier and report."""
 
+import os
+import shutil
+import sys
 from pathlib import Path
+from typing import TYPE_CHECKING
 
 import click
+
+if TYPE_CHECKING:
+    from ..outcome import Outcome
 
 
 @click.command(short_help="The whole job: gain sheet, dossier and report.")
@@ -16,12 +23,18 @@ def process(rigfile: Path, out: Path | None, no_report: bool) -> int:
     """
     from ..deliver import deliver
     from ..progress import shown_progress
-    from ..terminal import verdict_text
-    from .output import print_coloured
 
     folder = rigfile.parent / "out" if out is None else out
     with shown_progress() as progress:
         outcome = deliver(rigfile, folder, with_report=not no_report, progress=progress)
-    print_coloured(lambda width, colour: verdict_text(outcome, width, colour=colour))
+    _print_verdict(outcome)
     click.echo(f"written to {folder}")
     return 0 if outcome.status == "released" else 3
+
+
+def _print_verdict(outcome: "Outcome") -> None:
+    """In colour on a terminal only, and never where NO_COLOR is set."""
+    from ..terminal import verdict_text
+
+    colour = sys.stdout.isatty() and "NO_COLOR" not in os.environ
+    click.echo(verdict_text(outcome, shutil.get_terminal_size((100, 40)).columns, colour=colour))
