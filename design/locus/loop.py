@@ -13,6 +13,8 @@ FloatArray = NDArray[np.float64]
 Coefficients = tuple[float, ...]
 
 _SERIES_REACH = 0.3  # below it the Bernoulli series of the hold's log derivative is more exact than the formula
+_MERGE = (0.03, 1e-3, 1e-5)  # relative distances within which roots are tried as one multiple root
+_UNNOTICED = 1e-13  # relative change of the coefficients that rounding may make
 _ON_AXIS = 1e-11  # a root whose real part is a smaller share of its size is taken to lie on the imaginary axis
 
 
@@ -184,6 +186,32 @@ def _stripped(polynomial: Coefficients, name: str) -> Coefficients:
 
 
 def _roots(polynomial: Coefficients) -> ComplexArray:
-    roots = np.asarray(np.roots(polynomial), dtype=np.complex128)
+    roots = _merged(np.asarray(np.roots(polynomial), dtype=np.complex128), polynomial)
     on_axis = np.abs(roots.real) <= _ON_AXIS * np.abs(roots)
     return np.where(on_axis, 1j * roots.imag, roots)
+
+
+def _merged(roots: ComplexArray, polynomial: Coefficients) -> ComplexArray:
+    """Clusters of computed roots as one multiple root each, where the polynomial can't tell the difference."""
+    monic = np.asarray(polynomial) / polynomial[0]
+    for share in _MERGE:
+        groups = _clusters(roots, share)
+        if len(groups) == roots.size:
+            continue
+        means = [np.mean(roots[group]) for group in groups]
+        means = [mean.real + 0j if abs(mean.imag) <= 1e-9 * abs(mean) else mean for mean in means]
+        tried = np.repeat(means, [len(group) for group in groups])
+        if np.all(np.abs(np.poly(tried) - monic) <= _UNNOTICED * np.poly(-np.abs(roots)).real):
+            return np.asarray(tried, dtype=np.complex128)
+    return roots
+
+
+def _clusters(roots: ComplexArray, share: float) -> list[list[int]]:
+    groups: list[list[int]] = []
+    for index, root in enumerate(roots):
+        home = next((g for g in groups if np.min(np.abs(roots[g] - root)) <= share * abs(root)), None)
+        if home is None:
+            groups.append([index])
+        else:
+            home.append(index)
+    return groups

@@ -1,0 +1,254 @@
+"""Closed-loop roots right of a given abscissa, with exact dead time and hold: every one, each certified.
+
+Without delay they are the roots of D + K N. With delay, boxes that cover the region are dropped where |K G_L| = 1 or
+the angle of 180 deg is impossible, solved where Newton's method is certain to have exactly one root, otherwise split.
+"""
+
+import math
+
+import numpy as np
+
+from .condition import LocusError
+from .enclosure import unpaired
+from .loop import ComplexArray, FloatArray, OpenLoop, hold_factor, hold_log_derivative
+
+_LEVELS = 60
+_MOST_BOXES = 400_000
+_SMALLEST = 1e-9  # half diagonal of a box, as a share of its distance, at which what is left is a multiple root
+_TURN = 2.0 * np.pi
+
+
+def closed_loop_roots(loop: OpenLoop, loop_gain: float, right_of: float | None = None) -> ComplexArray:
+    """Every closed-loop root at this K with real part above `right_of`, multiple ones repeated.
+
+    Parameters
+    ----------
+    loop : OpenLoop
+    loop_gain : float
+        Positive.
+    right_of : float or None, 1/s
+        None: all of them without delay, and right of `default_left` with it.
+
+    Returns
+    -------
+    (k,) complex array, 1/s
+        By falling real part, conjugates next to each other (positive imaginary part first).
+
+    Raises
+    ------
+    LocusError
+        The gain is not positive, or the region holds more roots than can be separated.
+
+    Examples
+    --------
+    >>> closed_loop_roots(OpenLoop((1.0,), (1.0, 3.0, 2.0, 0.0)), 6.0).real.round(9).tolist()
+    [0.0, 0.0, -3.0]
+    """
+    if not (loop_gain > 0.0 and math.isfinite(loop_gain)):
+        raise LocusError("the loop gain must be positive", where="roots", found=str(loop_gain), expected="K > 0")
+    if loop.rational:
+        roots = _polynomial_roots(loop, loop_gain)
+        return _ordered(roots if right_of is None else roots[roots.real > right_of])
+    left = default_left(loop) if right_of is None else right_of
+    zeros, poles, cancelled = unpaired(loop.zeros, loop.poles)
+    upper = _isolated(loop, loop_gain, left, zeros, poles)
+    upper = upper[(upper.real > left) & (upper.imag >= 0.0)]
+    return _ordered(np.concatenate([upper, np.conj(upper[upper.imag > 0.0]), cancelled[cancelled.real > left]]))
+
+
+def default_left(loop: OpenLoop) -> float:
+    """-3 over the longest delay, or left of every open-loop root where that is farther, at most -30 over the delay."""
+    longest = loop.dead_time + (loop.hold or 0.0)
+    farthest = max((-float(root.real) for root in (*loop.poles, *loop.zeros)), default=0.0)
+    return -min(max(3.0 / longest, 1.2 * farthest), 30.0 / longest)
+
+
+def _polynomial_roots(loop: OpenLoop, loop_gain: float) -> ComplexArray:
+    """Roots of D + K N, each polished by Newton's method where that brings it nearer."""
+    closed = np.polyadd(loop.denominator, loop_gain * np.asarray(loop.numerator))
+    roots = np.asarray(np.roots(closed), dtype=np.complex128)
+    slope = np.polyder(closed)
+    for _ in range(2):
+        with np.errstate(divide="ignore", invalid="ignore"):
+            trial = roots - np.polyval(closed, roots) / np.polyval(slope, roots)
+        better = np.abs(np.polyval(closed, trial)) < np.abs(np.polyval(closed, roots))
+        roots = np.where(better, trial, roots)
+    return roots
+
+
+def _ordered(roots: ComplexArray) -> ComplexArray:
+    return roots[np.lexsort((-roots.imag, np.abs(roots.imag), -roots.real.round(12)))]
+
+
+def _isolated(loop: OpenLoop, loop_gain: float, left: float, zeros: ComplexArray, poles: ComplexArray) -> ComplexArray:
+    """Roots with imaginary part >= 0 right of `left`, and some beyond the edges."""
+    centre, half = _cover(loop, loop_gain, left)
+    found: list[ComplexArray] = []
+    clustered: list[ComplexArray] = []
+    for level in range(_LEVELS):
+        possible, certain = _judge(loop, loop_gain, centre, half, zeros, poles)
+        found.append(_newton(loop, loop_gain, centre[certain]))
+        split = possible & ~certain
+        small = split & (np.abs(half) < _SMALLEST * np.abs(centre))
+        clustered.append(centre[small])
+        split &= ~small
+        if not split.any():
+            multiple = _multiple(loop, loop_gain, np.concatenate(clustered))
+            return np.concatenate([_distinct(np.concatenate(found)), multiple])
+        centre, half = _quartered(centre[split], half[split])
+        if centre.size > _MOST_BOXES or level == _LEVELS - 1:
+            break
+    raise LocusError(
+        "the closed-loop roots could not be separated",
+        where=f"roots at K = {loop_gain:g}, right of {left:g} 1/s",
+        found=f"{centre.size} boxes left",
+        advice="ask for a region farther to the right",
+    )
+
+
+def _cover(loop: OpenLoop, loop_gain: float, left: float) -> tuple[ComplexArray, ComplexArray]:
+    """Boxes (centre, half width + j half height) over the part of the upper half-plane that can hold roots."""
+    radius = farthest_root(loop, loop_gain, left)
+    width = radius - left
+    longest = loop.dead_time + (loop.hold or 0.0)
+    side = min(width, 2.0 / longest)
+    columns, rows = math.ceil(width / side), math.ceil(radius / side)
+    while columns * rows > 20_000:
+        side *= 2.0
+        columns, rows = math.ceil(width / side), math.ceil(radius / side)
+    x = left + side * (np.arange(columns) + 0.5)
+    y = side * (np.arange(rows) + 0.5)
+    centre = (x[:, None] + 1j * y[None, :]).ravel()
+    reach = np.hypot(np.maximum(np.abs(centre.real) - side / 2, 0.0), centre.imag - side / 2)
+    centre = centre[reach <= radius]
+    return centre, np.full(centre.shape, 0.5 * side * (1.0 + 1.0j))
+
+
+def farthest_root(loop: OpenLoop, loop_gain: float, left: float) -> float:
+    """A radius (1/s) beyond which |K G_L| < 1 right of `left`, for a loop with delay.
+
+    Raises
+    ------
+    LocusError
+        There is none: infinitely many roots lie in the region.
+    """
+    zeros, poles, _ = unpaired(loop.zeros, loop.poles)
+    largest = float(np.max(np.abs(np.concatenate([zeros, poles, [1e-12]]))))
+    longest = loop.dead_time + (loop.hold or 0.0)
+    radius = 2.0 * largest + 1.0 / longest
+    stretch = math.exp(max(-left, 0.0) * loop.dead_time)
+    held = 1.0 if loop.hold is None else 1.0 + math.exp(max(-left, 0.0) * loop.hold)
+    for _ in range(200):
+        size = loop_gain * abs(loop.leading) * stretch
+        size *= float(np.prod(radius + np.abs(zeros)) / np.prod(radius - np.abs(poles)))
+        size *= 1.0 if loop.hold is None else held / (radius * loop.hold)
+        if size < 1.0:
+            return radius
+        radius *= 1.3
+    raise LocusError(
+        "infinitely many closed-loop roots lie in the region",
+        where=f"roots at K = {loop_gain:g}, right of {left:g} 1/s",
+        advice="ask for a region farther to the right, or give the loop more poles than zeros",
+    )
+
+
+def _judge(
+    loop: OpenLoop, loop_gain: float, centre: ComplexArray, half: ComplexArray, zeros: ComplexArray, poles: ComplexArray
+) -> tuple[np.ndarray, np.ndarray]:
+    """Which boxes may hold a root, and in which Newton's method has exactly one root within twice their radius."""
+    radius = np.abs(half)
+    roots = np.concatenate([zeros, poles])
+    sign = np.concatenate([np.ones(zeros.size), -np.ones(poles.size)])
+    distance = np.abs(centre[:, None] - roots)
+    with np.errstate(divide="ignore", invalid="ignore", over="ignore"):
+        log_gain = np.log(loop_gain * np.abs(loop.leading)) - loop.dead_time * centre.real
+        near, far = np.maximum(distance - radius[:, None], 0.0), distance + radius[:, None]
+        least = log_gain + np.log(np.where(sign > 0, near, 1.0 / far)).sum(axis=1) - loop.dead_time * radius
+        most = log_gain + np.log(np.where(sign > 0, far, 1.0 / near)).sum(axis=1) + loop.dead_time * radius
+        swing = np.arcsin(np.minimum(radius[:, None] / distance, 1.0)).sum(axis=1) + loop.dead_time * radius
+        twice = 2.0 * radius[:, None]
+        wobble = np.where(distance > twice, 1.0 / (distance * np.maximum(distance - twice, 1e-300)), np.inf).sum(axis=1)
+    swing = np.where(np.all(distance > radius[:, None], axis=1), swing, np.inf)
+    if loop.hold is not None:
+        spread, lowest, highest, bent = _held(loop.hold, centre, radius)
+        least, most, swing, wobble = least + lowest, most + highest, swing + spread, wobble + bent
+    with np.errstate(divide="ignore", invalid="ignore", over="ignore"):
+        misfit = np.log(-loop_gain * loop.at(centre))
+        slope = loop.log_derivative(centre)
+        possible = (least <= 0.0) & (most >= 0.0) & (np.abs(misfit.imag) <= swing)
+        reach = 2.0 * radius
+        single = reach * (np.abs(slope) + wobble * reach) < np.pi  # the angle reaches 180 deg at most once, not mod 360
+        certain = possible & single & (np.abs(misfit / slope) + reach * (wobble * reach) / np.abs(slope) <= reach)
+    return possible & ~(np.isnan(least) | np.isnan(most)) | np.isnan(misfit), certain
+
+
+def _held(
+    hold: float, centre: ComplexArray, radius: FloatArray
+) -> tuple[FloatArray, FloatArray, FloatArray, FloatArray]:
+    """Angle spread, least and largest ln|hold| and the slope bound per radius (s^2) on discs around the centres."""
+    x, r = centre * hold, radius * hold
+    nearest = np.rint(x.imag / _TURN)
+    bent = {reach: np.full(x.shape, 0.04) for reach in (1, 2)}
+    for step in range(-2, 3):
+        index = nearest + step
+        distance = np.abs(x - 1j * _TURN * index)
+        for reach in (1, 2):
+            room = np.where(index == 0.0, np.inf, np.maximum(distance - reach * r, 1e-150))
+            bent[reach] = bent[reach] + 1.0 / room**2
+    slope = hold_log_derivative(x)
+    loose = (np.abs(slope) + bent[1] * r) * r
+    size = np.abs(hold_factor(x))
+    # |h'| <= max(1, exp(-Re x)) / 2 on the disc: h(x) = integral of exp(-x u) over u in (0, 1)
+    change = 0.5 * np.maximum(1.0, np.exp(-(x.real - r))) * r
+    with np.errstate(divide="ignore"):
+        lowest = np.log(np.maximum(size - change, 0.0))
+        highest = np.log(size + change)
+    small = r < 0.5
+    return (
+        np.where(small & (loose < np.pi), loose, np.inf),
+        lowest,
+        highest,
+        np.where(2.0 * r < np.pi, hold * hold * bent[2], np.inf),
+    )
+
+
+def _quartered(centre: ComplexArray, half: ComplexArray) -> tuple[ComplexArray, ComplexArray]:
+    quarter = 0.5 * half
+    corners = [quarter.real * a + 1j * quarter.imag * b for a in (-1, 1) for b in (-1, 1)]
+    return np.concatenate([centre + c for c in corners]), np.tile(quarter, 4)
+
+
+def _newton(loop: OpenLoop, loop_gain: float, s: ComplexArray) -> ComplexArray:
+    """Roots from certified starts, polished; those within rounding of the real axis put on it."""
+    if s.size == 0:
+        return s
+    for _ in range(30):
+        step = np.log(-loop_gain * loop.at(s)) / loop.log_derivative(s)
+        s = s - step
+        if np.all(np.abs(step) <= 4e-16 * np.abs(s)):
+            break
+    return np.where(np.abs(s.imag) <= 1e-13 * np.abs(s), s.real + 0j, s)
+
+
+def _multiple(loop: OpenLoop, loop_gain: float, centre: ComplexArray) -> ComplexArray:
+    """What is left between the smallest boxes: clusters, each counted by the argument principle around it."""
+    clusters: list[complex] = []
+    for point in centre:
+        if not any(abs(point - c) <= 1e-6 * abs(point) for c in clusters):
+            clusters.append(complex(point))
+    found: list[complex] = []
+    for cluster in clusters:
+        circle = cluster + 1e-5 * abs(cluster) * np.exp(2j * np.pi * np.arange(65) / 64)
+        turns = np.diff(np.unwrap(np.angle(1.0 + loop_gain * loop.at(circle)))).sum() / _TURN
+        middle = cluster.real + 0j if abs(cluster.imag) < 1e-6 * abs(cluster) else cluster
+        found += [middle] * round(float(turns))
+    return np.array(found, complex)
+
+
+def _distinct(roots: ComplexArray) -> ComplexArray:
+    """Each certified root once: neighbouring boxes find the same one to rounding."""
+    kept: list[complex] = []
+    for root in roots[np.argsort(roots.imag)]:
+        if not any(abs(root - other) <= 1e-11 * abs(root) for other in kept):
+            kept.append(complex(root))
+    return np.array(kept, complex)
