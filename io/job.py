@@ -10,7 +10,7 @@ from ..design.closing.compared import Compared
 from ..design.closing.verdict import compare
 from ..design.design import design_gains
 from ..design.designed import Design
-from ..ident.errors import RecordError, RequestError
+from ..ident.errors import RecordError
 from ..ident.fitted import Fit
 from ..ident.identify import identify
 from .cautions import cautions_for
@@ -87,14 +87,6 @@ def _read_all(rig: Rig, progress: Progress) -> tuple[Record, ...]:
 
 def _identify(rig: Rig, records: Sequence[Record], progress: Progress) -> Fit:
     fitted = [record.run for record in records if record.spec.use == "fit"]
-    if not fitted:
-        raise RequestError(
-            "no run is there to be fitted",
-            where=f"{rig.file.name}, [[runs]]",
-            found=", ".join(spec.use for spec in rig.runs) or "no runs",
-            expected='at least one run with use = "fit"',
-            advice="mark the run that holds the step or the sweep so",
-        )
     progress("fitting the plant")
     return identify(
         fitted,
@@ -167,5 +159,5 @@ def _cautions(
     said = [f"{shown}: {each.text}" for shown, each in findings if each.refuses == "no"]
     left_out = [each for each in closing if each.verdict == "not comparable"]
     aside = [f"held-out {each.label} was not comparable: {each.why}" for each in left_out]
-    usual = cautions_for(rig, design)
+    usual = cautions_for(rig, design, fit)
     return tuple(dict.fromkeys([*said, *fit.cautions, *design.cautions, *aside, *usual]))
