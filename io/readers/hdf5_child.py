@@ -1,0 +1,324 @@
+"""The child process that opens HDF5 files: `python -m gainwright.io.readers.hdf5_child`, a request on its input.
+
+It imports numpy and h5py only. The answer is one line of JSON, then the float64 bytes of each array.
+External links, raw external storage and virtual datasets over other files are refused: they would read any path of the
+machine, and a missing source would read as zeros.
+"""
+
+import contextlib
+import json
+import sys
+from typing import Any
+
+Answer = tuple[dict[str, Any], list[bytes]]
+MOST_OBJECTS = 20000
+MOST_COLUMNS = 256
+MOST_LINKS = 16
+
+
+class Refused(Exception):  # noqa: N818 - crosses the process as data, not as an error
+    """What the parent is to say."""
+
+    def __init__(self, what: str, **parts: Any) -> None:
+        super().__init__(what)
+        self.parts = {"what": what, **parts}
+
+
+def main() -> None:
+    """Answer one request."""
+    request = json.load(sys.stdin)
+    _bound(int(request["memory"]), int(request["seconds"]))
+    try:
+        header, blobs = _answer(request)
+    except Refused as refused:
+        header, blobs = {"refused": refused.parts}, []
+    except MemoryError:
+        header, blobs = {"refused": {"what": "the log needs more memory than is allowed"}}, []
+    except (OSError, RuntimeError, KeyError, ValueError, TypeError) as problem:
+        header, blobs = {"refused": {"what": "the HDF5 file can't be read", "found": str(problem)[:300]}}, []
+    output = sys.stdout.buffer
+    output.write(json.dumps(header).encode() + b"\n")
+    for blob in blobs:
+        output.write(blob)
+    output.flush()
+
+
+def _bound(memory: int, seconds: int) -> None:
+    """Bound this process, where the system can."""
+    with contextlib.suppress(ImportError, ValueError, OSError):
+        import resource
+
+        resource.setrlimit(resource.RLIMIT_AS, (memory, memory))
+        resource.setrlimit(resource.RLIMIT_CPU, (seconds, seconds + 1))
+
+
+def _answer(request: dict[str, Any]) -> Answer:
+    tree = _Tree(_open(request["file"]), request["group"])
+    if request["sources"] is None:
+        return {"channels": tree.channels()}, []
+    parts = [tree.read(source, int(request["memory"]) // 16) for source in request["sources"]]
+    return {"channels": [head for head, _ in parts]}, [blob for _, blobs in parts for blob in blobs]
+
+
+def _open(path: str) -> Any:
+    """Open for reading without a lock: a lock held here can make the writer lose its file."""
+    import h5py
+
+    try:
+        return h5py.File(path, "r", locking=False)
+    except OSError as problem:
+        with contextlib.suppress(OSError):
+            return h5py.File(path, "r", locking=False, swmr=True)
+        advice = "copy the file again once it is closed"
+        if "h5clear" in str(problem) or "already open" in str(problem):
+            advice = "the writer did not close it: mend a copy with h5clear, never the log itself"
+        raise Refused("the HDF5 file can't be opened", found=str(problem)[:300], advice=advice) from problem
+
+
+class _Tree:
+    """One open file, seen from a group."""
+
+    def __init__(self, file: Any, group: str | None) -> None:
+        self._file = file
+        self._base = "/" + (group or "").strip("/")
+        if not isinstance(self.follow(self._base), type(file["/"])):
+            raise Refused("this group is a dataset", found=self._base, expected="a group")
+
+    def follow(self, path: str, links: int = 0) -> Any:
+        """The object at an absolute path, every link on the way looked at before it is taken."""
+        import h5py
+
+        if links > MOST_LINKS:
+            raise Refused("links go round in circles", found=path)
+        here: Any = self._file["/"]
+        parts = [part for part in path.split("/") if part]
+        for number, part in enumerate(parts):
+            link = here.get(part, getlink=True) if isinstance(here, h5py.Group) else None
+            if link is None:
+                raise Refused("", missing=path)
+            if isinstance(link, h5py.ExternalLink):
+                raise Refused(
+                    "this log links to another file, which is not followed",
+                    found=f"{path} -> {link.filename}",
+                    expected="the samples in the file itself",
+                    advice="copy them into one file",
+                )
+            if isinstance(link, h5py.SoftLink):
+                base = "" if link.path.startswith("/") else here.name.rstrip("/") + "/"
+                return self.follow("/".join([base + link.path, *parts[number + 1 :]]), links + 1)
+            here = here[part]
+        return here
+
+    def channels(self) -> list[dict[str, Any]]:
+        """Everything that can be named as a source, links left out."""
+        found: list[dict[str, Any]] = []
+        seen = 0
+
+        def look(name: str, item: Any) -> bool | None:
+            nonlocal seen
+            seen += 1
+            found.extend(self._listed(item))
+            return True if seen > MOST_OBJECTS else None
+
+        self.follow(self._base).visititems(look)
+        return found
+
+    def _listed(self, item: Any) -> list[dict[str, Any]]:
+        import h5py
+
+        from . import nexus
+
+        if not isinstance(item, h5py.Dataset):
+            return []
+        names = [(self._shown(item.name), item.name)]
+        if nexus.clock_of(item, self.follow) is not None:
+            group = item.parent.name
+            names.append((self._shown(group), group))
+        if item.dtype.names is not None and item.ndim == 1:
+            return [
+                {
+                    "name": f"{names[0][0]}/{field}",
+                    "aliases": [f"{item.name}/{field}", f"{names[0][0]}:{field}"],
+                    "unit": _unit(item, field),
+                    "samples": item.shape[0],
+                }
+                for field in item.dtype.names
+            ]
+        if item.dtype.kind not in "fiubSO" or item.ndim == 0 or item.size < 2:
+            return []
+        if item.ndim == 2 and min(item.shape) > 1 and item.shape[1] <= MOST_COLUMNS:
+            return [
+                {
+                    "name": f"{names[0][0]}/{column}",
+                    "aliases": [f"{item.name}/{column}"],
+                    "unit": _unit(item, None),
+                    "samples": item.shape[0],
+                }
+                for column in range(1, item.shape[1] + 1)
+            ]
+        if max(item.shape) != item.size:
+            return []
+        aliases = [alias for name in names for alias in name][1:]
+        return [{"name": names[0][0], "aliases": aliases, "unit": _unit(item, None), "samples": item.size}]
+
+    def _shown(self, path: str) -> str:
+        base = self._base.rstrip("/") + "/"
+        return path.removeprefix(base) if self._base != "/" else path
+
+    def read(self, source: str, most: int) -> tuple[dict[str, Any], list[bytes]]:
+        """One channel: its head, and the bytes of its values and of its own clock."""
+        from . import nexus
+
+        dataset, field = self._find(source)
+        values, texts = _values(dataset, field, most)
+        head: dict[str, Any] = {"samples": len(values), "unit": _unit(dataset, field), "texts": texts, "clock": 0}
+        blobs = [(values * nexus.clock_scale(dataset)).tobytes()]
+        clock = nexus.clock_of(dataset, self.follow)
+        if clock is not None:
+            stamps, _ = _values(clock, None, most)
+            head.update(clock=len(stamps), clock_unit=_unit(clock, None))
+            blobs.append((stamps * nexus.clock_scale(clock)).tobytes())
+        return head, blobs
+
+    def _find(self, source: str) -> tuple[Any, str | int | None]:
+        """The dataset, and the field or column of it, that a source names."""
+        path = (
+            source if source.startswith(self._base) and source.startswith("/") else f"{self._base.rstrip('/')}/{source}"
+        )
+        try:
+            return self._dataset(path), None
+        except Refused as refused:
+            if "missing" not in refused.parts:
+                raise
+        table, _, column = path.replace(":", "/").rpartition("/")
+        try:
+            dataset = self._dataset(table)
+        except Refused as refused:
+            parts = {**refused.parts, "missing": source} if "missing" in refused.parts else refused.parts
+            raise Refused(**parts) from refused
+        if dataset.dtype.names is not None and column in dataset.dtype.names:
+            return dataset, column
+        numbered = dataset.dtype.names is None and column.isdigit() and dataset.ndim == 2
+        if numbered and 1 <= int(column) <= dataset.shape[1]:
+            return dataset, int(column) - 1
+        raise Refused("", missing=source)
+
+    def _dataset(self, path: str) -> Any:
+        import h5py
+
+        from . import nexus
+
+        item = self.follow(path)
+        if isinstance(item, h5py.Group) and nexus.is_log(item):
+            item = nexus.value_of(item, self.follow)
+        if not isinstance(item, h5py.Dataset):
+            raise Refused("", missing=path)
+        return item
+
+
+def _values(dataset: Any, field: str | int | None, most: int) -> tuple[Any, list[str] | None]:
+    """(n,) float64 array, or the texts of stamps with an empty array."""
+    import numpy as np
+
+    _require_own_storage(dataset)
+    width = dataset.dtype.itemsize * dataset.size
+    if max(width, 8 * dataset.size) > most:
+        raise Refused(
+            "the log is too large to be read at once",
+            found=f"{dataset.name}: {width / 1e9:.1f} GB",
+            expected=f"at most {most / 1e9:.1f} GB",
+        )
+    if isinstance(field, str):
+        raw = dataset.fields(field)[...]
+    elif field is not None:
+        raw = dataset[:, field]
+    else:
+        raw = dataset[...]
+    if raw.ndim != 1 and raw.size != max(raw.shape, default=0):
+        raise Refused(
+            "this dataset is not one channel",
+            found=f"{dataset.name} with shape {raw.shape}",
+            expected="one number a sample",
+            advice='name a column, such as "data/1"',
+        )
+    raw = raw.reshape(-1)
+    if raw.dtype.kind in "SO":
+        return np.empty(0), [_text(item) for item in raw]
+    if raw.dtype.kind not in "fiub":
+        raise Refused("this dataset holds no numbers", found=f"{dataset.name} of {raw.dtype}", expected="numbers")
+    if raw.dtype.kind in "iu" and raw.size and int(np.abs(raw.astype(object)[[0, -1]]).max()) > 2**53:
+        raw = raw - raw[0]  # only a stamp in ns is that large; float64 would round it
+    return raw.astype(np.float64), None
+
+
+def _require_own_storage(dataset: Any) -> None:
+    import h5py
+
+    if dataset.external:
+        raise Refused(
+            "this dataset keeps its samples in another file, which is not followed",
+            found=dataset.name,
+            expected="the samples in the file itself",
+        )
+    if dataset.is_virtual:
+        others = {source.file_name for source in dataset.virtual_sources()} - {"."}
+        if others:
+            raise Refused(
+                "this dataset is put together from other files, which are not followed",
+                found=f"{dataset.name} <- {', '.join(sorted(others))}",
+                expected="the samples in the file itself",
+                advice="copy them into one file",
+            )
+    filters = dataset.id.get_create_plist()
+    for number in range(filters.get_nfilters()):
+        code, _, _, name = filters.get_filter(number)
+        if not h5py.h5z.filter_avail(code):
+            raise Refused(
+                "a compression filter is missing",
+                found=f"{dataset.name} needs {_text(name)} ({code})",
+                advice="write the log again without it, or with gzip",
+            )
+
+
+def _unit(dataset: Any, field: str | int | None) -> str | None:
+    """The unit that a dataset states, in any of the odd forms that loggers write."""
+    names = ["units", "unit", "Units", "Unit", "UNITS", "UNIT"]
+    if isinstance(field, str):
+        names = [f"{field}{joint}{name}" for name in names[:2] for joint in ("_", ".", " ", ":")] + names
+    for name in names:
+        if name in dataset.attrs:
+            return _attribute(dataset, name, field)
+    return None
+
+
+def _attribute(dataset: Any, name: str, field: str | int | None) -> str | None:
+    try:
+        value = dataset.attrs[name]
+    except (OSError, UnicodeDecodeError, ValueError, TypeError):
+        return None
+    items = list(value.reshape(-1)) if hasattr(value, "reshape") else [value]
+    place = 0
+    if len(items) > 1 and isinstance(field, str):
+        place = list(dataset.dtype.names).index(field)
+    elif len(items) > 1 and isinstance(field, int):
+        place = field
+    if place >= len(items):
+        return None
+    return _text(items[place]).strip("\x00 \t\n") or None
+
+
+def _text(item: Any) -> str:
+    if isinstance(item, bytes):
+        try:
+            return item.decode("utf-8")
+        except UnicodeDecodeError:
+            return item.decode("latin-1")
+    return str(item).encode("utf-8", "surrogateescape").decode("latin-1" if _has_surrogate(str(item)) else "utf-8")
+
+
+def _has_surrogate(text: str) -> bool:
+    return any("\ud800" <= sign <= "\udfff" for sign in text)
+
+
+if __name__ == "__main__":
+    main()

@@ -1,0 +1,194 @@
+"""Read a rig file: shape first, then runs and units, then every quantity in the units of the signals."""
+
+import hashlib
+import re
+import tomllib
+from pathlib import Path
+from typing import Any
+
+from ...ident.errors import RequestError
+from .messages import Problems, shape_problems
+from .quantities import Quantities
+from .rig import LogDialect, Rig
+from .runs import build_runs, build_signals, find_files, refuse_not_yet, signals_of
+from .schema import Log, OperatingPoint, RigFile
+from .signal_units import rig_units
+from .wishes import Wishes
+
+_SEPARATORS = {"comma": ",", "semicolon": ";", "tab": "\t", "space": " ", "pipe": "|"}
+
+
+def load_rig(path: Path) -> Rig:
+    """Read and check a rig file; logs are opened only to learn the units that the rig file leaves to them.
+
+    Parameters
+    ----------
+    path : Path
+        Of the rig file. Its name is never looked at.
+
+    Returns
+    -------
+    Rig
+        Every number in the units of the logged signals and in seconds.
+
+    Raises
+    ------
+    RequestError
+        For anything wrong in the rig file: file, key, found, expected and the nearest right word; all that can be said
+        at once is said at once.
+    RecordError
+        When a log has to be opened to learn its units and can't be read.
+    """
+    content = _bytes(path)
+    shape = _shape(path, _table(path, content))
+    _refuse_not_yet(path, shape)
+    folder = path.resolve().parent
+    problems = Problems(str(path))
+    files = find_files(shape.runs, folder, problems)
+    if not any(run.use == "fit" for run in shape.runs):
+        problems.add("runs", "no run is there to be fitted", f"{len(shape.runs)} runs", 'a run with use = "fit"')
+    dialect = _dialect(shape.log, problems)
+    problems.raise_any()
+    units = rig_units(shape, files, dialect, problems)
+    problems.raise_any()
+    return _values(path, content, shape, files, dialect, units)
+
+
+def _values(
+    path: Path, content: bytes, shape: RigFile, files: list[list[Path]], dialect: LogDialect, units: dict[str, str]
+) -> Rig:
+    folder = path.resolve().parent
+    problems = Problems(str(path))
+    wishes = Wishes(problems, units["command"], units["response"])
+    signals = build_signals("signals", signals_of(shape.signals), units, Quantities(problems), problems)
+    runs = build_runs(shape.runs, files, folder, shape.signals, units, problems)
+    limits = wishes.limits(shape.limits)
+    requirements = wishes.requirements(shape.requirements, limits)
+    setting = wishes.setting(shape.controller)
+    operating = _operating_point(shape.operating_point, units, problems)
+    problems.raise_any()
+    return Rig(
+        name=shape.rig.name,
+        file=path.resolve(),
+        sha256=hashlib.sha256(content).hexdigest(),
+        command_unit=units["command"],
+        response_unit=units["response"],
+        signals=signals,
+        runs=runs,
+        dialect=dialect,
+        setting=setting,
+        requirements=requirements,
+        limits=limits,
+        operating_command=operating[0],
+        operating_response=operating[1],
+        guessed=tuple(_guessed(shape)),
+    )
+
+
+def _bytes(path: Path) -> bytes:
+    try:
+        return path.read_bytes()
+    except OSError as problem:
+        raise RequestError(
+            "the rig file can't be read",
+            where=str(path),
+            found=problem.strerror or str(problem),
+            advice="give the path of a rig file (TOML)",
+        ) from problem
+
+
+def _table(path: Path, content: bytes) -> dict[str, Any]:
+    try:
+        return tomllib.loads(content.decode("utf-8-sig").replace("\r\n", "\n"))
+    except UnicodeDecodeError as problem:
+        line = content[: problem.start].count(b"\n") + 1
+        raise RequestError(
+            "the rig file is not UTF-8",
+            where=f"{path}, line {line}",
+            found=repr(content[problem.start : problem.end]),
+            expected="text in UTF-8",
+            advice="save it as UTF-8",
+        ) from problem
+    except tomllib.TOMLDecodeError as problem:
+        place = re.search(r"\(at line (\d+), column (\d+)\)", str(problem))
+        where = f"{path}, line {place[1]}, column {place[2]}" if place else f"{path}, at its end"
+        raise RequestError(
+            "the rig file is not TOML",
+            where=where,
+            found=re.sub(r" \(at .*\)", "", str(problem)),
+            expected='lines such as key = "value"',
+        ) from problem
+
+
+def _shape(path: Path, table: dict[str, Any]) -> RigFile:
+    from pydantic import ValidationError
+
+    problems = Problems(str(path))
+    try:
+        return RigFile.model_validate(table)
+    except ValidationError as problem:
+        problems.extend(shape_problems(problem.errors(), RigFile))
+        problems.raise_any()
+        raise
+
+
+def _refuse_not_yet(path: Path, shape: RigFile) -> None:
+    if shape.plant is not None:
+        raise RequestError(
+            "a plant that is given instead of fitted is not taken yet",
+            where=f"{path}: plant",
+            found="[plant]",
+            expected='[[runs]] with use = "fit"',
+            advice="give logs of the rig",
+        )
+    for number, run in enumerate(shape.runs, 1):
+        try:
+            refuse_not_yet(number, run)
+        except RequestError as problem:
+            raise RequestError(
+                problem.what,
+                where=f"{path}: {problem.where}",
+                found=problem.found,
+                expected=problem.expected,
+                advice=problem.advice,
+            ) from problem
+
+
+def _dialect(part: Log, problems: Problems) -> LogDialect:
+    separator = _SEPARATORS.get(part.separator, part.separator) if part.separator is not None else None
+    if separator is not None and len(separator) != 1:
+        problems.add("log.separator", "the separator is one sign", f'"{separator}"', '";", ",", "\\t", " " or "|"')
+    if separator is not None and separator == part.decimal:
+        problems.add("log.decimal", "separator and decimal sign are the same", f'"{separator}"', "two different signs")
+    if part.encoding is not None:
+        try:
+            "".encode(part.encoding)
+        except LookupError:
+            problems.add("log.encoding", "unknown encoding", f'"{part.encoding}"', '"utf-8", "utf-16" or "cp1252"')
+    return LogDialect(separator, part.decimal, part.encoding, part.header_row, part.first_row, tuple(part.not_a_number))
+
+
+def _operating_point(
+    part: OperatingPoint, units: dict[str, str], problems: Problems
+) -> tuple[float | None, float | None]:
+    quantities = Quantities(problems)
+    command = response = None
+    if part.command is not None:
+        command = quantities.reading("operating_point.command", part.command, units["command"])
+    if part.response is not None:
+        response = quantities.reading("operating_point.response", part.response, units["response"])
+    return command, response
+
+
+def _guessed(part: Any, key: str = "") -> list[str]:
+    """Keys of the tables that are marked `guessed = true`."""
+    found = [key or "the whole file"] if getattr(part, "guessed", False) else []
+    for name in getattr(part, "model_fields_set", ()):
+        value = getattr(part, name)
+        inner = f"{key}.{name}" if key else name
+        if isinstance(value, list):
+            for number, item in enumerate(value, 1):
+                found += _guessed(item, f"{inner}[{number}]")
+        else:
+            found += _guessed(value, inner)
+    return sorted(found)
