@@ -6,6 +6,7 @@ from collections.abc import Sequence
 from typing import Any
 
 from ..design.closing.compared import Compared
+from ..design.compensator import over_second, per_response
 from ..design.designed import Design, GainInterval, Judged, LimitJudged, Selection
 from ..design.gains import Gains
 from ..ident.fitted import Fit, Parameter
@@ -14,7 +15,6 @@ from .forms_as_printed import forms_as_printed
 from .outcome import Outcome
 from .provenance import window_of
 from .record import Record
-from .unit_labels import gain_unit
 
 SCHEMA = "gainwright.gain-sheet/1"
 NO_LADDER = "no gain ladder was made: the first run on the rig starts at the responsible person's own discretion"
@@ -157,7 +157,7 @@ def _plant(outcome: Outcome) -> dict[str, Any] | None:
 def _parameter(parameter: Parameter, fit: Fit, command_unit: str, response_unit: str) -> dict[str, Any]:
     unit = parameter.unit
     if parameter.name == "gain":
-        unit = gain_unit(response_unit, command_unit, per_second=fit.plant.integrators)
+        unit = (over_second if fit.plant.integrators else per_response)(response_unit, command_unit)
     return {
         "value": float(parameter.value),
         "unit": unit,
