@@ -54,6 +54,18 @@ class PlantVerdicts:
         """Share of the plants that meet everything together."""
         return float(np.mean(self.meets_all))
 
+    def take(self, chosen: slice) -> "PlantVerdicts":
+        """The same for some of the plants."""
+        return replace(
+            self,
+            stable=self.stable[chosen],
+            meets_all=self.meets_all[chosen],
+            limits_kept=self.limits_kept[chosen],
+            values={name: value[chosen] for name, value in self.values.items()},
+            extremes={name: value[chosen] for name, value in self.extremes.items()},
+            clamped=self.clamped[chosen],
+        )
+
     def met(self, item: Requirement) -> NDArray[np.bool_]:
         """(p,) whether this item holds by itself."""
         value = self.values.get(item.name, np.full(self.stable.size, np.nan))
@@ -137,11 +149,3 @@ def _verdicts(values: Values, situation: Situation, horizon: float) -> PlantVerd
         values.clamped,
         horizon,
     )
-
-
-def floors_dropped(verdicts: PlantVerdicts) -> PlantVerdicts:
-    """The same verdicts with the stated items only."""
-    kept = verdicts.items[: verdicts.stated]
-    together = [verdicts.met(item) for item in kept]
-    meets_all = np.all(together, axis=0) if together else verdicts.stable
-    return replace(verdicts, items=kept, meets_all=np.asarray(verdicts.stable & meets_all))

@@ -73,7 +73,7 @@ class Values:
 
 
 def bench_of(
-    plausible: Plausible, situation: Situation, horizon: float, *, stand_in: bool = False, most: int = 20_000
+    plausible: Plausible, situation: Situation, horizon: float, *, stand_in: bool = False, most: int = 20_000, grid: int = 160
 ) -> Bench:
     """Discretise the plants for a horizon in s; `stand_in` allows a coarser interval, for the search only."""
     setting = situation.setting
@@ -84,7 +84,7 @@ def bench_of(
         longest = setting.update_interval + 2.0 * least + 0.002 * horizon
         running = _bank(plausible, situation, min(horizon / 400, longest), 4)
     samples = int(min(np.ceil(horizon / running.interval) + 1, most))
-    return Bench(plausible, situation, exact, spectra_of(exact), running, samples, _coarse(plausible, situation, exact))
+    return Bench(plausible, situation, exact, spectra_of(exact, grid), running, samples, _coarse(plausible, situation, exact))
 
 
 def _bank(plausible: Plausible, situation: Situation, interval: float, points: int) -> Bank:

@@ -84,7 +84,7 @@ def starting_poles(bank: Bank, which: IndexArray, law: LawColumns) -> ComplexArr
     """Eigenvalues of the closed loop around `bank`, as ln z / T; (q, c)."""
     matrices = np.array([_closed(bank, int(which[i]), law, i, int(bank.lag.max())) for i in range(which.size)])
     z = np.linalg.eigvals(matrices)
-    with np.errstate(divide="ignore"):
+    with np.errstate(divide="ignore", invalid="ignore"):
         s = np.log(z.astype(np.complex128)) / bank.interval
     return np.where(np.isfinite(s), s, -10.0 / bank.interval).T
 

@@ -1,0 +1,145 @@
+"""The search itself: structures in order, each from its coarse grid to its polished best."""
+
+from collections.abc import Callable
+from dataclasses import dataclass, replace
+
+import numpy as np
+
+from ...ident.fitted import Plausible
+from ...ident.plant import Plant
+from ...ident.run import FloatArray
+from ..designed import Tried
+from ..horizon import first_horizon
+from ..requirements import Requirement, StructureName
+from ..situation import STEP, Situation
+from ..values import Bench, bench_of
+from .candidates import Space, can_weight
+from .objective import Scores, spare_plants
+from .polish import Found, extremes, polish
+from .starts import coarse_search
+from .structures import Plan
+
+Progress = Callable[[str, float], None]
+
+PLANTS = 200
+ENOUGH = 0.05  # slack at which a simpler structure is taken as it is
+_BETTER = 0.03  # a richer structure must win by this when a simpler one is feasible
+_LEFT_OVER = 0.02  # of the step: offset of P and PD that passes without being asked for
+
+
+@dataclass(frozen=True, eq=False)
+class Search:
+    """What the search hands on.
+
+    Attributes
+    ----------
+    found : Found
+        The best of the chosen structure.
+    tried : tuple of Tried
+    bench : Bench
+        The plants it ran on, the fitted one first.
+    used : (q,) array of int
+        Which plausible plants those were.
+    """
+
+    found: Found
+    tried: tuple[Tried, ...]
+    bench: Bench
+    used: FloatArray
+
+
+def with_nominal(nominal: Plant, plausible: Plausible, situation: Situation) -> Plausible:
+    """The fitted plant in front; it takes the median friction."""
+    stiction = float(np.median(plausible.stiction)) if plausible.stiction.size else 0.0
+    return Plausible(
+        (nominal, *plausible.plants),
+        np.concatenate([[situation.operating_command], plausible.operating_command]),
+        np.concatenate([[stiction], plausible.stiction]),
+    )
+
+
+def search(nominal: Plant, plausible: Plausible, situation: Situation, plan: Plan, progress: Progress) -> Search:
+    """Search every structure of the plan until one has slack enough; keep the best."""
+    count = min(PLANTS, len(plausible.plants))
+    used = np.unique(np.linspace(0, len(plausible.plants) - 1, count).astype(int))
+    some = with_nominal(nominal, plausible.take(used.tolist()), situation)
+    horizon = first_horizon(nominal, situation)
+    bench = bench_of(some, situation, horizon, stand_in=True, grid=90)
+    best: Found | None = None
+    tried: list[Tried] = list(plan.skipped)
+    for i, structure in enumerate(plan.structures):
+        progress(f"searching zeros and gain of {structure}", i / len(plan.structures))
+        found = best_of(structure, nominal, _asking(bench, structure, nominal))
+        tried.append(tried_row(structure, found, bench))
+        if best is None or found.slack > max(best.slack, 0.0) + _BETTER or (best.slack < 0.0 and found.slack > best.slack):
+            best = found
+        if best.slack >= ENOUGH:
+            break
+    if best is None:
+        raise AssertionError("a plan holds at least one structure")
+    return Search(best, tuple(tried), bench, used)
+
+
+def best_of(structure: StructureName, nominal: Plant, bench: Bench) -> Found:
+    """The best law of one structure on the bench."""
+    sign = -1.0 if nominal.static_gain < 0.0 else 1.0
+    weighted = can_weight(structure) and bench.situation.step != 0.0 and bench.situation.asks(STEP)
+    space = Space(structure, sign, bench.exact.interval, weighted)
+    starts, _ = coarse_search(bench, space, extremes(bench)[:3], keep=4)
+    generations = 6 + 4 * space.size
+    return polish(bench, space, starts, rounds=3, generations=generations, seed=20 + space.size)
+
+
+def again(
+    search_: Search, nominal: Plant, plausible: Plausible, situation: Situation, failing: FloatArray, seed: int
+) -> tuple[Found, Bench]:
+    """Polish once more from the found point on more plants, the failing ones among them, with the very law."""
+    count = min(2 * PLANTS, len(plausible.plants))
+    index = np.linspace(0, len(plausible.plants) - 1, count).astype(int)
+    index = np.unique(np.concatenate([index, failing[:40]]))
+    stricter = replace(situation.requirements, confidence=min(situation.requirements.confidence + 0.012, 1.0))
+    tighter = replace(situation, requirements=stricter)
+    some = with_nominal(nominal, plausible.take(index.tolist()), tighter)
+    horizon = first_horizon(nominal, situation)
+    exact = horizon < 2500 * situation.setting.update_interval
+    bench = bench_of(some, tighter, horizon, stand_in=not exact, grid=90)
+    point = search_.found.point
+    space = search_.found.space
+    return polish(bench, space, point[None], rounds=2, generations=12, seed=seed, narrow=0.4), bench
+
+
+def _asking(bench: Bench, structure: str, nominal: Plant) -> Bench:
+    """P and PD must not leave an offset that nobody allowed."""
+    situation = bench.situation
+    free = situation.setting.structures is None and situation.requirements.find("steady_state_error") is None
+    if structure not in ("P", "PD", "lead", "lag") or not free or situation.step == 0.0:
+        return bench
+    hidden = Requirement("steady_state_error", _LEFT_OVER * abs(situation.step), "at_most")
+    return replace(bench, situation=replace(situation, floors=(*situation.floors, hidden)))
+
+
+def tried_row(structure: StructureName, found: Found, bench: Bench) -> Tried:
+    """One row for the report: slack, share, and the requirement that binds."""
+    share = float(found.scores.share_meeting()[0])
+    return Tried(structure, found.slack, share, binding(found.scores, bench))
+
+
+def item_slacks(scores: Scores, bench: Bench) -> dict[str, float]:
+    """Slack of each requirement by itself at the wished share, and of the limits on every plant."""
+    spare = spare_plants(scores.plant.shape[1], bench.situation.requirements.confidence)
+    items = bench.situation.items
+    found = {item.name: float(np.sort(scores.items[0, :, i])[spare]) for i, item in enumerate(items) if i < scores.items.shape[2]}
+    rest = dict(found)
+    if np.isfinite(scores.limits).any():
+        rest["limits of the response"] = float(scores.limits[0].min())
+    return {str(k): v for k, v in rest.items()}
+
+
+def binding(scores: Scores, bench: Bench) -> str:
+    """The name of the tightest requirement."""
+    slacks = item_slacks(scores, bench)
+    if scores.limits[0].min() <= -10.0:
+        return "stability"
+    return min(slacks, key=lambda name: slacks[name]) if slacks else "stability"
+
+

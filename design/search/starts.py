@@ -1,0 +1,88 @@
+"""Where the polish starts: zeros on a coarse grid, gains up to the first crossing of the axis on extreme plants."""
+
+import numpy as np
+
+from ...ident.run import FloatArray
+from ..discretise import law_columns
+from ..sampled.bank import IndexArray
+from ..sampled.frequency import margins_of
+from ..values import Bench
+from .candidates import Space
+from .objective import scores_of, wish
+
+_TINY = 1e-9  # gain at which every loop of this kind is still left of its first crossing
+
+
+def critical_gains(bench: Bench, space: Space, shapes: FloatArray, plants: IndexArray) -> FloatArray:
+    """(g,) natural logarithm of the least gain on these plants at which a pole meets the stability border.
+
+    It is the magnitude condition K = 1/|G_L| at the first crossing, on the sampled loop.
+    """
+    unit = np.column_stack([np.full(shapes.shape[0], np.log(_TINY) - _level(bench)), shapes])
+    gains = space.gains(unit).take(np.repeat(np.arange(shapes.shape[0]), plants.size))
+    law = law_columns(gains, bench.exact.interval)
+    upper = margins_of(bench.spectra, np.tile(plants, shapes.shape[0]), law, exact=False).upper
+    least = np.minimum(upper, 1e18).reshape(shapes.shape[0], plants.size).min(axis=1)
+    return np.log(least) + unit[:, 0]
+
+
+def _level(bench: Bench) -> float:
+    return float(np.log(np.abs(bench.exact.static_gain).max()))
+
+
+def pace(bench: Bench, plants: IndexArray) -> float:
+    """Angular frequency in rad/s at which the plant with its hold and dead time has turned by 180 degrees."""
+    rates = []
+    for i in plants:
+        phase = np.unwrap(np.angle(bench.spectra.plant[7:, i] * np.sign(bench.exact.static_gain[i])))
+        turned = np.flatnonzero(phase - phase[0] < -np.pi + (0.5 * np.pi) * min(bench.exact.integrators[i], 1))
+        rates.append(bench.spectra.frequency[turned[0] if turned.size else -1, i])
+    return float(np.exp(np.mean(np.log(rates))))
+
+
+def zero_grid(space: Space, bench: Bench, plants: IndexArray) -> FloatArray:
+    """(g, zeros [+ 1]) zeros and setpoint weight to try, spread round the pace of the plants."""
+    ultimate = pace(bench, plants)
+    slow = 1.0 / _longest_time(bench)
+    reset = np.geomspace(min(0.3 * slow, 0.02 * ultimate), max(1.5 * ultimate, 2.0 * slow), 12)
+    lead = np.geomspace(0.08 / ultimate, max(2.5 / ultimate, 0.5 / slow), 6)
+    grids = {
+        "PI": [reset],
+        "PD": [np.geomspace(0.05 / ultimate, max(4.0 / ultimate, 1.0 / slow), 10)],
+        "PID": [reset[::2], lead],
+        "lead": [np.geomspace(0.1 * ultimate, 2.0 * ultimate, 7), np.array([2.5, 5.0, 10.0])],
+        "lag": [np.geomspace(0.02 * ultimate, 0.5 * ultimate, 6), np.array([3.0, 10.0])],
+    }.get(space.structure, [])
+    mesh = np.meshgrid(*[np.log(g) for g in grids], indexing="ij") if grids else []
+    shapes = np.array([m.ravel() for m in mesh]).T if mesh else np.zeros((1, 0))
+    if not space.weighted:
+        return shapes
+    light = np.column_stack([shapes, np.full(shapes.shape[0], 1.0)])
+    return np.concatenate([light, np.column_stack([shapes, np.full(shapes.shape[0], 0.4)])])
+
+
+def _longest_time(bench: Bench) -> float:
+    poles = bench.exact.plants
+    sizes = [abs(p) for plant in poles[:5] for p in plant.poles if abs(p) > 0.0]
+    return 1.0 / min(sizes) if sizes else float(bench.exact.delay.max() + bench.exact.interval)
+
+
+def coarse_search(bench: Bench, space: Space, plants: IndexArray, keep: int) -> tuple[FloatArray, FloatArray]:
+    """The best (keep, size) points of the grid, apart from each other, and their wishes."""
+    shapes = zero_grid(space, bench, plants)
+    top = critical_gains(bench, space, shapes, plants)
+    count = 30 if space.zeros == 0 else 10
+    shares = np.log(np.geomspace(0.004 if space.zeros == 0 else 0.03, 0.85, count))
+    points = np.column_stack([(top[:, None] + shares).ravel(), np.repeat(shapes, count, axis=0)])
+    scores = scores_of(bench, plants, space.gains(points))
+    everyone = np.ones(plants.size, dtype=bool)
+    worth = wish(scores.smallest(everyone), space.gains(points), bench.situation)
+    worth = worth + 1e-3 * np.clip(scores.items, -3.0, 0.0).sum(axis=(1, 2))
+    order = np.argsort(-worth, kind="stable")
+    chosen: list[int] = []
+    for i in order:
+        if all(np.abs(points[i] - points[j]).max() > 0.45 for j in chosen):
+            chosen.append(int(i))
+        if len(chosen) == keep:
+            break
+    return points[chosen], worth[chosen]

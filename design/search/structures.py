@@ -1,0 +1,66 @@
+"""Which structures are worth a search, simplest first, and why the others are not."""
+
+from dataclasses import dataclass
+
+from ...ident.errors import RequestError
+from ...ident.plant import Plant
+from ..designed import Tried
+from ..requirements import StructureName
+from ..situation import Situation
+
+ORDER: tuple[StructureName, ...] = ("P", "I", "PI", "PD", "PID", "lead", "lag")
+_USUAL: tuple[StructureName, ...] = ("P", "I", "PI", "PD", "PID")
+SKIPPED = float("-inf")
+
+
+@dataclass(frozen=True)
+class Plan:
+    """Structures to search in this order, and rows for those that are not."""
+
+    structures: tuple[StructureName, ...]
+    skipped: tuple[Tried, ...]
+
+
+def plan_for(plant: Plant, situation: Situation) -> Plan:
+    """Drop what cannot work in principle.
+
+    Raises
+    ------
+    RequestError
+        Only structures are allowed that this version does not search.
+    """
+    allowed = situation.setting.structures or _USUAL
+    known = [name for name in ORDER if name in allowed]
+    if not known:
+        raise RequestError(
+            "this structure is not searched yet",
+            where="controller.structures",
+            found=", ".join(allowed),
+            expected="one of " + ", ".join(ORDER),
+            advice="allow one of these as well; lead-lag comes later",
+        )
+    rows = [Tried(name, SKIPPED, 0.0, "not tried: not built yet") for name in allowed if name not in ORDER]
+    kept: list[StructureName] = []
+    for name in known:
+        why = _hopeless(name, plant, situation)
+        if why:
+            rows.append(Tried(name, SKIPPED, 0.0, f"not tried: {why}"))
+        else:
+            kept.append(name)
+    return Plan(tuple(kept) if kept else tuple(known[-1:]), tuple(rows))
+
+
+def _hopeless(name: StructureName, plant: Plant, situation: Situation) -> str:
+    ramp = situation.requirements.find("ramp_error")
+    integrators = plant.integrators + int(name in ("I", "PI", "PID"))
+    if ramp is not None and integrators < 1:
+        return "without an integral the ramp error grows without end"
+    if name == "I" and plant.integrators:
+        return "an integral alone around an integrating plant is unstable at every gain"
+    if name in ("P", "PD", "lead", "lag") and not plant.integrators and _offset_unasked(situation):
+        return "it leaves a steady offset, and no steady-state error was stated that would allow one"
+    return ""
+
+
+def _offset_unasked(situation: Situation) -> bool:
+    return situation.setting.structures is None and situation.requirements.find("steady_state_error") is None

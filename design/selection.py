@@ -1,0 +1,79 @@
+"""The chosen point of the locus: a closed-loop pole, and K from the magnitude condition there."""
+
+import numpy as np
+
+from ..ident.errors import GainwrightError
+from ..ident.plant import Plant
+from .compensator import loop_gain, loop_gain_unit, open_loop
+from .designed import GainInterval, Selection
+from .discretise import columns_of, law_columns
+from .gain_sets import fitted_sets, plausible_sets
+from .gains import Gains
+from .locus.condition import angle_residual_deg, loop_gain_at, point_on_locus
+from .requirements import ControllerSetting
+from .sampled.poles import poles_of, starting_poles
+from .values import Bench
+
+_AGREE = 1e-6  # K of the gains and K of the magnitude condition agree to this share
+
+
+class SelectionError(GainwrightError):
+    """No pole of the exact locus belongs to these gains."""
+
+
+def dominant_pole(gains: Gains, bench: Bench) -> complex:
+    """Slowest sampled pole of plant 0 that shows in the response, ln z / T, 1/s."""
+    zero = np.zeros(1, dtype=int)
+    law = law_columns(columns_of([gains]), bench.exact.interval)
+    starts = starting_poles(bench.coarse, zero, law_columns(columns_of([gains]), bench.coarse.interval))
+    return poles_of(bench.spectra, zero, law, starts, bench.exact.delay[:1]).dominant(0)
+
+
+def point_at(gains: Gains, plant: Plant, setting: ControllerSetting, near: complex) -> tuple[complex, float, float]:
+    """The point of the continuous locus beside `near`: pole, K = 1/|G_L(pole)|, angle residual in deg.
+
+    Raises
+    ------
+    SelectionError
+        The K of the magnitude condition there is not that of the gains.
+    """
+    loop = open_loop(gains, plant, setting)
+    wanted = abs(loop_gain(gains))
+    pole = complex(point_on_locus(loop, wanted, near))
+    found = float(loop_gain_at(loop, pole))
+    if abs(found / wanted - 1.0) > _AGREE:
+        raise SelectionError(
+            "the gain of the magnitude condition is not that of the gains",
+            where=f"locus at {pole:.6g} 1/s",
+            found=f"K = {found:.9g}",
+            expected=f"K = {wanted:.9g}",
+            advice="report this with the rig file: the pole search went astray",
+        )
+    return pole, found, abs(float(angle_residual_deg(loop, pole)))
+
+
+def select(
+    gains: Gains, plant: Plant, exact: Bench, quick: Bench, units: tuple[str, str], *, sets: bool = True
+) -> Selection:
+    """The whole selection.
+
+    Parameters
+    ----------
+    exact : Bench
+        Plant 0 is the fitted one; run with the very law.
+    quick : Bench
+        Plausible plants for the intervals of the share.
+    units : (command unit, response unit)
+    """
+    setting = exact.situation.setting
+    sampled = dominant_pole(gains, exact)
+    pole, chosen, residual = point_at(gains, plant, setting, sampled)
+    columns = columns_of([gains])
+    fitted = fitted_sets(exact, columns, chosen) if sets else None
+    together: tuple[GainInterval, ...] = fitted.together if fitted else ()
+    wide = plausible_sets(quick, columns, chosen, together, 100) if fitted and together else ()
+    unit = loop_gain_unit(gains.structure, *units)
+    rows = fitted.rows if fitted else ()
+    return Selection(chosen, unit, pole, residual, sampled, together, wide, rows)
+
+
