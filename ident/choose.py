@@ -1,7 +1,7 @@
 """Which structure the records support: every candidate fitted, weighed under one noise model."""
 
 from collections.abc import Callable, Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 
@@ -11,9 +11,15 @@ from .polish import polish
 from .regression import Regression, Solved
 from .run import FloatArray, Run
 from .start import first_guesses
-from .whiten import Colour
+from .whiten import WHITE, Colour
 
 Progress = Callable[[str, float], None]
+
+# A lag shorter than this many samples can't be told from dead time.
+_SHORTEST = 0.3
+
+# Rise of the plain sum of squares that a whitened estimate may cost.
+_TRADE = 0.02
 
 
 @dataclass(frozen=True, eq=False)
@@ -29,6 +35,8 @@ class Fitted:
     misfit : float
         Unwhitened rms residual / standard deviation of the response.
     criterion : float
+    whitened : bool
+        False where plain least squares was kept because whitening would have cost too much of the visible fit.
     """
 
     problem: Regression
@@ -36,6 +44,7 @@ class Fitted:
     solved: Solved
     misfit: float
     criterion: float
+    whitened: bool = True
 
     @property
     def name(self) -> str:
@@ -63,13 +72,26 @@ def fit_candidates(
         if progress:
             progress("fitting " + " or ".join(s.name for s in family), i / (len(structures) + 1))
         fitted.append(_from_library(tuple(runs), reference, fixed_command, family))
-    fitted.sort(key=lambda f: f.criterion)
+    fitted = sorted(_distinct(fitted), key=lambda f: f.criterion)
     colour = colour_of(fitted[0])
     recoloured = sorted((refit(f, colour) for f in fitted), key=lambda f: f.criterion)
     if recoloured[0].problem is not fitted[0].problem:
         colour = colour_of(recoloured[0])
         recoloured = sorted((refit(f, colour) for f in recoloured), key=lambda f: f.criterion)
     return recoloured, colour
+
+
+def _distinct(fitted: list[Fitted]) -> list[Fitted]:
+    """Without the candidates whose fastest lag is shorter than the sampling can show: it would pass for dead time."""
+    kept = [f for f in fitted if fastest_lag(f) >= _SHORTEST * f.problem.interval]
+    return kept or fitted
+
+
+def fastest_lag(fitted: Fitted) -> float:
+    """Shortest time constant of the real poles, s; infinite where there is none."""
+    poles = fitted.problem.modes(fitted.problem.split(fitted.theta)[0]).poles
+    real = poles[(poles.imag == 0) & (poles.real < 0)]
+    return float(np.min(-1.0 / real.real, initial=np.inf))
 
 
 def colour_of(fitted: Fitted) -> Colour:
@@ -84,6 +106,22 @@ def refit(fitted: Fitted, colour: Colour) -> Fitted:
     """The same structure under another noise colour, from where it stands."""
     theta, solved = polish(fitted.problem, fitted.theta, colour, rounds=12)
     return _weighed(fitted.problem, theta, solved)
+
+
+def steady_fit(fitted: Fitted) -> Fitted:
+    """Plain least squares instead, where the whitened estimate pays for its efficiency with a worse fit.
+
+    Under noise alone both estimates agree within their spread, and the whitened one is the sharper. When the model is
+    not quite the plant the residual is coloured by the model's own error; whitening then trades the slow part of the
+    record for the fast one, and the two part. Plain least squares stays near what the record shows.
+    """
+    problem = fitted.problem
+    at_whitened = problem.solve(fitted.theta, WHITE).cost
+    theta, solved = polish(problem, fitted.theta, WHITE)
+    if at_whitened <= (1 + _TRADE) * solved.cost:
+        return fitted
+    plain = _weighed(problem, theta, solved)
+    return replace(plain, criterion=fitted.criterion, whitened=False)
 
 
 def evidence(fitted: Sequence[Fitted]) -> FloatArray:

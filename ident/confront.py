@@ -72,7 +72,7 @@ def confront(run: Run, fit: Fit, seed: int = 1) -> Confronted:
     """
     structure = next(s for s in CATALOGUE if s.name == fit.structure)
     if run.between == "auto":
-        run = replace(run, between="held")
+        run = replace(run, between=fit.between)
     problem = Regression((run,), structure, fit.operating_command, False)
     centre = np.median(fit.draws, axis=0)
     starts = [centre[:-1], *first_guesses(problem, 2)]

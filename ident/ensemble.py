@@ -9,9 +9,12 @@ from .draw import draw
 from .fitted import Plausible
 from .noise import effective_samples
 from .plant import Plant
-from .profile import Profile, profile_dead_time
+from .polish import bounds_of
+from .profile import profile_dead_time
+from .rein import rein_in
 from .run import FloatArray
-from .whiten import Colour
+from .sandwich import draw_normal, sandwich_covariance
+from .whiten import WHITE, Colour
 
 
 @dataclass(frozen=True, eq=False)
@@ -21,23 +24,40 @@ class Drawn:
     Attributes
     ----------
     fitted : Fitted
-    profile : Profile
     draws : (m, s + 1 + q) array
         Log shapes, dead time, gain, levels, drift rate, initial states.
     """
 
     fitted: Fitted
-    profile: Profile
     draws: FloatArray
 
 
 def draw_structure(fitted: Fitted, colour: Colour, count: int, seed: int) -> Drawn:
-    """Profile one structure's dead time and draw from it."""
+    """Draw from what the record leaves open about one structure.
+
+    A whitened fit has its dead time profiled. Where plain least squares was kept (see `steady_fit`), the draws spread
+    with the covariance that the coloured noise gives to it.
+    """
     problem = fitted.problem
     unknowns = len(fitted.theta) + len(fitted.solved.coefficients)
     freedom = max(effective_samples(len(problem.measured), colour) - unknowns, 4.0)
-    profile = profile_dead_time(problem, fitted.theta, colour, freedom)
-    return Drawn(fitted, profile, draw(profile, count, seed))
+    if fitted.whitened:
+        draws = draw(profile_dead_time(problem, fitted.theta, colour, freedom), count, seed)
+    else:
+        draws = _about_least_squares(fitted, colour, freedom, count, seed)
+    s = len(fitted.theta)
+    draws[:, :s] = np.clip(draws[:, :s], *bounds_of(problem))
+    working = colour if fitted.whitened else WHITE
+    size = len(problem.measured) - unknowns if fitted.whitened else freedom
+    return Drawn(fitted, rein_in(problem, fitted.theta, draws, working, size))
+
+
+def _about_least_squares(fitted: Fitted, colour: Colour, freedom: float, count: int, seed: int) -> FloatArray:
+    problem = fitted.problem
+    model, columns = problem.full_columns(fitted.theta, fitted.solved.coefficients)
+    covariance = sandwich_covariance(columns, problem.measured - model, problem.stretches, colour)
+    centre = np.concatenate([fitted.theta, fitted.solved.coefficients])
+    return draw_normal(centre, covariance, freedom, count, seed)
 
 
 def plant_of(fitted: Fitted, draw_row: FloatArray) -> Plant:

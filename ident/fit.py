@@ -3,6 +3,7 @@
 import lmfit
 import numpy as np
 
+from .polish import bounds_of
 from .regression import Regression
 from .run import FloatArray
 from .whiten import Colour, whiten
@@ -30,6 +31,7 @@ def finish(
     target = whiten(problem.measured, problem.stretches, colour)
     sizes = np.where(coefficients == 0, 1.0, np.abs(coefficients))
     dt = problem.interval
+    low, high = bounds_of(problem)
     parameters = lmfit.Parameters()
     for i, value in enumerate(theta[:-1]):
         parameters.add(f"shape_{i}", value=float(value))
@@ -38,7 +40,7 @@ def finish(
         parameters.add(f"linear_{i}", value=float(value))
 
     def vectors(values: FloatArray) -> tuple[FloatArray, FloatArray]:
-        point = np.array([*values[: len(theta) - 1], values[len(theta) - 1] * dt])
+        point = np.array([*np.clip(values[: len(theta) - 1], low[:-1], high[:-1]), values[len(theta) - 1] * dt])
         return point, values[len(theta) :] * sizes
 
     def residual(trial: lmfit.Parameters) -> FloatArray:

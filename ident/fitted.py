@@ -5,7 +5,7 @@ from dataclasses import dataclass, field
 import numpy as np
 
 from .plant import Plant
-from .run import FloatArray
+from .run import Between, FloatArray
 
 
 @dataclass(frozen=True)
@@ -150,6 +150,8 @@ class Fit:
         The noise looks like a wandering level rather than a stationary one.
     draws : (m, s + 2) array
         Draws of the chosen structure's internal parameters: log shapes, dead time (s), gain.
+    between : {"held", "interpolated"}
+        What the command was taken to do between samples where no run said so.
     """
 
     structure: str
@@ -169,3 +171,4 @@ class Fit:
     cautions: tuple[str, ...] = ()
     drift: bool = False
     draws: FloatArray = field(default_factory=lambda: np.zeros((0, 0)))
+    between: Between = "held"

@@ -7,16 +7,16 @@ import numpy as np
 
 from .between import settle_between
 from .catalogue import CATALOGUE, Structure
-from .choose import Fitted, Progress, colour_of, evidence, fit_candidates, name_of, refit
+from .choose import Fitted, Progress, colour_of, evidence, fit_candidates, name_of, refit, steady_fit
 from .ensemble import Drawn, draw_structure, operating_commands, plant_of, plausible_plants
 from .errors import RecordError
 from .fit import finish
 from .fitted import Candidate, Fit, FittedRun, Noise, Parameter
 from .run import FloatArray, Run
-from .whiten import Colour
+from .whiten import WHITE, Colour, whiten
 
 _TIED = 0.03
-_DRAWS = 2048
+_DRAWS = 1400
 _PLANTS = 1280
 
 
@@ -60,13 +60,14 @@ def identify(
     runs, between = settle_between(runs)
     reference = runs[0].start_command if operating_command is None else operating_command
     fitted, colour = fit_candidates(runs, reference, operating_command is not None, structures, progress)
-    chosen, colour = _finished(fitted[0], colour)
-    fitted = [chosen, *fitted[1:]]
     weights = evidence(fitted)
+    chosen, colour = _finished(fitted[0], colour)
+    fitted = [chosen, *(f if chosen.whitened else steady_fit(f) for f in fitted[1:])]
     if progress:
         progress("drawing plausible plants", 0.8)
     kept = [i for i in range(len(fitted)) if i == 0 or weights[i] >= _TIED]
-    drawn = [draw_structure(fitted[i], colour, _DRAWS, seed) for i in kept]
+    counts = [_DRAWS if i == 0 else int(np.ceil(_DRAWS * min(weights[i] / weights[0], 1.0))) for i in kept]
+    drawn = [draw_structure(fitted[i], colour, count, seed) for i, count in zip(kept, counts, strict=True)]
     return _assembled(fitted, weights, drawn, weights[kept], colour, operating_response, between)
 
 
@@ -87,11 +88,13 @@ def _require_movement(runs: Sequence[Run]) -> None:
 
 def _finished(best: Fitted, colour: Colour) -> tuple[Fitted, Colour]:
     """The chosen structure ended by lmfit on the full model, and its noise once more."""
-    theta = finish(best.problem, best.theta, best.solved.coefficients, colour)[0]
-    solved = best.problem.solve(theta, colour)
-    ended = replace(best, theta=theta, solved=solved) if solved.cost <= best.solved.cost else best
+    kept = steady_fit(best)
+    working = colour if kept.whitened else WHITE
+    theta = finish(kept.problem, kept.theta, kept.solved.coefficients, working)[0]
+    solved = kept.problem.solve(theta, working)
+    ended = replace(kept, theta=theta, solved=solved) if solved.cost <= kept.solved.cost else kept
     colour = colour_of(ended)
-    return refit(ended, colour), colour
+    return (refit(ended, colour) if ended.whitened else ended), colour
 
 
 def _assembled(
@@ -135,11 +138,12 @@ def _assembled(
         cautions=_cautions(drawn[0], colour),
         drift=colour.rho > 0.995,
         draws=drawn[0].draws[:, : s + 2],
+        between=problem.runs[0].between,
     )
 
 
 def _operating_command(chosen: Fitted, row: FloatArray, operating_response: float) -> float:
-    single = Drawn(chosen, None, row[None, :])  # type: ignore[arg-type]
+    single = Drawn(chosen, row[None, :])
     return float(operating_commands(single, operating_response)[0])
 
 
@@ -173,11 +177,14 @@ def _named(fitted: Fitted) -> Structure:
 
 
 def _noise(chosen: Fitted, colour: Colour) -> Noise:
-    n = len(chosen.problem.measured)
+    problem = chosen.problem
+    n = len(problem.measured)
     unknowns = len(chosen.theta) + len(chosen.solved.coefficients)
-    white = np.sqrt(chosen.solved.cost / max(n - unknowns, 1))
-    std = float(white * np.sqrt(colour.variance_ratio))
-    return Noise(chosen.problem.interval, std, float(white), colour.rho, colour.c)
+    model, _ = problem.full_columns(chosen.theta, problem.solve(chosen.theta, WHITE).coefficients)
+    residual = problem.measured - model
+    white = float(np.sqrt(np.sum(whiten(residual, problem.stretches, colour) ** 2) / max(n - unknowns, 1)))
+    std = float(np.sqrt(np.mean(residual**2) * n / max(n - unknowns, 1)))
+    return Noise(problem.interval, std, white, colour.rho, colour.c)
 
 
 def _fitted_runs(chosen: Fitted, row: FloatArray) -> tuple[FittedRun, ...]:

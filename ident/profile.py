@@ -139,10 +139,9 @@ def _with_conditionals(
 
 
 def _root_of_covariance(white: FloatArray) -> tuple[FloatArray, float]:
-    """A with A A' = (white' white)^-1, and the log of its volume; directions that say nothing are left at rest."""
+    """A with A A' = (white' white)^-1, and the log of its volume; directions that say nothing spread far."""
     scale = np.sqrt(np.einsum("ij,ij->j", white, white))
     scale[scale == 0] = 1.0
     _, sizes, rotation = np.linalg.svd(white / scale, full_matrices=False)
-    firm = sizes > 1e-9 * sizes[0]
-    inverse = np.where(firm, 1.0 / np.where(firm, sizes, 1.0), 0.0)
-    return (rotation.T * inverse) / scale[:, None], float(np.sum(np.log(inverse[firm])) - np.sum(np.log(scale)))
+    inverse = 1.0 / np.maximum(sizes, 1e-7 * sizes[0])
+    return (rotation.T * inverse) / scale[:, None], float(np.sum(np.log(inverse)) - np.sum(np.log(scale)))

@@ -12,6 +12,9 @@ from .run import FloatArray, Run
 from .simulate import Grid, grid_of, response
 from .whiten import Colour, stretches_of, whiten
 
+# Share of the record's whole movement that a stretch of rest may wander, smoothed, and still be rest.
+_STIR = 0.1
+
 
 @dataclass(frozen=True, eq=False)
 class Solved:
@@ -80,7 +83,7 @@ class Regression:
     @cached_property
     def unsettled(self) -> tuple[bool, ...]:
         """Runs that do not begin with a stretch of rest: their initial state is fitted."""
-        return tuple(_starts_unsettled(run) for run in self.runs)
+        return tuple(starts_unsettled(run) for run in self.runs)
 
     @cached_property
     def interval(self) -> float:
@@ -203,11 +206,16 @@ def _least_squares(matrix: FloatArray, target: FloatArray) -> Solved:
     return Solved(float(residual @ residual), residual, coefficients)
 
 
-def _starts_unsettled(run: Run) -> bool:
+def starts_unsettled(run: Run) -> bool:
     """Whether the record begins without a stretch of rest long enough to trust that nothing was moving."""
     if run.command_before is not None:
         return False
     span = np.ptp(run.command)
     changes = np.flatnonzero(np.abs(run.command - run.command[0]) > 1e-3 * span) if span > 0 else np.array([])
     first = int(changes[0]) if len(changes) else len(run.time)
-    return first < max(5, len(run.time) // 100)
+    if first < max(5, len(run.time) // 100):
+        return True
+    rest = run.response[:first][run.valid[:first]]
+    width = max(len(rest) // 6, 1)
+    smooth = np.convolve(rest, np.ones(width) / width, mode="valid")
+    return bool(len(smooth) > 0 and np.ptp(smooth) > _STIR * np.nanmax(np.abs(run.response - np.nanmedian(rest))))

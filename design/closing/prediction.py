@@ -5,6 +5,7 @@ from dataclasses import dataclass, replace
 import numpy as np
 
 from ...ident.fitted import Fit
+from ...ident.regression import starts_unsettled
 from ...ident.run import FloatArray, Run
 from ...ident.simulate import free_run
 
@@ -32,16 +33,35 @@ class Prediction:
 def predict(run: Run, fit: Fit) -> Prediction:
     """Free run of the fitted plant under the record's command, the operating point not refitted.
 
-    A plant that settles stands where the fitted operating point puts it. An integrating one has no such place: it starts
-    at the mean response of the rest before the first move of the command.
+    A plant that settles stands where the fitted operating point puts it. An integrating one has no such place: it
+    starts at the mean response of the rest before the first move of the command.
     """
     if run.between == "auto":
-        run = replace(run, between="held")
+        run = replace(run, between=fit.between)
     level = _start_level(run) if fit.plant.integrators else fit.operating_response
     predicted = free_run(fit.plant, run, fit.operating_command, level)
+    if starts_unsettled(run):
+        predicted = predicted + _initial_motion(run, fit, predicted)
     spread = _spread(run, fit, level)
     half = _NORMAL_95 * np.sqrt(spread**2 + fit.noise.std**2)
     return Prediction(predicted, predicted - half, predicted + half, level)
+
+
+def _initial_motion(run: Run, fit: Fit, predicted: FloatArray) -> FloatArray:
+    """(n,) decays of a plant that was moving when the record began, the only thing taken from the record itself."""
+    time = run.time - run.time[0]
+    columns = [np.ones(len(time))] if fit.plant.integrators else []
+    for pole in fit.plant.poles[fit.plant.poles.imag >= 0]:
+        if pole == 0:
+            continue
+        decay = np.exp(np.minimum(pole.real * time, 50.0)) * np.exp(1j * pole.imag * time)
+        columns += [decay.real, decay.imag] if pole.imag else [decay.real]
+    if not columns:
+        return np.zeros(len(time))
+    matrix = np.column_stack(columns)
+    valid = run.valid
+    weights, *_ = np.linalg.lstsq(matrix[valid], (run.response - predicted)[valid], rcond=1e-9)
+    return np.asarray(matrix @ weights)
 
 
 def _start_level(run: Run) -> float:

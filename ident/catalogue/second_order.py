@@ -9,7 +9,7 @@ from .structure import Polynomials, Shape
 def polynomials(shape: tuple[float, ...]) -> Polynomials:
     """Unit-gain second order of natural frequency shape[0], rad/s, and damping ratio shape[1]."""
     frequency, damping = shape
-    return (1.0,), (1.0 / frequency**2, 2.0 * damping / frequency, 1.0)
+    return (1.0,), (1.0 / (frequency * frequency), 2.0 * damping / frequency, 1.0)
 
 
 def frequency_shape() -> Shape:
