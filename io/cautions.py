@@ -2,6 +2,7 @@
 
 import math
 from collections.abc import Iterator
+from dataclasses import fields
 
 from ..design.designed import Design, LimitJudged, Selection
 from ..design.requirements import Limits
@@ -10,24 +11,25 @@ from .figures.words import number, with_unit
 from .rigfile.rig import Rig
 
 FIRST_RUN: tuple[str, ...] = (
-    "These gains come from a calculation on logs. A person who is responsible for the rig, and licensed where the law asks "
-    "for it, decides whether and how they are tried. Local codes and site rules come before anything printed here.",
-    "Judge the risk before the first run: reach, crushing, heat, pressure, flying parts. ISO 12100 (Safety of machinery - "
-    "General principles for design - Risk assessment and risk reduction) gives the order: safe design first, then "
-    "guarding, then information. No compliance with it is claimed here.",
+    "These gains come from a calculation on logs. A person who is responsible for the rig, and licensed where the "
+    "law asks for it, decides whether and how they are tried. Local codes and site rules come before anything printed "
+    "here.",
+    "Judge the risk before the first run: reach, crushing, heat, pressure, flying parts. ISO 12100 (Safety of "
+    "machinery - General principles for design - Risk assessment and risk reduction) gives the order: safe design "
+    "first, then guarding, then information. No compliance with it is claimed here.",
     "Guard first: nobody within reach of anything that moves, heats or is under pressure while gains are tried.",
     "Have an emergency stop at hand and try it before the run. ISO 13850 (Emergency stop function - Principles for "
-    "design) and IEC 60204-1 (Electrical equipment of machines - General requirements, with its stop categories) are where "
-    "to read. Know what a stop does here: power taken at once can let an axis coast or a load fall.",
+    "design) and IEC 60204-1 (Electrical equipment of machines - General requirements, with its stop categories) are "
+    "where to read. Know what a stop does here: power taken at once can let an axis coast or a load fall.",
     "Isolate the energy before hands go in: lock out and tag out by the rules that hold at your place.",
-    "Let stored energy out, or hold it: springs, pressure, raised masses, charged capacitors and hot parts stay dangerous "
-    "after the power is off.",
-    "A vertical or otherwise loaded axis can drop when the controller stops, when gains are changed, or when the sensor is "
-    "lost: block it or brake it mechanically.",
-    "A lost, frozen or reversed sensor makes any controller drive to its limit. Check sign and scale by hand at low power "
-    "first, and let loss of the signal stop the rig.",
-    "End stops, over-travel switches, over-temperature and over-pressure cut-outs must act independently of this loop and "
-    "of its computer. A control loop is no safety function: ISO 13849-1 (Safety-related parts of control systems - "
+    "Let stored energy out, or hold it: springs, pressure, raised masses, charged capacitors and hot parts stay "
+    "dangerous after the power is off.",
+    "A vertical or otherwise loaded axis can drop when the controller stops, when gains are changed, or when the "
+    "sensor is lost: block it or brake it mechanically.",
+    "A lost, frozen or reversed sensor makes any controller drive to its limit. Check sign and scale by hand at low "
+    "power first, and let loss of the signal stop the rig.",
+    "End stops, over-travel switches, over-temperature and over-pressure cut-outs must act independently of this loop "
+    "and of its computer. A control loop is no safety function: ISO 13849-1 (Safety-related parts of control systems - "
     "General principles for design) is about those that are, and doesn't cover this one.",
 )
 SMALL_HEADROOM = 0.10
@@ -77,9 +79,9 @@ def operating_point(rig: Rig, design: Design, fit: Fit | None) -> tuple[float | 
 
 def missing_limits(limits: Limits) -> Iterator[str]:
     """One caution for each limit that was not given; "not limited" is a given one."""
-    for name in ("command_lowest", "command_highest", "command_rate", "response_lowest", "response_highest", "response_rate"):
-        if getattr(limits, name) is None:
-            quantity, side = name.split("_")
+    for field in fields(limits):
+        if getattr(limits, field.name) is None:
+            quantity, side = field.name.split("_")
             key = "highest" if side == "rate" else side
             table = f"{quantity}_rate" if side == "rate" else quantity
             yield (
@@ -129,9 +131,9 @@ def clamp_caution(design: Design) -> Iterator[str]:
     """The command is limited during the test step."""
     if design.clamped_share > 0.0:
         yield (
-            f"The command is limited during the test step on {number(100 * design.clamped_share, 3)} % of the plausible "
-            f"plants, for {with_unit(design.clamped_duration, 's', 3)} at the longest. A larger step is slower and may "
-            "overshoot more than what was checked."
+            f"The command is limited during the test step on {number(100 * design.clamped_share, 3)} % of the "
+            f"plausible plants, for {with_unit(design.clamped_duration, 's', 3)} at the longest. A larger step is "
+            "slower and may overshoot more than what was checked."
         )
 
 
@@ -169,8 +171,8 @@ def noise_caution(rig: Rig, design: Design, fit: Fit | None) -> Iterator[str]:
     if span > LOUD_NOISE:
         yield (
             f"Measurement noise moves the command by {with_unit(rms, rig.command_unit, 3)} rms, peaks of about "
-            f"{number(100 * span, 2)} % of its range (six times the rms): wear, heat and noise at the actuator. A longer "
-            "derivative filter time or a quieter sensor helps."
+            f"{number(100 * span, 2)} % of its range (six times the rms): wear, heat and noise at the actuator. A "
+            "longer derivative filter time or a quieter sensor helps."
         )
 
 
@@ -192,9 +194,9 @@ def sampling_caution(selection: Selection) -> Iterator[str]:
     apart = abs(selection.sampled_pole - selection.pole) / size
     if apart > FAR_POLE:
         yield (
-            f"Sampling is slow for this loop: the exact pole of the sampled loop stands {number(100 * apart, 2)} % away from "
-            "the chosen point of the locus. Every requirement was judged on the sampled law; a shorter update interval "
-            "would bring the two together."
+            f"Sampling is slow for this loop: the exact pole of the sampled loop stands {number(100 * apart, 2)} % "
+            "away from the chosen point of the locus. Every requirement was judged on the sampled law; a shorter "
+            "update interval would bring the two together."
         )
 
 
@@ -207,6 +209,6 @@ def stiction_caution(rig: Rig, design: Design, fit: Fit | None) -> Iterator[str]
     if middle > 0.0:
         yield (
             f"The rig sticks: about {with_unit(middle, rig.command_unit, 2)} of command (up to "
-            f"{with_unit(highest, rig.command_unit, 2)}) is swallowed before the response moves. With integral action it may "
-            "hunt slowly about the setpoint; watch for it at rest."
+            f"{with_unit(highest, rig.command_unit, 2)}) is swallowed before the response moves. With integral action "
+            "it may hunt slowly about the setpoint; watch for it at rest."
         )

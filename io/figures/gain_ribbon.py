@@ -2,7 +2,7 @@
 
 import math
 from collections.abc import Sequence
-from typing import TYPE_CHECKING
+from typing import TYPE_CHECKING, Any
 
 from ...design.designed import GainInterval, Selection
 from .look import SMALL, TEXT, colour, sheet, strip
@@ -13,7 +13,6 @@ if TYPE_CHECKING:
     from matplotlib.figure import Figure
 
 LEFT, WIDE, ROW = 1.75, 5.05, 0.235
-NAMES = {"stable": "stable", "stability": "stable"}
 
 
 def gain_ribbon(selection: Selection) -> "Figure":
@@ -37,9 +36,9 @@ def gain_ribbon(selection: Selection) -> "Figure":
     axes.set_ylim(len(rows) + 2.0, -0.5)
     for place, (name, intervals) in enumerate(rows):
         _row(axes, place, name.replace("_", " "), intervals, (low, high), height=0.46)
-    _row(axes, len(rows) + 0.4, "all of them", selection.intervals, (low, high), height=0.72, strong=True)
+    _row(axes, len(rows) + 0.4, "all together", selection.intervals, (low, high), height=0.72, strong=True)
     plausible = selection.intervals_plausible
-    _row(axes, len(rows) + 1.4, "all, on the plausible plants", plausible, (low, high), height=0.72, hatched=True)
+    _row(axes, len(rows) + 1.4, "on plausible plants", plausible, (low, high), height=0.72, hatched=True)
     axes.axhline(len(rows) - 0.2, color=colour("ink"), linewidth=0.6)
     _chosen(axes, selection)
     _scale(axes, selection)
@@ -81,7 +80,7 @@ def _row(
 
 
 def _bar(axes: "Axes", place: float, left: float, right: float, *, height: float, hatched: bool) -> None:
-    style = {"facecolor": "none" if hatched else colour("holds"), "edgecolor": colour("holds")}
+    style: dict[str, Any] = {"facecolor": "none" if hatched else colour("holds"), "edgecolor": colour("holds")}
     axes.barh(
         place, right - left, left=left, height=height, linewidth=0.8 if hatched else 0.0,
         hatch="/////" if hatched else None, zorder=2, **style,
@@ -118,8 +117,10 @@ def _scale(axes: "Axes", selection: Selection) -> None:
     axes.set_xticklabels([number(mark) for mark in marks])
     unit = "" if selection.loop_gain_unit in ("", "1") else f" ({selection.loop_gain_unit})"
     for place, side, text in ((0.0, "left", "← lower K"), (1.0, "right", "higher K →")):
-        axes.text(place, -0.36 / (axes.get_position().height * axes.figure.get_size_inches()[1]), text, ha=side,
-                  va="center", transform=axes.transAxes, fontsize=TEXT, color=colour("ink"))  # fmt: skip
+        axes.annotate(
+            text, (place, 0.0), xycoords="axes fraction", xytext=(0, -22), textcoords="offset points", ha=side,
+            va="center", fontsize=TEXT, color=colour("ink"), annotation_clip=False,
+        )  # fmt: skip
     axes.set_xlabel(plain(f"loop gain K{unit}, logarithmic"), fontsize=TEXT, color=colour("ink"), labelpad=3)
 
 
@@ -128,9 +129,11 @@ def ticks_of(low: float, high: float) -> list[float]:
 
     Examples
     --------
-    >>> ticks_of(0.9, 12.0)
-    [1.0, 2.0, 5.0, 10.0]
+    >>> ticks_of(0.9, 22.0)
+    [1.0, 2.0, 5.0, 10.0, 20.0]
     """
     decades = range(math.floor(math.log10(low)), math.ceil(math.log10(high)) + 1)
-    steps = (1.0,) if high / low > 1e3 else (1.0, 2.0, 5.0) if high / low > 4.0 else (1.0, 1.5, 2.0, 3.0, 4.0, 5.0, 7.0)
-    return [float(f"{step}e{decade}") for decade in decades for step in steps if low <= float(f"{step}e{decade}") <= high]
+    wide = high / low
+    steps = (1.0,) if wide > 1e3 else (1.0, 2.0, 5.0) if wide > 15.0 else (1.0, 1.5, 2.0, 3.0, 4.0, 5.0, 7.0)
+    every = [float(f"{step}e{decade}") for decade in decades for step in steps]
+    return [mark for mark in every if low <= mark <= high]

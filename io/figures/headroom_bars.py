@@ -85,10 +85,14 @@ def _bar(axes: "Axes", place: int, row: Headroom) -> None:
     if used is None:
         axes.plot([0.0, 1.0], [place, place], color=colour("faint"), linewidth=0.8, linestyle=(0, (1, 3)))
         return
-    axes.plot([0.0, 1.0], [place, place], color=colour("ink"), linewidth=0.7)
+    axes.plot([0.0, 1.0], [place, place], color=colour("ink"), linewidth=0.7, zorder=1)
     filled = min(max(used, 0.0), 1.0)
     role: Role = "limit" if used > 1.0 else row.role
-    axes.barh(place, filled, height=0.44, color=colour(role), linewidth=0.0, hatch="xxxx" if used > 1.0 else None)
+    passed = used > 1.0
+    axes.barh(
+        place, filled, height=0.44, facecolor="none" if passed else colour(role), edgecolor=colour(role), zorder=2,
+        linewidth=0.8 if passed else 0.0, hatch="xxxx" if passed else None,
+    )  # fmt: skip
     axes.plot([1.0, 1.0], [place - 0.36, place + 0.36], color=colour("limit"), linewidth=2.0, clip_on=False)
     axes.plot([0.0, 0.0], [place - 0.22, place + 0.22], color=colour("ink"), linewidth=0.8, clip_on=False)
 
@@ -100,15 +104,19 @@ def _verdict(axes: "Axes", place: int, row: Headroom) -> None:
     elif used is None:
         text, role = ("not limited" if row.worst is None or abs(row.limit) == float("inf") else "not predicted"), "ink"
     elif used > 1.0:
-        text, role = f"PASSED: {with_unit(row.worst, row.unit)} of {with_unit(row.limit, row.unit)}", "limit"
+        text, role = f"PASSED: {_reach(row)}", "limit"
     else:
         left = number(100.0 * (1.0 - used), 2 if used < 0.9 else 1)
-        text, role = f"{left} % left: {with_unit(row.worst, row.unit)} of {with_unit(row.limit, row.unit)}", "ink"
+        text, role = f"{left} % left: {_reach(row)}", "ink"
     axes.annotate(
         plain(text), (1.0, place), xycoords=("axes fraction", "data"), xytext=(8, 0), textcoords="offset points",
         ha="left", va="center", fontsize=SMALL, color=colour("limit" if role == "limit" else "ink"),
         annotation_clip=False,
     )  # fmt: skip
+
+
+def _reach(row: Headroom) -> str:
+    return f"worst {number(row.worst)}, limit {with_unit(row.limit, row.unit)}"
 
 
 def _ends(axes: "Axes") -> None:

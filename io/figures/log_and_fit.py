@@ -7,6 +7,7 @@ import numpy as np
 from ...ident.fitted import FittedRun
 from . import traces
 from .look import EndLabel, colour, hide_time, label_ends, limits_around, name_axes, sheet, strip, time_scale
+from .thin import FloatArray
 
 if TYPE_CHECKING:
     from matplotlib.axes import Axes
@@ -40,7 +41,7 @@ def log_and_fit(run: FittedRun, *, command_unit: str, response_unit: str) -> "Fi
     return figure
 
 
-def _command(axes: "Axes", time: traces.FloatArray, run: FittedRun, unit: str) -> None:
+def _command(axes: "Axes", time: FloatArray, run: FittedRun, unit: str) -> None:
     traces.line(axes, time, run.command, "command")
     axes.set_ylim(limits_around(run.command, margin=0.1))
     name_axes(axes, y=f"command\n({unit})")
@@ -48,9 +49,9 @@ def _command(axes: "Axes", time: traces.FloatArray, run: FittedRun, unit: str) -
     label_ends(axes, [EndLabel(float(run.command[-1]), "command", "command")])
 
 
-def _response(axes: "Axes", time: traces.FloatArray, run: FittedRun, unit: str) -> None:
+def _response(axes: "Axes", time: FloatArray, run: FittedRun, unit: str) -> None:
     traces.readings(axes, time, run.response)
-    traces.line(axes, time, run.model, "model", width=1.3)
+    traces.line(axes, time, run.model, "model", width=1.0)
     axes.set_ylim(limits_around(run.response, run.model))
     name_axes(axes, y=f"response ({unit})")
     hide_time(axes)
@@ -59,7 +60,7 @@ def _response(axes: "Axes", time: traces.FloatArray, run: FittedRun, unit: str) 
     label_ends(axes, [EndLabel(last, "measured", "response"), EndLabel(float(run.model[-1]), "model", "model")])
 
 
-def _residual(axes: "Axes", time: traces.FloatArray, run: FittedRun, unit: str) -> None:
+def _residual(axes: "Axes", time: FloatArray, run: FittedRun, unit: str) -> None:
     residual = run.response - run.model
     axes.axhline(0.0, color=colour("model"), linewidth=0.8)
     traces.readings(axes, time, residual)

@@ -2,7 +2,7 @@
 
 from collections.abc import Sequence
 from dataclasses import dataclass
-from typing import TYPE_CHECKING, Literal
+from typing import TYPE_CHECKING, Any, Literal
 
 import numpy as np
 
@@ -50,7 +50,7 @@ def sheet(height_in: float, width_in: float = WIDTH_IN) -> "Figure":
     from matplotlib.backends.backend_agg import FigureCanvasAgg
     from matplotlib.figure import Figure
 
-    figure = Figure(figsize=(width_in, height_in), dpi=100, facecolor="none", layout="none")
+    figure = Figure(figsize=(width_in, height_in), dpi=100, facecolor="none")
     FigureCanvasAgg(figure)
     return figure
 
@@ -75,7 +75,7 @@ def strip(figure: "Figure", box: tuple[float, float, float, float], *, frame: bo
 
 def name_axes(axes: "Axes", *, x: str = "", y: str = "") -> None:
     """Label the axes; the texts are data and nothing in them is markup."""
-    style = {"fontsize": TEXT, "color": colour("ink")}
+    style: dict[str, Any] = {"fontsize": TEXT, "color": colour("ink")}
     if x:
         axes.set_xlabel(_lines(x), labelpad=2, **style)
     if y:

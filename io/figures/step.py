@@ -1,7 +1,7 @@
 """The predicted response to the test step with its band, what is asked of it, and the command that makes it."""
 
 from collections.abc import Sequence
-from typing import TYPE_CHECKING
+from typing import TYPE_CHECKING, Any
 
 import numpy as np
 
@@ -21,6 +21,7 @@ from .look import (
     strip,
     time_scale,
 )
+from .thin import FloatArray
 from .words import number
 
 if TYPE_CHECKING:
@@ -51,20 +52,29 @@ def predicted_step(
     figure = sheet(3.9)
     factor, unit = time_scale(float(trajectory.time[-1] - trajectory.time[0]))
     time = trajectory.time * factor
+    before = -0.04 * float(time[-1])
     above = strip(figure, (LEFT, 1.75, WIDE, 2.05))
     _response(above, time, trajectory, limits)
-    _bounds(above, time, factor, trajectory, judged)
+    _bounds(above, time, (factor, unit), trajectory, judged)
     name_axes(above, y=f"response ({response_unit})")
     hide_time(above)
     below = strip(figure, (LEFT, 0.45, WIDE, 1.15))
     _command(below, time, trajectory, limits)
     name_axes(below, x=f"time since the controller saw the new setpoint ({unit})", y=f"command\n({command_unit})")
     for axes in figure.axes:
-        axes.set_xlim(min(0.0, time[0]), time[-1])
+        axes.set_xlim(before, time[-1])
+    _before(above, before, trajectory)
     return figure
 
 
-def _response(axes: "Axes", time: traces.FloatArray, trajectory: Trajectory, limits: Limits) -> None:
+def _before(axes: "Axes", since: float, trajectory: Trajectory) -> None:
+    """The setpoint before the step, so that the step is seen."""
+    start, first = float(trajectory.response[0]), float(trajectory.setpoint[0])
+    style: dict[str, Any] = {"color": colour("setpoint"), "linestyle": DASHES["setpoint"], "linewidth": 1.0}
+    axes.plot([since, 0.0, 0.0], [start, start, first], **style)
+
+
+def _response(axes: "Axes", time: FloatArray, trajectory: Trajectory, limits: Limits) -> None:
     traces.band(axes, time, trajectory.response_low, trajectory.response_high, "model")
     axes.step(
         time, trajectory.setpoint, where="post", color=colour("setpoint"), linestyle=DASHES["setpoint"], linewidth=1.0
@@ -80,7 +90,7 @@ def _response(axes: "Axes", time: traces.FloatArray, trajectory: Trajectory, lim
     label_ends(axes, [*ends, EndLabel(float(trajectory.response_high[-1]), "95 % band", "model")])
 
 
-def _command(axes: "Axes", time: traces.FloatArray, trajectory: Trajectory, limits: Limits) -> None:
+def _command(axes: "Axes", time: FloatArray, trajectory: Trajectory, limits: Limits) -> None:
     traces.band(axes, time, trajectory.command_low, trajectory.command_high, "command")
     axes.step(time, trajectory.command, where="post", color=colour("command"), linewidth=1.1)
     seen = (trajectory.command_low, trajectory.command_high)
@@ -91,7 +101,7 @@ def _command(axes: "Axes", time: traces.FloatArray, trajectory: Trajectory, limi
     label_ends(axes, [EndLabel(float(trajectory.command[-1]), "command,\n95 % band", "command")])
 
 
-def _near(lowest: float | None, highest: float | None, *seen: traces.FloatArray) -> traces.FloatArray:
+def _near(lowest: float | None, highest: float | None, *seen: FloatArray) -> FloatArray:
     """Those of two limits that lie within 60 % of the shown range beyond it."""
     low, high = limits_around(*seen, margin=0.6)
     given = [value for value in (lowest, highest) if value is not None and low <= value <= high]
@@ -99,9 +109,10 @@ def _near(lowest: float | None, highest: float | None, *seen: traces.FloatArray)
 
 
 def _bounds(
-    axes: "Axes", time: traces.FloatArray, factor: float, trajectory: Trajectory, judged: Sequence[Judged]
+    axes: "Axes", time: FloatArray, scale: tuple[float, str], trajectory: Trajectory, judged: Sequence[Judged]
 ) -> None:
     """Mark the bounds of overshoot and settling, taken about the setpoint where the response should come to rest."""
+    factor, unit = scale
     start, final = float(trajectory.response[0]), float(trajectory.setpoint[-1])
     for item in judged:
         asked = item.requirement
@@ -109,7 +120,7 @@ def _bounds(
             bound = final + asked.limit * (final - start)
             _short_bound(axes, bound, f"overshoot at most {number(100 * asked.limit)} %", final > start)
         if asked.name == "settling_time" and asked.limit * factor < time[-1]:
-            _settling(axes, asked.limit * factor, time[-1], final, (asked.band or 0.02) * (final - start))
+            _settling(axes, asked.limit * factor, unit, time[-1], final, (asked.band or 0.02) * (final - start))
 
 
 def _short_bound(axes: "Axes", bound: float, text: str, upward: bool) -> None:
@@ -122,10 +133,11 @@ def _short_bound(axes: "Axes", bound: float, text: str, upward: bool) -> None:
     )  # fmt: skip
 
 
-def _settling(axes: "Axes", by: float, end: float, final: float, band: float) -> None:
-    style = {"color": colour("limit"), "linewidth": 0.8}
+def _settling(axes: "Axes", by: float, unit: str, end: float, final: float, band: float) -> None:
+    style: dict[str, Any] = {"color": colour("limit"), "linewidth": 0.8}
     axes.plot([end, by, by, end], [final - band, final - band, final + band, final + band], **style)
     axes.annotate(
-        "settled from here on", (by, final - band), xytext=(3, -5 if band > 0 else 5), textcoords="offset points",
-        va="top" if band > 0 else "bottom", ha="left", fontsize=SMALL - 0.7, color=colour("limit"),
+        f"settled by {number(by, 3)} {unit}", (by, final - band), xytext=(3, -5 if band > 0 else 5),
+        textcoords="offset points", va="top" if band > 0 else "bottom", ha="left", fontsize=SMALL - 0.7,
+        color=colour("limit"),
     )  # fmt: skip

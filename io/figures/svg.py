@@ -3,7 +3,7 @@
 import io
 import re
 import warnings
-from typing import TYPE_CHECKING
+from typing import TYPE_CHECKING, Any
 from xml.sax.saxutils import escape, quoteattr
 
 from .look import PALETTE
@@ -72,7 +72,7 @@ def _drawn(figure: "Figure", name: str) -> str:
     import matplotlib as mpl
 
     target = io.StringIO()
-    settings = {"svg.fonttype": "none", "svg.hashsalt": f"gainwright {name}", "path.simplify_threshold": 0.2}
+    settings: Any = {"svg.fonttype": "none", "svg.hashsalt": f"gainwright {name}", "path.simplify_threshold": 0.2}
     with mpl.rc_context(settings), warnings.catch_warnings():
         warnings.filterwarnings("ignore", message="Glyph .* missing from")
         figure.savefig(target, format="svg", facecolor="none", metadata={"Date": None})

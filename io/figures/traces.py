@@ -21,7 +21,7 @@ def readings(axes: "Axes", time: FloatArray, values: FloatArray) -> None:
     if len(time) <= 220:
         axes.plot(shown_time, shown, linestyle="none", marker="o", markersize=2.0, color=colour("response"))
     else:
-        axes.plot(shown_time, shown, color=colour("response"), linewidth=0.8)
+        axes.plot(shown_time, shown, color=colour("response"), linewidth=0.9)
 
 
 def band(axes: "Axes", time: FloatArray, low: FloatArray, high: FloatArray, role: Role) -> None:

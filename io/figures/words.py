@@ -30,19 +30,19 @@ def number(value: float | None, digits: int = 4) -> str:
     Examples
     --------
     >>> number(0.123456), number(1234567.0), number(-0.00001234), number(None), number(40.0)
-    ('0.1235', '1.235e6', '−1.234e−5', 'never', '40')
+    ('0.1235', '1.235e6', '-1.234e-5', 'never', '40')
     """
     if value is None or math.isnan(value):
         return "never"
     if math.isinf(value):
-        return "−∞" if value < 0 else "∞"
+        return "-∞" if value < 0 else "∞"
     text = f"{value:.{digits}g}"
     if "e" in text:
         mantissa, exponent = text.split("e")
         power = int(exponent)
         whole = 0 <= power < digits + 3 and abs(value) < 10 ** (digits + 1)
         text = f"{value:.0f}" if whole else f"{mantissa}e{power}"
-    return text.replace("-", "−") if float(text.replace("−", "-")) != 0.0 else "0"
+    return text if float(text) != 0.0 else "0"
 
 
 def with_unit(value: float | None, unit: str, digits: int = 4) -> str:

@@ -1,11 +1,13 @@
 """The report of an outcome as one self-contained HTML page."""
 
-from dataclasses import dataclass
 from importlib.resources import files
 from pathlib import PurePath
 from typing import Any
 
+from ...design.compensator import open_loop
 from ...design.designed import Design
+from ...design.locus.condition import working
+from ...ident.fitted import Fit
 from ...ident.law import Law
 from ..cautions import FIRST_RUN
 from ..figures.svg import variables
@@ -129,9 +131,9 @@ def law_text(law: Law) -> str:
     Examples
     --------
     >>> print(law_text(Law(0.1, (1.0, -1.0), (2.0, -1.9), (2.0, -1.9), (1.0,))))
-    v[k] = 2 r[k] − 1.9 r[k−1]
-           − 2 y[k] + 1.9 y[k−1]
-           + 1 u[k−1]
+    v[k] = 2 r[k] - 1.9 r[k-1]
+           - 2 y[k] + 1.9 y[k-1]
+           + 1 u[k-1]
     u[k] = v[k] limited by the clamp
     """
     sent, wanted = _memory(law)
@@ -153,8 +155,8 @@ def _terms(coefficients: tuple[float, ...] | list[float], sign: str) -> str:
     parts = []
     for back, value in enumerate(coefficients):
         if value != 0.0:
-            place = "k" if back == 0 else f"k−{back}"
-            parts.append(f"{'−' if value < 0 else '+'} {number(abs(value), 12)} {sign}[{place}]")
+            place = "k" if back == 0 else f"k-{back}"
+            parts.append(f"{'-' if value < 0 else '+'} {number(abs(value), 12)} {sign}[{place}]")
     return " ".join(parts)
 
 
@@ -162,9 +164,9 @@ def _step_guide(outcome: Outcome) -> str:
     asked, unit = outcome.rig.requirements, outcome.rig.response_unit
     size = "" if asked.test_step is None else f" of {with_unit(asked.test_step, unit)}"
     return (
-        f"How to read it: the test step{size} as predicted with the sampled law and its clamp. The full line is the fitted "
-        "plant; the bands hold 95 % of the plausible plants at each time. Bounds that were asked for are drawn dash-dotted, "
-        "and as a bracket from the time at which the response must have settled."
+        f"How to read it: the test step{size} as predicted with the sampled law and its clamp. The full line is the "
+        "fitted plant; the bands hold 95 % of the plausible plants at each time. Bounds that were asked for are drawn "
+        "dash-dotted, and as a bracket from the time at which the response must have settled."
     )
 
 
@@ -179,17 +181,17 @@ def _knowing(outcome: Outcome) -> dict[str, Any]:
         "working": None,
         "closing": tuple(zip(outcome.closing, held_out, strict=True)),
         "closing_numbers": tuple(
-            f"Misfit {number(each.misfit, 3)} against a noise floor of {number(each.noise_floor, 3)} (rms error over the "
-            f"spread of the response); {words.share(each.coverage_95)} of the samples lie in the 95 % band."
+            f"Misfit {number(each.misfit, 3)} against a noise floor of {number(each.noise_floor, 3)} (rms error over "
+            f"the spread of the response); {words.share(each.coverage_95)} of the samples lie in the 95 % band."
             for each in outcome.closing
         ),
         "origin": tables.origin(outcome.provenance),
         "provenance": tables.logs(outcome),
     }
     if outcome.fit is not None:
-        page.update(_fitted(outcome))
+        page.update(_fitted(outcome, outcome.fit))
     if outcome.fit is not None and outcome.design is not None:
-        page.update(_located(outcome, outcome.design))
+        page.update(_located(outcome, outcome.fit, outcome.design))
     return page
 
 
@@ -198,11 +200,12 @@ def _more_logs(outcome: Outcome) -> str:
     return f"Fitted as well, and not drawn here: {words.listed([run.label for run in left])}." if left else ""
 
 
-def _fitted(outcome: Outcome) -> dict[str, Any]:
-    fit, rig = outcome.fit, outcome.rig
-    assert fit is not None
-    noise = fit.noise
-    ties = f"The records can't tell it from: {words.listed(fit.ties)}. Plants of those structures are among the plausible ones."
+def _fitted(outcome: Outcome, fit: Fit) -> dict[str, Any]:
+    rig, noise = outcome.rig, fit.noise
+    ties = (
+        f"The records can't tell it from: {words.listed(fit.ties)}. Plants of those structures are among the plausible "
+        "ones."
+    )
     return {
         "ties": ties if fit.ties else "",
         "parameters": tables.parameters(fit, rig.command_unit, rig.response_unit),
@@ -215,13 +218,13 @@ def _fitted(outcome: Outcome) -> dict[str, Any]:
     }
 
 
-def _located(outcome: Outcome, design: Design) -> dict[str, Any]:
-    found = pictures.magnitude_working(outcome)
-    assert found is not None
+def _located(outcome: Outcome, fit: Fit, design: Design) -> dict[str, Any]:
+    loop = open_loop(design.gains, fit.plant, outcome.rig.setting)
     selection = design.selection
+    found = working(loop, selection.pole)
     return {
         "working": tables.magnitude(found, selection.loop_gain_unit),
-        "locus": pictures.locus_picture(design, found),
+        "locus": pictures.locus_picture(design, loop, found),
         "tried": tables.tried(design),
         "angle": (
             f"The angle condition holds at {tables.point(selection.pole)} 1/s within "

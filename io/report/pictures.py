@@ -4,7 +4,8 @@ import math
 from collections.abc import Iterator
 
 from ...design.designed import Design
-from ...design.locus.condition import Working, working
+from ...design.locus.condition import Working
+from ...design.locus.loop import OpenLoop
 from ..figures.headroom_bars import Headroom, headroom_bars
 from ..figures.look import Role
 from ..figures.svg import inline_svg
@@ -80,7 +81,8 @@ def log_pictures(outcome: Outcome) -> tuple[tuple[str, str], ...]:
     made = []
     for place, run in enumerate(runs[:MOST_LOGS]):
         figure = log_and_fit(run, command_unit=rig.command_unit, response_unit=rig.response_unit)
-        made.append((run.label, inline_svg(figure, f"log-{place}", f"Command, response with model, and residual of {run.label}")))
+        title = f"Command, response with model, and residual of {run.label}"
+        made.append((run.label, inline_svg(figure, f"log-{place}", title)))
     return tuple(made)
 
 
@@ -98,19 +100,12 @@ def held_out_pictures(outcome: Outcome) -> tuple[str, ...]:
     return tuple(made)
 
 
-def magnitude_working(outcome: Outcome) -> Working | None:
-    """The magnitude condition written out at the chosen point, with the gains and the plant of the outcome."""
-    from ...design.compensator import open_loop
-
-    fit, design = outcome.fit, outcome.design
-    if fit is None or design is None:
-        return None
-    return working(open_loop(design.gains, fit.plant, outcome.rig.setting), design.selection.pole)
-
-
-def locus_picture(design: Design, found: Working) -> str:
+def locus_picture(design: Design, loop: OpenLoop, found: Working) -> str:
     """The locus with the chosen point."""
-    from ..figures.locus import locus
+    from ..figures.locus import locus, view_of
+    from ..figures.locus_lines import at_gain, locus_lines
 
-    figure = locus((), found, sampled_pole=design.selection.sampled_pole)
+    lines = locus_lines(loop, view_of(found))
+    others = at_gain(loop, lines, found.loop_gain)
+    figure = locus(lines, found, sampled_pole=design.selection.sampled_pole, others=[complex(s) for s in others])
     return inline_svg(figure, "locus", "Locus with the chosen point and the vectors of the magnitude condition")

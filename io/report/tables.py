@@ -4,13 +4,13 @@ from dataclasses import dataclass
 from pathlib import PurePath
 from typing import Any
 
+from ...design.compensator import over_second, per_response
 from ...design.designed import Design
 from ...design.locus.condition import Working
 from ...ident.fitted import Fit
 from ..figures.locus import tags
 from ..figures.words import number, with_unit
 from ..outcome import Outcome
-from ..unit_labels import gain_unit
 from . import words
 
 
@@ -56,7 +56,7 @@ def _gains(found: dict[str, Any] | None) -> tuple[tuple[str, str], ...] | None:
     if found is None:
         return None
     return tuple(
-        (words.GAIN_NAMES.get(key, words.spaced(key)), with_unit(each["value"], each["unit"], 10))
+        (words.GAIN_NAMES.get(key, words.spaced(key)), with_unit(each["value"], each["unit"], 7))
         for key, each in found.items()
         if isinstance(each, dict) and each.get("value") is not None
     )
@@ -103,7 +103,7 @@ def parameters(fit: Fit, command_unit: str, response_unit: str) -> Table:
     for each in fit.parameters:
         unit = each.unit
         if each.name == "gain":
-            unit = gain_unit(response_unit, command_unit, per_second=fit.plant.integrators)
+            unit = (over_second if fit.plant.integrators else per_response)(response_unit, command_unit)
         ends = f"{number(each.low)} to {with_unit(each.high, unit)}"
         rows.append((each.name, with_unit(each.value, unit), number(each.std_error, 2), ends))
     return Table("Fitted plant", ("parameter", "value", "standard error", "95 % interval"), tuple(rows))
@@ -137,8 +137,8 @@ def magnitude(working: Working, unit: str) -> Table:
         is_pole = name.startswith("p")
         kind, how = ("pole", "divided by") if is_pole else ("zero", "times")
         rows.append((f"vector from {kind} {name}", point(vector.root), number(vector.length, 6), how))
-    rows.append(("dead time and computation, |exp(−sL)|", "", number(working.dead_time_factor, 6), "times"))
-    rows.append(("hold, |(1 − exp(−sT))/(sT)|", "", number(working.hold_factor, 6), "times"))
+    rows.append(("dead time and computation, |exp(-sL)|", "", number(working.dead_time_factor, 6), "times"))
+    rows.append(("hold, |(1 - exp(-sT))/(sT)|", "", number(working.hold_factor, 6), "times"))
     rows.append(("product |G_L|", "", number(working.product, 6), ""))
     rows.append(("K = 1/|G_L|", "", with_unit(working.loop_gain, unit, 6), ""))
     head = ("factor", "from (1/s)", "length or size", "enters the product")
@@ -151,16 +151,17 @@ def point(s: complex) -> str:
     Examples
     --------
     >>> point(complex(-2.0, 1.5)), point(complex(-2.0, 0.0))
-    ('−2 + 1.5j', '−2')
+    ('-2 + 1.5j', '-2')
     """
     if s.imag == 0.0:
         return number(s.real)
-    return f"{number(s.real)} {'+' if s.imag > 0 else '−'} {number(abs(s.imag))}j"
+    return f"{number(s.real)} {'+' if s.imag > 0 else '-'} {number(abs(s.imag))}j"
 
 
 def findings(outcome: Outcome) -> Table:
     """What was seen in the logs, one row a finding, and those without any."""
-    rows, grave = [], []
+    rows: list[tuple[str, ...]] = []
+    grave: list[int] = []
     for record in outcome.records:
         for found in record.findings:
             if found.refuses != "no":

@@ -8,7 +8,10 @@ from ...ident.law import Clamp
 from ..figures.words import number, with_unit
 from ..outcome import Outcome
 
-RELEASED = "The gains may be used as printed. They were checked by calculation; the person responsible for the rig still approves."
+RELEASED = (
+    "The gains may be used as printed. They were checked by calculation; the person responsible for the rig still "
+    "approves."
+)
 HELD = "Don't load these gains. What speaks against them:"
 FORMS = {
     "parallel": "P + I/s on the error, D s/(Tf s + 1) on minus the response",

@@ -20,7 +20,7 @@ from gainwright.io.record import Finding, Record
 from gainwright.io.rigfile.rig import LogDialect, Rig, RunSpec, Signal
 
 GAIN, TAU, DEAD = 12.0, 0.5, 0.12  # mm/V, s, s
-P, I = 0.13, 0.26  # V/mm, V/(mm s)  # noqa: E741
+P, I = 0.13, 0.21  # V/mm, V/(mm s)  # noqa: E741
 T, DELAY = 0.02, 0.002  # s
 START, STEP = 120.0, 20.0  # mm
 COMMAND = 3.0  # V at the operating point
