@@ -231,7 +231,10 @@ def _newton(loop: OpenLoop, loop_gain: float, s: ComplexArray) -> ComplexArray:
 
 
 def _multiple(loop: OpenLoop, loop_gain: float, centre: ComplexArray) -> ComplexArray:
-    """What is left between the smallest boxes: clusters, each counted by the argument principle around it."""
+    """What is left between the smallest boxes: clusters, each counted by the argument principle around it.
+
+    A multiple root, or a root that a tiny K exp(-s L) leaves within rounding of an open-loop pole.
+    """
     clusters: list[complex] = []
     for point in centre:
         if not any(abs(point - c) <= 1e-6 * abs(point) for c in clusters):
@@ -241,7 +244,10 @@ def _multiple(loop: OpenLoop, loop_gain: float, centre: ComplexArray) -> Complex
         circle = cluster + 1e-5 * abs(cluster) * np.exp(2j * np.pi * np.arange(65) / 64)
         turns = np.diff(np.unwrap(np.angle(1.0 + loop_gain * loop.at(circle)))).sum() / _TURN
         middle = cluster.real + 0j if abs(cluster.imag) < 1e-6 * abs(cluster) else cluster
-        found += [middle] * round(float(turns))
+        inside = loop.poles[np.abs(loop.poles - cluster) < 1e-5 * abs(cluster)]
+        if inside.size:
+            middle = complex(inside[np.argmin(np.abs(inside - middle))])
+        found += [middle] * (round(float(turns)) + inside.size)
     return np.array(found, complex)
 
 
