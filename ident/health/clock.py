@@ -9,6 +9,7 @@ from .seen import BoolArray, Seen
 
 MOST_DISORDER = 0.01  # share of the samples that may be out of order or doubled
 GAP_STEPS = 1.5
+LONGEST_GAP = 0.25  # of the record
 JITTER_SAID = 0.05  # of the interval
 # (jump back in s, what it is): counters and calendars that begin again
 _WRAPS = (
@@ -283,6 +284,10 @@ def _seen_gaps(time: FloatArray, command: FloatArray, gaps: np.ndarray, typical:
     harmless = _command_stands(command, gaps)
     missing = float(np.sum(steps[~harmless] / typical - 1.0))
     short = bool(np.all(steps[~harmless] < 4.5 * typical))
+    if steps.max() > LONGEST_GAP * time[-1]:
+        return Seen(
+            "gap", where, size, "use the part before or after it (from, to): too much of the record is missing", "holds"
+        )
     if missing <= 0.5:
         return Seen("gap", where, size, "the command stands still on both sides and is taken as held")
     if short and missing <= 0.01 * len(time):

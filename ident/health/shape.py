@@ -10,6 +10,7 @@ FEWEST_SAMPLES = 16
 FEW_SAMPLES = 40
 COARSE = 0.02  # quantum over span of the response
 FEWEST_LEVELS = 5
+MOST_STEPS = 10  # beyond them a record is one long excitation
 UNSETTLED = 0.05  # drift before the excitation over span of the response
 
 
@@ -42,8 +43,12 @@ def see_coarse(response: FloatArray, unit: str) -> tuple[Seen, ...]:
     )
 
 
-def see_unsettled_start(time: FloatArray, command: FloatArray, response: FloatArray, unit: str) -> tuple[Seen, ...]:
-    """The response drifts before the command first moves."""
+def see_unsettled_start(
+    time: FloatArray, command: FloatArray, response: FloatArray, unit: str, before: float | None = None
+) -> tuple[Seen, ...]:
+    """The response drifts before the command first moves; a command that moved just before the record explains it."""
+    if before is not None and before != command[0]:
+        return ()
     moved = np.flatnonzero(command != command[0])
     steady = response[: moved[0]] if len(moved) else response[:0]
     steady = steady[np.isfinite(steady)]
@@ -59,7 +64,7 @@ def see_unsettled_start(time: FloatArray, command: FloatArray, response: FloatAr
             "unsettled start",
             f"{time[0]:.6g} s to {time[moved[0]]:.6g} s",
             f"drifts by {drift:.3g} {unit}",
-            "wait for a steady reading before the test; the fit takes a level, not a drift",
+            "wait for a steady reading before the test, or state before.command if the record begins with a step",
         ),
     )
 
@@ -67,7 +72,7 @@ def see_unsettled_start(time: FloatArray, command: FloatArray, response: FloatAr
 def see_early_end(time: FloatArray, command: FloatArray, response: FloatArray, unit: str) -> tuple[Seen, ...]:
     """The record ends soon after the last step of a command that otherwise stands still."""
     moved = np.flatnonzero(np.diff(command) != 0.0)
-    if len(moved) == 0 or len(moved) > 0.05 * len(command):
+    if len(moved) == 0 or len(moved) > MOST_STEPS:
         return ()
     after = len(command) - 1 - moved[-1]
     gaps = np.diff(np.concatenate([[0], moved]))

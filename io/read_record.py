@@ -1,0 +1,342 @@
+"""One run from its file to a record: channels, units, clock, window, health, and the trail back to the bytes."""
+
+import hashlib
+from dataclasses import dataclass
+from pathlib import Path
+
+import numpy as np
+from numpy.typing import NDArray
+
+from ..ident.errors import RecordError, RequestError
+from ..ident.health.clock import mend_clock
+from ..ident.health.copied import share_stretch
+from ..ident.health.look import Looked, look_at
+from ..ident.health.seen import Seen
+from ..ident.run import FloatArray, Run
+from . import units
+from .readers.port import Channel, Hints, Log
+from .readers.registry import reader_of
+from .record import Finding, Record
+from .rigfile.rig import Rig, RunSpec, Signal
+
+_LARGEST_SECONDS = 1e11  # the year 5138 as a stamp in s: a larger one is in a smaller unit
+
+
+@dataclass(frozen=True, eq=False)
+class _Samples:
+    """The samples of one run, all arrays (n,): time in s, signals in rig units, and command and response as logged."""
+
+    time: FloatArray
+    command: FloatArray
+    response: FloatArray
+    setpoint: FloatArray | None
+    logged_command: FloatArray
+    logged_response: FloatArray
+
+    def take(self, chosen: "NDArray[np.intp] | NDArray[np.bool_] | slice") -> "_Samples":
+        """The chosen ones."""
+        setpoint = None if self.setpoint is None else self.setpoint[chosen]
+        return _Samples(
+            self.time[chosen],
+            self.command[chosen],
+            self.response[chosen],
+            setpoint,
+            self.logged_command[chosen],
+            self.logged_response[chosen],
+        )
+
+
+def read_record(spec: RunSpec, rig: Rig) -> Record:
+    """Read one run of a rig file.
+
+    Parameters
+    ----------
+    spec : RunSpec
+    rig : Rig
+        For the units of the signals and the dialect of the logs.
+
+    Returns
+    -------
+    Record
+        Its run's time begins at zero with the first sample of the window.
+
+    Raises
+    ------
+    RecordError
+        When the log can't be read or used.
+    RequestError
+        When a source isn't in the log, or a unit doesn't fit.
+    """
+    roles = {role: signal for role, signal in spec.signals.items() if signal.source is not None}
+    hints = Hints(rig.dialect, spec.group)
+    log = reader_of(spec.file).read(spec.file, [str(signal.source) for signal in roles.values()], hints)
+    findings = list(log.findings)
+    samples = _samples(spec, rig, log)
+    samples = _with_clock(spec, samples, findings)
+    windowed, before = _windowed(spec, samples)
+    _require_samples(spec, windowed, samples)
+    looked = _looked(spec, rig, windowed, before)
+    findings += [_finding(seen) for seen in looked.seen]
+    _raise_stops(spec, findings)
+    run = Run(
+        label=spec.shown,
+        time=windowed.time - windowed.time[0],
+        command=windowed.command,
+        response=looked.response,
+        setpoint=windowed.setpoint,
+        between=spec.between_samples,
+        command_before=before,
+        excitation=spec.excitation,
+        closed_loop=spec.loop == "closed",
+    )
+    return Record(spec, run, _sha256(spec.file), _samples_sha256(windowed), tuple(findings))
+
+
+def shares_samples(a: Record, b: Record) -> bool:
+    """Whether two records share a stretch of samples, under whatever names, formats, windows and clocks.
+
+    Copies are found by their noise: at least 30 samples in a row. Constant stretches and coarse readings that agree by
+    chance don't count.
+    """
+    if a.samples_sha256 == b.samples_sha256:
+        return True
+    return share_stretch(a.run.command, a.run.response, b.run.command, b.run.response)
+
+
+def _samples(spec: RunSpec, rig: Rig, log: Log) -> _Samples:
+    where = str(spec.file)
+    command = _reading(where, "command", spec.signals["command"], log, rig.command_unit)
+    response = _reading(where, "response", spec.signals["response"], log, rig.response_unit)
+    setpoint = None
+    if "setpoint" in spec.signals:
+        setpoint = _reading(where, "setpoint", spec.signals["setpoint"], log, rig.response_unit)
+    time = _time(where, spec.signals["time"], log, len(command))
+    _require_one_clock(where, spec, log, time)
+    logged = {role: log.channels[str(spec.signals[role].source)].values for role in ("command", "response")}
+    return _Samples(time, command, response, setpoint, logged["command"], logged["response"])
+
+
+def _reading(where: str, role: str, signal: Signal, log: Log, wanted: str) -> FloatArray:
+    """(n,) readings in the rig's unit; NaN where lost."""
+    channel = log.channels[str(signal.source)]
+    if channel.stamps:
+        raise RequestError(
+            f"the {role}'s source holds dates or clock times",
+            where=where,
+            found=f'"{signal.source}"',
+            expected="a column of numbers",
+        )
+    lost = np.isin(channel.values, signal.lost_as) if signal.lost_as else np.zeros(len(channel.values), dtype=bool)
+    values = signal.scale * np.where(lost, np.nan, channel.values) + signal.offset
+    scale, offset = units.reading_conversion(_unit(where, role, signal, channel), wanted)
+    return values if (scale, offset) == (1.0, 0.0) else scale * values + offset
+
+
+def _unit(where: str, role: str, signal: Signal, channel: Channel) -> str:
+    """The unit of a reading; the rig file and the log must not contradict each other.
+
+    Raises
+    ------
+    RequestError
+    """
+    stated, logged = signal.unit, channel.unit
+    raw = signal.scale == 1.0 and signal.offset == 0.0
+    if stated is None and logged is None:
+        raise RequestError(
+            f"neither the rig file nor this log states the unit of the {role}",
+            where=where,
+            found=f'source "{signal.source}"',
+            expected=f"a unit under signals.{role} in the rig file",
+        )
+    if stated is None:
+        units.require_known(str(logged))
+        return str(logged)
+    if logged is not None and raw and units.is_known(logged) and not units.same_unit(stated, logged):
+        raise RequestError(
+            f"the rig file and this log state different units of the {role}",
+            where=where,
+            found=f'rig file "{stated}", log "{logged}" for "{signal.source}"',
+            expected="one unit",
+            advice=f"leave signals.{role}.unit out to take the log's, or give scale if the log is wrong",
+        )
+    return stated
+
+
+def _time(where: str, signal: Signal, log: Log, count: int) -> FloatArray:
+    """(n,) array, s, as logged (not from zero yet)."""
+    if signal.sample_rate is not None:
+        return np.asarray(np.arange(count) / signal.sample_rate, dtype=np.float64)
+    channel = log.channels[str(signal.source)]
+    if channel.stamps:
+        return channel.values
+    if channel.clock is not None and not str(signal.source).endswith("/time"):
+        return channel.clock
+    lost = np.isin(channel.values, signal.lost_as) if signal.lost_as else np.zeros(count, dtype=bool)
+    values = np.where(lost, np.nan, channel.values)
+    finite = values[np.isfinite(values)]
+    unit = _unit(where, "time", signal, channel)
+    factor = signal.scale * units.difference_factor(unit, "s")
+    if len(finite) and abs(finite[0]) * abs(factor) > _LARGEST_SECONDS:
+        raise RequestError(
+            "the time stamps are too large for their unit",
+            where=where,
+            found=f'{finite[0]:.6g} in "{unit}"',
+            expected="a stamp of this millennium",
+            advice='stamps near 1.7e12 are in "ms", near 1.7e15 in "us", near 1.7e18 in "ns"',
+        )
+    return (values - finite[0]) * factor if len(finite) else values
+
+
+def _require_one_clock(where: str, spec: RunSpec, log: Log, time: FloatArray) -> None:
+    """Channels that keep their own time must all keep the same.
+
+    Raises
+    ------
+    RecordError
+    """
+    if len(time) < 2:
+        return
+    interval = float(np.nanmedian(np.diff(time)))
+    for role in ("command", "response", "setpoint"):
+        if role not in spec.signals:
+            continue
+        channel = log.channels[str(spec.signals[role].source)]
+        if channel.clock is None or spec.signals["time"].source is None:
+            continue
+        own = channel.clock - channel.clock[0]
+        if np.nanmax(np.abs(own - (time - time[0]))) > 0.01 * abs(interval) + 1e-9:
+            raise RecordError(
+                f"the {role} keeps another time than the time's source",
+                where=where,
+                found=f'"{channel.name}" differs by {np.nanmax(np.abs(own - (time - time[0]))):.3g} s',
+                expected="all signals sampled at the same times",
+                advice="log all signals with one clock",
+            )
+
+
+def _with_clock(spec: RunSpec, samples: _Samples, findings: list[Finding]) -> _Samples:
+    """Samples in order, time from the first sample, those without a command left out."""
+    rows = np.column_stack([samples.logged_command, samples.logged_response])
+    clock = mend_clock(samples.time, np.nan_to_num(rows, nan=np.inf))
+    findings += [_finding(seen) for seen in clock.seen]
+    _raise_stops(spec, findings)
+    mended = samples.take(clock.keep)
+    mended = _Samples(
+        clock.time, mended.command, mended.response, mended.setpoint, mended.logged_command, mended.logged_response
+    )
+    lost = ~np.isfinite(mended.command)
+    if lost.any():
+        places = mended.time[lost]
+        findings.append(
+            Finding(
+                "lost commands",
+                f"{places[0]:.6g} s to {places[-1]:.6g} s",
+                f"{lost.sum()} samples",
+                "left out: the command of the sample before is taken as held",
+            )
+        )
+    if lost.mean() > 0.2:
+        raise RecordError(
+            "the command is lost in too many samples",
+            where=str(spec.file),
+            found=f"{lost.sum()} of {len(lost)} samples",
+            advice="check the command's source and lost_as",
+        )
+    return mended.take(~lost)
+
+
+def _windowed(spec: RunSpec, samples: _Samples) -> tuple[_Samples, float | None]:
+    """The samples of the half-open window, and the steady command before them where it is known."""
+    start = -np.inf if spec.from_s is None else spec.from_s
+    end = np.inf if spec.to_s is None else spec.to_s
+    slack = 1e-9 * max(1.0, float(samples.time[-1])) if len(samples.time) else 0.0
+    inside = (samples.time >= start - slack) & (samples.time < end - slack)
+    first = np.flatnonzero(inside)
+    if len(first) and first[0] > 0:
+        return samples.take(inside), float(samples.command[first[0] - 1])
+    return samples.take(inside), spec.command_before
+
+
+def _require_samples(spec: RunSpec, windowed: _Samples, whole: _Samples) -> None:
+    if len(windowed.time) >= 2:
+        return
+    if len(whole.time) < 2:
+        raise RecordError(
+            "this log has too few samples",
+            where=str(spec.file),
+            found=f"{len(whole.time)} samples",
+            expected="a log of the rig while its command moves",
+        )
+    raise RequestError(
+        "the window holds no samples",
+        where=str(spec.file),
+        found=f"from {spec.from_s} s to {spec.to_s} s",
+        expected=f"a part of 0 s to {whole.time[-1]:.6g} s",
+    )
+
+
+def _looked(spec: RunSpec, rig: Rig, samples: _Samples, before: float | None) -> Looked:
+    ranges = {
+        role: _range(spec.signals[role], wanted)
+        for role, wanted in (("command", rig.command_unit), ("response", rig.response_unit))
+    }
+    looked = look_at(
+        samples.time,
+        samples.command,
+        samples.response,
+        command_unit=rig.command_unit,
+        response_unit=rig.response_unit,
+        before=before,
+        response_range=ranges["response"],
+        command_range=ranges["command"],
+    )
+    if spec.use == "fit":
+        return looked
+    return Looked(looked.response, tuple(_softened(seen) for seen in looked.seen))
+
+
+def _softened(seen: Seen) -> Seen:
+    """A held-out run without excitation stops nothing: it just can't confirm."""
+    if seen.kind not in {"idle command", "dead response"} or seen.refuses != "stops":
+        return seen
+    return Seen(seen.kind, seen.where, seen.size, seen.action, "holds")
+
+
+def _range(signal: Signal, wanted: str) -> tuple[float | None, float | None]:
+    if signal.unit is None:
+        return signal.lowest, signal.highest
+    ends = [
+        None if end is None else units.convert_reading(end, signal.unit, wanted)
+        for end in (signal.lowest, signal.highest)
+    ]
+    return ends[0], ends[1]
+
+
+def _finding(seen: Seen) -> Finding:
+    return Finding(seen.kind, seen.where, seen.size, seen.action, seen.refuses)
+
+
+def _raise_stops(spec: RunSpec, findings: list[Finding]) -> None:
+    stops = [finding for finding in findings if finding.refuses == "stops"]
+    if stops:
+        first = stops[0]
+        raise RecordError(
+            f"this log can't be used: {first.kind}",
+            where=str(spec.file),
+            found=f"{first.where}: {first.size}",
+            advice=first.action,
+        )
+
+
+def _sha256(file: Path) -> str:
+    with file.open("rb") as log:
+        return hashlib.file_digest(log, "sha256").hexdigest()
+
+
+def _samples_sha256(samples: _Samples) -> str:
+    """Of the used samples as logged; time in s from the first of them, to 1 ns, so that its unit doesn't matter."""
+    time = np.round(samples.time - samples.time[0], 9) + 0.0
+    digest = hashlib.sha256()
+    for values in (time, samples.logged_command, samples.logged_response):
+        digest.update(np.ascontiguousarray(values + 0.0, dtype="<f8").tobytes())
+    return digest.hexdigest()
