@@ -174,7 +174,7 @@ def closed_loop(
     sensor = rig.sensor if generator is not None else rig.sensor.quiet()
     reading = Reading(sensor, np.random.default_rng(0) if generator is None else generator)
     motion, interval = Motion(rig), controller.equation.interval
-    count = int(ceil(duration / interval)) + 1
+    count = ceil(duration / interval) + 1
     time, command, readings = np.arange(count) * interval, np.empty(count), np.empty(count)
     for k in range(count):
         t = k * interval

@@ -1,4 +1,4 @@
-"""Stages that no linear model has: saturation, rate limit, Coulomb friction with stick, play, valve stiction, disturbances.
+"""Stages that no linear model has: saturation, rate limit, friction with stick, play, valve stiction, disturbances.
 
 The interface is that of linear_stages.
 """
