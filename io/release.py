@@ -39,7 +39,7 @@ def reasons_to_hold(
         *_from_rig_file(rig),
         *_from_records(records),
         *(_twin_text(held_out, fitted) for held_out, fitted in twins),
-        *_from_closing(closing),
+        *_from_closing(closing, [held_out.run.label for held_out, _ in twins]),
         *(_from_design(design, rig) if design else ["no controller was found that could be judged"]),
     ]
     return tuple(dict.fromkeys(reasons))
@@ -75,7 +75,7 @@ def _twin_text(held_out: Record, fitted: Record) -> str:
     )
 
 
-def _from_closing(closing: Sequence[Compared]) -> Iterator[str]:
+def _from_closing(closing: Sequence[Compared], not_fresh: Sequence[str]) -> Iterator[str]:
     if not closing:
         yield 'no held-out run: record a fresh one that is not fitted and add it with use = "held-out"'
         return
@@ -84,14 +84,20 @@ def _from_closing(closing: Sequence[Compared]) -> Iterator[str]:
             yield f"held-out {compared.label} disagrees with the prediction: {compared.why}"
     if not any(compared.verdict == "agrees" for compared in closing):
         for compared in closing:
-            if compared.verdict == "not comparable":
+            if compared.verdict == "not comparable" and compared.label not in not_fresh:
                 yield f"held-out {compared.label} can't be compared with the prediction: {compared.why}"
 
 
 def _from_design(design: Design, rig: Rig) -> Iterator[str]:
+    """The design's own reasons; where it has none, every condition is looked at once more."""
     yield from design.reasons
     if design.plants_checked < FEWEST_PLANTS:
         yield f"only {design.plants_checked} plausible plants were checked, fewer than {FEWEST_PLANTS}"
+    if not design.reasons:
+        yield from _unsaid(design, rig)
+
+
+def _unsaid(design: Design, rig: Rig) -> Iterator[str]:
     if not design.all_stable:
         yield "the loop is unstable on at least one plausible plant: lower the demands, or record a longer fit run"
     yield from _from_limits(design)

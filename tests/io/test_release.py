@@ -32,6 +32,11 @@ def with_verdicts(made, *verdicts: str):
     return replace(made, closing=tuple(named))
 
 
+def compared_to_itself(made):
+    """The held-out record was fitted too, and its comparison was therefore set aside."""
+    return replace(made, closing=(replace(made.closing[0], verdict="not comparable", why="its samples were fitted"),))
+
+
 def test_a_job_that_meets_every_condition_is_released(made) -> None:
     """No reason at all."""
     assert reasons(made) == ()
@@ -61,6 +66,7 @@ def test_a_held_out_run_whose_samples_were_fitted_holds_even_beside_one_that_agr
     text = only(made, twins=[(held_out, fitted)])
     assert "step_2.csv" in text
     assert "fitted as step_1.csv" in text
+    assert only(compared_to_itself(made), twins=[(held_out, fitted)]) == text
 
 
 @pytest.mark.parametrize(
@@ -157,9 +163,10 @@ def test_floors_that_nobody_judged_hold(made) -> None:
     assert reasons(replace(bare, rig=replace(bare.rig, requirements=asked))) == ()
 
 
-def test_what_the_design_says_itself_is_passed_on_once(made) -> None:
-    """The same words twice are one reason."""
-    assert only(made.with_design(reasons=("settling is asked faster than the dead time",) * 2)).startswith("settling")
+def test_what_the_design_says_itself_is_passed_on_and_not_said_again(made) -> None:
+    """The design explains its own failures better; the same words twice are one reason."""
+    said = ("12 of 1000 plausible plants are unstable with these gains",) * 2
+    assert only(made.with_design(reasons=said, all_stable=False, share_meeting=0.5)) == said[0]
 
 
 def test_every_failing_condition_is_said_not_only_the_first(made) -> None:
