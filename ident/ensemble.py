@@ -95,7 +95,14 @@ def plausible_plants(drawn: list[Drawn], weights: FloatArray, operating_response
     plants: list[tuple[float, Plant, float]] = []
     for item, share in zip(drawn, shares, strict=True):
         commands = operating_commands(item, operating_response)
-        plants += [((i + 0.5) / share, plant_of(item.fitted, item.draws[i]), float(commands[i])) for i in range(share)]
+        plants += [
+            (
+                (i + 0.5) / share,
+                plant_of(item.fitted, item.draws[i % len(item.draws)]),
+                float(commands[i % len(commands)]),
+            )
+            for i in range(share)
+        ]
     plants.sort(key=lambda entry: entry[0])
     return Plausible(
         tuple(plant for _, plant, _ in plants),

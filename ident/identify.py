@@ -18,6 +18,8 @@ from .whiten import WHITE, Colour, whiten
 _TIED = 0.03
 _DRAWS = 1400
 _PLANTS = 1280
+# A tied structure is drawn more thinly; its draws stand several times where its share asks for more.
+_TIED_DRAWS = 192
 
 
 def identify(
@@ -66,8 +68,7 @@ def identify(
     if progress:
         progress("drawing plausible plants", 0.8)
     kept = [i for i in range(len(fitted)) if i == 0 or weights[i] >= _TIED]
-    counts = [_DRAWS if i == 0 else int(np.ceil(_DRAWS * min(weights[i] / weights[0], 1.0))) for i in kept]
-    drawn = [draw_structure(fitted[i], colour, count, seed) for i, count in zip(kept, counts, strict=True)]
+    drawn = [draw_structure(fitted[i], colour, _DRAWS if i == 0 else _TIED_DRAWS, seed) for i in kept]
     return _assembled(fitted, weights, drawn, weights[kept], colour, operating_response, between)
 
 

@@ -40,7 +40,9 @@ def estimate_colour(columns: FloatArray, residual: FloatArray, stretches: list[s
     firsts = [np.array([np.arctanh(rho), share]) for rho in _FIRST_RHO for share in (_FIRST_SHARE if rho else (0.0,))]
     values = [loss(point) for point in firsts]
     best = firsts[int(np.argmin(values))]
-    found = minimize(loss, best, method="Nelder-Mead", options={"xatol": 3e-3, "fatol": 2e-2, "maxfev": 90})
+    around = best + np.array([[0.0, 0.0], [0.12, 0.0], [0.0, 0.1]])
+    options = {"xatol": 3e-3, "fatol": 2e-2, "maxfev": 90, "initial_simplex": around}
+    found = minimize(loss, best, method="Nelder-Mead", options=options)
     return _colour(found.x)
 
 

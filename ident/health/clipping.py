@@ -11,6 +11,7 @@ from .seen import BoolArray, Seen, stretches
 QUIET_SAMPLES = 4  # the command has stood still for this long where noise is looked at
 FEWEST_TRIPLES = 20
 TURNING_OF_NOISE = 0.35  # white noise turns at 2/3 of its samples, a smooth signal hardly ever
+STEEP = 4.0  # quanta from sample to sample
 CHANCE = 1e-6  # of a false finding in one record
 _SECOND_DIFFERENCE = 0.6744897501960817 * np.sqrt(6.0)  # median |second difference| of white noise of unit deviation
 
@@ -68,7 +69,7 @@ def see_clipping(time: FloatArray, command: FloatArray, response: FloatArray, un
 
     Two samples of a steady signal with noise sigma and quantum q read the same with chance q/(2 sqrt(pi) sigma). The
     equal neighbours at the extreme are counted against that chance. A signal whose noise is below its quantum is flat
-    for that reason, and nothing is said about it.
+    for that reason, and nothing is said about it; nor about a flat start, where a rig without noise may have rested.
 
     Parameters
     ----------
@@ -82,7 +83,7 @@ def see_clipping(time: FloatArray, command: FloatArray, response: FloatArray, un
     time, command, response = time[good], command[good], response[good]
     found: list[Seen] = []
     for end in _ends(response):
-        runs = [(first, last) for first, last in stretches(end.at) if last - first >= 3]
+        runs = [(first, last) for first, last in stretches(end.at) if last - first >= 3 and first >= 2]
         if runs and _too_flat(command, response, end, runs):
             found.append(_seen(time, runs, f"stand still at the record's {end.name} value {end.value:.6g} {unit}"))
     return tuple(found)
@@ -142,8 +143,12 @@ def _densest(equal: BoolArray, width: int = 40) -> float:
 def _chance_in_motion(
     command: FloatArray, response: FloatArray, inside: BoolArray, runs: list[tuple[int, int]]
 ) -> float | None:
-    """The same for a command that never stands still: the share of equal neighbours elsewhere."""
-    if np.count_nonzero(inside) < 3 * FEWEST_TRIPLES:
+    """The same for a command that never stands still: the share of equal neighbours elsewhere.
+
+    A smooth peak of a coarse signal is flat too, but is not reached steeply.
+    """
+    steep = all(abs(response[first - 1] - response[first - 2]) > STEEP * quantum(response) for first, _ in runs)
+    if np.count_nonzero(inside) < 3 * FEWEST_TRIPLES or not steep:
         return None
     moving = sum(len(np.unique(command[first:last])) > 1 for first, last in runs)
     equal = (np.diff(response)[1:] == 0.0)[inside]

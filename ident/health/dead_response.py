@@ -9,6 +9,7 @@ from .seen import Seen
 
 ORDER = 8  # of the whitening filter
 SIGNIFICANT = 5.0  # deviations of a correlation of unrelated white noise
+UNFORETOLD = 0.15  # share of the variance; first-order noise with a correlation of 0.92 from sample to sample
 FEWEST = 40
 _TIMES = np.array([0.002, 0.01, 0.03, 0.1, 0.3])  # time constants tried, as shares of the record
 
@@ -16,8 +17,9 @@ _TIMES = np.array([0.002, 0.01, 0.03, 0.1, 0.3])  # time constants tried, as sha
 def see_dead_response(time: FloatArray, command: FloatArray, response: FloatArray, unit: str) -> tuple[Seen, ...]:
     """A response that is constant, or that is noise unrelated to a command that moves.
 
-    Unrelated means both: lags, integrals and delays of the command explain hardly any of it, and the whitened response
-    is correlated with the equally filtered command at no lag.
+    Unrelated means all of these: it looks like noise (a sample can hardly be foretold from those before it; a plant's
+    response to anything but white noise can), lags, integrals and delays of the command explain hardly any of it, and
+    the whitened response is correlated with the equally filtered command at no lag.
 
     Parameters
     ----------
@@ -34,10 +36,19 @@ def see_dead_response(time: FloatArray, command: FloatArray, response: FloatArra
     if np.ptp(values) <= 1e-12 * max(1.0, float(np.abs(values).max())):
         return (Seen("dead response", where, f"stands at {values[0]:.6g} {unit} in every sample", advice, "stops"),)
     moved = command[good]
-    if len(values) < FEWEST or np.ptp(moved) == 0.0 or _explained(moved, values) or _correlated(moved, values):
+    if len(values) < FEWEST or np.ptp(moved) == 0.0 or not _noise_like(values):
+        return ()
+    if _explained(moved, values) or _correlated(moved, values):
         return ()
     size = f"{np.std(values):.3g} {unit} rms, no relation to the command at any lag"
     return (Seen("dead response", where, size, advice, "holds"),)
+
+
+def _noise_like(response: FloatArray) -> bool:
+    """Whether the samples before foretell little of a sample: white noise, or noise with a short memory."""
+    centred = response - response.mean()
+    rest = lfilter(_whitening(centred), [1.0], centred)[ORDER:]
+    return bool(np.var(rest) > UNFORETOLD * np.var(centred))
 
 
 def _explained(command: FloatArray, response: FloatArray) -> bool:
