@@ -6,16 +6,17 @@ from ..ident.plant import Plant
 from .situation import Situation
 
 _SETTLINGS = 5.0  # settling times that are watched at least
+SEARCHED = 3.5  # the same in the search, whose steady values are exact and whose stability is counted, not watched
 
 
-def first_horizon(plant: Plant, situation: Situation) -> float:
+def first_horizon(plant: Plant, situation: Situation, settlings: float = _SETTLINGS) -> float:
     """Horizon in s before anything is simulated: five times the slowest time asked for, or the plant's own pace."""
     setting = situation.setting
     delay = plant.dead_time + setting.computation_delay + setting.update_interval
     asked = [item.limit for item in situation.items if item.name in ("settling_time", "disturbance_recovery")]
     rises = [2.0 * item.limit for item in situation.items if item.name == "rise_time"]
     times = asked or rises or [natural_time(plant, situation)]
-    return max(_SETTLINGS * max(times), 12.0 * delay, 60.0 * setting.update_interval)
+    return max(settlings * max(times), 12.0 * delay, 60.0 * setting.update_interval)
 
 
 def natural_time(plant: Plant, situation: Situation) -> float:

@@ -33,7 +33,7 @@ def trajectory(gains: Gains, nominal: Plant, plausible: Plausible, situation: Si
         filter_time=setting.response_filter_time,
         points=1,
     )
-    which = np.arange(len(bank.plants))
+    which = np.arange(bank.lag.size)
     law = law_columns(columns_of([gains]), bank.interval).take(np.zeros(which.size, dtype=int))
     offset = np.concatenate([[0.0], situation.operating_command - some.operating_command])
     rest = rest_at(bank, which, law, np.full(which.size, situation.start), offset)

@@ -17,6 +17,7 @@ from .sampled.pulse import law_response, setpoint_response
 from .situation import DISTURBED, STEP, Situation
 from .steady import rest_at, stiction_error
 
+_STAND_IN = 300  # samples of the stand-in over the search's horizon
 _RAMP = 1e-3  # of the lowest grid frequency: where the limit z -> 1 of the ramp error is taken
 
 
@@ -73,18 +74,25 @@ class Values:
 
 
 def bench_of(
-    plausible: Plausible, situation: Situation, horizon: float, *, stand_in: bool = False, most: int = 20_000, grid: int = 160
+    plausible: Plausible,
+    situation: Situation,
+    horizon: float,
+    *,
+    stand_in: bool = False,
+    most: int = 20_000,
+    grid: int = 160,
 ) -> Bench:
     """Discretise the plants for a horizon in s; `stand_in` allows a coarser interval, for the search only."""
     setting = situation.setting
     exact = _bank(plausible, situation, setting.update_interval, _points(horizon / setting.update_interval))
     least = float(exact.delay.min())
     running = exact
-    if stand_in and horizon > 500 * setting.update_interval:
+    if stand_in and horizon > 1.2 * _STAND_IN * setting.update_interval:
         longest = setting.update_interval + 2.0 * least + 0.002 * horizon
-        running = _bank(plausible, situation, min(horizon / 400, longest), 4)
+        running = _bank(plausible, situation, min(horizon / _STAND_IN, longest), 4)
     samples = int(min(np.ceil(horizon / running.interval) + 1, most))
-    return Bench(plausible, situation, exact, spectra_of(exact, grid), running, samples, _coarse(plausible, situation, exact))
+    coarse = _coarse(plausible, situation, exact)
+    return Bench(plausible, situation, exact, spectra_of(exact, grid), running, samples, coarse)
 
 
 def _bank(plausible: Plausible, situation: Situation, interval: float, points: int) -> Bank:
@@ -159,7 +167,7 @@ def _damping(bench: Bench, which: IndexArray, law: LawColumns, stable: NDArray[n
 
 
 def following_time(spectra: Spectra, which: IndexArray, law: LawColumns) -> FloatArray:
-    """(c,) steady lag behind a ramp, s: limit of (1 - y/r) T/(z - 1) as z -> 1; inf without integral action in the loop."""
+    """(c,) steady lag behind a ramp, s: limit of (1 - y/r) T/(z - 1) as z -> 1; inf without an integral."""
     lags = []
     for share in (_RAMP, 0.5 * _RAMP):
         near = 1.0 + share * spectra.frequency[0, which] * spectra.interval
@@ -169,7 +177,8 @@ def following_time(spectra: Spectra, which: IndexArray, law: LawColumns) -> Floa
         lags.append((1.0 - tracked.real) * spectra.interval / (near - 1.0))
     first, second = lags
     steady = np.abs(2.0 * second - first)
-    return np.where(np.abs(second) > 1.7 * np.abs(first), np.where(steady > 1e3 * spectra.interval, np.inf, steady), steady)
+    growing = np.abs(second) > 1.7 * np.abs(first)
+    return np.where(growing & (steady > 1e3 * spectra.interval), np.inf, steady)
 
 
 class _Stepped:
@@ -220,6 +229,7 @@ class _Stepped:
         low = -np.inf if clamp.lowest is None else clamp.lowest
         high = np.inf if clamp.highest is None else clamp.highest
         change = np.inf if clamp.rate is None else clamp.rate * self.bench.running.interval
+        rate = self.situation.limits.response_rate
         return simulate(
             self.bench.running,
             self.which,
@@ -228,7 +238,7 @@ class _Stepped:
             disturbance=disturbance,
             clamps=Clamps(low - command, high - command, change),
             samples=self.bench.samples,
-            rates=self.situation.limits.response_rate is not None,
+            rates=rate is not None and bool(np.isfinite(rate)),
         )
 
     def _read_step(self, history: History, final: FloatArray, goal: FloatArray) -> None:

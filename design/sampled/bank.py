@@ -7,7 +7,7 @@ import numpy as np
 from numpy.typing import NDArray
 from scipy.linalg import expm
 
-from ...ident.plant import Plant
+from ...ident.plant import ComplexArray, Plant
 from ...ident.run import FloatArray
 
 IndexArray = NDArray[np.int64]
@@ -49,7 +49,8 @@ class Bank:
         One whole sample: of x, u[k-d-1] and u[k-d].
     filtered : bool
         Whether the controller sees the last state instead of the response.
-    plants : tuple of Plant
+    poles : (p, n) complex array, 1/s
+        Of the plants, NaN where one has fewer.
     """
 
     interval: float
@@ -67,7 +68,7 @@ class Bank:
     arrive_old: FloatArray
     arrive_new: FloatArray
     filtered: bool
-    plants: tuple[Plant, ...]
+    poles: ComplexArray
 
 
 def build_bank(
@@ -98,6 +99,7 @@ def build_bank(
     models = [_companion(plant, interval) for plant in plants]
     order = max(len(model.input) for model in models)
     a, b, c, direct = _padded(models, order, interval)
+    poles = _poles(models, order)
     if filter_time > 0.0:
         a, b, c = _with_filter(a, b, c, direct, filter_time)
     delay = np.maximum([plant.dead_time + computation_delay for plant in plants], 0.0)
@@ -105,7 +107,7 @@ def build_bank(
     phi, old, new = _sub_steps(a, b, interval, part, points)
     output = np.concatenate([c, np.zeros_like(c[:, :1])], axis=1) if filter_time > 0.0 else c
     return _assemble(
-        plants, interval, points, a, b, output, direct, phi, old, new, whole, delay, part, filter_time > 0.0
+        plants, interval, points, a, b, output, direct, phi, old, new, whole, delay, part, filter_time > 0.0, poles
     )
 
 
@@ -154,6 +156,19 @@ def _padded(
         n = model.input.size
         a[i, :n, :n], b[i, :n], c[i, :n] = model.system, model.input, model.output
     return a, b, c, np.array([model.direct for model in models])
+
+
+def _poles(models: list[_Model], order: int) -> ComplexArray:
+    """(p, order) eigenvalues, the models of one size together; NaN where a plant has fewer."""
+    poles = np.full((len(models), order), np.nan + 0j)
+    sizes = np.array([model.input.size for model in models])
+    for size in np.unique(sizes[sizes > 0]):
+        index = np.flatnonzero(sizes == size)
+        systems = np.array([models[i].system for i in index])
+        found = np.linalg.eigvals(systems).astype(np.complex128)
+        standing = np.abs(found) <= 1e-9 * np.abs(systems).max(axis=(1, 2))[:, None]
+        poles[index, :size] = np.where(standing, 0.0, found)
+    return poles
 
 
 def _with_filter(
@@ -214,6 +229,7 @@ def _assemble(
     delay: FloatArray,
     part: FloatArray,
     filtered: bool,
+    poles: ComplexArray,
 ) -> Bank:
     order = b.shape[1]
     seen = np.zeros((order + 1, len(plants)))
@@ -233,12 +249,12 @@ def _assemble(
         np.asarray(delay, dtype=float),
         np.array([plant.integrators for plant in plants]),
         np.array([plant.static_gain for plant in plants]),
-        np.array([int(np.sum(plant.poles.real > 1e-12 * np.abs(plant.poles))) for plant in plants]),
+        np.sum(poles.real > 1e-12 * np.abs(poles), axis=1),
         np.ascontiguousarray(phi[-1].transpose(1, 2, 0)),
         np.ascontiguousarray(old[-1].T),
         np.ascontiguousarray(new[-1].T),
         filtered,
-        tuple(plants),
+        poles,
     )
 
 

@@ -10,7 +10,6 @@ from ..discretise import LawColumns
 from .bank import Bank, IndexArray
 
 
-
 @dataclass(frozen=True, eq=False)
 class Clamps:
     """Bounds of each column in deviations from its own steady state before the step; +-inf is unbounded.
@@ -81,7 +80,44 @@ def simulate(
     samples : int
     rates : bool
         Whether the slope of the response is wanted.
+
+    Notes
+    -----
+    Bounds in level are first left out, and the columns that pass them run again: most never meet their clamp.
     """
+    if clamps.free or np.isfinite(clamps.change):
+        return _run(bank, which, law, setpoint, disturbance, clamps, samples, rates)
+    free = _run(bank, which, law, setpoint, disturbance, _unbounded(which.size), samples, rates)
+    with np.errstate(invalid="ignore"):
+        inside = (free.command.max(axis=0) <= clamps.highest) & (free.command.min(axis=0) >= clamps.lowest)
+    passed = np.flatnonzero(~inside)
+    limited = np.zeros(free.command.shape, dtype=bool)
+    if passed.size:
+        bounds = Clamps(clamps.lowest[passed], clamps.highest[passed])
+        part = _run(
+            bank, which[passed], law.take(passed), setpoint[passed], disturbance[passed], bounds, samples, rates
+        )
+        free.response[:, passed], free.command[:, passed] = part.response, part.command
+        limited[:, passed] = False if part.limited is None else part.limited
+        if free.rate is not None and part.rate is not None:
+            free.rate[passed] = part.rate
+    return History(free.response, free.command, limited, free.rate)
+
+
+def _unbounded(count: int) -> Clamps:
+    return Clamps(np.full(count, -np.inf), np.full(count, np.inf))
+
+
+def _run(
+    bank: Bank,
+    which: IndexArray,
+    law: LawColumns,
+    setpoint: FloatArray,
+    disturbance: FloatArray,
+    clamps: Clamps,
+    samples: int,
+    rates: bool,
+) -> History:
     run = _Columns(bank, which, law, setpoint, clamps, samples)
     with np.errstate(over="ignore", invalid="ignore"):
         rate = run.go(disturbance, bank.rate[:, :, which] if rates else None)

@@ -90,7 +90,7 @@ def frequency_grid(bank: Bank, size: int) -> FloatArray:
 
 def _plant_grid(bank: Bank, i: int, size: int) -> FloatArray:
     top = np.pi / bank.interval
-    poles = bank.plants[i].poles
+    poles = bank.poles[i][np.isfinite(bank.poles[i])]
     moving = np.abs(poles)[np.abs(poles) > 0.0]
     turn = bank.delay[i] + 0.5 * bank.interval
     paces = [*moving, 1.0 / turn]

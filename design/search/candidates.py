@@ -25,12 +25,15 @@ class Space:
         Of the plant's gain.
     interval : float, s
         Update interval.
+    quick : float, s
+        The derivative filter is not slower than this (nor faster than half an update interval).
     weighted : bool
     """
 
     structure: str
     sign: float
     interval: float
+    quick: float
     weighted: bool = False
 
     @property
@@ -58,8 +61,8 @@ class Space:
         return GainColumns(self.structure, main, integral, main * time, lag, weight, zero, pole)
 
     def filter_time(self, derivative_time: FloatArray) -> FloatArray:
-        """Td/8, but not under half an update interval."""
-        return np.maximum(derivative_time / FILTER_SHARE, 0.5 * self.interval)
+        """Td/8; not above `quick`, where Td is long because P is small, and not under half an update interval."""
+        return np.maximum(np.minimum(derivative_time / FILTER_SHARE, self.quick), 0.5 * self.interval)
 
     def _network(self, rest: FloatArray) -> tuple[FloatArray, FloatArray]:
         spread = np.clip(rest[1], 1.05, 20.0)

@@ -9,14 +9,14 @@ from ...ident.fitted import Plausible
 from ...ident.plant import Plant
 from ...ident.run import FloatArray
 from ..designed import Tried
-from ..horizon import first_horizon
+from ..horizon import SEARCHED, first_horizon
 from ..requirements import Requirement, StructureName
 from ..situation import STEP, Situation
 from ..values import Bench, bench_of
 from .candidates import Space, can_weight
 from .objective import Scores, spare_plants
 from .polish import Found, extremes, polish
-from .starts import coarse_search
+from .starts import coarse_search, pace
 from .structures import Plan
 
 Progress = Callable[[str, float], None]
@@ -24,6 +24,7 @@ Progress = Callable[[str, float], None]
 PLANTS = 200
 ENOUGH = 0.05  # slack at which a simpler structure is taken as it is
 _BETTER = 0.03  # a richer structure must win by this when a simpler one is feasible
+_FILTER = 0.15  # rad; turn of the derivative filter at the pace of the plant, at most
 _LEFT_OVER = 0.02  # of the step: offset of P and PD that passes without being asked for
 
 
@@ -63,7 +64,7 @@ def search(nominal: Plant, plausible: Plausible, situation: Situation, plan: Pla
     count = min(PLANTS, len(plausible.plants))
     used = np.unique(np.linspace(0, len(plausible.plants) - 1, count).astype(int))
     some = with_nominal(nominal, plausible.take(used.tolist()), situation)
-    horizon = first_horizon(nominal, situation)
+    horizon = first_horizon(nominal, situation, SEARCHED)
     bench = bench_of(some, situation, horizon, stand_in=True, grid=90)
     best: Found | None = None
     tried: list[Tried] = list(plan.skipped)
@@ -84,7 +85,8 @@ def best_of(structure: StructureName, nominal: Plant, bench: Bench) -> Found:
     """The best law of one structure on the bench."""
     sign = -1.0 if nominal.static_gain < 0.0 else 1.0
     weighted = can_weight(structure) and bench.situation.step != 0.0 and bench.situation.asks(STEP)
-    space = Space(structure, sign, bench.exact.interval, weighted)
+    quick = _FILTER / pace(bench, extremes(bench)[:3])
+    space = Space(structure, sign, bench.exact.interval, quick, weighted)
     starts, _ = coarse_search(bench, space, extremes(bench)[:3], keep=4)
     generations = 6 + 4 * space.size
     return polish(bench, space, starts, rounds=3, generations=generations, seed=20 + space.size)

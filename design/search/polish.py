@@ -58,10 +58,12 @@ def extremes(bench: Bench) -> IndexArray:
 
 
 def _pole_features(bench: Bench) -> list[FloatArray]:
-    sizes = [np.sort(np.abs(plant.poles[np.abs(plant.poles) > 0.0])) for plant in bench.exact.plants]
-    slow = np.array([s[0] if s.size else 1.0 for s in sizes])
-    fast = np.array([s[-1] if s.size else 1.0 for s in sizes])
-    return [np.log(slow), np.log(fast)]
+    sizes = np.abs(bench.exact.poles)
+    moving = sizes > 0.0
+    slow = np.where(moving, sizes, np.inf).min(axis=1, initial=np.inf)
+    fast = np.where(moving, sizes, 0.0).max(axis=1, initial=0.0)
+    known = moving.any(axis=1)
+    return [np.log(np.where(known, slow, 1.0)), np.log(np.where(known, fast, 1.0))]
 
 
 def _standardised(feature: FloatArray) -> FloatArray:
@@ -72,7 +74,7 @@ def _standardised(feature: FloatArray) -> FloatArray:
 def check(bench: Bench, space: Space, point: FloatArray) -> Found:
     """One point on every plant of the bench."""
     gains = space.gains(point[None])
-    scores = scores_of(bench, np.arange(len(bench.exact.plants)), gains)
+    scores = scores_of(bench, np.arange(len(bench.plausible.plants)), gains)
     slack = float(scores.at_share(bench.situation.requirements.confidence)[0])
     return Found(space, point, slack, float(wish(np.array([slack]), gains, bench.situation)[0]), scores)
 

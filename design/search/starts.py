@@ -10,6 +10,7 @@ from ..values import Bench
 from .candidates import Space
 from .objective import scores_of, wish
 
+_LIGHT = 0.4  # damping ratio under which a pair wants damping by the derivative
 _TINY = 1e-9  # gain at which every loop of this kind is still left of its first crossing
 
 
@@ -44,8 +45,9 @@ def zero_grid(space: Space, bench: Bench, plants: IndexArray) -> FloatArray:
     """(g, zeros [+ 1]) zeros and setpoint weight to try, spread round the pace of the plants."""
     ultimate = pace(bench, plants)
     slow = 1.0 / _longest_time(bench)
-    reset = np.geomspace(min(0.3 * slow, 0.02 * ultimate), max(1.5 * ultimate, 2.0 * slow), 12)
-    lead = np.geomspace(0.08 / ultimate, max(2.5 / ultimate, 0.5 / slow), 6)
+    swing = _swing(bench)
+    reset = np.geomspace(min(0.3 * slow, 0.02 * ultimate), max(1.5 * ultimate, 2.0 * slow, 6.0 * swing), 12)
+    lead = np.geomspace(0.08 / ultimate, max(2.5 / ultimate, 0.5 / slow, 10.0 / swing if swing else 0.0), 6)
     grids = {
         "PI": [reset],
         "PD": [np.geomspace(0.05 / ultimate, max(4.0 / ultimate, 1.0 / slow), 10)],
@@ -61,10 +63,17 @@ def zero_grid(space: Space, bench: Bench, plants: IndexArray) -> FloatArray:
     return np.concatenate([light, np.column_stack([shapes, np.full(shapes.shape[0], 0.4)])])
 
 
+def _swing(bench: Bench) -> float:
+    """Natural frequency of a lightly damped pair of the fitted plant, rad/s; 0 where there is none."""
+    poles = bench.plausible.plants[0].poles
+    light = np.abs(poles[(poles.imag > 0.0) & (np.abs(poles.real) < _LIGHT * np.abs(poles))])
+    return float(light.max()) if light.size else 0.0
+
+
 def _longest_time(bench: Bench) -> float:
-    poles = bench.exact.plants
-    sizes = [abs(p) for plant in poles[:5] for p in plant.poles if abs(p) > 0.0]
-    return 1.0 / min(sizes) if sizes else float(bench.exact.delay.max() + bench.exact.interval)
+    sizes = np.abs(bench.exact.poles[:5])
+    moving = sizes[sizes > 0.0]
+    return 1.0 / float(moving.min()) if moving.size else float(bench.exact.delay.max() + bench.exact.interval)
 
 
 def coarse_search(bench: Bench, space: Space, plants: IndexArray, keep: int) -> tuple[FloatArray, FloatArray]:
