@@ -15,6 +15,7 @@ from .unit_names import AMBIGUOUS, DEFINITIONS, NAMES, TEMPERATURES
 if TYPE_CHECKING:
     import pint
 
+MOST_POWER = 4  # of a unit inside another: s4 at most
 _QUANTITY = re.compile(r"\s*([+-]?(?:\d+(?:\.\d*)?|\.\d+)(?:[eE][+-]?\d+)?)(?![\d.,])\s*(.*?)\s*", re.DOTALL)
 _TOKEN = re.compile(r"\s*(?:(\*\*|\^)|([*·/()])|(-?\d+)|([^\W\d_°%]+0?|[°%][A-Z]{0,2}|deg_[CF]))")
 
@@ -180,6 +181,8 @@ def _rule(unit: str) -> str:
         return _delta(NAMES[text])
     if not text:
         raise UnitError("no unit", expected='a unit; "1" for a pure number')
+    if text in AMBIGUOUS:
+        raise UnitError("this unit has two meanings", found=f'"{unit}"', expected=AMBIGUOUS[text])
     expression: list[str] = []
     position = 0
     while position < len(text):
@@ -199,11 +202,13 @@ def _token_rule(match: re.Match[str], before: list[str], unit: str) -> str:
     if sign:
         return ("* (" if after_value else "(") if sign == "(" else sign.replace("·", "*")
     if number:
+        if abs(int(number)) > MOST_POWER:
+            raise _unknown(unit, unit)
         if before and before[-1] == "**":
             return f"({number})"
-        if after_value and abs(int(number)) <= 4:
+        if after_value:
             return f"** ({number})"
-        if number != "1" or after_value:
+        if number != "1":
             raise _unknown(unit, unit)
         return "(1)"
     if name in AMBIGUOUS:

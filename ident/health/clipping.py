@@ -1,28 +1,18 @@
 """A sensor at the end of its range: readings that stand still at the record's highest or lowest value."""
 
-from dataclasses import dataclass
-
 import numpy as np
 
 from ..run import FloatArray
 from .noise_level import quantum
 from .seen import BoolArray, Seen, stretches
 
-QUIET_SAMPLES = 4  # the command has stood still for this long where noise is looked at
-FEWEST_TRIPLES = 20
-TURNING_OF_NOISE = 0.35  # white noise turns at 2/3 of its samples, a smooth signal hardly ever
+FEWEST = 40  # samples to judge by
 STEEP = 4.0  # quanta from sample to sample
-CHANCE = 1e-6  # of a false finding in one record
-_SECOND_DIFFERENCE = 0.6744897501960817 * np.sqrt(6.0)  # median |second difference| of white noise of unit deviation
-
-
-@dataclass(frozen=True)
-class _End:
-    """One end of the record: its value, its name, and where it is reached."""
-
-    value: float
-    name: str
-    at: BoolArray
+WINDOW = 20  # neighbours in which the densest equals are looked for
+LEAST_CHANCE = 0.02
+FALSE_FINDS = 1e-6  # wished chance of a false finding in one record
+QUIET = 4  # samples for which the command has stood still
+TURNING = 0.2  # share of the samples at which the signal turns: white noise 2/3, a smooth signal hardly any
 
 
 def see_declared_clipping(
@@ -65,11 +55,12 @@ def _seen(time: FloatArray, runs: list[tuple[int, int]], words: str) -> Seen:
 
 
 def see_clipping(time: FloatArray, command: FloatArray, response: FloatArray, unit: str) -> tuple[Seen, ...]:
-    """Flat stretches at an extreme of a signal that is noisy elsewhere.
+    """Flat stretches at an extreme of a signal that is flat nowhere else.
 
-    Two samples of a steady signal with noise sigma and quantum q read the same with chance q/(2 sqrt(pi) sigma). The
-    equal neighbours at the extreme are counted against that chance. A signal whose noise is below its quantum is flat
-    for that reason, and nothing is said about it; nor about a flat start, where a rig without noise may have rested.
+    The equal neighbours at the extreme are counted against the chance of equal neighbours elsewhere, taken where they
+    are densest: a signal whose noise is below its resolution is flat at every rest, and nothing is said about it. Only
+    stretches that are entered by more than a few quanta count: a smooth signal settles and turns slowly. A flat start
+    may be a rig at rest, and so may a flat end where no noise is seen.
 
     Parameters
     ----------
@@ -78,80 +69,51 @@ def see_clipping(time: FloatArray, command: FloatArray, response: FloatArray, un
     response : (n,) array, in `unit`; NaN is left out
     """
     good = np.isfinite(response)
-    if np.count_nonzero(good) < 2 * FEWEST_TRIPLES or np.ptp(response[good]) == 0.0:
+    if np.count_nonzero(good) < FEWEST or np.ptp(response[good]) == 0.0:
         return ()
     time, command, response = time[good], command[good], response[good]
     found: list[Seen] = []
-    for end in _ends(response):
-        runs = [(first, last) for first, last in stretches(end.at) if last - first >= 3 and first >= 2]
-        if runs and _too_flat(command, response, end, runs):
-            found.append(_seen(time, runs, f"stand still at the record's {end.name} value {end.value:.6g} {unit}"))
+    for value, name in ((float(response.max()), "highest"), (float(response.min()), "lowest")):
+        at = response == value
+        runs = [run for run in stretches(at) if _tells(run, command, response, at)]
+        if runs and _too_flat(response, at, runs):
+            found.append(_seen(time, runs, f"stand still at the record's {name} value {value:.6g} {unit}"))
     return tuple(found)
 
 
-def _ends(response: FloatArray) -> tuple[_End, _End]:
-    high, low = float(response.max()), float(response.min())
-    return _End(high, "highest", response == high), _End(low, "lowest", response == low)
-
-
-def _too_flat(command: FloatArray, response: FloatArray, end: _End, runs: list[tuple[int, int]]) -> bool:
-    chance = _chance_of_equals(command, response, end, runs)
-    if chance is None:
+def _tells(run: tuple[int, int], command: FloatArray, response: FloatArray, at: BoolArray) -> bool:
+    """Whether a flat stretch can't be rest: three samples at least, entered steeply, not a quiet end of the record."""
+    first, last = run
+    if last - first < 3 or first < 2:
         return False
-    equal_pairs = sum(last - first - 1 for first, last in runs)
-    return equal_pairs * np.log(1.0 / chance) > np.log(len(response) / CHANCE)
+    steep = STEEP * quantum(response)
+    entered = (
+        abs(response[first] - response[first - 1]) > steep or abs(response[first - 1] - response[first - 2]) > steep
+    )
+    return bool(entered and (last < len(response) or _noisy(command, response, at)))
 
 
-def _chance_of_equals(
-    command: FloatArray, response: FloatArray, end: _End, runs: list[tuple[int, int]]
-) -> float | None:
-    """Chance that neighbours read the same away from this end; None where it can't be judged."""
-    inside = ~(end.at[:-2] | end.at[1:-1] | end.at[2:])
-    quiet = inside & _standing(command)[2:]
-    if np.count_nonzero(quiet) >= FEWEST_TRIPLES:
-        return _chance_in_noise(response, quiet)
-    return _chance_in_motion(command, response, inside, runs)
+def _too_flat(response: FloatArray, at: BoolArray, runs: list[tuple[int, int]]) -> bool:
+    elsewhere = ~(at[1:] & at[:-1])
+    equal = (np.diff(response) == 0.0)[elsewhere]
+    if len(equal) < FEWEST:
+        return False
+    chance = float(np.clip(1.5 * _densest(equal), LEAST_CHANCE, 1.0))
+    pairs = sum(last - first - 1 for first, last in runs)
+    return pairs * np.log(1.0 / chance) > np.log(len(response) / FALSE_FINDS)
 
 
-def _standing(command: FloatArray) -> BoolArray:
-    """(n,) mask: the command is what it was for the last samples."""
-    moved = np.concatenate([[False], np.diff(command) != 0.0])
-    recent = np.convolve(moved, np.ones(QUIET_SAMPLES), mode="full")[: len(command)]
-    return np.asarray(recent == 0)
-
-
-def _chance_in_noise(response: FloatArray, quiet: BoolArray) -> float | None:
-    first = np.diff(response)
-    turning = (first[:-1] * first[1:])[quiet] < 0.0
-    if np.mean(turning) < TURNING_OF_NOISE:
-        return None
-    level = float(np.median(np.abs(np.diff(response, 2)[quiet])) / _SECOND_DIFFERENCE)
-    step = quantum(response)
-    if level < 0.8 * step:
-        return None
-    equal = (first[1:] == 0.0)[quiet]
-    return float(np.clip(max(1.5 * step / (2.0 * np.sqrt(np.pi) * level), _densest(equal)), 0.01, 0.9))
-
-
-def _densest(equal: BoolArray, width: int = 40) -> float:
-    """Largest share of equal neighbours in any stretch of `width`."""
-    if len(equal) < width:
-        return float(np.mean(equal))
+def _densest(equal: BoolArray) -> float:
+    """Largest share of equal neighbours in any short stretch."""
+    width = min(WINDOW, len(equal))
     return float(np.convolve(equal, np.ones(width) / width, mode="valid").max())
 
 
-def _chance_in_motion(
-    command: FloatArray, response: FloatArray, inside: BoolArray, runs: list[tuple[int, int]]
-) -> float | None:
-    """The same for a command that never stands still: the share of equal neighbours elsewhere.
-
-    A smooth peak of a coarse signal is flat too, but is not reached steeply.
-    """
-    steep = all(abs(response[first - 1] - response[first - 2]) > STEEP * quantum(response) for first, _ in runs)
-    if np.count_nonzero(inside) < 3 * FEWEST_TRIPLES or not steep:
-        return None
-    moving = sum(len(np.unique(command[first:last])) > 1 for first, last in runs)
-    equal = (np.diff(response)[1:] == 0.0)[inside]
-    if 2 * moving < len(runs) or _densest(equal) > 0.3:
-        return None
-    return float(np.clip(_densest(equal), 0.02, 0.9))
+def _noisy(command: FloatArray, response: FloatArray, at: BoolArray) -> bool:
+    """Whether the response turns again and again while the command stands still, away from the extreme."""
+    moved = np.concatenate([[False], np.diff(command) != 0.0])
+    standing = np.convolve(moved, np.ones(QUIET), mode="full")[: len(command)] == 0
+    inside = (standing & ~at)[2:] & ~at[1:-1] & ~at[:-2]
+    steps = np.diff(response)
+    turning = (steps[:-1] * steps[1:])[inside] < 0.0
+    return len(turning) >= FEWEST // 2 and bool(np.mean(turning) > TURNING)

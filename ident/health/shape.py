@@ -9,7 +9,6 @@ from .seen import Seen
 FEWEST_SAMPLES = 16
 FEW_SAMPLES = 40
 COARSE = 0.02  # quantum over span of the response
-FEWEST_LEVELS = 5
 MOST_STEPS = 10  # beyond them a record is one long excitation
 UNSETTLED = 0.05  # drift before the excitation over span of the response
 
@@ -32,12 +31,6 @@ def see_coarse(response: FloatArray, unit: str) -> tuple[Seen, ...]:
     if levels < 2 or step < COARSE * span:
         return ()
     size = f"steps of {step:.3g} {unit}, {levels} different values"
-    if levels < FEWEST_LEVELS:
-        return (
-            Seen(
-                "coarse response", "whole record", size, "use a finer range of the sensor or a larger command", "holds"
-            ),
-        )
     return (
         Seen("coarse response", "whole record", size, "a finer range of the sensor or a larger command would help"),
     )
