@@ -6,7 +6,7 @@ from typing import Any
 
 from ..design.designed import Design, Judged
 from .cautions import FIRST_RUN
-from .figures.words import number, plain, with_unit
+from .figures.words import number, one_line, with_unit
 from .forms_as_printed import forms_as_printed
 from .outcome import Outcome
 from .report import words
@@ -34,7 +34,7 @@ def verdict_text(outcome: Outcome, width: int = 100, *, colour: bool) -> str:
     """
     paint = _Paint(colour)
     width = max(60, min(width, 120))
-    parts = [_headline(outcome, paint), *_reasons(outcome, width)]
+    parts = [_headline(outcome, paint, width), *_reasons(outcome, width)]
     if outcome.design is not None:
         parts += ["", *_gains(outcome, outcome.design, paint, width)]
         parts += ["", *_requirements(outcome.design, paint)]
@@ -54,18 +54,16 @@ class _Paint:
         return f"\x1b[{_CODES[kind]}m{text}\x1b[0m" if self.on else text
 
 
-def _clean(text: str) -> str:
-    return plain(text).replace(r"\$", "$")
-
-
-def _headline(outcome: Outcome, paint: _Paint) -> str:
+def _headline(outcome: Outcome, paint: _Paint, width: int) -> str:
     mark = paint(words.headline(outcome), "good" if outcome.status == "released" else "bad")
     said = (
-        "checked by calculation; the person responsible for the rig still approves"
+        "checked by calculation; the responsible person still approves"
         if outcome.status == "released"
         else "don't load these gains"
     )
-    return f"{mark}  {_clean(outcome.rig.name)}: {said}"
+    room = max(12, width - len(words.headline(outcome)) - len(said) - 4)
+    name = one_line(outcome.rig.name)
+    return f"{mark}  {name if len(name) <= room else name[: room - 1] + '…'}: {said}"
 
 
 def _reasons(outcome: Outcome, width: int) -> Iterator[str]:
@@ -73,7 +71,7 @@ def _reasons(outcome: Outcome, width: int) -> Iterator[str]:
 
 
 def _bullets(items: Iterable[str], width: int, most: int, what: str) -> Iterator[str]:
-    texts = [_clean(item) for item in items]
+    texts = [one_line(item) for item in items]
     for text in texts[:most]:
         yield from textwrap.wrap(text, width, initial_indent="  - ", subsequent_indent="    ")
     if len(texts) > most:
@@ -161,7 +159,7 @@ def _held_out(outcome: Outcome, width: int) -> Iterator[str]:
     if not outcome.closing:
         yield "No held-out run."
     for compared in outcome.closing:
-        text = f"Held-out {_clean(compared.label)} {compared.verdict}: {_clean(compared.why)}"
+        text = f"Held-out {one_line(compared.label)} {compared.verdict}: {one_line(compared.why)}"
         yield from textwrap.wrap(text, width, subsequent_indent="  ")
 
 

@@ -54,7 +54,16 @@ def at_gain(loop: OpenLoop, lines: tuple[ComplexArray, ...], gain: float) -> Com
         for place in np.flatnonzero((size[:-1] <= 0.0) & (size[1:] > 0.0) & np.isfinite(size[1:] - size[:-1])):
             share = -size[place] / (size[place + 1] - size[place])
             found.append(complex(line[place] + share * (line[place + 1] - line[place])))
-    return np.asarray(found, dtype=np.complex128)
+    return _settled(loop, np.asarray(found, dtype=np.complex128), gain)
+
+
+def _settled(loop: OpenLoop, s: ComplexArray, gain: float) -> ComplexArray:
+    """Interpolated points moved onto closed-loop poles by Newton's method on ln(-K G_L) = 0."""
+    with np.errstate(all="ignore"):
+        for _ in range(4):
+            step = np.log(-gain * loop.at(s)) / loop.log_derivative(s)
+            s = np.where(np.abs(step) < 0.05 * np.abs(s), s - step, s)
+    return s
 
 
 def _contours(loop: OpenLoop, view: View) -> list[ComplexArray]:
@@ -87,7 +96,7 @@ def _polished(loop: OpenLoop, line: ComplexArray) -> list[ComplexArray]:
     with np.errstate(all="ignore"):
         positive = (-loop.at(s)).real > 0.0
         reach = 4.0 * np.abs(np.gradient(s))
-        for _ in range(3):
+        for _ in range(4):
             step = 1j * np.angle(-loop.at(s)) / loop.log_derivative(s)
             s = np.where(np.isfinite(step) & (np.abs(step) < reach), s - step, s)
         good = positive & (np.abs(np.angle(-loop.at(s))) < _OFF)

@@ -7,13 +7,14 @@ from typing import TYPE_CHECKING, Any
 from xml.sax.saxutils import escape, quoteattr
 
 from .look import PALETTE
+from .words import one_line
 
 if TYPE_CHECKING:
     from matplotlib.figure import Figure
 
 FONT = "system-ui, sans-serif"
 _FAMILY = re.compile(r"(font: (?:[\w.]+ )*?[\d.]+px )[^;\"]+")
-_EMPTY_ID = re.compile(r'<g id="[a-z_A-Z0-9.]+">')
+_GROUP_ID = re.compile(r'<g id="[a-z_A-Z0-9.]+"(/?)>')
 _STYLE = re.compile(r'style="[^"<>]*"')
 _COLOUR = re.compile(r"#[0-9a-f]{6}\b")
 
@@ -29,12 +30,14 @@ def inline_svg(figure: "Figure", name: str, title: str) -> str:
     title : str
         Read aloud by a screen reader; may hold anything.
     """
+    title = one_line(title)
     body = _drawn(figure, name)
     body = body[body.index("<svg") :]
     body = re.sub(r"<metadata>.*?</metadata>", "", body, flags=re.DOTALL)
     body = re.sub(r"<style[^>]*>.*?</style>", "", body, flags=re.DOTALL)
     body = re.sub(r"<!--.*?-->\s*", "", body, flags=re.DOTALL)
-    body = _EMPTY_ID.sub("<g>", body)
+    body = _GROUP_ID.sub(r"<g\1>", body)
+    body = re.sub(r"<g/>\s*", "", body)
     body = _FAMILY.sub(r"\1var(--picture-font, sans-serif)", body)
     body = _STYLE.sub(lambda found: _COLOUR.sub(_variable, found[0]), body)
     body = re.sub(r"<defs>\s*</defs>\s*", "", body)

@@ -3,18 +3,27 @@
 import math
 
 
+def one_line(text: str) -> str:
+    r"""A name without the signs that break a line, a file or a terminal.
+
+    Examples
+    --------
+    >>> one_line("a\nb\x1b[31m")
+    'a b[31m'
+    """
+    spaced = "".join(" " if sign in "\t\r\n\u2028\u2029" else sign for sign in text)
+    return "".join(sign for sign in spaced if _shown(sign))
+
+
 def plain(text: str) -> str:
-    r"""A name as it may stand in a picture: nothing in it is markup, nothing breaks the file.
+    r"""A name as it may stand in a picture: on one line, and its dollar signs are letters.
 
     Examples
     --------
     >>> plain("$x_1$")
     '\\$x_1\\$'
-    >>> plain("a\nb\x1b[31m")
-    'a b[31m'
     """
-    spaced = "".join(" " if sign in "\t\r\n\u2028\u2029" else sign for sign in text)
-    return "".join(sign for sign in spaced if _shown(sign)).replace("$", r"\$")
+    return one_line(text).replace("$", r"\$")
 
 
 def _shown(sign: str) -> bool:

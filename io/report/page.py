@@ -56,7 +56,7 @@ def _resource(name: str) -> str:
 
 
 def _style() -> str:
-    dark = f"@media (prefers-color-scheme: dark) {{ :root {{ {variables('dark')} }} }}"
+    dark = f"@media screen and (prefers-color-scheme: dark) {{ :root {{ {variables('dark')} }} }}"
     return f":root {{ {variables('light')} }} {dark}\n{_resource('look.css')}"
 
 
@@ -98,6 +98,7 @@ def _designed(outcome: Outcome, design: Design) -> dict[str, Any]:
     return {
         "checked": words.checked_on(design, rig.requirements.confidence),
         "action": words.action(design),
+        "use": words.USE if outcome.status == "released" else words.STUDY,
         "forms": tables.forms(forms_as_printed(design.gains, rig.command_unit, rig.response_unit)),
         "settings": _settings(outcome, design),
         "law": law_text(design.law),

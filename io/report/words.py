@@ -13,6 +13,8 @@ RELEASED = (
     "approves."
 )
 HELD = "Don't load these gains. What speaks against them:"
+USE = "Use one form only, the one that your controller is built in; times in seconds."
+STUDY = "They are the best that was found, and they are not released. Times in seconds."
 FORMS = {
     "parallel": "P + I/s on the error, D s/(Tf s + 1) on minus the response",
     "standard": "G (1 + 1/(Ti s) + Td s/(Tf s + 1))",
