@@ -4,7 +4,7 @@ The interface is that of linear_stages.
 """
 
 from collections.abc import Callable
-from math import exp
+from math import exp, sin
 
 import numpy as np
 
@@ -170,13 +170,20 @@ class Disturbed:
         return direct(1.0)
 
 
-def waves(generator: np.random.Generator, amplitude: float, periods: tuple[float, ...]) -> Callable[[float], float]:
-    """A seeded sum of slow sines of about the given periods (s), zero at the start, of the given rms amplitude."""
+def waves(
+    generator: np.random.Generator, amplitude: float, periods: tuple[float, ...], from_zero: bool = True
+) -> Callable[[float], float]:
+    """A seeded sum of slow sines of about the given periods (s) and the given rms amplitude.
+
+    `from_zero` shifts it to start at zero; without it the mean is zero, as an integrating rig needs.
+    """
     rates = 2.0 * np.pi / (np.asarray(periods) * generator.uniform(0.85, 1.15, len(periods)))
     phases = generator.uniform(0.0, 2.0 * np.pi, len(periods))
     each = amplitude * np.sqrt(2.0 / len(periods))
+    terms = list(zip(rates.tolist(), phases.tolist(), strict=True))
+    shift = sum(sin(phase) for _, phase in terms) if from_zero else 0.0
 
     def value(t: float) -> float:
-        return float(each * np.sum(np.sin(rates * t + phases) - np.sin(phases)))
+        return float(each * (sum(sin(rate * t + phase) for rate, phase in terms) - shift))
 
     return value

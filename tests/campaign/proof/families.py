@@ -189,7 +189,8 @@ def draw(family: str, generator: np.random.Generator) -> Drawn:
     sign = 1.0 if generator.random() < 0.6 else -1.0
     gain = sign * swing / amplitude / (body.dwell if body.integrating else 1.0)
     small = [scale * generator.uniform(0.005, 0.03) if generator.random() < 0.6 else 0.0 for _ in range(2)]
-    rate = (highest - lowest) / (body.base * generator.uniform(0.1, 0.4)) if generator.random() < 0.35 else np.inf
+    quick = 4.0 * body.times[0] if "resonance" in family else body.base
+    rate = (highest - lowest) / (quick * generator.uniform(0.05, 0.2)) if generator.random() < 0.35 else np.inf
     bend = generator.uniform(-0.08, 0.08) / amplitude if generator.random() < 0.4 and not body.integrating else 0.0
     stages = (
         Actuator(lowest, highest, small[0], float(rate)),
