@@ -83,6 +83,12 @@ class OpenLoop:
         return self.numerator[0] / self.denominator[0]
 
     @property
+    def static_gain(self) -> float:
+        """Limit of s^k G_L(s) for s to zero with k poles at the origin: position, velocity, acceleration constant."""
+        integrators = len(self.denominator) - len(_without_tail(self.denominator))
+        return self.numerator[-1] / self.denominator[len(self.denominator) - 1 - integrators]
+
+    @property
     def relative_degree(self) -> int:
         """Poles less zeros, the hold not counted."""
         return len(self.denominator) - len(self.numerator)
@@ -183,6 +189,10 @@ def _stripped(polynomial: Coefficients, name: str) -> Coefficients:
     if first is None:
         raise RequestError("the polynomial is zero", where=f"open loop, {name}", found=str(values))
     return values[first:]
+
+
+def _without_tail(polynomial: Coefficients) -> Coefficients:
+    return tuple(np.trim_zeros(np.asarray(polynomial), "b"))
 
 
 def _roots(polynomial: Coefficients) -> ComplexArray:
