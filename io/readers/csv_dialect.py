@@ -101,11 +101,12 @@ def sniff(lines: Sequence[str], said: LogDialect, where: str) -> CsvDialect:
         When there are no rows of numbers, or the header doesn't fit them.
     """
     start = 0 if said.first_row is None else said.first_row - 1
+    quoted = any('"' in line for line in lines)
     candidates = [
         found
         for separator in ([said.separator] if said.separator else SEPARATORS)
         for decimal in ([said.decimal] if said.decimal else [".", ","])
-        if separator != decimal and (found := _try(lines, start, separator, decimal, said)) is not None
+        if (separator != decimal or quoted) and (found := _try(lines, start, separator, decimal, said)) is not None
     ]
     if not candidates:
         raise RecordError(
