@@ -126,8 +126,9 @@ def from_series(form: Timed, structure: str) -> Gains:
 
     Examples
     --------
-    >>> from_series(Timed(2.0, 8.0, 2.0, 0.0), "PID")
-    Gains(structure='PID', proportional=2.5, integral=0.25, derivative=4.0, filter_time=0.0, setpoint_weight=1.0, zero=None, pole=None)
+    >>> gains = from_series(Timed(2.0, 8.0, 2.0, 0.0), "PID")
+    >>> gains.proportional, gains.integral, gains.derivative
+    (2.5, 0.25, 4.0)
     """
     lag, lead = form.filter_time or 0.0, form.derivative_time or 0.0
     integral = form.gain / form.integral_time if form.integral_time else 0.0

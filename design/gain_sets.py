@@ -104,7 +104,7 @@ def factor_grid(bench: Bench, gains: GainColumns) -> FloatArray:
 def intervals_of(
     holds: Holds, grid: FloatArray, *, rounds: int = _ROUNDS, inside: int = _INSIDE
 ) -> list[tuple[GainInterval, ...]]:
-    """Intervals of each row of `holds`, their edges closed in by sections; an end of the grid that holds is followed out."""
+    """Intervals of each row of `holds`, edges closed in by sections; an end of the grid that holds is followed out."""
     table = holds(grid)
     row, place = np.nonzero(table[:, 1:] != table[:, :-1])
     left, right = grid[place], grid[place + 1]

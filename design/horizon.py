@@ -30,7 +30,7 @@ def natural_time(plant: Plant, situation: Situation) -> float:
 
 
 def watched_long_enough(horizon: float, settled: np.ndarray) -> float:
-    """Horizon needed for the settling times found: five times the longest finite one, or twice as long if any is not."""
+    """Horizon needed for the settling times found: five of the longest finite one, or twice as long if any is not."""
     known = settled[np.isfinite(settled)]
     wanted = _SETTLINGS * float(known.max()) if known.size else horizon
     if np.any(np.isinf(settled)):

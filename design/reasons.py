@@ -103,12 +103,12 @@ def reasons_of(
     count = verdicts.stable.size
     if not verdicts.stable.all():
         found.append(f"{count - int(verdicts.stable.sum())} of {count} plausible plants are unstable with these gains")
-    for limit in limits:
-        if not limit.met:
-            found.append(
-                f"{limit.name}: the worst plausible plant reaches {limit.predicted_worst:.4g} {limit.unit}, "
-                f"the limit is {limit.limit:.4g} {limit.unit}"
-            )
+    found += [
+        f"{limit.name}: the worst plausible plant reaches {limit.predicted_worst:.4g} {limit.unit}, "
+        f"the limit is {limit.limit:.4g} {limit.unit}"
+        for limit in limits
+        if not limit.met
+    ]
     confidence = situation.requirements.confidence
     if verdicts.share_meeting < confidence:
         found.append(

@@ -52,7 +52,7 @@ def settling_time(response: FloatArray, final: FloatArray, band: float, spacing:
 
 
 def last_entry(distance: FloatArray, band: float, spacing: float, start: float = 0.0) -> FloatArray:
-    """Time of the last crossing into `band`, s, interpolated between rows; 0 if never outside, inf if outside at the end.
+    """Time of the last crossing into `band`, s, interpolated; 0 if never outside, inf if outside at the end.
 
     Parameters
     ----------

@@ -13,11 +13,12 @@ from .sampled.loop import Clamps, simulate
 from .situation import Situation
 from .steady import rest_at
 
+_BAND = 200  # plants that make the band
 _SHOWN = 600  # samples kept at most
 
 
 def trajectory(gains: Gains, nominal: Plant, plausible: Plausible, situation: Situation, horizon: float) -> Trajectory:
-    """Predict the test step on the fitted plant and on up to 200 plausible ones, absolute readings.
+    """Predict the test step on the fitted plant and on some plausible ones, absolute readings.
 
     Parameters
     ----------
@@ -25,7 +26,8 @@ def trajectory(gains: Gains, nominal: Plant, plausible: Plausible, situation: Si
         How much is shown.
     """
     setting = situation.setting
-    some = plausible.take(np.linspace(0, len(plausible.plants) - 1, min(len(plausible.plants), 200)).astype(int).tolist())
+    count = len(plausible.plants)
+    some = plausible.take(np.linspace(0, count - 1, min(count, _BAND)).astype(int).tolist())
     bank = build_bank(
         (nominal, *some.plants),
         setting.update_interval,

@@ -170,7 +170,7 @@ def following_time(spectra: Spectra, which: IndexArray, law: LawColumns) -> Floa
     """(c,) steady lag behind a ramp, s: limit of (1 - y/r) T/(z - 1) as z -> 1; inf without an integral."""
     lags = []
     for share in (_RAMP, 0.5 * _RAMP):
-        near = 1.0 + share * spectra.frequency[0, which] * spectra.interval
+        near = 1.0 + share * spectra.slow[which] * spectra.interval
         z = near.astype(np.complex128)
         plant = spectra.pulse.at(z, which)
         tracked = setpoint_response(law, z) * plant / (1.0 + law_response(law, z) * plant)

@@ -11,7 +11,7 @@ from ...ident.plant import ComplexArray
 from ...ident.run import FloatArray
 from ..discretise import LawColumns
 from .bank import Bank, IndexArray
-from .pulse import Pulse, frequency_grid, law_response, pulse_of
+from .pulse import Pulse, frequency_grid, law_response, pulse_of, slow_edge
 
 _ARC = 7  # points on the small arc round z = 1
 _TURN = 1.2  # rad; a larger step of the angle of 1 + L is looked at more closely
@@ -34,6 +34,8 @@ class Spectra:
     plant : (_ARC + F, p) complex array
         H(z) there.
     unstable : (p,) array of int
+    slow : (p,) array, rad/s
+        Below it a plant shows its integrators and static gain only.
     """
 
     pulse: Pulse
@@ -41,6 +43,7 @@ class Spectra:
     z: ComplexArray
     plant: ComplexArray
     unstable: IndexArray
+    slow: FloatArray
 
     @property
     def interval(self) -> float:
@@ -82,7 +85,7 @@ def spectra_of(bank: Bank, size: int = 160) -> Spectra:
     arc = 1.0 + radius * np.exp(1j * np.linspace(0.0, 0.5 * np.pi, _ARC)[:, None])
     z = np.concatenate([arc, np.exp(1j * frequency * bank.interval)])
     z[-1] = -1.0
-    return Spectra(pulse, frequency, z, pulse.at(z, np.arange(bank.lag.size)), bank.unstable)
+    return Spectra(pulse, frequency, z, pulse.at(z, np.arange(bank.lag.size)), bank.unstable, slow_edge(bank))
 
 
 def open_loop_at(spectra: Spectra, which: IndexArray, law: LawColumns) -> LoopAt:
@@ -151,8 +154,9 @@ def _factors(at: LoopAt, z: ComplexArray, loop: ComplexArray, exact: bool) -> tu
     crosses = (imag[1:] * imag[:-1] < 0.0) & ((real[1:] < 0.0) | (real[:-1] < 0.0))
     row, column = np.nonzero(crosses)
     value = _crossing(at, z, loop, row, column, exact, lambda x: x.imag).real
-    ends = np.concatenate([value, loop[-1].real])
-    owner = np.concatenate([column, np.arange(loop.shape[1])])
+    every = np.arange(loop.shape[1])
+    ends = np.concatenate([value, loop[0].real, loop[-1].real])
+    owner = np.concatenate([column, every, every])
     factor = np.where(ends < 0.0, -1.0 / np.minimum(ends, -1e-300), np.nan)
     upper, lower = np.full(loop.shape[1], np.inf), np.zeros(loop.shape[1])
     above = factor >= 1.0
@@ -237,7 +241,7 @@ def command_noise(spectra: Spectra, which: IndexArray, law: LawColumns, noise: N
 
 
 def noise_density(noise: Noise, interval: float, angle: FloatArray) -> FloatArray:
-    """Spectral density of the noise sampled at `interval`, at angles in rad a sample; its mean over 0..pi is the variance.
+    """Spectral density of the noise sampled at `interval`, at angles in rad; its mean over 0..pi is the variance.
 
     The ARMA(1, 1) process is split into white noise and an exponential correlation, whose pole is carried over to
     the controller's interval.

@@ -129,12 +129,13 @@ def _shares(
     plant = spectra.pulse.at(z, which)
     below = slope / (interval * z) * (z - 1.0)
     step = setpoint_response(law, z) * plant / below
-    near = np.exp(1e-4 * spectra.frequency[0] * interval)[None, which].astype(np.complex128)
+    near = np.exp(1e-4 * spectra.slow * interval)[None, which].astype(np.complex128)
     reach = spectra.pulse.at(near, which)
     final = setpoint_response(law, near) * reach / (1.0 + law_response(law, near) * reach)
     fade = np.exp(s.real * 2.0 * delay)
     pushed = plant / below
-    times = delay + np.geomspace(0.02, 8.0, 40)[:, None] / np.nanmax(np.abs(np.where(_main(s, pushed), s, np.nan)), axis=0)
+    fastest = np.nanmax(np.abs(np.where(_main(s, pushed), s, np.nan)), axis=0)
+    times = delay + np.geomspace(0.02, 8.0, 40)[:, None] / fastest
     waves = np.nansum(pushed * np.exp(s * times[:, None, :]), axis=1)
     rest = (reach / (1.0 + law_response(law, near) * reach))[0]
     largest = np.abs(waves + rest).max(axis=0)

@@ -11,6 +11,7 @@ from ..discretise import LawColumns
 from .bank import Bank
 
 _NEAR = 0.7  # half-width of a resonance's cluster of grid points, as a share of its frequency
+_CREEP, _TAIL = 1e-5, 10  # a few points far below, for poles that creep out next to z = 1
 _LINE = 25  # points in a cluster
 
 
@@ -83,25 +84,30 @@ def frequency_grid(bank: Bank, size: int) -> FloatArray:
     Spread evenly in the logarithm, and in phase as far as the dead time turns it, and gathered round each
     lightly damped plant pole.
     """
-    columns = [_plant_grid(bank, i, size) for i in range(bank.lag.size)]
+    columns = [_plant_grid(bank, i, size, low) for i, low in enumerate(slow_edge(bank))]
     longest = max(column.size for column in columns)
     return np.array([_stretched(column, longest) for column in columns]).T
 
 
-def _plant_grid(bank: Bank, i: int, size: int) -> FloatArray:
+def slow_edge(bank: Bank) -> FloatArray:
+    """(p,) angular frequency in rad/s under which a plant shows its integrators and static gain only."""
+    sizes = np.where(np.abs(bank.poles) > 0.0, np.abs(bank.poles), np.inf)
+    paces = np.minimum(sizes.min(axis=1, initial=np.inf), 1.0 / (bank.delay + 0.5 * bank.interval))
+    return np.minimum(0.02 * paces, 1e-3 * np.pi / bank.interval)
+
+
+def _plant_grid(bank: Bank, i: int, size: int, low: float) -> FloatArray:
     top = np.pi / bank.interval
     poles = bank.poles[i][np.isfinite(bank.poles[i])]
-    moving = np.abs(poles)[np.abs(poles) > 0.0]
     turn = bank.delay[i] + 0.5 * bank.interval
-    paces = [*moving, 1.0 / turn]
-    low = min(0.02 * min(paces), 1e-3 * top)
-    parts = [np.geomspace(low, top, size), np.arange(1, size // 2) * (0.25 / turn)]
+    tail = np.geomspace(_CREEP * low, low, _TAIL, endpoint=False)
+    parts = [tail, np.geomspace(low, top, size), np.arange(1, size // 2) * (0.25 / turn)]
     for pole in poles[poles.imag > 0.5 * np.abs(poles.real)]:
         width = max(abs(pole.real), 1e-7 * abs(pole))
         reach = np.arcsinh(_NEAR * pole.imag / width)
         parts.append(pole.imag + width * np.sinh(np.linspace(-reach, reach, 2 * _LINE + 1)))
     grid = np.unique(np.concatenate(parts))
-    return np.append(grid[(grid >= low) & (grid < top * (1 - 1e-9))], top)
+    return np.append(grid[(grid >= tail[0]) & (grid < top * (1 - 1e-9))], top)
 
 
 def _stretched(column: FloatArray, longest: int) -> FloatArray:

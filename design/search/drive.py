@@ -72,7 +72,7 @@ def search(nominal: Plant, plausible: Plausible, situation: Situation, plan: Pla
         progress(f"searching zeros and gain of {structure}", i / len(plan.structures))
         found = best_of(structure, nominal, _asking(bench, structure, nominal))
         tried.append(tried_row(structure, found, bench))
-        if best is None or found.slack > max(best.slack, 0.0) + _BETTER or (best.slack < 0.0 and found.slack > best.slack):
+        if best is None or found.slack > (best.slack + _BETTER if best.slack >= 0.0 else best.slack):
             best = found
         if best.slack >= ENOUGH:
             break
@@ -130,11 +130,12 @@ def item_slacks(scores: Scores, bench: Bench) -> dict[str, float]:
     """Slack of each requirement by itself at the wished share, and of the limits on every plant."""
     spare = spare_plants(scores.plant.shape[1], bench.situation.requirements.confidence)
     items = bench.situation.items
-    found = {item.name: float(np.sort(scores.items[0, :, i])[spare]) for i, item in enumerate(items) if i < scores.items.shape[2]}
-    rest = dict(found)
+    found: dict[str, float] = {}
+    for i, item in enumerate(items):
+        found[item.name] = float(np.sort(scores.items[0, :, i])[spare])
     if np.isfinite(scores.limits).any():
-        rest["limits of the response"] = float(scores.limits[0].min())
-    return {str(k): v for k, v in rest.items()}
+        found["limits of the response"] = float(scores.limits[0].min())
+    return found
 
 
 def binding(scores: Scores, bench: Bench) -> str:

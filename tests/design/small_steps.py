@@ -1,4 +1,4 @@
-"""An independent simulation: the contract's difference equation around plants integrated by Runge-Kutta in small steps."""
+"""An independent simulation: the contract's difference equation around plants integrated by Runge-Kutta."""
 
 import numpy as np
 
