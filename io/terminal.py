@@ -12,7 +12,6 @@ from .outcome import Outcome
 from .report import words
 
 _CODES = {"good": "1;36", "bad": "1;31", "strong": "1", "quiet": "2"}
-_NONE_NEEDED = ("derivative", "derivative_filter_time")
 MOST_CAUTIONS, MOST_REASONS = 3, 6
 
 
@@ -86,9 +85,8 @@ def _gains(outcome: Outcome, design: Design, paint: _Paint, width: int) -> Itera
         if name == "zero-pole" and form is None:
             continue
         yield from textwrap.wrap(f"{name:<10}{_form(form)}", width, initial_indent="  ", subsequent_indent=" " * 12)
-    interval = number(design.law.update_interval * 1e3, 6)
     gain = with_unit(selection.loop_gain, selection.loop_gain_unit)
-    yield f"  update every {interval} ms; loop gain K = {gain} {_range(design)}".rstrip()
+    yield f"  update every {words.every(design.law.update_interval)}; loop gain K = {gain} {_range(design)}".rstrip()
 
 
 def _form(form: dict[str, Any] | None) -> str:
@@ -97,7 +95,7 @@ def _form(form: dict[str, Any] | None) -> str:
     parts = [
         f"{words.spaced(key)} {with_unit(each['value'], each['unit'], 7)}"
         for key, each in form.items()
-        if each is not None and each["value"] is not None and not (each["value"] == 0.0 and key in _NONE_NEEDED)
+        if each is not None and each["value"] not in (None, 0.0)
     ]
     return ", ".join(parts)
 

@@ -36,7 +36,7 @@ def locus_lines(loop: OpenLoop, view: View) -> tuple[ComplexArray, ...]:
     Examples
     --------
     >>> lines = locus_lines(OpenLoop((1.0,), (1.0, 3.0, 2.0, 0.0)), (-3.0, 1.0, -2.0, 2.0))
-    >>> round(max(line.imag.max() for line in lines), 3)
+    >>> round(float(max(line.imag.max() for line in lines)), 3)
     2.0
     """
     upper = [line for piece in _contours(loop, view) for line in _polished(loop, piece)]

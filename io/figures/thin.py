@@ -22,14 +22,15 @@ def thin_line(time: FloatArray, values: FloatArray, stretches: int = STRETCHES) 
     """
     if len(time) <= 2 * stretches:
         return time, values
-    kept: list[int] = []
-    for part in np.array_split(np.arange(len(time)), stretches):
-        if np.all(np.isnan(values[part])):
-            kept.append(int(part[0]))
-            continue
-        pair = {int(part[np.nanargmin(values[part])]), int(part[np.nanargmax(values[part])])}
-        kept.extend(sorted(pair))
-    index = np.asarray(kept)
+    wide = -(-len(time) // stretches)
+    padded = np.full(-(-len(time) // wide) * wide, np.nan)
+    padded[: len(time)] = values
+    rows = padded.reshape(-1, wide)
+    lost = np.isnan(rows)
+    first = np.arange(len(rows)) * wide
+    least = first + np.where(lost, np.inf, rows).argmin(axis=1)
+    greatest = first + np.where(lost, -np.inf, rows).argmax(axis=1)
+    index = np.unique(np.concatenate([least, greatest]))
     return time[index], values[index]
 
 

@@ -181,11 +181,7 @@ def _knowing(outcome: Outcome) -> dict[str, Any]:
         "fit": outcome.fit,
         "working": None,
         "closing": tuple(zip(outcome.closing, held_out, strict=True)),
-        "closing_numbers": tuple(
-            f"Misfit {number(each.misfit, 3)} against a noise floor of {number(each.noise_floor, 3)} (rms error over "
-            f"the spread of the response); {words.share(each.coverage_95)} of the samples lie in the 95 % band."
-            for each in outcome.closing
-        ),
+        "closing_numbers": tuple(words.agreement(each) for each in outcome.closing),
         "origin": tables.origin(outcome.provenance),
         "provenance": tables.logs(outcome),
     }

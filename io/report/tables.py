@@ -1,5 +1,6 @@
 """The report's tables as rows of texts."""
 
+import math
 from dataclasses import dataclass
 from pathlib import PurePath
 from typing import Any
@@ -122,7 +123,12 @@ def candidates(fit: Fit) -> Table:
 def tried(design: Design) -> Table:
     """The controller structures that the search tried."""
     rows = tuple(
-        (each.structure, number(each.slack, 2), words.share(each.share), words.spaced(each.worst))
+        (
+            each.structure,
+            number(each.slack, 2) if math.isfinite(each.slack) else "",
+            words.share(each.share),
+            words.spaced(each.worst),
+        )
         for each in design.tried
     )
     chosen = tuple(place for place, row in enumerate(rows) if row[0] == design.gains.structure)

@@ -1,7 +1,9 @@
 """Names and phrases that report and terminal share."""
 
+import math
 from collections.abc import Sequence
 
+from ...design.closing.compared import Compared
 from ...design.designed import Design, Judged
 from ...design.requirements import Requirement
 from ...ident.law import Clamp
@@ -55,7 +57,15 @@ def in_words(requirement: Requirement) -> str:
 
 def scaled(value: float | None, requirement: Requirement, digits: int = 3) -> str:
     """A value in base units as the person would write it."""
-    return with_unit(None if value is None else value * requirement.scale, requirement.unit, digits)
+    return with_unit(_shown(value, requirement), requirement.unit, digits)
+
+
+def _shown(value: float | None, requirement: Requirement) -> float | None:
+    """In the unit of the requirement; less than a hundredth of a per cent is nothing."""
+    if value is None:
+        return None
+    shown = value * requirement.scale
+    return round(shown, 2) if requirement.unit == "%" and math.isfinite(shown) else shown
 
 
 def bound(requirement: Requirement) -> str:
@@ -68,8 +78,8 @@ def interval(judged: Judged) -> str:
     low, high = judged.low, judged.high
     if low is None and high is None:
         return "never"
-    scale, unit = judged.requirement.scale, judged.requirement.unit
-    ends = [number(None if end is None else end * scale, 3) for end in (low, high)]
+    unit = judged.requirement.unit
+    ends = [number(_shown(end, judged.requirement), 3) for end in (low, high)]
     return f"{ends[0]} to {ends[1]}" + ("" if unit in ("", "1") else f" {unit}")
 
 
@@ -105,6 +115,17 @@ def clamped(design: Design) -> str:
     )
 
 
+def every(interval: float) -> str:
+    """The update interval as people say it.
+
+    Examples
+    --------
+    >>> every(0.02), every(10.0)
+    ('20 ms', '10 s')
+    """
+    return with_unit(interval, "s", 6) if interval >= 1.0 else with_unit(interval * 1e3, "ms", 6)
+
+
 def action(design: Design) -> str:
     """Direct or reverse, in words."""
     gains = design.gains
@@ -122,6 +143,17 @@ def clamp_in_words(clamp: Clamp, unit: str) -> str:
         f"rate {with_unit(clamp.rate, f'{unit}/s')}" if clamp.rate is not None else "",
     ]
     return ", ".join(end for end in ends if end) or "none"
+
+
+def agreement(compared: Compared) -> str:
+    """Misfit, noise floor and coverage of a held-out record, where there are any."""
+    numbers = (compared.misfit, compared.noise_floor, compared.coverage_95)
+    if not all(math.isfinite(each) for each in numbers):
+        return "No misfit can be given."
+    return (
+        f"Misfit {number(compared.misfit, 3)} against a noise floor of {number(compared.noise_floor, 3)} (rms error "
+        f"over the spread of the response); {share(compared.coverage_95)} of the samples lie in the 95 % band."
+    )
 
 
 def listed(items: Sequence[str]) -> str:

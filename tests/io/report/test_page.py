@@ -193,6 +193,18 @@ def test_many_fitted_logs_are_named_and_the_first_few_drawn(make_outcome, made):
     assert page.count("<svg") == 9
 
 
+def test_a_held_out_run_that_cannot_be_compared_is_said_without_numbers(make_outcome, made):
+    """A record that never moves has no misfit, and no prediction to draw."""
+    nan = float("nan")
+    still = replace(
+        made.closing[0], misfit=nan, noise_floor=nan, coverage_95=nan, verdict="not comparable",
+        why="the command rests", predicted=made.closing[0].predicted * nan,
+    )  # fmt: skip
+    text = Reader(report_html(make_outcome(closing=(still,)))).text
+    assert "run_2.csv: not comparable the command rests No misfit can be given." in text
+    assert "nan" not in text.split()
+
+
 def test_light_and_dark_and_print_are_provided_for(released):
     """Both palettes are in the page; paper is always light."""
     assert "@media screen and (prefers-color-scheme: dark)" in released
