@@ -72,30 +72,29 @@ def see_clipping(time: FloatArray, command: FloatArray, response: FloatArray, un
     if np.count_nonzero(good) < FEWEST or np.ptp(response[good]) == 0.0:
         return ()
     time, command, response = time[good], command[good], response[good]
+    high, low = response == response.max(), response == response.min()
+    noisy = _noisy(command, response, high | low)
     found: list[Seen] = []
-    for value, name in ((float(response.max()), "highest"), (float(response.min()), "lowest")):
-        at = response == value
-        runs = [run for run in stretches(at) if _tells(run, command, response, at)]
-        if runs and _too_flat(response, at, runs):
-            found.append(_seen(time, runs, f"stand still at the record's {name} value {value:.6g} {unit}"))
+    for at, name in ((high, "highest"), (low, "lowest")):
+        runs = [run for run in stretches(at) if _tells(run, response, noisy)]
+        if runs and _too_flat(response, (high | low) if noisy else at, runs):
+            value = f"{response[at][0]:.6g} {unit}"
+            found.append(_seen(time, runs, f"stand still at the record's {name} value {value}"))
     return tuple(found)
 
 
-def _tells(run: tuple[int, int], command: FloatArray, response: FloatArray, at: BoolArray) -> bool:
+def _tells(run: tuple[int, int], response: FloatArray, noisy: bool) -> bool:
     """Whether a flat stretch can't be rest: three samples at least, entered steeply, not a quiet end of the record."""
     first, last = run
     if last - first < 3 or first < 2:
         return False
-    steep = STEEP * quantum(response)
-    entered = (
-        abs(response[first] - response[first - 1]) > steep or abs(response[first - 1] - response[first - 2]) > steep
-    )
-    return bool(entered and (last < len(response) or _noisy(command, response, at)))
+    entered = np.max(np.abs(np.diff(response[max(0, first - 3) : first + 1]))) > STEEP * quantum(response)
+    return bool(entered and (noisy or last < len(response)))
 
 
-def _too_flat(response: FloatArray, at: BoolArray, runs: list[tuple[int, int]]) -> bool:
-    elsewhere = ~(at[1:] & at[:-1])
-    equal = (np.diff(response) == 0.0)[elsewhere]
+def _too_flat(response: FloatArray, left_out: BoolArray, runs: list[tuple[int, int]]) -> bool:
+    """Whether so many equal neighbours can't be chance, by their share elsewhere (noisy signal: at neither end)."""
+    equal = (np.diff(response) == 0.0)[~(left_out[1:] & left_out[:-1])]
     if len(equal) < FEWEST:
         return False
     chance = float(np.clip(1.5 * _densest(equal), LEAST_CHANCE, 1.0))
@@ -110,7 +109,7 @@ def _densest(equal: BoolArray) -> float:
 
 
 def _noisy(command: FloatArray, response: FloatArray, at: BoolArray) -> bool:
-    """Whether the response turns again and again while the command stands still, away from the extreme."""
+    """Whether the response turns again and again while the command stands still, away from both ends."""
     moved = np.concatenate([[False], np.diff(command) != 0.0])
     standing = np.convolve(moved, np.ones(QUIET), mode="full")[: len(command)] == 0
     inside = (standing & ~at)[2:] & ~at[1:-1] & ~at[:-2]

@@ -8,6 +8,7 @@ from ..run import FloatArray
 from .seen import BoolArray, Seen
 
 MOST_DISORDER = 0.01  # share of the samples that may be out of order or doubled
+SLIPS = 0.02  # share of the steps
 GAP_STEPS = 1.5
 LONGEST_GAP = 0.25  # of the record
 JITTER_SAID = 0.05  # of the interval
@@ -135,11 +136,18 @@ def _even(time: FloatArray) -> FloatArray | None:
     slope, start = _line(index, time)
     off = time - (start + slope * index)
     step = max(resolution(time), 4e-7)
-    if slope <= 0.0 or np.ptp(off) > 1.1 * step or step > 2.5 * slope:
+    if slope <= 0.0 or np.ptp(off) > 1.1 * step or step > 2.5 * slope or _slips(np.diff(time)):
         return None
     if np.ptp(off) <= 1e-9 * max(1.0, float(time[-1])):
         return time if np.all(np.diff(time) > 0.0) else index * slope
     return index * _plain_interval(slope, np.ptp(off) / count)
+
+
+def _slips(steps: FloatArray) -> bool:
+    """Whether a few steps are none or twice the usual one: samples doubled or missing rather than rounded."""
+    typical = float(np.median(steps))
+    odd = (steps <= 0.1 * typical) | (steps >= 1.9 * typical)
+    return bool(odd.any() and np.mean(odd) < SLIPS)
 
 
 def _line(index: FloatArray, time: FloatArray) -> tuple[float, float]:
