@@ -11,7 +11,7 @@ if TYPE_CHECKING:
     from matplotlib.axes import Axes
     from matplotlib.figure import Figure
 
-LEFT, WIDE, ROW = 1.45, 3.6, 0.36
+LEFT, WIDE, ROW = 1.35, 3.05, 0.36
 
 
 @dataclass(frozen=True)

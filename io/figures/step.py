@@ -1,6 +1,7 @@
 """The predicted response to the test step with its band, what is asked of it, and the command that makes it."""
 
 from collections.abc import Sequence
+from dataclasses import fields
 from typing import TYPE_CHECKING, Any
 
 import numpy as np
@@ -21,8 +22,8 @@ from .look import (
     strip,
     time_scale,
 )
-from .thin import FloatArray
-from .words import number
+from .thin import FloatArray, thin_line
+from .words import number, with_unit
 
 if TYPE_CHECKING:
     from matplotlib.axes import Axes
@@ -49,13 +50,14 @@ def predicted_step(
     -------
     Figure
     """
+    trajectory = _told(trajectory, judged)
     figure = sheet(3.9)
     factor, unit = time_scale(float(trajectory.time[-1] - trajectory.time[0]))
     time = trajectory.time * factor
     before = -0.04 * float(time[-1])
     above = strip(figure, (LEFT, 1.75, WIDE, 2.05))
     _response(above, time, trajectory, limits)
-    _bounds(above, time, (factor, unit), trajectory, judged)
+    _bounds(above, time, factor, trajectory, judged)
     name_axes(above, y=f"response ({response_unit})")
     hide_time(above)
     below = strip(figure, (LEFT, 0.45, WIDE, 1.15))
@@ -65,6 +67,18 @@ def predicted_step(
         axes.set_xlim(before, time[-1])
     _before(above, before, trajectory)
     return figure
+
+
+def _told(trajectory: Trajectory, judged: Sequence[Judged]) -> Trajectory:
+    """The stretch in which something happens: until well after the band has come to rest and should have settled."""
+    time, final, start = trajectory.time, float(trajectory.setpoint[-1]), float(trajectory.response[0])
+    away = np.maximum(np.abs(trajectory.response_high - final), np.abs(trajectory.response_low - final))
+    rest = float(away[-1]) + 0.02 * abs(final - start)
+    moving = np.flatnonzero(away > rest)
+    asked = [each.requirement.limit for each in judged if each.requirement.name == "settling_time"]
+    until = 1.25 * max([float(time[moving[-1]]) if moving.size else 0.0, *asked])
+    count = max(2, int(np.searchsorted(time, 1.4 * until))) if until > 0.0 else len(time)
+    return Trajectory(*(getattr(trajectory, field.name)[:count] for field in fields(trajectory)))
 
 
 def _before(axes: "Axes", since: float, trajectory: Trajectory) -> None:
@@ -77,8 +91,9 @@ def _before(axes: "Axes", since: float, trajectory: Trajectory) -> None:
 def _response(axes: "Axes", time: FloatArray, trajectory: Trajectory, limits: Limits) -> None:
     traces.band(axes, time, trajectory.response_low, trajectory.response_high, "model")
     axes.step(
-        time, trajectory.setpoint, where="post", color=colour("setpoint"), linestyle=DASHES["setpoint"], linewidth=1.0
-    )
+        *thin_line(time, trajectory.setpoint), where="post", color=colour("setpoint"), linestyle=DASHES["setpoint"],
+        linewidth=1.0,
+    )  # fmt: skip
     traces.line(axes, time, trajectory.response, "model", width=1.4)
     seen = (trajectory.response_low, trajectory.response_high, trajectory.setpoint)
     near = _near(limits.response_lowest, limits.response_highest, *seen)
@@ -92,7 +107,8 @@ def _response(axes: "Axes", time: FloatArray, trajectory: Trajectory, limits: Li
 
 def _command(axes: "Axes", time: FloatArray, trajectory: Trajectory, limits: Limits) -> None:
     traces.band(axes, time, trajectory.command_low, trajectory.command_high, "command")
-    axes.step(time, trajectory.command, where="post", color=colour("command"), linewidth=1.1)
+    shown_time, shown = thin_line(time, trajectory.command)
+    axes.step(shown_time, shown, where="post", color=colour("command"), linewidth=1.1)
     seen = (trajectory.command_low, trajectory.command_high)
     near = _near(limits.command_lowest, limits.command_highest, *seen)
     axes.set_ylim(limits_around(*seen, near, margin=0.1))
@@ -108,11 +124,8 @@ def _near(lowest: float | None, highest: float | None, *seen: FloatArray) -> Flo
     return np.asarray(given, dtype=float)
 
 
-def _bounds(
-    axes: "Axes", time: FloatArray, scale: tuple[float, str], trajectory: Trajectory, judged: Sequence[Judged]
-) -> None:
+def _bounds(axes: "Axes", time: FloatArray, factor: float, trajectory: Trajectory, judged: Sequence[Judged]) -> None:
     """Mark the bounds of overshoot and settling, taken about the setpoint where the response should come to rest."""
-    factor, unit = scale
     start, final = float(trajectory.response[0]), float(trajectory.setpoint[-1])
     for item in judged:
         asked = item.requirement
@@ -120,7 +133,8 @@ def _bounds(
             bound = final + asked.limit * (final - start)
             _short_bound(axes, bound, f"overshoot at most {number(100 * asked.limit)} %", final > start)
         if asked.name == "settling_time" and asked.limit * factor < time[-1]:
-            _settling(axes, asked.limit * factor, unit, time[-1], final, (asked.band or 0.02) * (final - start))
+            by = f"settled by {with_unit(asked.limit * asked.scale, asked.unit)}"
+            _settling(axes, asked.limit * factor, by, time[-1], final, (asked.band or 0.02) * (final - start))
 
 
 def _short_bound(axes: "Axes", bound: float, text: str, upward: bool) -> None:
@@ -133,11 +147,11 @@ def _short_bound(axes: "Axes", bound: float, text: str, upward: bool) -> None:
     )  # fmt: skip
 
 
-def _settling(axes: "Axes", by: float, unit: str, end: float, final: float, band: float) -> None:
+def _settling(axes: "Axes", by: float, text: str, end: float, final: float, band: float) -> None:
     style: dict[str, Any] = {"color": colour("limit"), "linewidth": 0.8}
     axes.plot([end, by, by, end], [final - band, final - band, final + band, final + band], **style)
     axes.annotate(
-        f"settled by {number(by, 3)} {unit}", (by, final - band), xytext=(3, -5 if band > 0 else 5),
+        text, (by, final - band), xytext=(3, -5 if band > 0 else 5),
         textcoords="offset points", va="top" if band > 0 else "bottom", ha="left", fontsize=SMALL - 0.7,
         color=colour("limit"),
     )  # fmt: skip

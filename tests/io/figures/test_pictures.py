@@ -87,6 +87,20 @@ def test_the_predicted_step_marks_what_was_asked(made):
     assert "(s)" in below.get_xlabel()
 
 
+def test_a_long_quiet_end_is_left_out_of_the_predicted_step(made):
+    """35 s predicted, nearly all at rest: the picture ends soon after the asked 1.6 s, and never before."""
+    old = made.design.trajectory
+    extra = np.arange(1, 8000) * 0.004 + old.time[-1]
+    longer = {
+        name: np.concatenate([getattr(old, name), np.full(len(extra), getattr(old, name)[-1])])
+        for name in vars(old)
+        if name != "time"
+    }
+    longer["time"] = np.concatenate([old.time, extra])
+    figure = predicted_step(type(old)(**longer), limits=made.rig.limits, judged=made.design.judged, **UNITS)
+    assert 1.5 * 1.6 < figure.axes[0].get_xlim()[1] < 3.0 * 1.6
+
+
 def test_a_limit_far_from_the_prediction_does_not_squeeze_it_and_a_near_one_is_drawn(made):
     """The command stays between 4 and 7 V: -10 V is not drawn, 7.2 V is."""
     limits = replace(made.rig.limits, command_highest=7.2)
