@@ -6,13 +6,14 @@ from dataclasses import dataclass
 import numpy as np
 
 from ...ident.errors import RequestError
-from .condition import LocusPoint, angle_residual_deg, locus_point, loop_gain_at
+from .condition import LocusError, LocusPoint, angle_residual_deg, locus_point, loop_gain_at
+from .departure import unstable_at_small_gain
 from .enclosure import on_locus, unpaired
 from .loop import FloatArray, OpenLoop
 from .paths import LeftArc, Line, Path
 
 _AXIS = Line(0.0, 1j)
-_MOST_DOUBLINGS = 40
+_MOST_TURNING = 1e5  # rad of the delay's angle along the axis, some 16,000 critical gains
 
 
 @dataclass(frozen=True)
@@ -47,6 +48,11 @@ def axis_crossings(loop: OpenLoop, up_to_gain: float = 0.0) -> tuple[AxisCrossin
     loop : OpenLoop
     up_to_gain : float
 
+    Raises
+    ------
+    LocusError
+        More than some 16,000 critical gains lie below `up_to_gain`.
+
     Examples
     --------
     >>> [(round(c.loop_gain, 9), round(c.frequency, 6)) for c in axis_crossings(OpenLoop((1.0,), (1.0, 3.0, 2.0, 0.0)))]
@@ -57,16 +63,23 @@ def axis_crossings(loop: OpenLoop, up_to_gain: float = 0.0) -> tuple[AxisCrossin
         end = _polynomial_reach(loop, _AXIS)
         found = _along_axis(loop, end) if end > 0.0 else []
         return tuple(sorted([*fixed, *found], key=lambda c: c.loop_gain))
-    end = _falling_from(loop)
-    for _ in range(_MOST_DOUBLINGS):
-        found = [*fixed, *_along_axis(loop, end)]
-        needed = _needed_gain(found, up_to_gain)
-        if _least_gain_beyond(loop, end) >= min(needed, _ceiling(loop) * (1.0 - 1e-9)):
-            break
-        if _ceiling(loop) < math.inf and end > 64.0 * _falling_from(loop):
+    end, ceiling, start = _falling_from(loop), _ceiling(loop), unstable_at_small_gain(loop)
+    while True:
+        found = sorted([*fixed, *_along_axis(loop, end)], key=lambda c: c.loop_gain)
+        covered = _least_gain_beyond(loop, end)
+        if covered >= min(max(_last_stable_gain(found, start), up_to_gain), ceiling * (1.0 - 1e-9)):
+            return tuple(found)
+        if end * loop.delay > _MOST_TURNING:
             break
         end *= 2.0
-    return tuple(sorted(found, key=lambda c: c.loop_gain))
+    if covered < up_to_gain < ceiling:
+        raise LocusError(
+            "too many critical gains lie below the gain asked for",
+            where="crossings",
+            found=f"complete up to K = {covered:g}",
+            expected=f"K = {up_to_gain:g}",
+        )
+    return tuple(found)
 
 
 def ray_crossings(loop: OpenLoop, damping_ratio: float, reach: float | None = None) -> tuple[LocusPoint, ...]:
@@ -224,8 +237,10 @@ def _ceiling(loop: OpenLoop) -> float:
     return 1.0 / abs(loop.leading) if neutral else math.inf
 
 
-def _needed_gain(found: list[AxisCrossing], up_to_gain: float) -> float:
-    """Up to which gain the list must be complete for stability to be settled."""
-    last_exit = max((c.loop_gain for c in found if c.direction < 0), default=0.0)
-    closing = min((c.loop_gain for c in found if c.direction > 0 and c.loop_gain > last_exit), default=math.inf)
-    return max(up_to_gain, closing)
+def _last_stable_gain(found: list[AxisCrossing], count: int) -> float:
+    """The end of the last stable interval that these crossings (by rising gain) leave; infinite when it is open."""
+    last = 0.0
+    for crossing in found:
+        last = crossing.loop_gain if count == 0 else last
+        count += crossing.direction * crossing.roots
+    return math.inf if count == 0 else last

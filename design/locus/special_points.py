@@ -6,9 +6,9 @@ from dataclasses import dataclass
 import numpy as np
 
 from .condition import angle_residual_deg, loop_gain_at
+from .departure import departure_angles
 from .enclosure import unpaired
 from .loop import ComplexArray, OpenLoop
-from .stability import departure_angles
 
 _ONE_POINT = 1e-5  # relative distance at which computed saddle points are one multiple point
 _ONE_ROOT = 1e-6
