@@ -9,7 +9,6 @@ from ..ident.fitted import Noise, Plausible
 from ..ident.plant import Plant
 from ..ident.run import FloatArray
 from . import trajectories
-
 from .designed import Design, Judged, Selection, Trajectory
 from .discretise import gains_of, law_from_gains
 from .gains import Gains
@@ -24,11 +23,11 @@ from .search.polish import Found
 from .search.structures import plan_for
 from .selection import select
 from .situation import Situation, situation_of
-
 from .values import bench_of
 
 _CHECKED = 1000
 _DIGITS = 5
+_FINE = 4000  # samples up to which the gain sets are found with the very law
 _REPAIRS = 2
 
 
@@ -136,7 +135,7 @@ def _fresh(found: Search, plausible: Plausible) -> FloatArray:
     every = np.arange(len(plausible.plants))
     unseen = np.setdiff1d(every, found.used)
     chosen = unseen if unseen.size >= _CHECKED else every
-    return chosen[np.unique(np.linspace(0, chosen.size - 1, min(chosen.size, _CHECKED)).astype(int))]
+    return np.asarray(chosen[np.unique(np.linspace(0, chosen.size - 1, min(chosen.size, _CHECKED)).astype(int))])
 
 
 def _check(
@@ -201,7 +200,7 @@ def _report(
         _trajectory(checked, nominal, plausible, situation),
         found.tried,
         tuple(hopeless + reasons),
-        _cautions(verdicts, plausible, checked.gains, situation),
+        _cautions(verdicts, nominal, plausible, checked.gains, situation),
     )
 
 
@@ -229,7 +228,8 @@ def _selection(
     asked = situation.without_floors()
     horizon = first_horizon(nominal, situation)
     alone = with_nominal(nominal, plausible.take([]), situation)
-    exact = bench_of(alone, asked, horizon)
+    fine = horizon <= _FINE * situation.setting.update_interval
+    exact = bench_of(alone, asked, horizon, stand_in=not fine)
     quick = replace(found.bench, situation=asked)
     return select(gains, nominal, exact, quick, units)
 
@@ -244,9 +244,15 @@ def _trajectory(
 
 
 def _cautions(
-    verdicts: PlantVerdicts, plausible: Plausible, gains: Gains, situation: Situation
+    verdicts: PlantVerdicts, nominal: Plant, plausible: Plausible, gains: Gains, situation: Situation
 ) -> tuple[str, ...]:
     said = list(limit_cautions(situation))
+    wanted = first_horizon(nominal, situation)
+    if situation.step and verdicts.horizon < 0.99 * wanted:
+        said.append(
+            f"the update interval is so short that only {verdicts.horizon:.3g} s of each step were watched, "
+            f"not the {wanted:.3g} s of five settling times"
+        )
     clamped = float(np.mean(verdicts.clamped > 0.0))
     if clamped > 0.0:
         said.append(

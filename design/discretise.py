@@ -4,6 +4,7 @@ from collections.abc import Sequence
 from dataclasses import dataclass
 
 import numpy as np
+from numpy.typing import NDArray
 
 from ..ident.law import Clamp, Law
 from ..ident.run import FloatArray
@@ -37,11 +38,11 @@ class GainColumns:
         """How many laws."""
         return self.proportional.size
 
-    def take(self, chosen: object) -> "GainColumns":
-        """The chosen columns, by index or mask."""
+    def take(self, chosen: NDArray[np.int64]) -> "GainColumns":
+        """The chosen columns, by index."""
         values = (self.proportional, self.integral, self.derivative, self.filter_time)
         rest = (self.setpoint_weight, self.zero, self.pole)
-        return GainColumns(self.structure, *(v[chosen] for v in values + rest))  # type: ignore[index]
+        return GainColumns(self.structure, *(v[chosen] for v in values + rest))
 
     def times(self, factor: FloatArray) -> "GainColumns":
         """The same zeros with the loop gain times (c,) `factor`."""
@@ -66,9 +67,9 @@ class LawColumns:
     response: FloatArray
     memory: FloatArray
 
-    def take(self, chosen: object) -> "LawColumns":
-        """The chosen columns."""
-        return LawColumns(*(a[:, chosen] for a in (self.command, self.setpoint, self.response, self.memory)))  # type: ignore[index]
+    def take(self, chosen: NDArray[np.int64]) -> "LawColumns":
+        """The chosen columns, by index."""
+        return LawColumns(*(a[:, chosen] for a in (self.command, self.setpoint, self.response, self.memory)))
 
 
 def columns_of(gains: Sequence[Gains]) -> GainColumns:

@@ -16,7 +16,7 @@ from .situation import Situation, situation_of
 from .slack import limit_slacks, meets
 from .values import Bench, Values, bench_of, values_of
 
-_MOST_SAMPLES = 30_000
+_MOST_SAMPLES = 50_000
 _SAMPLED = 40  # plants on which the horizon is found
 
 

@@ -12,8 +12,10 @@ _ROUNDING = 1e-9
 def judged_limits(
     verdicts: PlantVerdicts, situation: Situation, command_unit: str, response_unit: str
 ) -> tuple[LimitJudged, ...]:
-    """One entry for each finite limit that was given, worst plant first in mind."""
+    """One entry for each finite limit that was given; none where no step was stated to judge them by."""
     limits = situation.limits
+    if not verdicts.extremes:
+        return ()
     table = (
         ("command lowest", limits.command_lowest, command_unit, False),
         ("command highest", limits.command_highest, command_unit, True),
@@ -44,6 +46,8 @@ def limit_cautions(situation: Situation) -> tuple[str, ...]:
     """What must be said loudly when a limit was not given."""
     limits = situation.limits
     said = []
+    if situation.step == 0.0:
+        said.append("NO TEST STEP WAS STATED: THE LIMITS OF COMMAND AND RESPONSE WERE NOT CHECKED BY A STEP")
     if limits.command_lowest is None or limits.command_highest is None:
         said.append("NO COMMAND LIMITS WERE GIVEN: THE LAW HAS NO CLAMP, AND NOTHING HERE KEEPS THE ACTUATOR SAFE")
     if limits.response_lowest is None or limits.response_highest is None:

@@ -3,6 +3,7 @@
 from dataclasses import dataclass
 
 import numpy as np
+from numpy.typing import NDArray
 
 from ..ident.run import FloatArray
 from .discretise import LawColumns
@@ -22,9 +23,9 @@ class Rest:
     command: FloatArray
 
 
-def integrates(law: LawColumns) -> np.ndarray:
+def integrates(law: LawColumns) -> NDArray[np.bool_]:
     """(c,) bool: whether the law has integral action (its command coefficients sum to zero)."""
-    return np.abs(law.command.sum(axis=0)) < 1e-12
+    return np.asarray(np.abs(law.command.sum(axis=0)) < 1e-12)
 
 
 def rest_at(bank: Bank, which: IndexArray, law: LawColumns, setpoint: FloatArray, offset: FloatArray) -> Rest:

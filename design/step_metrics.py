@@ -33,7 +33,7 @@ def peak(response: FloatArray) -> FloatArray:
     bend = left - 2.0 * here + right
     inside = (middle == top) & (bend < 0.0)
     lift = np.where(inside, -((right - left) ** 2) / (8.0 * np.where(inside, bend, -1.0)), 0.0)
-    return np.maximum(response[top, columns] + lift, 0.0)
+    return np.asarray(np.maximum(response[top, columns] + lift, 0.0))
 
 
 def settling_time(response: FloatArray, final: FloatArray, band: float, spacing: float) -> FloatArray:

@@ -1,6 +1,6 @@
 """What gains do on plants: every requirement's value and every extreme, a column for each pair of plant and law."""
 
-from dataclasses import dataclass, field
+from dataclasses import dataclass
 
 import numpy as np
 from numpy.typing import NDArray
@@ -10,13 +10,14 @@ from ..ident.run import FloatArray
 from . import step_metrics
 from .discretise import GainColumns, LawColumns, law_columns
 from .sampled.bank import Bank, IndexArray, build_bank
-from .sampled.frequency import Margins, Spectra, command_noise, margins_of, spectra_of
+from .sampled.frequency import Spectra, command_noise, margins_of, spectra_of
 from .sampled.loop import Clamps, History, simulate
 from .sampled.poles import poles_of, starting_poles
 from .sampled.pulse import law_response, setpoint_response
 from .situation import DISTURBED, STEP, Situation
 from .steady import rest_at, stiction_error
 
+_MOST_ROOM = 2e7  # numbers of one response table; larger jobs are done in pieces
 _STAND_IN = 300  # samples of the stand-in over the search's horizon
 _RAMP = 1e-3  # of the lowest grid frequency: where the limit z -> 1 of the ramp error is taken
 
@@ -61,7 +62,8 @@ class Values:
         How long the clamp acted during the test step.
     settled : array, s
         Settling time into 2 %, whether asked for or not; inf: not within the horizon; NaN without a step.
-    margins : Margins
+    upper : array
+        Least factor above one on the gain that makes the loop unstable.
     """
 
     stable: NDArray[np.bool_]
@@ -69,8 +71,7 @@ class Values:
     extremes: dict[str, FloatArray]
     clamped: FloatArray
     settled: FloatArray
-    margins: Margins
-    history: History | None = field(default=None, repr=False)
+    upper: FloatArray
 
 
 def bench_of(
@@ -125,6 +126,15 @@ def values_of(
     law : LawColumns, optional
         Coefficients to use instead of those made from the gains (a law given from outside).
     """
+    pieces = int(np.ceil(which.size * bench.samples * bench.running.points / _MOST_ROOM))
+    if pieces > 1:
+        parts = np.array_split(np.arange(which.size), pieces)
+        given = [None if law is None else law.take(part) for part in parts]
+        rows = [
+            values_of(bench, which[part], gains.take(part), refine=refine, law=one)
+            for part, one in zip(parts, given, strict=True)
+        ]
+        return _joined(rows)
     exact = law_columns(gains, bench.exact.interval) if law is None else law
     running = exact if bench.running is bench.exact else law_columns(gains, bench.running.interval)
     margins = margins_of(bench.spectra, which, exact, exact=refine)
@@ -136,7 +146,22 @@ def values_of(
     of |= _linear_values(bench, which, exact, margins.stable)
     stepped = _Stepped(bench, which, running, margins.stable)
     of |= stepped.values
-    return Values(margins.stable, of, stepped.extremes, stepped.clamped, stepped.settled, margins, stepped.history)
+    return Values(margins.stable, of, stepped.extremes, stepped.clamped, stepped.settled, margins.upper)
+
+
+def _joined(parts: list[Values]) -> Values:
+    """Columns side by side again."""
+
+    def beside(name: str) -> FloatArray:
+        return np.concatenate([getattr(part, name) for part in parts])
+
+    def beside_by_name(name: str) -> dict[str, FloatArray]:
+        return {key: np.concatenate([getattr(p, name)[key] for p in parts]) for key in getattr(parts[0], name)}
+
+    stable = np.concatenate([part.stable for part in parts])
+    return Values(
+        stable, beside_by_name("of"), beside_by_name("extremes"), beside("clamped"), beside("settled"), beside("upper")
+    )
 
 
 def _linear_values(
@@ -192,7 +217,6 @@ class _Stepped:
         self.values: dict[str, FloatArray] = {}
         self.extremes: dict[str, FloatArray] = {}
         self.clamped, self.settled = np.zeros(self.count), np.full(self.count, np.nan)
-        self.history: History | None = None
         if self.situation.step != 0.0:
             self._both_steps()
         self._disturbances()
@@ -201,8 +225,7 @@ class _Stepped:
         step = self.situation.step
         if not (self.situation.asks(STEP) or self._limited_anywhere()):
             return
-        first = self._step(step)
-        self.history = first
+        self._step(step)
         if self.situation.requirements.both_directions:
             self._step(-step)
 
@@ -212,7 +235,7 @@ class _Stepped:
         others = (limits.command_lowest, limits.command_highest, limits.command_rate)
         return any(bound is not None for bound in bounds + others)
 
-    def _step(self, step: float) -> History:
+    def _step(self, step: float) -> None:
         here = np.full(self.chosen.size, self.situation.start)
         before = rest_at(self.bench.running, self.which, self.law, here, self.offset)
         after = rest_at(self.bench.running, self.which, self.law, here + step, self.offset)
@@ -222,7 +245,6 @@ class _Stepped:
         if history.limited is not None:
             time = history.limited.sum(axis=0) * self.bench.running.interval
             self.clamped[self.chosen] = np.maximum(self.clamped[self.chosen], time)
-        return history
 
     def _run(self, setpoint: FloatArray, disturbance: FloatArray, command: FloatArray) -> History:
         clamp = self.situation.clamp
@@ -238,7 +260,7 @@ class _Stepped:
             disturbance=disturbance,
             clamps=Clamps(low - command, high - command, change),
             samples=self.bench.samples,
-            rates=rate is not None and bool(np.isfinite(rate)),
+            rates=_bounded(rate),
         )
 
     def _read_step(self, history: History, final: FloatArray, goal: FloatArray) -> None:
@@ -277,8 +299,10 @@ class _Stepped:
         level = self.situation.operating_response + response
         sent = self.situation.operating_command + command
         steps = np.abs(np.diff(history.command, axis=0, prepend=0.0)).max(axis=0) / self.bench.running.interval
-        self._widen("response highest", level + step_metrics.peak(history.response))
-        self._widen("response lowest", level - step_metrics.peak(-history.response), lowest=True)
+        if _bounded(self.situation.limits.response_highest):
+            self._widen("response highest", level + step_metrics.peak(history.response))
+        if _bounded(self.situation.limits.response_lowest):
+            self._widen("response lowest", level - step_metrics.peak(-history.response), lowest=True)
         self._widen("command highest", sent + np.maximum(history.command.max(axis=0), 0.0))
         self._widen("command lowest", sent + np.minimum(history.command.min(axis=0), 0.0), lowest=True)
         self._widen("command rate", steps)
@@ -309,3 +333,7 @@ class _Stepped:
                 self._keep(item.name, step_metrics.peak(away))
             else:
                 self._keep(item.name, step_metrics.last_entry(away, item.band or 0.0, spacing))
+
+
+def _bounded(limit: float | None) -> bool:
+    return limit is not None and bool(np.isfinite(limit))

@@ -206,7 +206,7 @@ def _sub_steps(
     whole, fresh = np.tile(np.eye(order + 1), (count, 1, 1)), np.zeros_like(both)
     for j in range(1, points + 1):
         whole = one @ whole
-        fresh = np.where((j == first)[:, None, None], lead, one @ fresh)
+        fresh = np.where(np.equal(first, j)[:, None, None], lead, one @ fresh)
         arrived = (j >= first)[:, None] * fresh[:, :order, order]
         phi.append(whole[:, :order, :order])
         old.append(whole[:, :order, order] - arrived)

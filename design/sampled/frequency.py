@@ -211,7 +211,7 @@ def _peak(at: LoopAt, z: ComplexArray, loop: ComplexArray, exact: bool) -> Float
     size = np.where(np.isfinite(size), size, 0.0)
     best = size.max(axis=0)
     if not exact:
-        return best
+        return np.asarray(best)
     columns = np.arange(loop.shape[1])
     middle = np.clip(size.argmax(axis=0) + _ARC, _ARC + 1, z.shape[0] - 2)
     left, right = z[middle - 1, columns], z[middle + 1, columns]
@@ -237,7 +237,7 @@ def command_noise(spectra: Spectra, which: IndexArray, law: LawColumns, noise: N
         density = np.abs(passed) ** 2 * noise_density(noise, spectra.interval, angle)
         area = np.sum(0.5 * (density[1:] + density[:-1]) * np.diff(angle, axis=0), axis=0)
         area += density[0] * angle[0]
-    return np.sqrt(area / np.pi)
+    return np.asarray(np.sqrt(area / np.pi))
 
 
 def noise_density(noise: Noise, interval: float, angle: FloatArray) -> FloatArray:

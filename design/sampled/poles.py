@@ -35,7 +35,7 @@ class Poles:
         with np.errstate(invalid="ignore", divide="ignore"):
             ratio = -self.s.real / np.abs(self.s)
         counts = (np.abs(self.s.imag) > 1e-9 * np.abs(self.s)) & (self.share > SHARE)
-        return np.where(counts, ratio, 1.0).min(axis=0)
+        return np.asarray(np.where(counts, ratio, 1.0).min(axis=0))
 
     def dominant(self, column: int) -> complex:
         """The slowest pole whose share counts; of a pair the upper one."""
@@ -139,7 +139,7 @@ def _shares(
     waves = np.nansum(pushed * np.exp(s * times[:, None, :]), axis=1)
     rest = (reach / (1.0 + law_response(law, near) * reach))[0]
     largest = np.abs(waves + rest).max(axis=0)
-    return np.maximum(2.0 * np.abs(step) * fade / np.abs(final[0]), 2.0 * np.abs(pushed) * fade / largest)
+    return np.asarray(np.maximum(2.0 * np.abs(step) * fade / np.abs(final[0]), 2.0 * np.abs(pushed) * fade / largest))
 
 
 def _main(s: ComplexArray, residue: ComplexArray) -> np.ndarray:

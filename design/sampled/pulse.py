@@ -93,7 +93,7 @@ def slow_edge(bank: Bank) -> FloatArray:
     """(p,) angular frequency in rad/s under which a plant shows its integrators and static gain only."""
     sizes = np.where(np.abs(bank.poles) > 0.0, np.abs(bank.poles), np.inf)
     paces = np.minimum(sizes.min(axis=1, initial=np.inf), 1.0 / (bank.delay + 0.5 * bank.interval))
-    return np.minimum(0.02 * paces, 1e-3 * np.pi / bank.interval)
+    return np.asarray(np.minimum(0.02 * paces, 1e-3 * np.pi / bank.interval))
 
 
 def _plant_grid(bank: Bank, i: int, size: int, low: float) -> FloatArray:

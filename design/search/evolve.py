@@ -29,7 +29,7 @@ def evolve(
 
     References
     ----------
-    Hansen and Ostermeier, Evolutionary Computation 9 (2001) 159-195; rank-one and rank-mu update, constants from memory.
+    Hansen and Ostermeier, Evolutionary Computation 9 (2001) 159-195, rank-one and rank-mu update; from memory.
     """
     rng = np.random.default_rng(seed)
     k, half = start.size, population // 2

@@ -44,16 +44,16 @@ class Scores:
 
     def smallest(self, counts: NDArray[np.bool_]) -> FloatArray:
         """(g,) smallest slack: limits over all plants, requirements over those that count."""
-        return np.minimum(self.plant[:, counts].min(axis=1), self.limits.min(axis=1))
+        return np.asarray(np.minimum(self.plant[:, counts].min(axis=1), self.limits.min(axis=1)))
 
     def at_share(self, confidence: float) -> FloatArray:
         """(g,) slack that the share `confidence` of the plants reaches, and the limits of every plant."""
         spare = spare_plants(self.plant.shape[1], confidence)
-        return np.minimum(np.sort(self.plant, axis=1)[:, spare], self.limits.min(axis=1))
+        return np.asarray(np.minimum(np.sort(self.plant, axis=1)[:, spare], self.limits.min(axis=1)))
 
     def share_meeting(self) -> FloatArray:
         """(g,) share of the plants whose slack is not negative."""
-        return np.mean((self.plant >= 0.0) & (self.limits >= 0.0), axis=1)
+        return np.asarray(np.mean((self.plant >= 0.0) & (self.limits >= 0.0), axis=1))
 
 
 def spare_plants(count: int, confidence: float) -> int:

@@ -24,7 +24,7 @@ def critical_gains(bench: Bench, space: Space, shapes: FloatArray, plants: Index
     law = law_columns(gains, bench.exact.interval)
     upper = margins_of(bench.spectra, np.tile(plants, shapes.shape[0]), law, exact=False).upper
     least = np.minimum(upper, 1e18).reshape(shapes.shape[0], plants.size).min(axis=1)
-    return np.log(least) + unit[:, 0]
+    return np.asarray(np.log(least) + unit[:, 0])
 
 
 def _level(bench: Bench) -> float:

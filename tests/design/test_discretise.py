@@ -2,7 +2,6 @@
 
 import numpy as np
 import pytest
-
 from gainwright.design.compensator import open_loop
 from gainwright.design.discretise import columns_of, law_columns, law_from_gains
 from gainwright.design.gains import Gains
@@ -90,7 +89,9 @@ def test_one_more_sample_of_delay_halves_the_critical_gain_and_rings_six_samples
         assert np.abs(z - expected).min() < 1e-7
 
 
-@pytest.mark.parametrize(("ratio", "direct", "delayed"), [(0.1, 20.0167, 10.5083), (0.5, 4.0830, 2.5415), (1.0, 2.1640, 1.5820)])
+@pytest.mark.parametrize(
+    ("ratio", "direct", "delayed"), [(0.1, 20.0167, 10.5083), (0.5, 4.0830, 2.5415), (1.0, 2.1640, 1.5820)]
+)
 def test_a_held_lag_has_the_exact_critical_gains(ratio, direct, delayed):
     """SD-07, exact: K < (1 + a)/(1 - a) = coth(T/(2 tau)); with one more sample K < 1/(1 - a)."""
     plant = Plant((1.0,), (1.0, 1.0))

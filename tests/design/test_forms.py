@@ -2,11 +2,10 @@
 
 import numpy as np
 import pytest
-from hypothesis import given
-from hypothesis import strategies as st
-
 from gainwright.design.forms import Timed, forms_of, from_series, from_standard, series, standard
 from gainwright.design.gains import Gains
+from hypothesis import given
+from hypothesis import strategies as st
 
 
 def test_series_to_standard_to_parallel_is_the_textbook_conversion():
@@ -38,7 +37,13 @@ def test_an_internal_model_series_rule_converts_to_the_standard_figures():
 positive = st.floats(0.01, 100.0)
 
 
-@given(gain=positive, ti=positive, share=st.floats(0.02, 0.95), filter_share=st.floats(0.02, 0.5), sign=st.sampled_from([-1, 1]))
+@given(
+    gain=positive,
+    ti=positive,
+    share=st.floats(0.02, 0.95),
+    filter_share=st.floats(0.02, 0.5),
+    sign=st.sampled_from([-1, 1]),
+)
 def test_series_and_back_is_exact_with_a_filter(gain, ti, share, filter_share, sign):
     """The filter takes part in the match: from_series(series(x)) gives x back for every series form with Td < Ti."""
     td = share * ti

@@ -2,7 +2,6 @@
 
 import numpy as np
 import pytest
-
 from gainwright.design.discretise import columns_of, law_columns
 from gainwright.design.gains import Gains
 from gainwright.design.sampled.bank import build_bank

@@ -2,7 +2,6 @@
 
 import numpy as np
 import pytest
-
 from gainwright.design.discretise import columns_of, law_columns, law_from_gains
 from gainwright.design.gains import Gains
 from gainwright.design.sampled.bank import build_bank
@@ -170,7 +169,7 @@ def test_the_controller_sees_the_response_through_its_filter_and_the_response_is
 
 
 def test_the_slope_of_a_lag_is_steepest_just_after_the_command_arrives():
-    """A held step u into g/(tau s + 1): the largest slope is g u/tau exactly, wherever the arrival falls in a sample."""
+    """A held step u into g/(tau s + 1): the largest slope is g u/tau exactly, wherever the arrival falls."""
     bank = build_bank([Plant((2.0,), (0.5, 1.0), 0.0137)], INTERVAL)
     law = law_columns(columns_of([Gains("P", 1e-9, setpoint_weight=1e9)]), INTERVAL)
     free = Clamps(np.array([-np.inf]), np.array([np.inf]))

@@ -2,7 +2,6 @@
 
 import numpy as np
 import pytest
-
 from gainwright.design.step_metrics import last_entry, overshoot, rise_time, settling_time, still_moving
 
 ZETA = np.array([0.1, 0.2, 0.3, 0.4, 0.5, 0.6, 0.7, 0.8, 0.9])
@@ -46,7 +45,7 @@ def test_rise_time_is_the_published_table():
     [(0.02, [11.23, 8.076, 5.979, 3.756, 4.700]), (0.05, [10.14, 5.289, 2.900, 3.385, 4.014])],
 )
 def test_settling_time_is_measured_not_taken_from_a_rule(band, expected):
-    """SO-11: exact wn Ts at z = 0.3, 0.5, 0.7, 0.8, 0.9; the rules 4/(z wn), 3/(z wn) are up to 48 % off (Ogata 5-3)."""
+    """SO-11: exact wn Ts at z = 0.3 0.5 0.7 0.8 0.9; the rules 4/(z wn), 3/(z wn) are up to 48 % off (Ogata 5-3)."""
     zeta = np.array([0.3, 0.5, 0.7, 0.8, 0.9])
     response, spacing = second_order(zeta)
     half_digit = np.where(np.array(expected) >= 10, 5e-3, 5e-4) + 1e-5
