@@ -31,6 +31,7 @@ def deliver(rig_path: Path, folder: Path, *, with_report: bool = True, progress:
             advice="check the path; `gainwright process --help` shows the call",
         )
     with OutputFolder(folder) as output:
+        progress("loading the libraries")
         from .job import process_rig  # imported late: an output folder that can't be used is said at once
 
         outcome = process_rig(rig_path, progress)

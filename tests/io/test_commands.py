@@ -139,6 +139,7 @@ def test_an_interrupted_job_ends_with_130_and_leaves_no_current_sheet(rig_file: 
         [sys.executable, "-P", "-c", script, "process", str(rig_file)], stderr=subprocess.PIPE, text=True
     )
     assert job.stderr is not None
+    assert "loading" in job.stderr.readline()
     assert "pretending" in job.stderr.readline()
     job.send_signal(signal.SIGINT)
     told = job.communicate(timeout=30)[1]
@@ -171,5 +172,5 @@ def test_progress_is_plain_lines_where_the_error_stream_is_no_terminal(rig_file:
     """One line a stage, with the seconds since the start, and no control characters."""
     body = "progress('fitting', 0.1); progress('fitting', 0.5); progress('closing'); sys.exit(0)"
     shown = run("process", str(rig_file), script=STAND_IN.format(body=body)).stderr.splitlines()
-    assert [line.split("] ")[1] for line in shown] == ["pretending", "fitting", "closing"]
+    assert [line.split("] ")[1] for line in shown] == ["loading the libraries", "pretending", "fitting", "closing"]
     assert all(line.isprintable() for line in shown)
