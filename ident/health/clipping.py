@@ -3,16 +3,11 @@
 import numpy as np
 
 from ..run import FloatArray
+from .noise_at_rest import FEWEST, no_chance, noisy_at_rest, surely_noisy
 from .noise_level import quantum
 from .seen import BoolArray, Seen, stretches
 
-FEWEST = 40  # samples to judge by
 STEEP = 4.0  # quanta from sample to sample
-WINDOW = 20  # neighbours in which the densest equals are looked for
-LEAST_CHANCE = 0.02
-FALSE_FINDS = 1e-6  # wished chance of a false finding in one record
-QUIET = 4  # samples for which the command has stood still
-TURNING = 0.2  # share of the samples at which the signal turns: white noise 2/3, a smooth signal hardly any
 
 
 def see_declared_clipping(
@@ -60,7 +55,7 @@ def see_clipping(time: FloatArray, command: FloatArray, response: FloatArray, un
     The equal neighbours at the extreme are counted against the chance of equal neighbours elsewhere, taken where they
     are densest: a signal whose noise is below its resolution is flat at every rest, and nothing is said about it. Only
     stretches that are entered by more than a few quanta count: a smooth signal settles and turns slowly. A flat start
-    may be a rig at rest, and so may a flat end where no noise is seen.
+    or end may be a rig at rest, and tells only where there is noise.
 
     Parameters
     ----------
@@ -73,46 +68,28 @@ def see_clipping(time: FloatArray, command: FloatArray, response: FloatArray, un
         return ()
     time, command, response = time[good], command[good], response[good]
     high, low = response == response.max(), response == response.min()
-    noisy = _noisy(command, response, high | low)
+    noisy = noisy_at_rest(command, response, high | low)
+    surely = noisy and surely_noisy(command, response, high | low)
     found: list[Seen] = []
     for at, name in ((high, "highest"), (low, "lowest")):
-        runs = [run for run in stretches(at) if _tells(run, response, noisy)]
+        runs = [run for run in stretches(at) if _tells(run, response, noisy, surely)]
         if runs and _too_flat(response, (high | low) if noisy else at, runs):
             value = f"{response[at][0]:.6g} {unit}"
             found.append(_seen(time, runs, f"stand still at the record's {name} value {value}"))
     return tuple(found)
 
 
-def _tells(run: tuple[int, int], response: FloatArray, noisy: bool) -> bool:
-    """Whether a flat stretch can't be rest: three samples at least, entered steeply, not a quiet end of the record."""
+def _tells(run: tuple[int, int], response: FloatArray, noisy: bool, surely: bool) -> bool:
+    """Whether a flat stretch can't be rest: three samples at least, entered steeply, not a quiet start or end."""
     first, last = run
-    if last - first < 3 or first < 2:
+    if last - first < 3:
         return False
+    if first < 2:
+        return surely
     entered = np.max(np.abs(np.diff(response[max(0, first - 3) : first + 1]))) > STEEP * quantum(response)
     return bool(entered and (noisy or last < len(response)))
 
 
 def _too_flat(response: FloatArray, left_out: BoolArray, runs: list[tuple[int, int]]) -> bool:
     """Whether so many equal neighbours can't be chance, by their share elsewhere (noisy signal: at neither end)."""
-    equal = (np.diff(response) == 0.0)[~(left_out[1:] & left_out[:-1])]
-    if len(equal) < FEWEST:
-        return False
-    chance = float(np.clip(1.5 * _densest(equal), LEAST_CHANCE, 1.0))
-    pairs = sum(last - first - 1 for first, last in runs)
-    return pairs * np.log(1.0 / chance) > np.log(len(response) / FALSE_FINDS)
-
-
-def _densest(equal: BoolArray) -> float:
-    """Largest share of equal neighbours in any short stretch."""
-    width = min(WINDOW, len(equal))
-    return float(np.convolve(equal, np.ones(width) / width, mode="valid").max())
-
-
-def _noisy(command: FloatArray, response: FloatArray, at: BoolArray) -> bool:
-    """Whether the response turns again and again while the command stands still, away from both ends."""
-    moved = np.concatenate([[False], np.diff(command) != 0.0])
-    standing = np.convolve(moved, np.ones(QUIET), mode="full")[: len(command)] == 0
-    inside = (standing & ~at)[2:] & ~at[1:-1] & ~at[:-2]
-    steps = np.diff(response)
-    turning = (steps[:-1] * steps[1:])[inside] < 0.0
-    return len(turning) >= FEWEST // 2 and bool(np.mean(turning) > TURNING)
+    return no_chance(response, left_out, sum(last - first - 1 for first, last in runs))

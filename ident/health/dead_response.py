@@ -10,7 +10,7 @@ from .seen import Seen
 ORDER = 8  # of the whitening filter
 SIGNIFICANT = 5.0  # deviations of a correlation of unrelated white noise
 UNFORETOLD = 0.15  # share of the variance; first-order noise with a correlation of 0.92 from sample to sample
-FEWEST = 40
+FEWEST = 100
 _TIMES = np.array([0.002, 0.01, 0.03, 0.1, 0.3])  # time constants tried, as shares of the record
 
 

@@ -12,6 +12,7 @@ from .idle_command import see_idle_command
 from .lost import see_loss, see_spikes
 from .seen import Seen
 from .shape import see_coarse, see_early_end, see_few_samples, see_unsettled_start
+from .stuck import see_stuck
 
 
 @dataclass(frozen=True, eq=False)
@@ -70,6 +71,7 @@ def look_at(
             *see_idle_command(time, command, before, command_unit),
             *see_dead_response(time, command, mended, response_unit),
             *_clipping(time, command, mended, response_unit, response_range),
+            *see_stuck(time, command, mended, response_unit),
             *_command_beyond(time, command, command_unit, command_range),
             *see_coarse(mended, response_unit),
             *see_unsettled_start(time, command, mended, response_unit, before),

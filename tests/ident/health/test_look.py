@@ -79,6 +79,10 @@ SICK: dict[str, tuple[Callable[[], np.ndarray], Callable[[], np.ndarray], dict[s
     "clipped at the bottom": (doublet, lambda: np.maximum(clean(), -7.0), {"clipping": "holds"}),
     "clipped and rounded to 12 bit": (
         doublet, lambda: np.round(np.clip(clean(), -9.0, 9.0) / 0.01) * 0.01, {"clipping": "holds"}),
+    "clipped at rest, from the start": (doublet, lambda: np.maximum(clean(), 1.0), {"clipping": "holds"}),
+    "frozen in the middle": (
+        doublet, lambda: np.where((TIME > 5.0) & (TIME < 6.5), 2.5, clean()), {"stuck response": "holds"}),
+    "frozen to the end": (doublet, lambda: np.where(TIME > 4.2, clean()[420], clean()), {"stuck response": "holds"}),
     "two thirds lost": (doublet, lambda: lose(clean(), 0, 1), {"lost samples": "stops"}),
     "a third lost": (doublet, lambda: lose(clean(), 0), {"lost samples": "holds"}),
 }  # fmt: skip
