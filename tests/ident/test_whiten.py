@@ -95,8 +95,8 @@ def test_restricted_loss_is_the_textbook_likelihood_of_the_error_contrasts():
 def test_the_colour_of_a_short_residual_comes_without_the_bias_of_plain_likelihood():
     """80 samples of rho = 0.8 beside five columns, 120 records: plain maximum likelihood falls short by 0.16.
 
-    The mean of 120 estimates that spread by 0.12 has a standard error of 0.011; restricted likelihood keeps within 0.04,
-    plain likelihood, written out here on a grid, is low by more than 0.1 on the same records.
+    The mean of 120 estimates that spread by 0.12 has a standard error of 0.011; restricted likelihood keeps within
+    0.04, plain likelihood, written out here on a grid, is low by more than 0.1 on the same records.
     """
     rng = np.random.default_rng(21)
     time = np.arange(80.0)
