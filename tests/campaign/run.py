@@ -2,6 +2,7 @@
 
 import argparse
 import json
+import os
 import sys
 from dataclasses import asdict
 from pathlib import Path
@@ -9,6 +10,7 @@ from pathlib import Path
 sys.path.insert(0, str(Path(__file__).resolve().parent))
 
 import paths  # noqa: F401  (puts the kit on the path before it is imported)
+from proof.job import PYTHON
 from proof.many import run_many, tasks
 from proof.table import line, summary
 
@@ -26,7 +28,10 @@ def main() -> None:
     ask.add_argument("--only", help="families or kinds whose name holds this text")
     ask.add_argument("--keep", type=Path, help="folder that keeps every job's logs, rig file and sheet")
     ask.add_argument("--lines", type=Path, help="write one JSON line a job here")
+    ask.add_argument("--python", help="interpreter whose gainwright is judged, such as that of a clean install")
     given = ask.parse_args()
+    if given.python:
+        os.environ[PYTHON] = given.python
     chosen = tasks(given.rigs, given.must_hold, given.seed, given.further, given.start)
     if given.only:
         chosen = [task for task in chosen if given.only in task[1]]

@@ -1,6 +1,7 @@
 """One job of the campaign: draw a rig, log it, call the program, run what it released on the true rig."""
 
 import json
+import os
 import subprocess
 import sys
 from dataclasses import asdict, dataclass, field, replace
@@ -18,7 +19,8 @@ from .families import Drawn, draw
 from .judged import Values, finer, missed, run_law
 from .margins import frequencies, sampled_plant
 
-PROGRAM = (sys.executable, "-P", "-c", "import sys; from gainwright.io.commands.main import main; sys.exit(main())")
+PROGRAM = "import sys; from gainwright.io.commands.main import main; sys.exit(main())"
+PYTHON = "CAMPAIGN_PYTHON"  # environment: the interpreter whose gainwright is judged; default this one
 PATIENCE = 300.0  # s
 STATUS = {0: "released", 3: "held", 2: "refused rig file", 4: "refused log", 1: "fault"}
 
@@ -110,7 +112,8 @@ def write(folder: Path, job: Prepared) -> Path:
 def call(rig_file: Path) -> tuple[str, float, dict[str, Any] | None, str]:
     """Status, time (s), the sheet if there is one, and what the program said."""
     out = rig_file.parent / "out"
-    command = [*PROGRAM, "process", str(rig_file), "--out", str(out), "--no-report"]
+    python = os.environ.get(PYTHON, sys.executable)
+    command = [python, "-P", "-c", PROGRAM, "process", str(rig_file), "--out", str(out), "--no-report"]
     began = perf_counter()
     try:
         done = subprocess.run(command, capture_output=True, text=True, timeout=PATIENCE, cwd="/tmp", check=False)
