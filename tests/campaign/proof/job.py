@@ -122,7 +122,8 @@ def call(rig_file: Path) -> tuple[str, float, dict[str, Any] | None, str]:
     took = perf_counter() - began
     sheet = out / "gains.json"
     found = json.loads(sheet.read_text(encoding="utf-8")) if sheet.exists() else None
-    said = (done.stderr.strip() or done.stdout.strip())[-1500:]
+    spoken = [text for text in done.stderr.splitlines() if text.strip() and not text.startswith("[")]  # not progress
+    said = ("\n".join(spoken) or done.stdout.strip())[-1500:]
     if done.returncode in (0, 3) and (found is None or found["status"] != STATUS[done.returncode]):
         return f"exit {done.returncode} against its sheet", took, found, said
     return STATUS.get(done.returncode, f"exit {done.returncode}"), took, found, said

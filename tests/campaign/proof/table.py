@@ -64,6 +64,4 @@ def line(job: Finished) -> str:
         parts.append("candidate breaks nothing")
     if job.verdict not in ("released and good",) and job.reasons:
         parts.append("; ".join(reason.splitlines()[0] if reason else "" for reason in job.reasons)[:400])
-    if job.verdict.startswith("fault") and job.reasons:
-        parts.append(job.reasons[0][-300:])
     return " | ".join(parts)
