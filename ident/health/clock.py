@@ -3,10 +3,12 @@
 from dataclasses import dataclass
 
 import numpy as np
+from numpy.typing import NDArray
 
 from ..run import FloatArray
 from .seen import BoolArray, Seen
 
+IndexArray = NDArray[np.intp]
 MOST_DISORDER = 0.01  # share of the samples that may be out of order or doubled
 SLIPS = 0.02  # share of the steps
 GAP_STEPS = 1.5
@@ -35,7 +37,7 @@ class Clock:
     seen : tuple of Seen
     """
 
-    keep: np.ndarray[tuple[int], np.dtype[np.intp]]
+    keep: IndexArray
     time: FloatArray
     seen: tuple[Seen, ...]
 
@@ -74,7 +76,7 @@ def mend_clock(stamps: FloatArray, rows: FloatArray) -> Clock:
     return Clock(keep, _even_parts(time), tuple(seen))
 
 
-def _without_zero_tail(keep: FloatArray, stamps: FloatArray, rows: FloatArray, seen: list[Seen]) -> FloatArray:
+def _without_zero_tail(keep: IndexArray, stamps: FloatArray, rows: FloatArray, seen: list[Seen]) -> FloatArray:
     """A file that was laid out in advance and not filled ends in zeros."""
     empty = (stamps[keep] == 0.0) & np.all(rows[keep] == 0.0, axis=1)
     filled = np.flatnonzero(~empty)
@@ -174,7 +176,7 @@ def _said_rounding(time: FloatArray, even: FloatArray) -> tuple[Seen, ...]:
     return (Seen("rounded stamps", "whole record", size, "the even time base behind them is used"),)
 
 
-def _in_order(keep: FloatArray, time: FloatArray, seen: list[Seen]) -> tuple[FloatArray, FloatArray]:
+def _in_order(keep: IndexArray, time: FloatArray, seen: list[Seen]) -> tuple[IndexArray, FloatArray]:
     """Sort a few samples that came late; a clock that really runs backwards stops the record."""
     back = np.flatnonzero(np.diff(time) < 0.0)
     if len(back) == 0:
@@ -206,8 +208,8 @@ def _regular(time: FloatArray) -> bool:
 
 
 def _without_doubles(
-    keep: FloatArray, time: FloatArray, rows: FloatArray, seen: list[Seen]
-) -> tuple[FloatArray, FloatArray]:
+    keep: IndexArray, time: FloatArray, rows: FloatArray, seen: list[Seen]
+) -> tuple[IndexArray, FloatArray]:
     """Leave the second of two samples with one stamp out, when that is rare."""
     doubled = np.flatnonzero(np.diff(time) == 0.0) + 1
     if len(doubled) == 0:
@@ -285,7 +287,7 @@ def see_gaps(time: FloatArray, command: FloatArray) -> tuple[Seen, ...]:
     return tuple(found)
 
 
-def _seen_gaps(time: FloatArray, command: FloatArray, gaps: np.ndarray, typical: float) -> Seen:
+def _seen_gaps(time: FloatArray, command: FloatArray, gaps: IndexArray, typical: float) -> Seen:
     steps = np.diff(time)[gaps]
     size = f"{len(gaps)} gaps, {steps.max():.6g} s at most, {steps.sum():.6g} s together, interval {typical:.6g} s"
     where = f"first after {time[gaps[0]]:.6g} s"
@@ -309,7 +311,7 @@ def _seen_gaps(time: FloatArray, command: FloatArray, gaps: np.ndarray, typical:
     )
 
 
-def _command_stands(command: FloatArray, gaps: np.ndarray) -> BoolArray:
+def _command_stands(command: FloatArray, gaps: IndexArray) -> BoolArray:
     """(g,) mask: the command has one value in the two samples on either side of each gap."""
     places = np.clip(gaps[:, None] + np.array([-1, 0, 1, 2]), 0, len(command) - 1)
     return np.asarray(np.ptp(command[places], axis=1) == 0.0)

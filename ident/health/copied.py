@@ -69,7 +69,7 @@ def _information(response: FloatArray) -> float:
     step = max(quantum(response), 1e-300)
     _, counts = np.unique(np.round(second / step), return_counts=True)
     chance = float(np.sum(counts * (counts - 1.0)) / (len(second) * (len(second) - 1.0)))
-    return max(0.0, min(10.0, -np.log(max(chance, 1e-6)) - 0.5 * np.log(6.0)))
+    return max(0.0, min(10.0, float(-np.log(max(chance, 1e-6)) - 0.5 * np.log(6.0))))
 
 
 def _marks(command: FloatArray, response: FloatArray) -> NDArray[np.uint64]:

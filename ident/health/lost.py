@@ -123,7 +123,7 @@ def _spread(neighbours: FloatArray) -> FloatArray:
     """Range of the neighbours without the highest and the lowest, so that one spike does not hide another."""
     inner = np.sort(neighbours, axis=1)
     count = np.isfinite(neighbours).sum(axis=1)
-    return inner[np.arange(len(inner)), count - 2] - inner[:, 1]
+    return np.asarray(inner[np.arange(len(inner)), count - 2] - inner[:, 1])
 
 
 def _command_spikes(command: FloatArray) -> BoolArray:

@@ -1,7 +1,7 @@
 """Which reader reads which file: by content first, by suffix second."""
 
 import functools
-from importlib.metadata import entry_points
+from importlib.metadata import EntryPoint, entry_points
 from pathlib import Path
 
 from ...ident.errors import GainwrightError, RecordError
@@ -9,24 +9,29 @@ from .port import Reader
 
 GROUP = "gainwright.readers"
 HEAD_BYTES = 65536
+_BUILT_IN = "gainwright.io.readers."
 
 
 @functools.lru_cache(maxsize=1)
 def readers() -> tuple[Reader, ...]:
-    """Every installed reader, one of each entry point of the group "gainwright.readers", in the order of their names.
+    """Every installed reader, one of each entry point of the group "gainwright.readers".
+
+    Readers of other packages are asked first: they know special formats, while the built-in one for text takes any
+    text.
 
     Raises
     ------
     GainwrightError
         When a reader can't be loaded or doesn't fit the port.
     """
-    return tuple(_load(point) for point in sorted(entry_points(group=GROUP), key=lambda point: point.name))
+    points = sorted(entry_points(group=GROUP), key=lambda point: (point.value.startswith(_BUILT_IN), point.name))
+    return tuple(_load(point) for point in points)
 
 
-def _load(point: object) -> Reader:
-    where = f'entry point "{point.name}" of group {GROUP}'  # type: ignore[attr-defined]
+def _load(point: EntryPoint) -> Reader:
+    where = f'entry point "{point.name}" of group {GROUP}'
     try:
-        reader = point.load()()  # type: ignore[attr-defined]
+        reader = point.load()()
     except (ImportError, AttributeError, TypeError) as problem:
         raise GainwrightError("this reader can't be loaded", where=where, found=str(problem)) from problem
     if not isinstance(reader, Reader):

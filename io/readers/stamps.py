@@ -58,7 +58,7 @@ def seconds_of(texts: Sequence[str], where: str, first_line: int) -> FloatArray:
             expected="ISO 8601, such as 2026-11-03T12:34:56.789",
             advice="let the logger write the year first",
         )
-    return _over_midnight(seconds) - seconds[0]
+    return np.asarray(_over_midnight(seconds) - seconds[0])
 
 
 def _of_day(match: re.Match[str]) -> float:

@@ -105,7 +105,7 @@ def _build_signal(
         if (text := getattr(part.range, end)) is not None
     }
     require_order(f"{key}.range", ends.get("lowest"), ends.get("highest"), problems)
-    return replace(signal, **ends)
+    return replace(signal, lowest=ends.get("lowest"), highest=ends.get("highest"))
 
 
 def require_order(key: str, lowest: float | None, highest: float | None, problems: Problems) -> None:

@@ -58,37 +58,37 @@ class RigName(Part):
 class OperatingPoint(Part):
     """[operating_point]"""
 
-    command: Text | None = Field(None, examples=["0 V"])
-    response: Text | None = Field(None, examples=["120 mm"])
+    command: Text | None = Field(default=None, examples=["0 V"])
+    response: Text | None = Field(default=None, examples=["120 mm"])
 
 
 class Log(Part):
     """[log]"""
 
-    separator: str | None = Field(None, examples=[";"])
+    separator: str | None = Field(default=None, examples=[";"])
     decimal: Literal[".", ","] | None = None
-    encoding: str | None = Field(None, examples=["cp1252"])
-    header_row: int | None = Field(None, ge=0, examples=[1])
-    first_row: int | None = Field(None, ge=1, examples=[2])
-    not_a_number: list[str] = Field([], examples=[["OL"]])
+    encoding: str | None = Field(default=None, examples=["cp1252"])
+    header_row: int | None = Field(default=None, ge=0, examples=[1])
+    first_row: int | None = Field(default=None, ge=1, examples=[2])
+    not_a_number: list[str] = Field(default=[], examples=[["OL"]])
 
 
 class Range(Part):
     """Lowest and highest reading."""
 
-    lowest: Text | None = Field(None, examples=["0 mm"])
-    highest: Text | None = Field(None, examples=["300 mm"])
+    lowest: Text | None = Field(default=None, examples=["0 mm"])
+    highest: Text | None = Field(default=None, examples=["300 mm"])
 
 
 class SignalPart(Part):
     """One signal of a log."""
 
-    source: str | None = Field(None, examples=["time_s"])
-    unit: str | None = Field(None, examples=["mm"])
-    sample_rate: Text | None = Field(None, examples=["1 kHz"])
-    scale: Number = Field(1.0, examples=[0.5])
-    offset: Number = Field(0.0, examples=[0.0])
-    lost_as: list[Number] = Field([], examples=[[0.0]])
+    source: str | None = Field(default=None, examples=["time_s"])
+    unit: str | None = Field(default=None, examples=["mm"])
+    sample_rate: Text | None = Field(default=None, examples=["1 kHz"])
+    scale: Number = Field(default=1.0, examples=[0.5])
+    offset: Number = Field(default=0.0, examples=[0.0])
+    lost_as: list[Number] = Field(default=[], examples=[[0.0]])
     range: Range | None = None
 
 
@@ -107,7 +107,7 @@ class RunSignals(Part):
     time: SignalPart | None = None
     command: SignalPart | None = None
     response: SignalPart | None = None
-    setpoint: Annotated[SignalPart | None, BeforeValidator(_absent)] = Field(None, examples=[False])
+    setpoint: Annotated[SignalPart | None, BeforeValidator(_absent)] = Field(default=None, examples=[False])
 
 
 class Before(Part):
@@ -119,13 +119,13 @@ class Before(Part):
 class Current(Part):
     """The gains that are in the controller now."""
 
-    proportional: Text | None = Field(None, examples=["0.4 V/mm"])
-    integral: Text | None = Field(None, examples=["2 V/(mm s)"])
-    derivative: Text | None = Field(None, examples=["0 V s/mm"])
+    proportional: Text | None = Field(default=None, examples=["0.4 V/mm"])
+    integral: Text | None = Field(default=None, examples=["2 V/(mm s)"])
+    derivative: Text | None = Field(default=None, examples=["0 V s/mm"])
     derivative_filter_time: TimeText | None = None
     update_interval: TimeText | None = None
     derivative_on: Literal["response", "error"] = "response"
-    setpoint_weight: Number = Field(1.0, examples=[1.0])
+    setpoint_weight: Number = Field(default=1.0, examples=[1.0])
 
 
 class RunPart(Part):
@@ -135,12 +135,12 @@ class RunPart(Part):
     use: Literal["fit", "held-out"]
     loop: Literal["open", "closed"] = "open"
     excitation: Literal["step", "sweep", "random", "frequency-table", "auto"] = "auto"
-    from_: TimeText | None = Field(None, alias="from", examples=["0 s"])
-    to: TimeText | None = Field(None, examples=["40 s"])
+    from_: TimeText | None = Field(default=None, alias="from", examples=["0 s"])
+    to: TimeText | None = Field(default=None, examples=["40 s"])
     between_samples: Literal["held", "interpolated", "auto"] = "auto"
     before: Before | None = None
-    taken: Annotated[str, BeforeValidator(_date)] | None = Field(None, examples=["2026-11-03"])
-    group: str | None = Field(None, examples=["/run_7"])
+    taken: Annotated[str, BeforeValidator(_date)] | None = Field(default=None, examples=["2026-11-03"])
+    group: str | None = Field(default=None, examples=["/run_7"])
     signals: RunSignals | None = None
     current: Current | None = None
     frequency: SignalPart | None = None
@@ -155,9 +155,9 @@ class Controller(Part):
     """[controller]"""
 
     update_interval: TimeText
-    computation_delay: Text = Field("0 s", examples=["1 ms"])
-    structures: list[StructureName] | None = Field(None, examples=[["P", "PI"]], min_length=1)
-    response_filter_time: Text = Field("0 s", examples=["2 ms"])
+    computation_delay: Text = Field(default="0 s", examples=["1 ms"])
+    structures: list[StructureName] | None = Field(default=None, examples=[["P", "PI"]], min_length=1)
+    response_filter_time: Text = Field(default="0 s", examples=["2 ms"])
     current: Current | None = None
 
 
@@ -176,7 +176,7 @@ class AtMostTime(Part):
 class Settling(AtMostTime):
     """settling_time"""
 
-    band: Text = Field("2 %", examples=["2 %"])
+    band: Text = Field(default="2 %", examples=["2 %"])
 
 
 class SteadyError(Part):
@@ -240,8 +240,8 @@ class PeakSensitivity(Part):
 class RequirementsPart(Part):
     """[requirements]"""
 
-    test_step: Text | None = Field(None, examples=["20 mm"])
-    test_step_from: Text | None = Field(None, examples=["120 mm"])
+    test_step: Text | None = Field(default=None, examples=["20 mm"])
+    test_step_from: Text | None = Field(default=None, examples=["120 mm"])
     both_directions: bool = False
     overshoot: AtMost | None = None
     settling_time: Settling | None = None
@@ -255,14 +255,14 @@ class RequirementsPart(Part):
     gain_margin: GainMargin | None = None
     phase_margin: PhaseMargin | None = None
     peak_sensitivity: PeakSensitivity | None = None
-    confidence: Text = Field("95 %", examples=["95 %"])
+    confidence: Text = Field(default="95 %", examples=["95 %"])
 
 
 class LevelLimit(Part):
     """Lowest and highest allowed reading; "not limited" is a possible value."""
 
-    lowest: Text | None = Field(None, examples=["-10 V", "not limited"])
-    highest: Text | None = Field(None, examples=["10 V", "not limited"])
+    lowest: Text | None = Field(default=None, examples=["-10 V", "not limited"])
+    highest: Text | None = Field(default=None, examples=["10 V", "not limited"])
 
 
 class RateLimit(Part):
@@ -283,18 +283,18 @@ class LimitsPart(Part):
 class Tolerance(Part):
     """How far a given plant may be off."""
 
-    gain: Text = Field("20 %", examples=["20 %"])
-    dead_time: Text = Field("20 %", examples=["20 %"])
-    poles: Text = Field("20 %", examples=["20 %"])
+    gain: Text = Field(default="20 %", examples=["20 %"])
+    dead_time: Text = Field(default="20 %", examples=["20 %"])
+    poles: Text = Field(default="20 %", examples=["20 %"])
 
 
 class PlantPart(Part):
     """[plant]"""
 
-    numerator: list[Number] | None = Field(None, examples=[[10.0]])
-    denominator: list[Number] | None = Field(None, examples=[[1.0, 3.0, 2.0, 0.0]])
-    dead_time: Text | None = Field(None, examples=["0.1 s"])
-    sheet: str | None = Field(None, examples=["earlier/gains.json"])
+    numerator: list[Number] | None = Field(default=None, examples=[[10.0]])
+    denominator: list[Number] | None = Field(default=None, examples=[[1.0, 3.0, 2.0, 0.0]])
+    dead_time: Text | None = Field(default=None, examples=["0.1 s"])
+    sheet: str | None = Field(default=None, examples=["earlier/gains.json"])
     tolerance: Tolerance = Tolerance()
 
 
@@ -305,7 +305,7 @@ class RigFile(Part):
     operating_point: OperatingPoint = OperatingPoint()
     log: Log = Log()
     signals: Signals
-    runs: list[RunPart] = Field([], examples=["[[runs]] tables"])
+    runs: list[RunPart] = Field(default=[], examples=["[[runs]] tables"])
     controller: Controller
     requirements: RequirementsPart = RequirementsPart()
     limits: LimitsPart = LimitsPart()
