@@ -18,6 +18,9 @@ Progress = Callable[[str, float], None]
 # A lag shorter than this many samples can't be told from dead time.
 _SHORTEST = 0.3
 
+# A lag longer than this many records can't be told from an integrator.
+_LONGEST = 8.0
+
 # Rise of the plain sum of squares that a whitened estimate may cost.
 _TRADE = 0.02
 
@@ -82,16 +85,25 @@ def fit_candidates(
 
 
 def _distinct(fitted: list[Fitted]) -> list[Fitted]:
-    """Without the candidates whose fastest lag is shorter than the sampling can show: it would pass for dead time."""
-    kept = [f for f in fitted if fastest_lag(f) >= _SHORTEST * f.problem.interval]
+    """Without the candidates that pass for a simpler one.
+
+    A lag shorter than the sampling can show would pass for dead time, one far longer than the record for an integrator.
+    """
+    kept = []
+    for one in fitted:
+        times = lags(one)
+        short = np.min(times, initial=np.inf) < _SHORTEST * one.problem.interval
+        long = np.max(times, initial=0.0) > _LONGEST * one.problem.duration
+        if not short and not long:
+            kept.append(one)
     return kept or fitted
 
 
-def fastest_lag(fitted: Fitted) -> float:
-    """Shortest time constant of the real poles, s; infinite where there is none."""
+def lags(fitted: Fitted) -> FloatArray:
+    """Time constants of the real poles away from the origin, s."""
     poles = fitted.problem.modes(fitted.problem.split(fitted.theta)[0]).poles
     real = poles[(poles.imag == 0) & (poles.real < 0)]
-    return float(np.min(-1.0 / real.real, initial=np.inf))
+    return np.asarray(-1.0 / real.real)
 
 
 def colour_of(fitted: Fitted) -> Colour:
@@ -136,7 +148,7 @@ def _families(structures: Sequence[Structure]) -> list[list[Structure]]:
     families: list[list[Structure]] = []
     for structure in structures:
         for family in families:
-            if family[0].polynomials is structure.polynomials:
+            if family[0].polynomials is structure.polynomials and family[0].friction == structure.friction:
                 family.append(structure)
                 break
         else:

@@ -50,18 +50,12 @@ class Confronted:
     changes : tuple of Change
     noise_std : float, response unit
         Residual of this record's own fit.
-    gain_spread : float
-        Half the width of the gain's 95 % interval over the gain: how much the record can see.
-    log_weights : (p,) array
-        Log likelihood that this record gives to each draw of the earlier fit, up to a constant.
     """
 
     plausible: Plausible
     p_value: float
     changes: tuple[Change, ...]
     noise_std: float
-    gain_spread: float
-    log_weights: FloatArray
 
 
 def confront(run: Run, fit: Fit, seed: int = 1) -> Confronted:
@@ -87,7 +81,9 @@ def confront(run: Run, fit: Fit, seed: int = 1) -> Confronted:
 
 
 def _compared(fit: Fit, drawn: Drawn, colour: Colour) -> Confronted:
-    before, after = _logged(fit.draws), _logged(drawn.draws[:, : fit.draws.shape[1]])
+    size = np.hypot(_spread_of(fit.draws[:, -1]), _spread_of(drawn.draws[:, fit.draws.shape[1] - 1]))
+    size = float(np.copysign(size, np.median(fit.draws[:, -1])))
+    before, after = _straightened(fit.draws, size), _straightened(drawn.draws[:, : fit.draws.shape[1]], size)
     spread = _robust_covariance(before) + _robust_covariance(after)
     difference = np.median(after, axis=0) - np.median(before, axis=0)
     distance = float(difference @ np.linalg.solve(spread, difference))
@@ -97,18 +93,26 @@ def _compared(fit: Fit, drawn: Drawn, colour: Colour) -> Confronted:
     return Confronted(
         plausible=plausible_plants([drawn], np.ones(1), fit.operating_response, _DRAWS),
         p_value=p_value,
-        changes=_changes(fit, difference, np.sqrt(np.diag(spread))),
+        changes=_changes(fit, drawn, difference, np.sqrt(np.diag(spread))),
         noise_std=_own_residual(drawn.fitted),
-        gain_spread=_gain_spread(drawn.draws[:, fit.draws.shape[1] - 1]),
-        log_weights=_log_likelihood(before, after),
     )
 
 
-def _logged(draws: FloatArray) -> FloatArray:
-    """Draws with the gain's size by its logarithm."""
+def _straightened(draws: FloatArray, size: float) -> FloatArray:
+    """Draws with the gain by its inverse hyperbolic sine: a logarithm where it is sure, and signed where it is not.
+
+    A bare logarithm of the size would let a gain of the other sign pass for no change. `size` bears the sign of the
+    fitted gain, so that a larger gain counts up.
+    """
     out = draws.copy()
-    out[:, -1] = np.log(np.maximum(np.abs(draws[:, -1]), 1e-300))
+    out[:, -1] = np.arcsinh(draws[:, -1] / size)
     return out
+
+
+def _spread_of(gains: FloatArray) -> float:
+    """Half the distance of the 16 and 84 % quantiles: a standard deviation that heavy tails don't move."""
+    low, high = np.quantile(gains, [0.16, 0.84])
+    return float(max(0.5 * (high - low), 1e-12 * abs(high), 1e-300))
 
 
 def _robust_covariance(draws: FloatArray) -> FloatArray:
@@ -117,18 +121,13 @@ def _robust_covariance(draws: FloatArray) -> FloatArray:
     return np.atleast_2d(np.cov(np.clip(draws, low, high).T)) + 1e-18 * np.eye(draws.shape[1])
 
 
-def _log_likelihood(before: FloatArray, after: FloatArray) -> FloatArray:
-    away = before - np.median(after, axis=0)
-    precision = np.linalg.pinv(_robust_covariance(after))
-    return np.asarray(-0.5 * np.einsum("ni,ij,nj->n", away, precision, away))
-
-
-def _changes(fit: Fit, difference: FloatArray, errors: FloatArray) -> tuple[Change, ...]:
+def _changes(fit: Fit, drawn: Drawn, difference: FloatArray, errors: FloatArray) -> tuple[Change, ...]:
     structure = next(s for s in CATALOGUE if s.name == fit.structure)
     shapes = len(difference) - 2
     slowest = float(np.max(1.0 / np.maximum(np.abs(fit.plant.poles[fit.plant.poles != 0]), 1e-300), initial=0.0))
     scale = fit.plant.dead_time + slowest
-    out = [Change("gain", float(np.exp(difference[-1])), float(difference[-1] / errors[-1]))]
+    ratio = float(np.median(drawn.draws[:, shapes + 1]) / np.median(fit.draws[:, -1]))
+    out = [Change("gain", ratio, float(difference[-1] / errors[-1]))]
     lag = 1.0 + float(difference[shapes]) / scale if scale > 0 else 1.0
     out.append(Change("dead time", lag, float(difference[shapes] / errors[shapes])))
     for i, shape in enumerate(structure.shapes):
@@ -139,8 +138,3 @@ def _changes(fit: Fit, difference: FloatArray, errors: FloatArray) -> tuple[Chan
 def _own_residual(alone: Fitted) -> float:
     solved = alone.problem.solve(alone.theta, WHITE)
     return float(np.sqrt(solved.cost / max(len(alone.problem.measured), 1)))
-
-
-def _gain_spread(gains: FloatArray) -> float:
-    low, middle, high = np.quantile(gains, [0.025, 0.5, 0.975])
-    return float(0.5 * (high - low) / max(abs(middle), 1e-300))

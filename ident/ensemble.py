@@ -69,18 +69,27 @@ def plant_of(fitted: Fitted, draw_row: FloatArray) -> Plant:
     return Plant(tuple(gain * c for c in numerator), denominator, float(max(draw_row[s], 0.0)))
 
 
+def stiction_of(fitted: Fitted, draw_row: FloatArray) -> float:
+    """Dry friction of one draw, the greater of both ways, command unit; zero where the structure has none."""
+    if not fitted.problem.structure.friction:
+        return 0.0
+    s = len(fitted.theta) - 1
+    return float(np.exp(max(draw_row[s - 2 : s])))
+
+
 def operating_commands(drawn: Drawn, operating_response: float) -> FloatArray:
     """(m,) commands that hold the operating response, one a draw.
 
     A plant that settles: the reference plus what the level lacks over the gain, the level of one of the runs in turn,
-    so that what the level does between runs is in the spread. An integrating plant: where its drift stops.
+    so that what the level does between runs is in the spread. An integrating plant: where its drift stops; one that
+    friction holds: the reference, and what is between is in the friction.
     """
     problem, draws = drawn.fitted.problem, drawn.draws
     s = len(drawn.fitted.theta) - 1
     gain = draws[:, s + 1]
     runs = len(problem.runs)
     if problem.structure.integrators:
-        if problem.fixed_command:
+        if not problem.drifts or problem.structure.friction:
             return np.full(len(draws), problem.reference)
         return np.asarray(problem.reference - draws[:, s + 2 + runs] / gain)
     turn = np.arange(len(draws)) % runs
@@ -92,7 +101,7 @@ def plausible_plants(drawn: list[Drawn], weights: FloatArray, operating_response
     """`count` plants of all drawn structures; each has its share of the evidence, shuffled evenly."""
     shares = np.maximum(np.round(weights / weights.sum() * count).astype(int), 0)
     shares[0] += count - shares.sum()
-    plants: list[tuple[float, Plant, float]] = []
+    plants: list[tuple[float, Plant, float, float]] = []
     for item, share in zip(drawn, shares, strict=True):
         commands = operating_commands(item, operating_response)
         plants += [
@@ -100,12 +109,13 @@ def plausible_plants(drawn: list[Drawn], weights: FloatArray, operating_response
                 (i + 0.5) / share,
                 plant_of(item.fitted, item.draws[i % len(item.draws)]),
                 float(commands[i % len(commands)]),
+                stiction_of(item.fitted, item.draws[i % len(item.draws)]),
             )
             for i in range(share)
         ]
     plants.sort(key=lambda entry: entry[0])
     return Plausible(
-        tuple(plant for _, plant, _ in plants),
-        np.array([command for _, _, command in plants]),
-        np.zeros(len(plants)),
+        tuple(plant for _, plant, _, _ in plants),
+        np.array([command for _, _, command, _ in plants]),
+        np.array([friction for *_, friction in plants]),
     )

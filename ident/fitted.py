@@ -152,6 +152,8 @@ class Fit:
         Draws of the chosen structure's internal parameters: log shapes, dead time (s), gain.
     between : {"held", "interpolated"}
         What the command was taken to do between samples where no run said so.
+    friction : (forward, backward), command unit
+        Dry friction of the fitted plant; zeros where the structure has none.
     """
 
     structure: str
@@ -172,3 +174,4 @@ class Fit:
     drift: bool = False
     draws: FloatArray = field(default_factory=lambda: np.zeros((0, 0)))
     between: Between = "held"
+    friction: tuple[float, float] = (0.0, 0.0)

@@ -140,6 +140,7 @@ def _assembled(
         drift=colour.rho > 0.995,
         draws=drawn[0].draws[:, : s + 2],
         between=problem.runs[0].between,
+        friction=(float(np.exp(row[s - 2])), float(np.exp(row[s - 1]))) if problem.structure.friction else (0.0, 0.0),
     )
 
 

@@ -16,6 +16,8 @@ def bounds_of(problem: Regression) -> tuple[FloatArray, FloatArray]:
             edge = (0.02 * dt, 30 * length)
         elif shape.kind == "frequency":
             edge = (0.03 / length, 0.9 * np.pi / dt)
+        elif shape.kind == "command":
+            edge = (1e-4 * problem.span, 0.95 * problem.span)
         else:
             edge = (1e-3, 1e2)
         low.append(np.log(edge[0]))

@@ -7,6 +7,7 @@ import numpy as np
 from scipy.linalg import solve_triangular
 
 from .catalogue import Structure
+from .friction import friction_response
 from .modes import Modes, modes_of
 from .run import FloatArray, Run
 from .simulate import Grid, grid_of, response
@@ -104,9 +105,19 @@ class Regression:
             level = np.zeros(n)
             level[part] = 1.0
             columns.append(level)
-        if self.structure.integrators and not self.fixed_command:
+        if self.drifts:
             columns.append(np.concatenate([g.time[r.valid] for g, r in zip(self.grids, self.runs, strict=True)]))
         return np.column_stack(columns)
+
+    @property
+    def drifts(self) -> bool:
+        """Whether a common drift rate is fitted."""
+        return bool(self.structure.integrators) and not self.fixed_command
+
+    @cached_property
+    def span(self) -> float:
+        """Largest distance of any command from the reference, command unit."""
+        return max(float(np.max(np.abs(run.command - self.reference))) for run in self.runs)
 
     def modes(self, shape: tuple[float, ...]) -> Modes:
         """Modes of the unit-gain structure."""
@@ -114,14 +125,16 @@ class Regression:
 
     def unit_response(self, shape: tuple[float, ...], dead_time: float) -> FloatArray:
         """(n,) response of the unit-gain structure to all commands, less its value at the reference command."""
-        modes = self.modes(shape)
-        out = []
-        for run, grid in zip(self.runs, self.grids, strict=True):
-            bias = run.start_command - self.reference
-            moved = response(modes, grid, dead_time)
-            moved = moved + bias * (grid.time if self.structure.integrators else 1.0)
-            out.append(moved[run.valid])
-        return np.concatenate(out)
+        return np.concatenate([self.whole_response(i, shape, dead_time)[run.valid] for i, run in enumerate(self.runs)])
+
+    def whole_response(self, i: int, shape: tuple[float, ...], dead_time: float) -> FloatArray:
+        """The same for run i alone, at all its samples."""
+        run, grid = self.runs[i], self.grids[i]
+        bias = run.start_command - self.reference
+        if self.structure.friction:
+            return friction_response(grid, bias, shape[0], (shape[1], shape[2]), dead_time)
+        moved = response(self.modes(shape), grid, dead_time)
+        return moved + bias * (grid.time if self.structure.integrators else 1.0)
 
     def initial_columns(self, shape: tuple[float, ...]) -> FloatArray | None:
         """(n, k) decays of the initial states of unsettled runs, or None."""

@@ -7,7 +7,6 @@ import numpy as np
 from .catalogue import Shape
 from .regression import Regression
 from .run import FloatArray
-from .simulate import response
 
 _ROWS = 1500
 
@@ -79,6 +78,8 @@ def _axis(shape: Shape, problem: Regression) -> FloatArray:
     if shape.kind == "frequency":
         spread = np.geomspace(1.0 / problem.duration, 1.5 / problem.interval, shape.steps)
         return np.concatenate([spread, _peaks(problem)])
+    if shape.kind == "command":
+        return problem.span * np.geomspace(0.01, 0.5, shape.steps)
     return np.geomspace(shape.low, shape.high, shape.steps)
 
 
@@ -108,15 +109,11 @@ def _costs(
     basis: FloatArray,
     target: FloatArray,
 ) -> FloatArray:
-    modes = problem.modes(values)
     blocks = []
-    for run, grid, index in zip(problem.runs, problem.grids, rows, strict=True):
-        moved = response(modes, grid, 0.0)
+    for i, index in enumerate(rows):
+        moved = problem.whole_response(i, values, 0.0)
         at = np.asarray(index)[:, None] - shifts[None, :]
-        late = np.where(at >= 0, moved[np.maximum(at, 0)], 0.0)
-        if problem.structure.integrators:
-            late = late + (run.start_command - problem.reference) * grid.time[np.asarray(index)][:, None]
-        blocks.append(late)
+        blocks.append(np.where(at >= 0, moved[np.maximum(at, 0)], moved[0]))
     matrix = np.concatenate(blocks)
     matrix = matrix - basis @ (basis.T @ matrix)
     power = np.einsum("ij,ij->j", matrix, matrix)

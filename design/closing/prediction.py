@@ -5,9 +5,9 @@ from dataclasses import dataclass, replace
 import numpy as np
 
 from ...ident.fitted import Fit
+from ...ident.friction import rough_free_run
 from ...ident.regression import starts_unsettled
 from ...ident.run import FloatArray, Run
-from ...ident.simulate import free_run
 
 _PLANTS = 120
 _NORMAL_95 = 1.959964
@@ -39,7 +39,7 @@ def predict(run: Run, fit: Fit) -> Prediction:
     if run.between == "auto":
         run = replace(run, between=fit.between)
     level = _start_level(run) if fit.plant.integrators else fit.operating_response
-    predicted = free_run(fit.plant, run, fit.operating_command, level)
+    predicted = rough_free_run(fit.plant, run, fit.operating_command, level, fit.friction)
     if starts_unsettled(run):
         predicted = predicted + _initial_motion(run, fit, predicted)
     spread = _spread(run, fit, level)
@@ -78,8 +78,10 @@ def _spread(run: Run, fit: Fit, level: float) -> FloatArray:
     """(n,) standard deviation over plausible plants, each about its own operating command."""
     plausible = fit.plausible.take(slice(0, _PLANTS))
     runs = [
-        free_run(plant, run, float(command), level) if plant.integrators == fit.plant.integrators else None
-        for plant, command in zip(plausible.plants, plausible.operating_command, strict=True)
+        rough_free_run(plant, run, float(command), level, fit.friction if friction > 0 else (0.0, 0.0))
+        for plant, command, friction in zip(
+            plausible.plants, plausible.operating_command, plausible.stiction, strict=True
+        )
+        if plant.integrators == fit.plant.integrators
     ]
-    kept = [r for r in runs if r is not None]
-    return np.asarray(np.std(kept, axis=0)) if len(kept) > 1 else np.zeros(len(run.time))
+    return np.asarray(np.std(runs, axis=0)) if len(runs) > 1 else np.zeros(len(run.time))

@@ -13,8 +13,9 @@ class Shape:
     Attributes
     ----------
     name : str
-    kind : {"time", "frequency", "ratio"}
-        time: from a fraction of a sample to the record's length; frequency: the same in rad/s; ratio: low to high.
+    kind : {"time", "frequency", "ratio", "command"}
+        time: from a fraction of a sample to the record's length; frequency: the same in rad/s; ratio: low to high;
+        command: a share of what the command moves.
     low, high : float
         Bounds of a ratio.
     steps : int
@@ -30,7 +31,7 @@ class Shape:
 
 @dataclass(frozen=True)
 class Named:
-    """One parameter as people know it; unit "s", "rad/s", "1" or "gain"."""
+    """One parameter as people know it; unit "s", "rad/s", "1", or "command" for the command's unit."""
 
     name: str
     unit: str
@@ -54,6 +55,8 @@ class Structure:
     values : callable
         Shape values -> values of `named`, in order.
     integrators : int
+    friction : bool
+        The last two shapes are dry frictions, forward and backward, that the command must overcome.
     """
 
     name: str
@@ -63,3 +66,4 @@ class Structure:
     named: tuple[Named, ...]
     values: Callable[[tuple[float, ...]], tuple[float, ...]]
     integrators: int = 0
+    friction: bool = False

@@ -57,7 +57,7 @@ def mend_clock(stamps: FloatArray, rows: FloatArray) -> Clock:
     Clock
     """
     seen: list[Seen] = []
-    keep = np.flatnonzero(np.isfinite(stamps))
+    keep: IndexArray = np.flatnonzero(np.isfinite(stamps))
     if len(keep) < len(stamps):
         seen.append(Seen("samples without a time", "in the log", f"{len(stamps) - len(keep)} samples", "left out"))
     if len(keep) < 2:
@@ -76,7 +76,7 @@ def mend_clock(stamps: FloatArray, rows: FloatArray) -> Clock:
     return Clock(keep, _even_parts(time), tuple(seen))
 
 
-def _without_zero_tail(keep: IndexArray, stamps: FloatArray, rows: FloatArray, seen: list[Seen]) -> FloatArray:
+def _without_zero_tail(keep: IndexArray, stamps: FloatArray, rows: FloatArray, seen: list[Seen]) -> IndexArray:
     """A file that was laid out in advance and not filled ends in zeros."""
     empty = (stamps[keep] == 0.0) & np.all(rows[keep] == 0.0, axis=1)
     filled = np.flatnonzero(~empty)
