@@ -175,6 +175,9 @@ def _misfit(loop: OpenLoop, loop_gain: float, s: complex) -> complex:
 
 def _settled(loop: OpenLoop, loop_gain: float, s: complex) -> complex | None:
     misfit = _misfit(loop, loop_gain, s)
+    if not math.isfinite(misfit.real):  # exactly on an open-loop pole or zero: step off it
+        s += 1e-6 * (abs(s) or 1.0) * (1.0 + 1.0j)
+        misfit = _misfit(loop, loop_gain, s)
     for _ in range(_ITERATIONS):
         slope = complex(loop.log_derivative(s)) if math.isfinite(misfit.real) else 0.0
         if slope == 0.0 or not math.isfinite(abs(slope)):

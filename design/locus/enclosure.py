@@ -191,7 +191,7 @@ def _held(
     for step in range(-2, 3):
         index = nearest + step
         distance = np.abs(x - 1j * _TURN * index) - radius
-        room = np.where(index == 0.0, np.inf, np.maximum(distance, 1e-300))
+        room = np.where(index == 0.0, np.inf, np.maximum(distance, 1e-150))
         with np.errstate(over="ignore"):
             wobble = wobble + 1.0 / room**2
     slope = hold_log_derivative(x)

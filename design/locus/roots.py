@@ -10,7 +10,7 @@ import numpy as np
 
 from .condition import LocusError
 from .enclosure import unpaired
-from .loop import ComplexArray, FloatArray, OpenLoop, hold_factor, hold_log_derivative
+from .loop import ComplexArray, FloatArray, OpenLoop, hold_factor
 
 _LEVELS = 60
 _MOST_BOXES = 400_000
@@ -155,60 +155,72 @@ def farthest_root(loop: OpenLoop, loop_gain: float, left: float) -> float:
 def _judge(
     loop: OpenLoop, loop_gain: float, centre: ComplexArray, half: ComplexArray, zeros: ComplexArray, poles: ComplexArray
 ) -> tuple[np.ndarray, np.ndarray]:
-    """Which boxes may hold a root, and in which Newton's method has exactly one root within twice their radius."""
+    """Which boxes may hold a root, and in which Newton's method has exactly one root within twice their radius.
+
+    Within a radius r of the centre ln G_L changes by at most r (|G_L'/G_L| + r b), b a bound of the slope's change per
+    distance; a root needs ln(-K G_L) = 0 there. Where a pole or zero is nearer, bounds of |K G_L| decide.
+    """
     radius = np.abs(half)
-    roots = np.concatenate([zeros, poles])
-    sign = np.concatenate([np.ones(zeros.size), -np.ones(poles.size)])
-    distance = np.abs(centre[:, None] - roots)
-    with np.errstate(divide="ignore", invalid="ignore", over="ignore"):
-        log_gain = np.log(loop_gain * np.abs(loop.leading)) - loop.dead_time * centre.real
-        near, far = np.maximum(distance - radius[:, None], 0.0), distance + radius[:, None]
-        least = log_gain + np.log(np.where(sign > 0, near, 1.0 / far)).sum(axis=1) - loop.dead_time * radius
-        most = log_gain + np.log(np.where(sign > 0, far, 1.0 / near)).sum(axis=1) + loop.dead_time * radius
-        swing = np.arcsin(np.minimum(radius[:, None] / distance, 1.0)).sum(axis=1) + loop.dead_time * radius
-        twice = 2.0 * radius[:, None]
-        wobble = np.where(distance > twice, 1.0 / (distance * np.maximum(distance - twice, 1e-300)), np.inf).sum(axis=1)
-    swing = np.where(np.all(distance > radius[:, None], axis=1), swing, np.inf)
+    distance = np.abs(centre[:, None] - np.concatenate([zeros, poles]))
+    least, most = _sizes(loop, loop_gain, centre, radius, distance, zeros.size)
+    once, twice = _bends(distance, radius), _bends(distance, 2.0 * radius)
     if loop.hold is not None:
-        spread, lowest, highest, bent = _held(loop.hold, centre, radius)
-        least, most, swing, wobble = least + lowest, most + highest, swing + spread, wobble + bent
+        lowest, highest, bent_once, bent_twice = _held(loop.hold, centre, radius)
+        least, most, once, twice = least + lowest, most + highest, once + bent_once, twice + bent_twice
     with np.errstate(divide="ignore", invalid="ignore", over="ignore"):
         misfit = np.log(-loop_gain * loop.at(centre))
         slope = loop.log_derivative(centre)
-        possible = (least <= 0.0) & (most >= 0.0) & (np.abs(misfit.imag) <= swing)
-        reach = 2.0 * radius
-        single = reach * (np.abs(slope) + wobble * reach) < np.pi  # the angle reaches 180 deg at most once, not mod 360
-        certain = possible & single & (np.abs(misfit / slope) + reach * (wobble * reach) / np.abs(slope) <= reach)
-    return possible & ~(np.isnan(least) | np.isnan(most)) | np.isnan(misfit), certain
+        size, reach = np.abs(misfit), 2.0 * radius
+        impossible = (least > 0.0) | (most < 0.0) | (size > radius * (np.abs(slope) + radius * once))
+        single = reach * (np.abs(slope) + twice * reach) < np.pi  # the angle reaches 180 deg at most once, not mod 360
+        certain = ~impossible & single & (size + reach * (twice * reach) <= reach * np.abs(slope))
+    return ~impossible, certain
+
+
+def _sizes(
+    loop: OpenLoop, loop_gain: float, centre: ComplexArray, radius: FloatArray, distance: FloatArray, zeros: int
+) -> tuple[FloatArray, FloatArray]:
+    """Least and largest ln|K G_L| without the hold on discs."""
+    near, far = np.maximum(distance - radius[:, None], 0.0), distance + radius[:, None]
+    level = np.log(loop_gain * np.abs(loop.leading)) - loop.dead_time * centre.real
+    with np.errstate(divide="ignore"):
+        near, far = np.log(near), np.log(far)
+    least = near[:, :zeros].sum(axis=1) - far[:, zeros:].sum(axis=1)
+    most = far[:, :zeros].sum(axis=1) - near[:, zeros:].sum(axis=1)
+    return level + least - loop.dead_time * radius, level + most + loop.dead_time * radius
+
+
+def _bends(distance: FloatArray, radius: FloatArray) -> FloatArray:
+    """Sum of 1/(d (d - r)), s^2: how the slopes 1/(s - root) change per distance; infinite with a root inside."""
+    room = distance - radius[:, None]
+    inverse = 1.0 / (distance * np.where(room > 0.0, room, 1.0))
+    return np.asarray(np.where(room > 0.0, inverse, np.inf).sum(axis=1), dtype=np.float64)
 
 
 def _held(
     hold: float, centre: ComplexArray, radius: FloatArray
 ) -> tuple[FloatArray, FloatArray, FloatArray, FloatArray]:
-    """Angle spread, least and largest ln|hold| and the slope bound per radius (s^2) on discs around the centres."""
+    """Least and largest ln|hold| on discs, and the bends of its slope, s^2, within once and twice the radius."""
     x, r = centre * hold, radius * hold
     nearest = np.rint(x.imag / _TURN)
-    bent = {reach: np.full(x.shape, 0.04) for reach in (1, 2)}
+    once, twice = np.full(x.shape, 0.04), np.full(x.shape, 0.04)  # zeros farther than two from the nearest: < 0.033
     for step in range(-2, 3):
         index = nearest + step
-        distance = np.abs(x - 1j * _TURN * index)
-        for reach in (1, 2):
-            room = np.where(index == 0.0, np.inf, np.maximum(distance - reach * r, 1e-150))
-            bent[reach] = bent[reach] + 1.0 / room**2
-    slope = hold_log_derivative(x)
-    loose = (np.abs(slope) + bent[1] * r) * r
+        distance = np.where(index == 0.0, np.inf, np.abs(x - 1j * _TURN * index))
+        once, twice = (
+            once + 1.0 / np.maximum(distance - r, 1e-150) ** 2,
+            twice + 1.0 / np.maximum(distance - 2.0 * r, 1e-150) ** 2,
+        )
     size = np.abs(hold_factor(x))
-    # |h'| <= max(1, exp(-Re x)) / 2 on the disc: h(x) = integral of exp(-x u) over u in (0, 1)
+    # |h'| <= max(1, exp(-Re x))/2 on the disc, as h(x) = integral of exp(-x u) over u in (0, 1)
     change = 0.5 * np.maximum(1.0, np.exp(-(x.real - r))) * r
     with np.errstate(divide="ignore"):
-        lowest = np.log(np.maximum(size - change, 0.0))
-        highest = np.log(size + change)
-    small = r < 0.5
+        lowest, highest = np.log(np.maximum(size - change, 0.0)), np.log(size + change)
     return (
-        np.where(small & (loose < np.pi), loose, np.inf),
         lowest,
         highest,
-        np.where(2.0 * r < np.pi, hold * hold * bent[2], np.inf),
+        np.where(r < np.pi, hold * hold * once, np.inf),
+        np.where(2.0 * r < np.pi, hold * hold * twice, np.inf),
     )
 
 

@@ -5,8 +5,8 @@ from gainwright.design.locus.loop import OpenLoop
 
 
 def random_loop(rng: np.random.Generator) -> OpenLoop:
-    """Up to five poles from 0.1 to 30 rad/s: lags, integrators, modes down to damping 0.002; a quarter of lags and modes is
-    unstable, zeros as many or fewer, either sign, dead time in four of five, a hold in two of five."""
+    """Up to five poles from 0.1 to 30 rad/s: lags, integrators, modes down to damping 0.002, a quarter of them
+    unstable; fewer zeros, either sign, dead time in four of five, a hold in two of five."""
     order = int(rng.integers(1, 6))
     poles = _roots(rng, order, least_damping=-2.7, integrators=0.15)
     zeros = _roots(rng, int(rng.integers(0, order)), least_damping=-2.5, integrators=0.0)
@@ -32,7 +32,7 @@ def _roots(rng: np.random.Generator, count: int, *, least_damping: float, integr
 
 
 def unstable_count(loop: OpenLoop, gain: float) -> float:
-    """Z = P + winding of 1 + K G_L about zero along Re s = 1e-7, from numpy's polynomials only: no whole number, no answer.
+    """Z = P + winding of 1 + K G_L about zero along Re s = 1e-7, from numpy's polynomials only.
 
     The line ends where |K G_L| < 0.3 for good; the way back at infinity then turns by the difference of the ends. It is
     sampled until no step turns by more than 0.3 rad.

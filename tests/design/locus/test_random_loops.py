@@ -1,4 +1,4 @@
-"""Root counts of random loops by three ways that share nothing: critical gains, certified roots, and a Nyquist winding."""
+"""Root counts of random loops by three ways: critical gains, certified roots, and an independent Nyquist winding."""
 
 import importlib.util
 import sys
@@ -20,8 +20,8 @@ _SPEC.loader.exec_module(random_loops)
 
 @pytest.mark.parametrize("seed", range(6))
 def test_every_count_of_unstable_roots_is_right(seed: int) -> None:
-    """25 random loops a seed, open-loop unstable and conditionally stable ones among them, each at a gain near one of its
-    first critical gains: the map of crossings, the certified roots and the winding agree exactly."""
+    """25 random loops a seed, open-loop unstable and conditionally stable ones among them, each at a gain near one of
+    its first critical gains: the map of crossings, the certified roots and the winding agree exactly."""
     rng = np.random.default_rng(seed)
     for _ in range(25):
         loop = random_loops.random_loop(rng)
