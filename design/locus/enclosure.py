@@ -82,6 +82,8 @@ def on_locus(loop: OpenLoop, path: Path, end: float) -> FloatArray:
 
 def unpaired(zeros: ComplexArray, poles: ComplexArray) -> tuple[ComplexArray, ComplexArray, ComplexArray]:
     """Zeros and poles without those that cancel, and the cancelled poles: closed-loop poles at every gain."""
+    if zeros.size == 0:
+        return zeros, poles, zeros
     rest = list(poles)
     kept, cancelled = [], []
     for zero in zeros:
@@ -216,6 +218,14 @@ def _lift(loop: OpenLoop, path: Path, turning: _Turning, boxes: _Boxes, box: np.
     return np.asarray(angle, dtype=np.float64)
 
 
+def _slope(path: Path, turning: _Turning, t: FloatArray) -> FloatArray:
+    """Slope of the angle of -G_L at t, rad per unit of t."""
+    slope = _slopes(turning, t, t)[0] - turning.delay * path.height_rate(t, t)[0]
+    if turning.hold > 0.0:
+        slope = slope + turning.hold * (hold_log_derivative(path.at(t) * turning.hold) * path.rate(t)).imag
+    return np.asarray(slope, dtype=np.float64)
+
+
 def _solve(loop: OpenLoop, path: Path, turning: _Turning, boxes: _Boxes, sure: np.ndarray) -> FloatArray:
     """Every crossing in boxes on which the angle is monotone."""
     first = np.minimum(boxes.at_low[sure], boxes.at_high[sure])
@@ -235,7 +245,7 @@ def _solve(loop: OpenLoop, path: Path, turning: _Turning, boxes: _Boxes, sure: n
         miss = _lift(loop, path, turning, boxes, box, t) - goal
         above = (miss > 0.0) == rising
         high, low = np.where(above, t, high), np.where(above, low, t)
-        slope = (loop.log_derivative(path.at(t)) * path.rate(t)).imag
+        slope = _slope(path, turning, t)
         with np.errstate(divide="ignore", invalid="ignore"):
             step = miss / slope
         trial = t - step

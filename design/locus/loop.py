@@ -82,6 +82,11 @@ class OpenLoop:
         """Ratio of the leading coefficients."""
         return self.numerator[0] / self.denominator[0]
 
+    @cached_property
+    def _derivatives(self) -> tuple[FloatArray, FloatArray]:
+        """Coefficients of N' and D'."""
+        return np.polyder(np.asarray(self.numerator)), np.polyder(np.asarray(self.denominator))
+
     @property
     def static_gain(self) -> float:
         """Limit of s^k G_L(s) for s to zero with k poles at the origin: position, velocity, acceleration constant."""
@@ -114,7 +119,9 @@ class OpenLoop:
     def log_derivative(self, s: complex | ComplexArray) -> ComplexArray:
         """G_L'(s)/G_L(s), s; same shape as s. Infinite at poles and zeros."""
         s = np.asarray(s, dtype=np.complex128)
-        value = _log_derivative(self.numerator, s) - _log_derivative(self.denominator, s) - self.dead_time
+        above, below = self._derivatives
+        value = np.polyval(above, s) / np.polyval(self.numerator, s) - self.dead_time
+        value = value - np.polyval(below, s) / np.polyval(self.denominator, s)
         if self.hold is not None:
             value = value + self.hold * hold_log_derivative(s * self.hold)
         return np.asarray(value, dtype=np.complex128)
@@ -173,12 +180,6 @@ def hold_log_derivative(x: ComplexArray) -> ComplexArray:
     left = np.where(right, -far, far)
     fraction = np.where(right, -np.exp(left), 1.0) / np.expm1(left)
     return np.asarray(np.where(near, -0.5 + close * odd, fraction - 1.0 / far), dtype=np.complex128)
-
-
-def _log_derivative(polynomial: Coefficients, s: ComplexArray) -> ComplexArray:
-    if len(polynomial) == 1:
-        return np.zeros_like(s)
-    return np.asarray(np.polyval(np.polyder(np.asarray(polynomial)), s) / np.polyval(polynomial, s))
 
 
 def _stripped(polynomial: Coefficients, name: str) -> Coefficients:

@@ -30,8 +30,8 @@ FLIPS = {
     ),
     "slope of the dead time": (
         "design/locus/loop.py",
-        "_log_derivative(self.denominator, s) - self.dead_time",
-        "_log_derivative(self.denominator, s) + self.dead_time",
+        "np.polyval(self.numerator, s) - self.dead_time",
+        "np.polyval(self.numerator, s) + self.dead_time",
     ),
     "angle of 0 in place of 180 deg": (
         "design/locus/enclosure.py",
