@@ -73,7 +73,7 @@ def see_clipping(time: FloatArray, command: FloatArray, response: FloatArray, un
     found: list[Seen] = []
     for at, name in ((high, "highest"), (low, "lowest")):
         runs = [run for run in stretches(at) if _tells(run, response, noisy, surely)]
-        if runs and _too_flat(response, (high | low) if noisy else at, runs):
+        if runs and _too_flat(response, (high | low) if surely else at, runs):
             value = f"{response[at][0]:.6g} {unit}"
             found.append(_seen(time, runs, f"stand still at the record's {name} value {value}"))
     return tuple(found)

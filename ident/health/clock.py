@@ -10,6 +10,8 @@ from .seen import BoolArray, Seen
 
 IndexArray = NDArray[np.intp]
 MOST_DISORDER = 0.01  # share of the samples that may be out of order or doubled
+HARMLESS = 5e-3  # of the interval: an unevenness that no fit can see
+DOUBLE_EPOCH = 4e-7  # s, rounding of stamps of this century in float64
 SLIPS = 0.02  # share of the steps
 GAP_STEPS = 1.5
 LONGEST_GAP = 0.25  # of the record
@@ -126,6 +128,13 @@ def resolution(time: FloatArray) -> float:
     return 0.0
 
 
+def _grain(time: FloatArray) -> float:
+    """What the stamps were rounded to, s: a decimal step, fewer digits late in the record, or single precision."""
+    single = time.astype(np.float32)
+    binary = float(np.spacing(single[-1])) if np.array_equal(single.astype(np.float64), time) else 0.0
+    return max(resolution(time), resolution(time[-len(time) // 4 :]), binary, DOUBLE_EPOCH)
+
+
 def _even(time: FloatArray) -> FloatArray | None:
     """The even time base that these stamps are roundings of, when they are.
 
@@ -137,7 +146,7 @@ def _even(time: FloatArray) -> FloatArray | None:
     index = np.arange(count, dtype=np.float64)
     slope, start = _line(index, time)
     off = time - (start + slope * index)
-    step = max(resolution(time), 4e-7)
+    step = max(_grain(time), HARMLESS * slope)
     if slope <= 0.0 or np.ptp(off) > 1.1 * step or step > 2.5 * slope or _slips(np.diff(time)):
         return None
     if np.ptp(off) <= 1e-9 * max(1.0, float(time[-1])):
@@ -246,7 +255,7 @@ def _even_parts(time: FloatArray) -> FloatArray:
         return time
     slope, start = _line(index, time)
     off = time - (start + slope * index)
-    step = max(resolution(time), 4e-7)
+    step = max(_grain(time), HARMLESS * slope)
     if np.ptp(off) > 1.1 * step or step > slope or np.ptp(off) <= 1e-9 * max(1.0, float(time[-1])):
         return time
     return index * slope

@@ -1,5 +1,7 @@
 """The record's clock: what is mended, and what stops."""
 
+from collections.abc import Callable
+
 import numpy as np
 import pytest
 from gainwright.ident.health.clock import Clock, mend_clock
@@ -39,6 +41,14 @@ def test_stamps_to_the_ms_get_the_even_base_behind_them(interval: float, cut: np
     assert len(clock.keep) == COUNT
     np.testing.assert_allclose(np.diff(clock.time), interval, atol=2e-3 / COUNT)
     assert kinds(clock) == {"rounded stamps": "no"}
+
+
+@pytest.mark.parametrize("show", [lambda t: np.array([float(f"{x:.6g}") for x in t]), lambda t: t.astype(np.float32)])
+def test_stamps_with_few_digits_get_the_even_base(show: Callable[[np.ndarray], np.ndarray]) -> None:
+    """1.6384 ms sampling to six digits, or in single precision: late stamps are rounder than early ones."""
+    stamps = 0.0016384 * np.arange(12000)
+    clock = mend(np.asarray(show(stamps), dtype=np.float64))
+    np.testing.assert_allclose(np.diff(clock.time), 0.0016384, rtol=1e-4)
 
 
 def test_rounded_stamps_with_a_gap_keep_the_gap() -> None:
