@@ -34,12 +34,15 @@ def predict(run: Run, fit: Fit) -> Prediction:
     """Free run of the fitted plant under the record's command, the operating point not refitted.
 
     A plant that settles stands where the fitted operating point puts it. An integrating one has no such place: it
-    starts at the mean response of the rest before the first move of the command.
+    starts from the level that the samples before the first move of the command show, its drift there taken off.
     """
     if run.between == "auto":
         run = replace(run, between=fit.between)
-    level = _start_level(run) if fit.plant.integrators else fit.operating_response
+    level = 0.0 if fit.plant.integrators else fit.operating_response
     predicted = rough_free_run(fit.plant, run, fit.operating_command, level, fit.friction)
+    if fit.plant.integrators:
+        level = _start_level(run, predicted)
+        predicted = predicted + level
     if starts_unsettled(run):
         predicted = predicted + _initial_motion(run, fit, predicted)
     spread = _spread(run, fit, level)
@@ -64,14 +67,14 @@ def _initial_motion(run: Run, fit: Fit, predicted: FloatArray) -> FloatArray:
     return np.asarray(matrix @ weights)
 
 
-def _start_level(run: Run) -> float:
-    moved = np.flatnonzero(run.command != run.start_command)
+def _start_level(run: Run, from_zero: FloatArray) -> float:
+    """Level to add to a free run from zero so that it passes through the samples before the command first moves."""
+    moved = np.flatnonzero(np.abs(run.command - run.start_command) > 1e-3 * np.ptp(run.command))
     first = int(moved[0]) if len(moved) else len(run.time)
-    rest = run.response[: max(first, 1)]
+    above = run.response - from_zero
+    rest = above[: max(first, 1)]
     rest = rest[np.isfinite(rest)]
-    if len(rest) == 0:
-        return float(run.response[run.valid][0])
-    return float(np.mean(rest[-max(len(rest) // 2, 1) :]))
+    return float(np.mean(rest)) if len(rest) else float(above[run.valid][0])
 
 
 def _spread(run: Run, fit: Fit, level: float) -> FloatArray:
