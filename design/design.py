@@ -27,7 +27,7 @@ from .values import bench_of
 
 _CHECKED = 1000
 _DIGITS = 5
-_FINE = 4000  # samples up to which the gain sets are found with the very law
+_FINE = 12_000  # samples up to which the gain sets are found with the very law
 _REPAIRS = 2
 
 

@@ -6,7 +6,7 @@ from ..ident.plant import Plant
 from .situation import Situation
 
 _SETTLINGS = 5.0  # settling times that are watched at least
-SEARCHED = 3.5  # the same in the search, whose steady values are exact and whose stability is counted, not watched
+SEARCHED = 2.5  # the same in the search, whose steady values are exact and whose stability is counted, not watched
 
 
 def first_horizon(plant: Plant, situation: Situation, settlings: float = _SETTLINGS) -> float:

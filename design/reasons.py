@@ -29,7 +29,7 @@ _TOGETHER = 0.04  # slacks this close to the smallest pull against each other
 def shown(item: Requirement, value: float | None) -> str:
     """A value of a requirement in the unit the person wrote."""
     if value is None or not np.isfinite(value):
-        return "never"
+        return "never reached"
     return f"{value * item.scale:.3g} {item.unit}".strip()
 
 
@@ -130,8 +130,8 @@ def _failing(verdicts: PlantVerdicts, judged: tuple[Judged, ...]) -> list[str]:
         share = 100.0 * float(np.mean(verdicts.met(item)))
         floor = " (a floor that always holds)" if entry.floor else ""
         lines.append(
-            f"{words(item.name)}{floor}: {shown(item, item.limit)} is asked, the best gains found reach "
-            f"{shown(item, entry.predicted)} on the fitted plant and {shown(item, bad)} within 95 % of the "
+            f"{words(item.name)}{floor}: {shown(item, item.limit)} is asked; with the best gains found it is "
+            f"{shown(item, entry.predicted)} on the fitted plant and, at worst, {shown(item, bad)} within 95 % of the "
             f"plausible ones; {share:.0f} % of them meet it"
         )
     return lines

@@ -2,14 +2,13 @@
 
 import numpy as np
 
-from ..ident.errors import GainwrightError
 from ..ident.plant import Plant
 from .compensator import loop_gain, loop_gain_unit, open_loop
 from .designed import GainInterval, Selection
 from .discretise import columns_of, law_columns
 from .gain_sets import fitted_sets, plausible_sets
 from .gains import Gains
-from .locus.condition import angle_residual_deg, loop_gain_at, point_on_locus
+from .locus.condition import LocusError, angle_residual_deg, loop_gain_at, point_on_locus
 from .requirements import ControllerSetting
 from .sampled.poles import poles_of, starting_poles
 from .values import Bench
@@ -17,16 +16,21 @@ from .values import Bench
 _AGREE = 1e-6  # K of the gains and K of the magnitude condition agree to this share
 
 
-class SelectionError(GainwrightError):
+class SelectionError(LocusError):
     """No pole of the exact locus belongs to these gains."""
 
 
-def dominant_pole(gains: Gains, bench: Bench) -> complex:
-    """Slowest sampled pole of plant 0 that shows in the response, ln z / T, 1/s."""
+def sampled_poles(gains: Gains, bench: Bench) -> list[complex]:
+    """Sampled poles of plant 0, ln z / T, 1/s: first the slowest that shows in the response, then all by pace."""
     zero = np.zeros(1, dtype=int)
     law = law_columns(columns_of([gains]), bench.exact.interval)
     starts = starting_poles(bench.coarse, zero, law_columns(columns_of([gains]), bench.coarse.interval))
-    return poles_of(bench.spectra, zero, law, starts, bench.exact.delay[:1]).dominant(0)
+    poles = poles_of(bench.spectra, zero, law, starts, bench.exact.delay[:1])
+    known = poles.s[:, 0][np.isfinite(poles.s[:, 0])]
+    if not known.size:
+        return []
+    others = known[np.argsort(-known.real)]
+    return [poles.dominant(0), *(complex(s.real, abs(s.imag)) for s in others)]
 
 
 def point_at(gains: Gains, plant: Plant, setting: ControllerSetting, near: complex) -> tuple[complex, float, float]:
@@ -52,6 +56,21 @@ def point_at(gains: Gains, plant: Plant, setting: ControllerSetting, near: compl
     return pole, found, abs(float(angle_residual_deg(loop, pole)))
 
 
+def _first_on_locus(gains: Gains, plant: Plant, bench: Bench) -> tuple[complex, tuple[complex, float, float]]:
+    """The first sampled pole that has its counterpart on the continuous locus, and that point."""
+    for near in sampled_poles(gains, bench):
+        try:
+            return near, point_at(gains, plant, bench.situation.setting, near)
+        except LocusError:
+            continue
+    raise SelectionError(
+        "no pole of the continuous locus was reached",
+        where="locus",
+        found=f"gains {gains}",
+        advice="report this with the rig file: the pole search went astray",
+    )
+
+
 def select(
     gains: Gains, plant: Plant, exact: Bench, quick: Bench, units: tuple[str, str], *, sets: bool = True
 ) -> Selection:
@@ -65,9 +84,7 @@ def select(
         Plausible plants for the intervals of the share.
     units : (command unit, response unit)
     """
-    setting = exact.situation.setting
-    sampled = dominant_pole(gains, exact)
-    pole, chosen, residual = point_at(gains, plant, setting, sampled)
+    sampled, (pole, chosen, residual) = _first_on_locus(gains, plant, exact)
     columns = columns_of([gains])
     fitted = fitted_sets(exact, columns, chosen) if sets else None
     together: tuple[GainInterval, ...] = fitted.together if fitted else ()

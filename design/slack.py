@@ -7,8 +7,9 @@ from .requirements import Requirement
 from .situation import Situation
 from .values import Values
 
-NEVER = -3.0  # slack of what is not reached at all
+NEVER = -8.0  # slack of what is not reached at all
 UNSTABLE = -10.0
+_FAR = -2.0  # below it the slack grows by its logarithm only, so that far misses can still be told apart
 _LEAST_SCALE = {"overshoot": 0.03, "steady_state_error": 1e-12}
 
 
@@ -22,7 +23,10 @@ def requirement_slack(item: Requirement, value: FloatArray) -> FloatArray:
     """
     scale = max(abs(item.limit), _LEAST_SCALE.get(item.name, 1e-12))
     away = item.limit - value if item.sense == "at_most" else value - item.limit
-    return np.where(np.isfinite(away), np.clip(away / scale, NEVER, None), np.where(away > 0, 10.0, NEVER))
+    known = np.isfinite(away)
+    share = np.where(known, away, 0.0) / scale
+    graded = np.where(share < _FAR, _FAR - np.log1p(np.maximum(_FAR - share, 0.0)), share)
+    return np.where(known, np.maximum(graded, NEVER), np.where(away > 0, 10.0, NEVER))
 
 
 def meets(item: Requirement, value: FloatArray) -> np.ndarray:

@@ -19,6 +19,7 @@ from .steady import rest_at, stiction_error
 
 _MOST_ROOM = 2e7  # numbers of one response table; larger jobs are done in pieces
 _STAND_IN = 300  # samples of the stand-in over the search's horizon
+_ROTATION = 0.35  # rad; turn of a resonance in one sample of the stand-in, at most
 _RAMP = 1e-3  # of the lowest grid frequency: where the limit z -> 1 of the ramp error is taken
 
 
@@ -90,6 +91,7 @@ def bench_of(
     running = exact
     if stand_in and horizon > 1.2 * _STAND_IN * setting.update_interval:
         longest = setting.update_interval + 2.0 * least + 0.002 * horizon
+        longest = max(min(longest, _ROTATION / _swing(exact)), setting.update_interval)
         running = _bank(plausible, situation, min(horizon / _STAND_IN, longest), 4)
     samples = int(min(np.ceil(horizon / running.interval) + 1, most))
     coarse = _coarse(plausible, situation, exact)
@@ -104,14 +106,20 @@ def _bank(plausible: Plausible, situation: Situation, interval: float, points: i
     return build_bank(plausible.plants, interval, computation_delay=delay, filter_time=filter_time, points=points)
 
 
+def _swing(bank: Bank) -> float:
+    """Largest natural frequency among lightly damped pole pairs, rad/s; next to nothing where there is none."""
+    light = (bank.poles.imag > 0.0) & (np.abs(bank.poles.real) < 0.4 * np.abs(bank.poles))
+    return float(np.abs(np.where(light, bank.poles, 0.0)).max(initial=1e-300))
+
+
 def _points(samples: float) -> int:
     return 8 if samples < 300 else 4 if samples < 3000 else 2
 
 
 def _coarse(plausible: Plausible, situation: Situation, exact: Bank) -> Bank:
-    if exact.lag.max() <= 24:
+    if exact.lag.max() <= 8:
         return exact
-    return _bank(plausible, situation, float(exact.delay.max()) / 16, 1)
+    return _bank(plausible, situation, float(exact.delay.max()) / 6, 1)
 
 
 def values_of(

@@ -97,7 +97,7 @@ def build_bank(
     Åström and Wittenmark, Computer-Controlled Systems, section on systems with time delay (from memory).
     """
     models = [_companion(plant, interval) for plant in plants]
-    order = max(len(model.input) for model in models)
+    order = max(1, *(len(model.input) for model in models))
     a, b, c, direct = _padded(models, order, interval)
     poles = _poles(models, order)
     if filter_time > 0.0:

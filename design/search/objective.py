@@ -77,7 +77,14 @@ def scores_of(bench: Bench, plants: IndexArray, gains: GainColumns, *, refine: b
 
 
 def wish(slack: FloatArray, gains: GainColumns, situation: Situation) -> FloatArray:
-    """(g,) what is raised: the slack, and once there is enough of it the speed of the loop."""
-    enough = _ENOUGH if situation.asks(SPEED) else _ENOUGH_UNASKED
+    """(g,) what is raised: the slack, and once there is enough of it a calm command.
+
+    Where no speed is asked for, a calm command would be one that does nothing: there the loop is made fast instead.
+    """
+    if situation.asks(SPEED):
+        lag = np.where(gains.filter_time > 0.0, gains.filter_time, 1.0)
+        lively = np.abs(gains.proportional) + np.abs(gains.derivative) / lag + 1e-3 * np.abs(gains.integral)
+        return np.minimum(slack, _ENOUGH) - np.where(slack >= _ENOUGH, 1e-3 * np.log(lively + 1e-300) - 0.1, 0.0)
     strength = np.abs(np.where(gains.integral != 0.0, gains.integral, gains.proportional))
-    return np.minimum(slack, enough) + np.where(slack >= enough, 1e-3 * (40.0 + np.log(strength + 1e-300)), 0.0)
+    bonus = 0.1 + 1e-3 * np.log(strength + 1e-300)
+    return np.minimum(slack, _ENOUGH_UNASKED) + np.where(slack >= _ENOUGH_UNASKED, bonus, 0.0)

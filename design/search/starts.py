@@ -86,7 +86,7 @@ def coarse_search(bench: Bench, space: Space, plants: IndexArray, keep: int) -> 
     scores = scores_of(bench, plants, space.gains(points))
     everyone = np.ones(plants.size, dtype=bool)
     worth = wish(scores.smallest(everyone), space.gains(points), bench.situation)
-    worth = worth + 1e-3 * np.clip(scores.items, -3.0, 0.0).sum(axis=(1, 2))
+    worth = worth + 1e-3 * np.clip(scores.items, -8.0, 0.0).sum(axis=(1, 2))
     order = np.argsort(-worth, kind="stable")
     chosen: list[int] = []
     for i in order:
