@@ -120,7 +120,7 @@ def _phase(loop: OpenLoop, loop_gain: float) -> tuple[float, float | None, float
     stays = loop.relative_degree == 0 and loop.hold is None and loop_gain * abs(loop.leading) >= 1.0
     if crossovers.size == 0:
         return math.inf, None, 0.0 if stays else math.inf
-    angle = np.angle(-loop.at(1j * crossovers))
+    angle = np.asarray(np.angle(-loop.at(1j * crossovers)), dtype=np.float64)
     least = int(np.argmin(np.abs(angle)))
     delay = float(np.min(np.mod(angle, 2.0 * np.pi) / crossovers))
     return math.degrees(abs(angle[least])), float(crossovers[least]), 0.0 if stays else delay

@@ -35,7 +35,9 @@ class _Factors:
     def slope(self, s: ComplexArray) -> ComplexArray:
         """G_L'/G_L, s."""
         value = (1.0 / (s[:, None] - self.roots)) @ self.sign - self.dead_time
-        return value if self.hold is None else value + self.hold * hold_log_derivative(s * self.hold)
+        if self.hold is not None:
+            value = value + self.hold * hold_log_derivative(s * self.hold)
+        return np.asarray(value, dtype=np.complex128)
 
     def misfit(self, s: ComplexArray, gain: float) -> ComplexArray:
         """ln(-K G_L), its angle in [-pi, pi]."""

@@ -254,7 +254,7 @@ def _solve(loop: OpenLoop, path: Path, turning: _Turning, boxes: _Boxes, sure: n
         if settled.all():
             break
         t = np.where(settled, t, np.where(inside, trial, 0.5 * (low + high)))
-    return t[t > _AT_START * boxes.high[box]]
+    return np.asarray(t[t > _AT_START * boxes.high[box]], dtype=np.float64)
 
 
 def _distinct(t: FloatArray, breaks: FloatArray) -> FloatArray:

@@ -2,14 +2,17 @@
 
 from dataclasses import dataclass
 from functools import cached_property
+from typing import Any
 
 import numpy as np
 from numpy.typing import NDArray
 
 from ...ident.errors import RequestError
-from ...ident.plant import ComplexArray, Plant
+from ...ident.plant import Plant
 
+ComplexArray = NDArray[np.complex128]
 FloatArray = NDArray[np.float64]
+Points = complex | NDArray[np.complexfloating[Any, Any]] | FloatArray
 Coefficients = tuple[float, ...]
 
 _SERIES_REACH = 0.3  # below it the Bernoulli series of the hold's log derivative is more exact than the formula
@@ -108,7 +111,7 @@ class OpenLoop:
         """True without dead time and hold: the closed loop has finitely many poles."""
         return self.dead_time == 0.0 and self.hold is None
 
-    def at(self, s: complex | ComplexArray) -> ComplexArray:
+    def at(self, s: Points) -> ComplexArray:
         """G_L at one point or an array of points of the s plane; same shape as s."""
         s = np.asarray(s, dtype=np.complex128)
         value = np.polyval(self.numerator, s) / np.polyval(self.denominator, s) * np.exp(-s * self.dead_time)
@@ -116,12 +119,12 @@ class OpenLoop:
             value = value * hold_factor(s * self.hold)
         return np.asarray(value, dtype=np.complex128)
 
-    def log_derivative(self, s: complex | ComplexArray) -> ComplexArray:
+    def log_derivative(self, s: Points) -> ComplexArray:
         """G_L'(s)/G_L(s), s; same shape as s. Infinite at poles and zeros."""
         s = np.asarray(s, dtype=np.complex128)
         above, below = self._derivatives
-        value = np.polyval(above, s) / np.polyval(self.numerator, s) - self.dead_time
-        value = value - np.polyval(below, s) / np.polyval(self.denominator, s)
+        value = np.asarray(np.polyval(above, s) / np.polyval(self.numerator, s), dtype=np.complex128)
+        value = value - np.polyval(below, s) / np.polyval(self.denominator, s) - self.dead_time
         if self.hold is not None:
             value = value + self.hold * hold_log_derivative(s * self.hold)
         return np.asarray(value, dtype=np.complex128)

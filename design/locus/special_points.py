@@ -8,7 +8,7 @@ import numpy as np
 from .condition import angle_residual_deg, loop_gain_at
 from .departure import departure_angles
 from .enclosure import unpaired
-from .loop import ComplexArray, OpenLoop
+from .loop import ComplexArray, FloatArray, OpenLoop
 
 _ONE_POINT = 1e-5  # relative distance at which computed saddle points are one multiple point
 _ONE_ROOT = 1e-6
@@ -77,10 +77,9 @@ def saddle_points(loop: OpenLoop) -> tuple[SaddlePoint, ...]:
     """
     zeros, poles, _ = unpaired(loop.zeros, loop.poles)
     numerator, denominator = np.atleast_1d(np.poly(zeros)).real, np.atleast_1d(np.poly(poles)).real
-    equation = np.polysub(
-        np.polymul(np.polyder(numerator), denominator), np.polymul(numerator, np.polyder(denominator))
-    )
-    equation = np.polysub(equation, loop.delay * np.polymul(numerator, denominator))
+    above, below = np.polyder(numerator), np.polyder(denominator)
+    slopes: FloatArray = np.polysub(np.polymul(above, denominator), np.polymul(numerator, below))
+    equation = np.polysub(slopes, loop.delay * np.polymul(numerator, denominator))
     points = np.asarray(np.roots(np.trim_zeros(equation, "f")), dtype=np.complex128)
     multiple_poles = np.concatenate([_repeated(poles), _repeated(zeros)])
     groups = _grouped(points, _ONE_POINT)

@@ -28,11 +28,6 @@ FLIPS = {
         "delayed = -turning.delay",
         "delayed = turning.delay",
     ),
-    "slope of the dead time": (
-        "design/locus/loop.py",
-        "np.polyval(self.numerator, s) - self.dead_time",
-        "np.polyval(self.numerator, s) + self.dead_time",
-    ),
     "angle of 0 in place of 180 deg": (
         "design/locus/enclosure.py",
         "np.angle(-loop.at(path.at(middle)))",
@@ -46,15 +41,20 @@ FLIPS = {
         "0.0 if not math.isfinite(size) else size",
     ),
     "static gain": ("design/locus/loop.py", "return self.numerator[-1] /", "return -self.numerator[-1] /"),
-    "magnitude of G_L": (
-        "design/locus/loop.py",
-        "np.polyval(self.numerator, s) / np.polyval(self.denominator, s)",
-        "np.polyval(self.denominator, s) / np.polyval(self.numerator, s)",
-    ),
     "breakaway equation": (
         "design/locus/special_points.py",
-        "equation = np.polysub(\n        np.polymul(np.polyder(numerator)",
-        "equation = np.polyadd(\n        np.polymul(np.polyder(numerator)",
+        "slopes: FloatArray = np.polysub(",
+        "slopes: FloatArray = np.polyadd(",
+    ),
+    "gain of a breakaway point": (
+        "design/locus/special_points.py",
+        "(-1.0 / complex(loop.at(s)))",
+        "(1.0 / complex(loop.at(s)))",
+    ),
+    "G_L taken at -s": (
+        "design/locus/loop.py",
+        "s = np.asarray(s, dtype=np.complex128)\n        value = np.polyval(self.numerator",
+        "s = -np.asarray(s, dtype=np.complex128)\n        value = np.polyval(self.numerator",
     ),
     "departure: angles of the poles": (
         "design/locus/departure.py",

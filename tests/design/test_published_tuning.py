@@ -163,12 +163,15 @@ def test_tu_15_ziegler_nichols_step_on_an_integrator() -> None:
 
 
 def test_tu_16_ziegler_nichols_ultimate() -> None:
-    """Ziegler & Nichols 1942 (errata page): kp = 0.45 kc, ki = 0.54 kc/Tc; P 0.5 Ku has gain margin 2."""
-    gain, period = ultimate((1.0,), (1.0, 1.0), 0.4)
+    """Ziegler & Nichols 1942 (errata page): kp = 0.45 kc, ki = 0.54 kc/Tc; P 0.5 Ku has gain margin 2.
+
+    Ku and Pu of exp(-0.5 s)/(s + 1) by the exact law of DT-02: 3.806883 and 0.5 times 3.42110."""
+    gain, period = ultimate((1.0,), (1.0, 1.0), 0.5)
     tuned = rules.ziegler_nichols_ultimate("PI", gain, period)
     assert tuned.gain / tuned.integral_time == pytest.approx(0.54 * gain / period, rel=1e-12)
+    assert (tuned.gain, tuned.integral_time) == pytest.approx((0.45 * 3.806883, 0.5 * 3.42110 / 1.2), abs=5e-6)
     half = rules.ziegler_nichols_ultimate("P", gain, period)
-    assert margins(OpenLoop((1.0,), (1.0, 1.0), 0.4), half.gain).gain_margin == pytest.approx(2.0, rel=1e-12)
+    assert margins(OpenLoop((1.0,), (1.0, 1.0), 0.5), half.gain).gain_margin == pytest.approx(2.0, rel=1e-12)
 
 
 def test_tu_17_ultimate_gain_and_pid() -> None:
