@@ -1,6 +1,7 @@
 """What README.md and DEVELOPERS.md show is true: commands, rig file, examples."""
 
 import re
+import shutil
 import subprocess
 import sys
 from pathlib import Path
@@ -115,7 +116,7 @@ def test_the_example_reader_reads_through_the_same_door_as_the_built_in_ones(dev
     log.write_text(PIPE_LOG, "utf-8")
     call = f"import sys; sys.path.append({str(site)!r}); from gainwright.io.commands.main import main; sys.exit(main())"
     shown = subprocess.run(
-        [sys.executable, "-P", "-c", call, "inspect", str(log)], capture_output=True, text=True, timeout=60, check=False
+        [sys.executable, "-P", "-c", call, "inspect", str(log)], capture_output=True, text=True, timeout=120, check=False
     )
     assert shown.returncode == 0, shown.stderr
     assert "(pipe log)" in shown.stdout
@@ -127,6 +128,22 @@ def test_the_example_structure_is_fitted(developers: str) -> None:
     (example,) = fenced(developers, "<!-- run -->")
     assert example.count("assert ") == 3
     exec(compile(example, "DEVELOPERS.md", "exec"), {})  # noqa: S102  (the document's own example)
+
+
+def test_the_readme_pictures_are_made_by_the_block_that_says_so(
+    developers: str, readme: str, checkout: Path, tmp_path: Path, monkeypatch: pytest.MonkeyPatch
+) -> None:
+    """Run beside a copy of the sample, it makes every picture that the README shows, as SVG with its axes in it."""
+    (example,) = fenced(developers, "<!-- pictures -->")
+    shutil.copytree(checkout / "sample_runs" / "paddle", tmp_path / "sample_runs" / "paddle")
+    monkeypatch.chdir(tmp_path)
+    exec(compile(example, "DEVELOPERS.md", "exec"), {})  # noqa: S102  (the document's own example)
+    shown = re.findall(r"!\[[^\]]*\]\(([^)]+)\)", readme)
+    assert shown
+    for path in shown:
+        picture = (tmp_path / path).read_text("utf-8")
+        assert picture.startswith("<?xml")
+        assert picture.count("<path") > 5
 
 
 def test_the_block_finder_finds_marked_blocks_only() -> None:

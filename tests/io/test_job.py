@@ -145,16 +145,11 @@ def test_the_same_job_twice_gives_the_same_gains(good, tmp_path: Path) -> None:
     assert again.design.law == good[0].design.law
 
 
-def test_no_report_leaves_it_out_and_the_exit_code_says_released(tmp_path: Path, capsys) -> None:
-    """The command as people call it; the verdict is on the output stream."""
-    assert main(["process", str(rig(tmp_path)), "--no-report"]) == 0
-    assert sorted(path.name for path in (tmp_path / "out").iterdir()) == ["dossier.h5", "gains.json"]
-    assert "released" in capsys.readouterr().out.lower()
-
-
-def test_without_a_held_out_run_the_job_is_held_with_code_3(tmp_path: Path) -> None:
-    """The gains stand under candidate."""
+def test_without_a_held_out_run_the_job_is_held_with_code_3(tmp_path: Path, capsys) -> None:
+    """The gains stand under candidate, the verdict is on the output stream, and the report was not asked for."""
     assert main(["process", str(rig(tmp_path, held_out="")), "--no-report"]) == 3
+    assert sorted(path.name for path in (tmp_path / "out").iterdir()) == ["dossier.h5", "gains.json"]
+    assert "no held-out run" in " ".join(capsys.readouterr().out.split())
     sheet = json.loads((tmp_path / "out" / "gains.json").read_text("utf-8"))
     jsonschema.validate(sheet, SCHEMA)
     assert sheet["controller"] is None
@@ -162,24 +157,20 @@ def test_without_a_held_out_run_the_job_is_held_with_code_3(tmp_path: Path) -> N
     assert any("no held-out run" in reason for reason in sheet["reasons"])
 
 
-def test_a_held_out_run_copied_from_a_fit_run_is_held(tmp_path: Path) -> None:
-    """Under another name, with the same samples."""
+def test_a_held_out_run_copied_from_a_fit_run_is_held_and_so_are_limits_that_were_not_given(tmp_path: Path) -> None:
+    """The copy has another name and the same samples; all that is wrong is said at once."""
     log(tmp_path / "fit.csv", 1)
     shutil.copy(tmp_path / "fit.csv", tmp_path / "held_out.csv")
-    assert "were fitted as fit.csv" in held_because(process_rig(rig(tmp_path)))
+    text = held_because(process_rig(rig(tmp_path, limits="")))
+    assert "held_out.csv holds samples that were fitted as fit.csv" in text
+    assert "[limits] command has no lowest and no highest" in text
+    assert "[limits] response has no lowest and no highest" in text
 
 
 def test_a_held_out_run_taken_after_the_gain_changed_is_held(tmp_path: Path) -> None:
     """Half as much gain again: another plant."""
     log(tmp_path / "held_out.csv", 2, gain=1.5 * GAIN)
     assert "disagrees" in held_because(process_rig(rig(tmp_path)))
-
-
-def test_limits_that_were_not_given_hold(tmp_path: Path) -> None:
-    """Command and response each have their reason."""
-    text = held_because(process_rig(rig(tmp_path, limits="")))
-    assert "[limits] command has no lowest and no highest" in text
-    assert "[limits] response has no lowest and no highest" in text
 
 
 def test_settling_asked_faster_than_the_dead_time_is_held(tmp_path: Path) -> None:
