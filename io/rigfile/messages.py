@@ -168,7 +168,8 @@ def _expected(field: Any) -> str:
 def _words(model: Any) -> list[str]:
     if model is None:
         return []
-    return [field.alias or name for name, field in model.model_fields.items()]
+    words = [field.alias or name for name, field in model.model_fields.items()]
+    return sorted(words, key=lambda word: word == "guessed")
 
 
 def _field(model: type["BaseModel"], location: Sequence[str | int]) -> Any:

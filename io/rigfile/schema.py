@@ -132,7 +132,7 @@ class RunPart(Part):
     """[[runs]]"""
 
     file: str = Field(examples=["run_1.csv"])
-    use: Literal["fit", "held-out"]
+    use: Literal["fit", "held-out"] = Field(examples=["fit", "held-out"])
     loop: Literal["open", "closed"] = "open"
     excitation: Literal["step", "sweep", "random", "frequency-table", "auto"] = "auto"
     from_: TimeText | None = Field(default=None, alias="from", examples=["0 s"])

@@ -165,6 +165,7 @@ CASES: dict[str, tuple[str, str, str]] = {
         "overshoot = { at_least",
         r"overshoot.at_least[\s\S]*unknown key",
     ),
+    "a run without its use": ('use = "fit"\n', "", r'runs\[1\].use: this key is missing[\s\S]*"fit" or "held-out"'),
     "unknown word for use": (
         'use = "held-out"',
         'use = "heldout"',
