@@ -115,9 +115,8 @@ def test_the_example_reader_reads_through_the_same_door_as_the_built_in_ones(dev
     log = tmp_path / "run.unknown"
     log.write_text(PIPE_LOG, "utf-8")
     call = f"import sys; sys.path.append({str(site)!r}); from gainwright.io.commands.main import main; sys.exit(main())"
-    shown = subprocess.run(
-        [sys.executable, "-P", "-c", call, "inspect", str(log)], capture_output=True, text=True, timeout=120, check=False
-    )
+    words = [sys.executable, "-P", "-c", call, "inspect", str(log)]
+    shown = subprocess.run(words, capture_output=True, text=True, timeout=120, check=False)
     assert shown.returncode == 0, shown.stderr
     assert "(pipe log)" in shown.stdout
     assert re.search(r"flow +l/min +3 +0 +1\.5 +2\.25", shown.stdout)
