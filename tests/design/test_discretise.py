@@ -163,3 +163,9 @@ def test_the_memory_is_stable(gains):
     """Zeros of the memory polynomial lie inside the unit circle: a clamped law forgets."""
     law = law_from_gains(gains, 0.05)
     assert np.all(np.abs(np.roots(law.memory)) < 1.0)
+
+
+def test_a_clamped_integral_follows_with_the_integral_time():
+    """PI: the memory's one pole is exp(-T/Ti), Ti = P/I; I alone forgets at once."""
+    assert law_from_gains(Gains("PI", 2.0, 4.0), 0.05).memory == pytest.approx((1.0, -np.exp(-0.05 / 0.5)), rel=1e-14)
+    assert law_from_gains(Gains("I", integral=4.0), 0.05).memory == pytest.approx((1.0, 0.0), abs=0)

@@ -119,3 +119,13 @@ def test_an_unstable_plant_meets_nothing():
     assert verdicts.stable.tolist() == [True, False]
     assert verdicts.meets_all.tolist() == [True, False]
     assert verdicts.limits_kept.tolist() == [True, False]
+
+
+@pytest.mark.parametrize("plant", [STATIC, SERVO])
+def test_each_plant_starts_from_the_command_that_holds_it(plant):
+    """Held by 2.9 V and not by the 3 V of the law's origin: with an integral the step starts from 2.9 V."""
+    gains = Gains("PI", 0.2, 0.1)
+    bounds = Limits(0.0, 9.0, None, 0.0, 20.0)
+    verdicts = judged(gains, [plant], [ERROR], commands=[2.9], limits=bounds, step=1e-6)
+    assert verdicts.extremes["command lowest"][0] == pytest.approx(2.9, abs=1e-5)
+    assert verdicts.extremes["command highest"][0] == pytest.approx(2.9, abs=1e-5)
