@@ -21,6 +21,9 @@ _SHORTEST = 0.3
 # A lag longer than this many records can't be told from an integrator.
 _LONGEST = 8.0
 
+# An integrating structure whose misfit is within this factor of the best may be a drive with friction.
+_DRIVE = 4.0
+
 # Rise of the plain sum of squares that a whitened estimate may cost.
 _TRADE = 0.02
 
@@ -70,8 +73,10 @@ def fit_candidates(
     progress: Progress | None = None,
 ) -> tuple[list[Fitted], Colour]:
     """Every structure fitted by least squares, then all again under the noise of the best; best first."""
-    fitted = []
+    fitted: list[Fitted] = []
     for i, family in enumerate(_families(structures)):
+        if fitted and family[0].friction and not _friction_may_matter(fitted):
+            continue
         if progress:
             progress("fitting " + " or ".join(s.name for s in family), i / (len(structures) + 1))
         fitted.append(_from_library(tuple(runs), reference, fixed_command, family))
@@ -82,6 +87,12 @@ def fit_candidates(
         colour = colour_of(recoloured[0])
         recoloured = sorted((refit(f, colour) for f in recoloured), key=lambda f: f.criterion)
     return recoloured, colour
+
+
+def _friction_may_matter(fitted: list[Fitted]) -> bool:
+    """Whether an integrating structure comes near the best: else the plant is no drive that friction could hold."""
+    integrating = [f.misfit for f in fitted if f.problem.structure.integrators]
+    return min(integrating, default=np.inf) < _DRIVE * min(f.misfit for f in fitted)
 
 
 def _distinct(fitted: list[Fitted]) -> list[Fitted]:

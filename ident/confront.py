@@ -16,7 +16,9 @@ from .run import FloatArray, Run
 from .start import first_guesses
 from .whiten import WHITE, Colour
 
-_DRAWS = 1024
+_DRAWS = 512
+# A residual above this multiple of the fitted noise: the earlier parameters may be too far off to start from.
+_SURPRISED = 1.3
 
 
 @dataclass(frozen=True, eq=False)
@@ -69,9 +71,10 @@ def confront(run: Run, fit: Fit, seed: int = 1) -> Confronted:
         run = replace(run, between=fit.between)
     problem = Regression((run,), structure, fit.operating_command, False)
     centre = np.median(fit.draws, axis=0)
-    starts = [centre[:-1], *first_guesses(problem, 2)]
-    ends = [polish(problem, theta) for theta in starts]
-    theta, solved = min(ends, key=lambda end: end[1].cost)
+    theta, solved = polish(problem, centre[:-1])
+    if np.sqrt(solved.cost / len(problem.measured)) > _SURPRISED * fit.noise.std:
+        ends = [(theta, solved), *(polish(problem, guess) for guess in first_guesses(problem, 2))]
+        theta, solved = min(ends, key=lambda end: end[1].cost)
     alone = Fitted(problem, theta, solved, 0.0, 0.0)
     colour = colour_of(alone)
     theta, solved = polish(problem, theta, colour, rounds=12)

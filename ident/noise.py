@@ -1,6 +1,7 @@
 """The noise's colour, estimated by restricted maximum likelihood beside the model's own columns."""
 
 import numpy as np
+from scipy.linalg import lapack
 from scipy.optimize import minimize
 
 from .run import FloatArray
@@ -54,14 +55,22 @@ def _colour(point: FloatArray) -> Colour:
 
 def restricted_loss(both: FloatArray, stretches: list[slice], colour: Colour) -> float:
     """-2 log restricted likelihood, up to a constant, of the last column given the others; the size is profiled out."""
-    white = whiten(both, stretches, colour)
-    r = np.linalg.qr(white, mode="r")
-    diagonal = np.abs(np.diag(r))
+    diagonal = _triangle(whiten(both, stretches, colour))
     q = both.shape[1] - 1
     usable = diagonal[:q][diagonal[:q] > 1e-12]
     freedom = len(both) - len(usable)
     size = max(diagonal[q] ** 2, 1e-300)
     return freedom * float(np.log(size)) + 2 * float(np.sum(np.log(usable))) + log_determinant(stretches, colour)
+
+
+def _triangle(white: FloatArray) -> FloatArray:
+    """Diagonal of the triangular factor: by Cholesky where that is safe, else by QR."""
+    gram = white.T @ white
+    scale = np.sqrt(np.maximum(np.diag(gram), 1e-300))
+    firm, rank = lapack.dpotrf(gram / np.outer(scale, scale), lower=1)
+    if rank == 0 and np.min(np.diag(firm)) > 1e-3:
+        return np.asarray(np.diag(firm) * scale)
+    return np.abs(np.diag(np.linalg.qr(white, mode="r")))
 
 
 def effective_samples(n: int, colour: Colour) -> float:

@@ -47,7 +47,7 @@ class Profile:
 
 
 def profile_dead_time(
-    problem: Regression, theta: FloatArray, colour: Colour, freedom: float, points: int = 33
+    problem: Regression, theta: FloatArray, colour: Colour, freedom: float, points: int = 27
 ) -> Profile:
     """Follow the cost along the dead time from a fitted theta.
 
@@ -109,7 +109,7 @@ def _costs_along(
         for i in path:
             at = at.copy()
             at[-1] = grid[i]
-            at, solved = polish(problem, at, colour, hold_dead_time=True, rounds=3, tolerance=1e-6)
+            at, solved = polish(problem, at, colour, hold_dead_time=True, rounds=2, tolerance=1e-6)
             costs[i], thetas[i] = solved.cost, at
     return costs, thetas
 

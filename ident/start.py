@@ -8,7 +8,7 @@ from .catalogue import Shape
 from .regression import Regression
 from .run import FloatArray
 
-_ROWS = 1500
+_ROWS = 800
 
 
 def first_guesses(problem: Regression, count: int = 3) -> list[FloatArray]:
@@ -63,7 +63,7 @@ def _thinned(problem: Regression) -> tuple[list[FloatArray], FloatArray, FloatAr
 
 def _shifts(problem: Regression) -> np.ndarray:
     longest = max(len(grid.time) for grid in problem.grids)
-    share = np.linspace(0, 1, 36) ** 2
+    share = np.linspace(0, 1, 30) ** 2
     return np.unique(np.round(share * 0.4 * longest).astype(int))
 
 
