@@ -16,7 +16,7 @@ from .run import FloatArray, Run
 from .start import first_guesses
 from .whiten import WHITE, Colour
 
-_DRAWS = 512
+_DRAWS = 1024
 # A residual above this multiple of the fitted noise: the earlier parameters may be too far off to start from.
 _SURPRISED = 1.3
 
