@@ -211,6 +211,12 @@ def test_the_same_samples_have_one_hash_under_any_name_format_and_clock(tmp_path
     assert read(write(tmp_path / "fresh.csv", lag_log(2))).samples_sha256 not in hashes
 
 
+def test_a_window_and_a_file_of_its_samples_alone_have_one_hash(tmp_path: Path, clean: Path) -> None:
+    """The hash is of the samples that are used, wherever they stood in their log."""
+    part = write(tmp_path / "part.csv", lag_log(1)[150:250])
+    assert read(clean, from_s=3.0, to_s=5.0).samples_sha256 == read(part).samples_sha256
+
+
 COPIES = {
     "another name": lambda rows: rows,
     "a part with a shifted clock": lambda rows: rows[150:260] - np.array([rows[150, 0], 0.0, 0.0]),

@@ -172,6 +172,15 @@ def test_coarse_readings_an_unsettled_start_and_an_early_end_are_said() -> None:
     assert not refusing(coarse) | refusing(drifting) | refusing(early)
 
 
+def test_a_coarse_rest_that_toggles_by_one_count_is_no_clipping() -> None:
+    """At rest at the record's highest value after a toggle, then away without noise: entered by one count only."""
+    index = np.arange(COUNT)
+    away = np.where(index < 60, 0.0, -0.01 * (index - 60.0) * (1.0 + index / 600.0))
+    response = np.round(away / 0.004) * 0.004
+    response[1] = -0.004
+    assert refusing(look(np.where(index < 50, 0.0, -1.0), response)) == {}
+
+
 COMMANDS: dict[str, Callable[[int, np.random.Generator], np.ndarray]] = {
     "step": lambda n, rng: np.where(np.arange(n) < n // 8, 0.0, 1.0),
     "step at the start": lambda n, rng: np.where(np.arange(n) < 1, 0.0, 1.0),
