@@ -9,10 +9,10 @@ from .between import settle_between
 from .catalogue import CATALOGUE, Structure
 from .choose import Fitted, Progress, colour_of, evidence, fit_candidates, name_of, refit, steady_fit
 from .ensemble import Drawn, draw_structure, operating_commands, plant_of, plausible_plants
-from .errors import RecordError
 from .fit import finish
 from .fitted import Candidate, Fit, FittedRun, Noise, Parameter
 from .run import FloatArray, Run
+from .usable import require_usable
 from .whiten import WHITE, Colour, whiten
 
 _TIED = 0.03
@@ -50,7 +50,7 @@ def identify(
     Raises
     ------
     RecordError
-        No command of any run moves, or no structure explains anything.
+        Nothing can be made of the runs: see `require_usable`.
 
     Notes
     -----
@@ -58,7 +58,7 @@ def identify(
     again under that colour, weighed by the Bayesian information criterion; the chosen one finished by lmfit; the dead
     time profiled, and the plausible plants drawn from the mixture over it.
     """
-    _require_movement(runs)
+    require_usable(runs)
     runs, between = settle_between(runs)
     reference = runs[0].start_command if operating_command is None else operating_command
     fitted, colour = fit_candidates(runs, reference, operating_command is not None, structures, progress)
@@ -70,21 +70,6 @@ def identify(
     kept = [i for i in range(len(fitted)) if i == 0 or weights[i] >= _TIED]
     drawn = [draw_structure(fitted[i], colour, _DRAWS if i == 0 else _TIED_DRAWS, seed) for i in kept]
     return _assembled(fitted, weights, drawn, weights[kept], colour, operating_response, between)
-
-
-def _require_movement(runs: Sequence[Run]) -> None:
-    if not runs:
-        raise RecordError(
-            "no run to fit", expected='at least one run with use = "fit"', advice="add one to the rig file"
-        )
-    if all(np.ptp(run.command) == 0 and run.start_command == run.command[0] for run in runs):
-        raise RecordError(
-            "the command never moves in any fit run",
-            where=", ".join(run.label for run in runs),
-            found=f"command constant at {runs[0].command[0]:g}",
-            expected="at least one step of the command",
-            advice="record a run in which the command is stepped, and check which column is the command",
-        )
 
 
 def _finished(best: Fitted, colour: Colour) -> tuple[Fitted, Colour]:
@@ -163,7 +148,8 @@ def _parameters(drawn: Drawn, row: FloatArray) -> tuple[tuple[Parameter, ...], F
     best = natural(row[None, :])[0]
     labels = [("gain", "gain/s" if structure.integrators else "gain"), ("dead time", "s")]
     labels += [(n.name, n.unit) for n in named.named]
-    low, high = np.quantile(draws, 0.025, axis=0), np.quantile(draws, 0.975, axis=0)
+    low = np.minimum(np.quantile(draws, 0.025, axis=0), best)
+    high = np.maximum(np.quantile(draws, 0.975, axis=0), best)
     covariance = np.atleast_2d(np.cov(draws.T))
     errors = np.sqrt(np.diag(covariance))
     parameters = tuple(

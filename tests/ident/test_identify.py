@@ -231,6 +231,38 @@ def test_a_command_that_never_moves_is_refused_with_advice():
         identify([])
 
 
+def test_a_response_that_never_moves_is_refused_with_advice():
+    """A sensor that hangs at one reading, and a record of which next to nothing is left."""
+    command = step_sums.steps(TIME, PROFILE, 2.0)
+    with pytest.raises(RecordError, match=r"hung.*never moves(.|\n)*3(.|\n)*sensor"):
+        identify([Run("hung", TIME, command, np.full(300, 3.0))])
+    lost = np.full(300, np.nan)
+    lost[[10, 50, 120, 200]] = [1.0, 2.0, 3.0, 2.0]
+    with pytest.raises(RecordError, match=r"too few samples(.|\n)*4 that are not lost"):
+        identify([Run("lost", TIME, command, lost)])
+
+
+@pytest.mark.parametrize("scale", [1e-9, 1e9])
+def test_the_units_of_response_and_time_change_nothing_but_the_numbers(scale):
+    """The same record in units far apart: the same structure, misfit and relative intervals."""
+    run = log(step_sums.lag(1.3), -2.0, 0.43)
+    plain = identify([run])
+    scaled = identify([Run("scaled", run.time / scale, run.command, run.response * scale)])
+    assert scaled.structure == plain.structure
+    assert scaled.misfit == pytest.approx(plain.misfit, rel=1e-3)
+    for one, other, size in zip(plain.parameters, scaled.parameters, (scale, 1 / scale, 1 / scale), strict=True):
+        assert other.value == pytest.approx(one.value * size, rel=1e-3)
+        assert other.high - other.low == pytest.approx((one.high - one.low) * size, rel=0.05)
+
+
+def test_an_interval_always_holds_its_own_value():
+    """Noise that no plant explains: whatever is fitted, no number is printed outside its own interval."""
+    noise = np.random.default_rng(0).standard_normal(300)
+    fit = identify([Run("noise", TIME, step_sums.steps(TIME, PROFILE, 2.0), noise)])
+    assert all(parameter.low <= parameter.value <= parameter.high for parameter in fit.parameters)
+    assert fit.misfit > 0.8
+
+
 def test_thirty_samples_are_enough_for_a_lag():
     """One step, 30 samples: no crash, and an interval that holds the truth."""
     time = np.arange(30.0)
