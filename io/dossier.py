@@ -16,6 +16,7 @@ from ..design.designed import Design, GainInterval, Trajectory
 from ..ident.fitted import Fit, FittedRun, Plausible
 from ..ident.run import FloatArray
 from .outcome import Outcome
+from .parameter_unit import unit_of
 from .record import Record
 from .rigfile.rig import Rig
 
@@ -108,16 +109,17 @@ def _put_fit(group: h5py.Group, fit: Fit, rig: Rig) -> None:
     point = [fit.operating_command, *fit.operating_command_interval]
     _numbers(group, "operating_command", point, rig.command_unit, "value, then its 95 % interval")
     _numbers(group, "operating_response", [fit.operating_response], rig.response_unit, "where the deviations start")
-    _put_parameters(group.create_group("parameters"), fit)
+    _put_parameters(group.create_group("parameters"), fit, rig)
     _put_noise(group, fit, rig)
     _put_candidates(group.create_group("candidates"), fit)
     for place, run in enumerate(fit.runs):
         _put_fitted_run(group.create_group(f"runs/{place}"), run, rig)
 
 
-def _put_parameters(group: h5py.Group, fit: Fit) -> None:
+def _put_parameters(group: h5py.Group, fit: Fit, rig: Rig) -> None:
+    units = [unit_of(each, fit.plant.integrators, rig.command_unit, rig.response_unit) for each in fit.parameters]
     _words(group, "name", (each.name for each in fit.parameters), "order of the rows below")
-    _words(group, "unit", (each.unit for each in fit.parameters), "of each row")
+    _words(group, "unit", units, "of each row")
     _numbers(group, "value", (each.value for each in fit.parameters), "see unit", "best estimate")
     _numbers(group, "std_error", (each.std_error for each in fit.parameters), "see unit", "standard error")
     _numbers(group, "low", (each.low for each in fit.parameters), "see unit", "lower end of the 95 % interval")

@@ -6,13 +6,13 @@ from collections.abc import Sequence
 from typing import Any
 
 from ..design.closing.compared import Compared
-from ..design.compensator import over_second, per_response
 from ..design.designed import Design, GainInterval, Judged, LimitJudged, Selection
 from ..design.gains import Gains
 from ..ident.fitted import Fit, Parameter
 from ..ident.law import Law
 from .forms_as_printed import forms_as_printed
 from .outcome import Outcome
+from .parameter_unit import unit_of
 from .provenance import window_of
 from .record import Record
 
@@ -155,12 +155,9 @@ def _plant(outcome: Outcome) -> dict[str, Any] | None:
 
 
 def _parameter(parameter: Parameter, fit: Fit, command_unit: str, response_unit: str) -> dict[str, Any]:
-    unit = parameter.unit
-    if parameter.name == "gain":
-        unit = (over_second if fit.plant.integrators else per_response)(response_unit, command_unit)
     return {
         "value": float(parameter.value),
-        "unit": unit,
+        "unit": unit_of(parameter, fit.plant.integrators, command_unit, response_unit),
         "std_error": float(parameter.std_error),
         "interval_95": [float(parameter.low), float(parameter.high)],
     }

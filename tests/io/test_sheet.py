@@ -9,6 +9,7 @@ import jsonschema
 import numpy as np
 import pytest
 from gainwright.design.requirements import Requirement
+from gainwright.ident.fitted import Parameter
 from gainwright.ident.plant import Plant
 from gainwright.io.sheet import SheetError, refuse_numbers_that_are_none, sheet_bytes, sheet_of
 
@@ -134,6 +135,13 @@ def test_the_gain_is_labelled_in_the_units_of_the_rig(made) -> None:
     assert read_back(made.outcome())["plant"]["parameters"]["gain"]["unit"] == "mm/V"
     integrating = replace(made, fit=replace(made.fit, plant=Plant((10.0,), (1.0, 0.0), 0.1)))
     assert read_back(integrating.outcome())["plant"]["parameters"]["gain"]["unit"] == "mm/(V s)"
+
+
+def test_a_parameter_of_the_command_carries_the_command_unit(made) -> None:
+    """Friction is measured in the command that it swallows: volts on this rig, and never the word itself."""
+    friction = Parameter("friction forward", 0.2, "command", 0.01, 0.18, 0.22)
+    sticking = replace(made, fit=replace(made.fit, parameters=(*made.fit.parameters, friction)))
+    assert read_back(sticking.outcome())["plant"]["parameters"]["friction forward"]["unit"] == "V"
 
 
 @pytest.mark.parametrize(("sign", "action"), [(1.0, "reverse"), (-1.0, "direct")])

@@ -1,0 +1,29 @@
+"""The unit of a fitted parameter on this rig; identification itself knows no units of command and response."""
+
+from ..design.compensator import over_second, per_response
+from ..ident.fitted import Parameter
+
+_OVER = {0: per_response, 1: over_second}
+
+
+def unit_of(parameter: Parameter, integrators: int, command_unit: str, response_unit: str) -> str:
+    """Unit as sheet, dossier and report print it.
+
+    Parameters
+    ----------
+    parameter : Parameter
+        Its unit is "s", "rad/s", "1", or the word "command" or "response" for a quantity of that signal.
+    integrators : int
+        Of the plant: an integrating plant's gain is per second, too.
+    command_unit, response_unit : str
+
+    Examples
+    --------
+    >>> unit_of(Parameter("gain", 2.0, "gain/s", 0.1, 1.8, 2.2), 1, "V", "mm")
+    'mm/(V s)'
+    >>> unit_of(Parameter("friction forward", 0.2, "command", 0.1, 0.1, 0.3), 1, "V", "mm")
+    'V'
+    """
+    if parameter.name == "gain":
+        return _OVER[integrators](response_unit, command_unit)
+    return {"command": command_unit, "response": response_unit}.get(parameter.unit, parameter.unit)
