@@ -73,21 +73,21 @@ def loop_gain_unit(structure: str, command_unit: str, response_unit: str) -> str
 
 
 def per_response(command_unit: str, response_unit: str) -> str:
-    """"V/mm"; a compound unit stands in brackets, a pure number is "1"."""
+    """ "V/mm"; a compound unit stands in brackets, a pure number is "1"."""
     top = _bracketed(command_unit) or "1"
     below = _bracketed(response_unit)
     return f"{top}/{below}" if below else top
 
 
 def over_second(command_unit: str, response_unit: str) -> str:
-    """"V/(mm s)"."""
+    """ "V/(mm s)"."""
     top = _bracketed(command_unit) or "1"
     below = _bracketed(response_unit)
     return f"{top}/({below} s)" if below else f"{top}/s"
 
 
 def times_second(per: str) -> str:
-    """"V s/mm" from "V/mm"."""
+    """ "V s/mm" from "V/mm"."""
     top, slash, below = per.partition("/") if not per.startswith("(") else (per, "", "")
     if per == "1":
         return "s"

@@ -234,9 +234,7 @@ def _selection(
     return select(gains, nominal, exact, quick, units)
 
 
-def _trajectory(
-    checked: _Checked, nominal: Plant, plausible: Plausible, situation: Situation
-) -> Trajectory | None:
+def _trajectory(checked: _Checked, nominal: Plant, plausible: Plausible, situation: Situation) -> Trajectory | None:
     if situation.step == 0.0:
         return None
     horizon = 0.5 * min(checked.verdicts.horizon, 2.0 * first_horizon(nominal, situation))
@@ -262,5 +260,3 @@ def _cautions(
     if gains.integral and np.median(plausible.stiction) > 0.0:
         said.append("integral action against friction can hunt slowly round the setpoint; watch for it at rest")
     return tuple(said)
-
-

@@ -118,9 +118,7 @@ def judged_on(
     return _verdicts(values, situation, bench.samples * bench.running.interval)
 
 
-def _long_enough(
-    gains: Gains, plausible: Plausible, situation: Situation, horizon: float, law: Law | None
-) -> float:
+def _long_enough(gains: Gains, plausible: Plausible, situation: Situation, horizon: float, law: Law | None) -> float:
     """The horizon that some of the plants need."""
     some = plausible.take(np.unique(np.linspace(0, len(plausible.plants) - 1, _SAMPLED).astype(int)).tolist())
     longest = _MOST_SAMPLES * situation.setting.update_interval

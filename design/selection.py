@@ -92,5 +92,3 @@ def select(
     unit = loop_gain_unit(gains.structure, *units)
     rows = fitted.rows if fitted else ()
     return Selection(chosen, unit, pole, residual, sampled, together, wide, rows)
-
-

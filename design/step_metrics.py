@@ -94,6 +94,12 @@ def first_reach(share: FloatArray, level: float, spacing: float) -> FloatArray:
     return np.where(reached.any(axis=0), spacing * (index + np.clip(part, 0.0, 1.0)), np.inf)
 
 
+def wanders(response: FloatArray, final: FloatArray) -> NDArray[np.bool_]:
+    """(c,) whether the last tenth of the record still moves by more than half a per cent of the step."""
+    tail = response[-max(response.shape[0] // 10, 2) :]
+    return np.asarray(np.ptp(tail, axis=0) > 0.005 * np.abs(final))
+
+
 def still_moving(limited: NDArray[np.bool_] | None, count: int) -> NDArray[np.bool_]:
     """(c,) whether the clamp still acts in the last tenth of the record: such a column has not settled."""
     if limited is None:

@@ -8,8 +8,9 @@ from ..ident.run import FloatArray
 from .designed import Trajectory
 from .discretise import columns_of, law_columns
 from .gains import Gains
+from .sampled.around import run_around
 from .sampled.bank import build_bank
-from .sampled.loop import Clamps, simulate
+from .sampled.loop import Clamps
 from .situation import Situation
 from .steady import rest_at
 
@@ -34,6 +35,7 @@ def trajectory(gains: Gains, nominal: Plant, plausible: Plausible, situation: Si
         computation_delay=setting.computation_delay,
         filter_time=setting.response_filter_time,
         points=1,
+        stiction=np.concatenate([[np.median(some.stiction)], some.stiction]),
     )
     which = np.arange(bank.lag.size)
     law = law_columns(columns_of([gains]), bank.interval).take(np.zeros(which.size, dtype=int))
@@ -46,7 +48,7 @@ def trajectory(gains: Gains, nominal: Plant, plausible: Plausible, situation: Si
     samples = int(np.clip(np.ceil(horizon / bank.interval), 20, 20_000))
     step = np.full(which.size, situation.step)
     still = np.zeros(which.size)
-    history = simulate(
+    history = run_around(
         bank, which, law, setpoint=step, disturbance=still, clamps=Clamps(low, high, change), samples=samples
     )
     response = np.vstack([still, history.response[:-1]]) + rest.response + situation.operating_response

@@ -1,6 +1,6 @@
 """What gains do on plants: every requirement's value and every extreme, a column for each pair of plant and law."""
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 from numpy.typing import NDArray
@@ -9,9 +9,10 @@ from ..ident.fitted import Plausible
 from ..ident.run import FloatArray
 from . import step_metrics
 from .discretise import GainColumns, LawColumns, law_columns
+from .sampled.around import held_by_friction, run_around
 from .sampled.bank import Bank, IndexArray, build_bank
 from .sampled.frequency import Spectra, command_noise, margins_of, spectra_of
-from .sampled.loop import Clamps, History, simulate
+from .sampled.loop import Clamps, History
 from .sampled.poles import poles_of, starting_poles
 from .sampled.pulse import law_response, setpoint_response
 from .situation import DISTURBED, STEP, Situation
@@ -81,10 +82,15 @@ def bench_of(
     horizon: float,
     *,
     stand_in: bool = False,
+    smooth: bool = False,
     most: int = 20_000,
     grid: int = 160,
 ) -> Bench:
-    """Discretise the plants for a horizon in s; `stand_in` allows a coarser interval, for the search only."""
+    """Discretise the plants for a horizon in s.
+
+    For the search only, `stand_in` allows a coarser interval and `smooth` runs drives as if nothing held them (their
+    steady error still counts).
+    """
     setting = situation.setting
     exact = _bank(plausible, situation, setting.update_interval, _points(horizon / setting.update_interval))
     least = float(exact.delay.min())
@@ -93,6 +99,8 @@ def bench_of(
         longest = setting.update_interval + 2.0 * least + 0.002 * horizon
         longest = max(min(longest, _ROTATION / _swing(exact)), setting.update_interval)
         running = _bank(plausible, situation, min(horizon / _STAND_IN, longest), 4)
+    if smooth:
+        running = replace(running, drives=None)
     samples = int(min(np.ceil(horizon / running.interval) + 1, most))
     coarse = _coarse(plausible, situation, exact)
     return Bench(plausible, situation, exact, spectra_of(exact, grid), running, samples, coarse)
@@ -103,7 +111,14 @@ def _bank(plausible: Plausible, situation: Situation, interval: float, points: i
     setting = situation.setting
     delay = setting.computation_delay + 0.5 * (setting.update_interval - interval)
     filter_time = setting.response_filter_time
-    return build_bank(plausible.plants, interval, computation_delay=delay, filter_time=filter_time, points=points)
+    return build_bank(
+        plausible.plants,
+        interval,
+        computation_delay=delay,
+        filter_time=filter_time,
+        points=points,
+        stiction=plausible.stiction,
+    )
 
 
 def _swing(bank: Bank) -> float:
@@ -260,7 +275,7 @@ class _Stepped:
         high = np.inf if clamp.highest is None else clamp.highest
         change = np.inf if clamp.rate is None else clamp.rate * self.bench.running.interval
         rate = self.situation.limits.response_rate
-        return simulate(
+        return run_around(
             self.bench.running,
             self.which,
             self.law,
@@ -274,6 +289,10 @@ class _Stepped:
     def _read_step(self, history: History, final: FloatArray, goal: FloatArray) -> None:
         """`goal`: the new setpoint as seen from the response's start."""
         bank, moving = self.bench.running, step_metrics.still_moving(history.limited, self.chosen.size)
+        held, smooth_final = held_by_friction(bank, self.which), final
+        if held.any():
+            final = np.where(held, history.response[-1], final)
+            moving = moving | (held & step_metrics.wanders(history.response, final))
         spacing = bank.interval / bank.points
         settle = self.situation.requirements.find("settling_time")
         usual = step_metrics.settling_time(history.response, final, 0.02, spacing)
@@ -291,8 +310,9 @@ class _Stepped:
             tail = history.response[-max(history.response.shape[0] // 5, 1) :]
             wandering = np.abs(goal - tail).max(axis=0) if tail.size else np.abs(goal)
             remaining = np.where(np.isfinite(usual), np.abs(goal - final), wandering)
-            stiction = self.bench.plausible.stiction[self.which]
-            self._keep("steady_state_error", remaining + stiction_error(bank, self.which, self.law, stiction))
+            stiction = stiction_error(bank, self.which, self.law, self.bench.plausible.stiction[self.which])
+            anywhere = np.abs(goal - smooth_final) + stiction
+            self._keep("steady_state_error", np.where(held, np.maximum(remaining, anywhere), remaining + stiction))
 
     def _keep_settled(self, time: FloatArray) -> None:
         known = self.settled[self.chosen]

@@ -1,7 +1,7 @@
 """Plants as exact sampled models side by side: mixed structures, fractional dead time, points between the samples."""
 
 from collections.abc import Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 from numpy.typing import NDArray
@@ -9,6 +9,7 @@ from scipy.linalg import expm
 
 from ...ident.plant import ComplexArray, Plant
 from ...ident.run import FloatArray
+from .drives import Drives, drives_of
 
 IndexArray = NDArray[np.int64]
 
@@ -51,6 +52,10 @@ class Bank:
         Whether the controller sees the last state instead of the response.
     poles : (p, n) complex array, 1/s
         Of the plants, NaN where one has fewer.
+    filter_time : float, s
+        Of the response filter; 0 without.
+    drives : Drives or None
+        The same plants as drives with friction, where friction holds any.
     """
 
     interval: float
@@ -69,6 +74,8 @@ class Bank:
     arrive_new: FloatArray
     filtered: bool
     poles: ComplexArray
+    filter_time: float = 0.0
+    drives: Drives | None = None
 
 
 def build_bank(
@@ -78,6 +85,7 @@ def build_bank(
     computation_delay: float = 0.0,
     filter_time: float = 0.0,
     points: int = 4,
+    stiction: FloatArray | None = None,
 ) -> Bank:
     """Discretise the plants exactly.
 
@@ -91,6 +99,8 @@ def build_bank(
         First-order filter between the response and the controller.
     points : int
         Sub-points per sample.
+    stiction : (p,) array, command unit, optional
+        Dry friction of each plant.
 
     References
     ----------
@@ -106,9 +116,11 @@ def build_bank(
     whole, part = _split(delay / interval)
     phi, old, new = _sub_steps(a, b, interval, part, points)
     output = np.concatenate([c, np.zeros_like(c[:, :1])], axis=1) if filter_time > 0.0 else c
-    return _assemble(
+    smooth = _assemble(
         plants, interval, points, a, b, output, direct, phi, old, new, whole, delay, part, filter_time > 0.0, poles
     )
+    drives = None if stiction is None else drives_of(plants, stiction, delay)
+    return replace(smooth, filter_time=filter_time, drives=drives)
 
 
 @dataclass(frozen=True, eq=False)
@@ -145,9 +157,7 @@ def _pace(bottom: FloatArray, interval: float) -> float:
     return float(abs(moving[-1] / moving[0]) ** (1.0 / order)) if order else 1.0 / interval
 
 
-def _padded(
-    models: list[_Model], order: int, interval: float
-) -> tuple[FloatArray, FloatArray, FloatArray, FloatArray]:
+def _padded(models: list[_Model], order: int, interval: float) -> tuple[FloatArray, FloatArray, FloatArray, FloatArray]:
     """Stack with the column first; spare states decay by themselves and touch nothing."""
     count = len(models)
     a = np.tile(np.eye(order) * (-1.0 / interval), (count, 1, 1))

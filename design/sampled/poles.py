@@ -48,9 +48,7 @@ class Poles:
         return complex(best.real, abs(best.imag))
 
 
-def poles_of(
-    spectra: Spectra, which: IndexArray, law: LawColumns, starts: ComplexArray, delay: FloatArray
-) -> Poles:
+def poles_of(spectra: Spectra, which: IndexArray, law: LawColumns, starts: ComplexArray, delay: FloatArray) -> Poles:
     """Polish starting poles on the exact loop by Newton's method and weigh them by their residues.
 
     Parameters

@@ -1,56 +1,11 @@
-"""The sampled law around drives with dry friction: speed and place in closed form from one change to the next."""
-
-from dataclasses import dataclass
+"""The sampled law around drives with dry friction."""
 
 import numpy as np
 
 from ...ident.run import FloatArray
 from ..discretise import LawColumns
+from .drives import Drives
 from .loop import Clamps, History
-
-
-@dataclass(frozen=True, eq=False)
-class Drives:
-    """c drives, T v' = u - friction sign(v) - v, response' = gain v, behind a delay.
-
-    Attributes
-    ----------
-    gain : (c,) array, response unit per command unit and s
-    lag : (c,) array, s
-    friction : (c,) array, command unit
-    delay : (c,) array, s
-        Total, computation included.
-    """
-
-    gain: FloatArray
-    lag: FloatArray
-    friction: FloatArray
-    delay: FloatArray
-
-    def advance(self, speed: FloatArray, level: FloatArray, length: FloatArray) -> tuple[FloatArray, FloatArray]:
-        """Speed after `length` seconds under a constant command, and how far the response moved.
-
-        A drive that comes to rest within the stretch stays or turns in what is left of it.
-        """
-        speed, moved, left = self._phase(speed, level, length)
-        if np.any(left > 0.0):
-            speed, more, _ = self._phase(speed, level, left)
-            moved = moved + more
-        return speed, moved
-
-    def _phase(
-        self, speed: FloatArray, level: FloatArray, length: FloatArray
-    ) -> tuple[FloatArray, FloatArray, FloatArray]:
-        way = np.where(speed != 0.0, np.sign(speed), np.sign(level))
-        stuck = (speed == 0.0) & (np.abs(level) <= self.friction)
-        final = np.where(stuck, 0.0, level - way * self.friction)
-        stops = (speed != 0.0) & (final * way < 0.0)
-        until = np.where(stops, self.lag * np.log1p(-speed / np.where(stops, final, -1.0)), np.inf)
-        step = np.minimum(length, until)
-        decay = np.exp(-step / self.lag)
-        moved = self.gain * (final * step + (speed - final) * self.lag * (1.0 - decay))
-        after = np.where(until <= length, 0.0, final + (speed - final) * decay)
-        return after, moved, length - step
 
 
 def simulate_rough(

@@ -15,7 +15,7 @@ from ..situation import STEP, Situation
 from ..values import Bench, bench_of
 from .candidates import Space, can_weight
 from .objective import Scores, spare_plants
-from .polish import Found, extremes, polish
+from .polish import Found, check, extremes, polish
 from .starts import coarse_search, pace
 from .structures import Plan
 
@@ -65,12 +65,16 @@ def search(nominal: Plant, plausible: Plausible, situation: Situation, plan: Pla
     used = np.unique(np.linspace(0, len(plausible.plants) - 1, count).astype(int))
     some = with_nominal(nominal, plausible.take(used.tolist()), situation)
     horizon = first_horizon(nominal, situation, SEARCHED)
-    bench = bench_of(some, situation, horizon, stand_in=True, grid=90)
+    bench = bench_of(some, situation, horizon, stand_in=True, smooth=True, grid=90)
+    rough = bench_of(some, situation, horizon, stand_in=True, grid=90) if np.any(some.stiction > 0.0) else None
     best: Found | None = None
     tried: list[Tried] = list(plan.skipped)
     for i, structure in enumerate(plan.structures):
         progress(f"searching zeros and gain of {structure}", i / len(plan.structures))
         found = best_of(structure, nominal, _asking(bench, structure, nominal))
+        if rough is not None:
+            held = check(rough, found.space, found.point)
+            found = replace(held, slack=min(found.slack, held.slack))
         tried.append(tried_row(structure, found, bench))
         if best is None or found.slack > (best.slack + _BETTER if best.slack >= 0.0 else best.slack):
             best = found
@@ -144,5 +148,3 @@ def binding(scores: Scores, bench: Bench) -> str:
     if scores.limits[0].min() <= -10.0:
         return "stability"
     return min(slacks, key=lambda name: slacks[name]) if slacks else "stability"
-
-
