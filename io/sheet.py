@@ -250,7 +250,7 @@ def _limit(limit: LimitJudged) -> dict[str, Any]:
     return {
         "name": limit.name,
         "limit": _bounded(limit.limit),
-        "predicted_worst": float(limit.predicted_worst),
+        "predicted_worst": _bounded(limit.predicted_worst),
         "unit": limit.unit,
         "headroom": _bounded(limit.headroom),
         "met": bool(limit.met),
