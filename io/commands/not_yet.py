@@ -26,7 +26,7 @@ def not_yet(name: str, purpose: str, instead: str) -> click.Command:
         raise RequestError(
             f"`gainwright {name}` is not there yet",
             found=" ".join(("gainwright", name, *arguments)),
-            expected="one of: process, inspect",
+            expected="one of: process, inspect, draft",
             advice=instead,
         )
 

@@ -1,0 +1,92 @@
+"""From an unknown log to the text of a rig file worth editing."""
+
+import os
+from pathlib import Path
+
+from ...ident.errors import RequestError
+from ..readers.csv import SNIFFED_LINES, CsvReader
+from ..readers.csv_dialect import decode, sniff
+from ..readers.port import Hints, Reader
+from ..readers.registry import reader_of
+from ..rigfile.rig import LogDialect
+from .roles import guess_roles
+from .seen_channel import SeenChannel, seen_channel
+from .text import Drafted, draft_text
+
+
+def draft_rig(run: Path, rig_file: Path) -> str:
+    """A rig file for this log, to stand at `rig_file`; nothing is written.
+
+    Parameters
+    ----------
+    run : Path
+        A log that no rig file knows yet.
+    rig_file : Path
+        Where the rig file will stand: it names the log relative to that.
+
+    Raises
+    ------
+    RecordError
+        When the log can't be read, or holds no two signals.
+    """
+    reader = reader_of(run)
+    channels = read_channels(run, reader)
+    shown = os.path.relpath(run.resolve(), rig_file.resolve().parent).replace(os.sep, "/")
+    dialect = _dialect(run) if isinstance(reader, CsvReader) else None
+    name = run.resolve().stem.replace("_", " ")
+    return draft_text(Drafted(shown, name, reader.name, dialect, guess_roles(channels, str(run))))
+
+
+def write_draft(text: str, rig_file: Path) -> None:
+    """Write a drafted rig file where nothing stands yet.
+
+    Raises
+    ------
+    RequestError
+        When something stands there, or the folder can't be written to.
+    """
+    try:
+        with rig_file.open("x", encoding="utf-8", newline="\n") as stream:
+            stream.write(text)
+            stream.flush()
+            os.fsync(stream.fileno())
+    except FileExistsError as cause:
+        raise RequestError(
+            "a draft never overwrites",
+            where=str(rig_file),
+            found="a file of that name",
+            expected="a name that is still free",
+            advice="name another one with --out",
+        ) from cause
+    except OSError as cause:
+        raise RequestError(
+            "the draft can't be written here",
+            where=str(rig_file),
+            found=cause.strerror or str(cause),
+            advice="name another place with --out",
+        ) from cause
+
+
+def read_channels(run: Path, reader: Reader) -> list[SeenChannel]:
+    """Every channel of a log; those of one length are read in one go.
+
+    Raises
+    ------
+    RecordError
+        When the log can't be read.
+    """
+    hints = Hints()
+    infos = reader.channels(run, hints)
+    seen: dict[str, SeenChannel] = {}
+    for length in dict.fromkeys(info.samples for info in infos):
+        names = [info.name for info in infos if info.samples == length]
+        for name, channel in reader.read(run, names, hints).channels.items():
+            seen[name] = seen_channel(channel)
+    return [seen[info.name] for info in infos]
+
+
+def _dialect(run: Path) -> LogDialect:
+    text, encoding = decode(run.read_bytes())
+    lines = text.replace("\r\n", "\n").replace("\r", "\n").split("\n")[:SNIFFED_LINES]
+    found = sniff(lines, LogDialect(), str(run))
+    return LogDialect(found.separator, found.decimal, encoding)
