@@ -122,7 +122,7 @@ def colour_of(fitted: Fitted) -> Colour:
     problem = fitted.problem
     coefficients = problem.solve(fitted.theta, Colour()).coefficients
     model, columns = problem.full_columns(fitted.theta, coefficients)
-    return estimate_colour(columns, problem.measured - model, problem.stretches)
+    return estimate_colour(columns, problem.measured - model, problem.stretches, problem.waves)
 
 
 def refit(fitted: Fitted, colour: Colour) -> Fitted:

@@ -7,9 +7,8 @@ from scipy.stats import f as fisher
 
 from .catalogue import CATALOGUE
 from .choose import Fitted, colour_of
-from .ensemble import Drawn, draw_structure, plausible_plants
+from .ensemble import Drawn, draw_structure, freedom_of, plausible_plants
 from .fitted import Fit, Plausible
-from .noise import effective_samples
 from .polish import polish
 from .regression import Regression
 from .run import FloatArray, Run
@@ -90,8 +89,7 @@ def _compared(fit: Fit, drawn: Drawn, colour: Colour) -> Confronted:
     spread = _robust_covariance(before) + _robust_covariance(after)
     difference = np.median(after, axis=0) - np.median(before, axis=0)
     distance = float(difference @ np.linalg.solve(spread, difference))
-    n = len(drawn.fitted.problem.measured)
-    freedom = max(effective_samples(n, colour) - len(difference) - 1, 4.0)
+    freedom = freedom_of(drawn.fitted.problem, colour, len(difference) + 1)
     p_value = float(fisher.sf(distance / len(difference), len(difference), freedom))
     return Confronted(
         plausible=plausible_plants([drawn], np.ones(1), fit.operating_response, _DRAWS),

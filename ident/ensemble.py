@@ -11,6 +11,7 @@ from .noise import effective_samples
 from .plant import Plant
 from .polish import bounds_of
 from .profile import profile_dead_time
+from .regression import Regression
 from .rein import rein_in
 from .run import FloatArray
 from .sandwich import draw_normal, sandwich_covariance
@@ -40,7 +41,7 @@ def draw_structure(fitted: Fitted, colour: Colour, count: int, seed: int) -> Dra
     """
     problem = fitted.problem
     unknowns = len(fitted.theta) + len(fitted.solved.coefficients)
-    freedom = max(effective_samples(len(problem.measured), colour) - unknowns, 4.0)
+    freedom = freedom_of(problem, colour, unknowns)
     if fitted.whitened:
         draws = draw(profile_dead_time(problem, fitted.theta, colour, freedom), count, seed)
     else:
@@ -52,10 +53,17 @@ def draw_structure(fitted: Fitted, colour: Colour, count: int, seed: int) -> Dra
     return Drawn(fitted, rein_in(problem, fitted.theta, draws, working, size))
 
 
+def freedom_of(problem: Regression, colour: Colour, unknowns: int) -> float:
+    """Degrees of freedom that the noise's size is known with; a wandering level is known from its few waves only."""
+    free = effective_samples(len(problem.measured), colour) - unknowns
+    most = problem.waves.shape[1] if colour.wander > 0.0 else np.inf
+    return float(max(min(free, most), 4.0))
+
+
 def _about_least_squares(fitted: Fitted, colour: Colour, freedom: float, count: int, seed: int) -> FloatArray:
     problem = fitted.problem
     model, columns = problem.full_columns(fitted.theta, fitted.solved.coefficients)
-    covariance = sandwich_covariance(columns, problem.measured - model, problem.stretches, colour)
+    covariance = sandwich_covariance(columns, problem.measured - model, problem.stretches, colour, problem.waves)
     centre = np.concatenate([fitted.theta, fitted.solved.coefficients])
     return draw_normal(centre, covariance, freedom, count, seed)
 

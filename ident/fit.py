@@ -6,7 +6,7 @@ import numpy as np
 from .polish import bounds_of
 from .regression import Regression
 from .run import FloatArray
-from .whiten import Colour, whiten
+from .whiten import Colour
 
 
 def finish(
@@ -28,7 +28,8 @@ def finish(
     theta, coefficients, cost
         The better of the start and lmfit's end; cost is the whitened sum of squares.
     """
-    target = whiten(problem.measured, problem.stretches, colour)
+    whitener = problem.whitener(colour)
+    target = whitener.apply(problem.measured)
     sizes = np.where(coefficients == 0, 1.0, np.abs(coefficients))
     dt = problem.interval
     low, high = bounds_of(problem)
@@ -52,7 +53,7 @@ def finish(
         model = lead * linear[0] + problem.fixed_columns @ linear[1 : 1 + r]
         if initial is not None:
             model = model + initial @ linear[1 + r :]
-        out = target - whiten(model, problem.stretches, colour)
+        out = target - whitener.apply(model)
         return np.nan_to_num(out, nan=1e150, posinf=1e150, neginf=-1e150)
 
     start = residual(parameters)

@@ -13,9 +13,11 @@ from .fit import finish
 from .fitted import Candidate, Fit, FittedRun, Noise, Parameter
 from .run import FloatArray, Run
 from .usable import require_usable
-from .whiten import WHITE, Colour, whiten
+from .whiten import WHITE, Colour
 
 _TIED = 0.03
+# Noise with more memory than this is a wandering level to anybody who looks at the record.
+_DRIFTING = 0.995
 _DRAWS = 1400
 _PLANTS = 1280
 # A tied structure is drawn more thinly; its draws stand several times where its share asks for more.
@@ -122,7 +124,7 @@ def _assembled(
         plausible=plausible_plants(drawn, shares, response_there, _PLANTS),
         explanation=_explanation(candidates, ties, between),
         cautions=_cautions(drawn[0], colour),
-        drift=colour.rho > 0.995,
+        drift=colour.rho > _DRIFTING or colour.wander > 0.0,
         draws=drawn[0].draws[:, : s + 2],
         between=problem.runs[0].between,
         friction=(float(np.exp(row[s - 2])), float(np.exp(row[s - 1]))) if problem.structure.friction else (0.0, 0.0),
@@ -170,7 +172,7 @@ def _noise(chosen: Fitted, colour: Colour) -> Noise:
     unknowns = len(chosen.theta) + len(chosen.solved.coefficients)
     model, _ = problem.full_columns(chosen.theta, problem.solve(chosen.theta, WHITE).coefficients)
     residual = problem.measured - model
-    white = float(np.sqrt(np.sum(whiten(residual, problem.stretches, colour) ** 2) / max(n - unknowns, 1)))
+    white = float(np.sqrt(np.sum(problem.whitener(colour).apply(residual) ** 2) / max(n - unknowns, 1)))
     std = float(np.sqrt(np.mean(residual**2) * n / max(n - unknowns, 1)))
     return Noise(problem.interval, std, white, colour.rho, colour.c)
 
@@ -220,6 +222,6 @@ def _cautions(drawn: Drawn, colour: Colour) -> tuple[str, ...]:
     if np.quantile(dead_time, 0.025) <= 1e-3 * drawn.fitted.problem.interval:
         most = np.quantile(dead_time, 0.975)
         out.append(f"the records leave open whether there is a dead time at all (95 %: up to {most:.3g} s)")
-    if colour.rho > 0.995:
+    if colour.rho > _DRIFTING or colour.wander > 0.0:
         out.append("the response wanders slowly by itself (drift): levels and gain are less certain than they look")
     return tuple(out)

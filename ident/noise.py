@@ -1,18 +1,26 @@
 """The noise's colour, estimated by restricted maximum likelihood beside the model's own columns."""
 
+from dataclasses import replace
+
 import numpy as np
 from scipy.linalg import lapack
 from scipy.optimize import minimize
 
 from .run import FloatArray
-from .whiten import Colour, log_determinant, whiten
+from .wander import Whitener
+from .whiten import Colour
 
 _RHO_MOST = 0.9995
 _FIRST_RHO = (0.0, 0.4, 0.7, 0.85, 0.93, 0.97, 0.99)
+_FIRST_WANDER = (-1.2, 0.0, 1.2)
+# Twice the log likelihood that a wandering level must win: two would be even odds for one more parameter.
+_WORTH = 2.0
 _FIRST_SHARE = (0.0, 0.5, 0.8, 0.95)
 
 
-def estimate_colour(columns: FloatArray, residual: FloatArray, stretches: list[slice]) -> Colour:
+def estimate_colour(
+    columns: FloatArray, residual: FloatArray, stretches: list[slice], waves: FloatArray | None = None
+) -> Colour:
     """Colour of the residual, free of the bias from fitting the columns.
 
     Parameters
@@ -23,6 +31,8 @@ def estimate_colour(columns: FloatArray, residual: FloatArray, stretches: list[s
         measured - model, response unit.
     stretches : list of slice
         Consecutive samples; the noise starts afresh in each.
+    waves : (n, k) array, optional
+        Slow waves; a wandering level is taken up where the likelihood rises enough for it.
 
     Returns
     -------
@@ -44,7 +54,33 @@ def estimate_colour(columns: FloatArray, residual: FloatArray, stretches: list[s
     around = best + np.array([[0.0, 0.0], [0.12, 0.0], [0.0, 0.1]])
     options = {"xatol": 3e-3, "fatol": 2e-2, "maxfev": 90, "initial_simplex": around}
     found = minimize(loss, best, method="Nelder-Mead", options=options)
-    return _colour(found.x)
+    if waves is None:
+        return _colour(found.x)
+    return _with_wander(both, stretches, waves, found.x, float(found.fun), [firsts[i] for i in np.argsort(values)[:4]])
+
+
+def _with_wander(
+    both: FloatArray,
+    stretches: list[slice],
+    waves: FloatArray,
+    plain: FloatArray,
+    plain_loss: float,
+    others: list[FloatArray],
+) -> Colour:
+    """The colour with a wandering level beside it, if that is enough more likely than the one without."""
+
+    def loss(point: FloatArray) -> float:
+        return restricted_loss(both, stretches, _wandering(point), waves)
+
+    firsts = [np.array([*point, size]) for point in (plain, *others) for size in _FIRST_WANDER]
+    values = [loss(point) for point in firsts]
+    if min(values) > plain_loss + 1.0:
+        return _colour(plain)
+    best = firsts[int(np.argmin(values))]
+    around = best + np.vstack([np.zeros(3), np.diag([0.12, 0.1, 0.5])])
+    options = {"xatol": 1e-2, "fatol": 5e-2, "maxfev": 110, "initial_simplex": around}
+    found = minimize(loss, best, method="Nelder-Mead", options=options)
+    return _wandering(found.x) if found.fun < plain_loss - _WORTH else _colour(plain)
 
 
 def _colour(point: FloatArray) -> Colour:
@@ -53,14 +89,22 @@ def _colour(point: FloatArray) -> Colour:
     return Colour(rho, -share * rho)
 
 
-def restricted_loss(both: FloatArray, stretches: list[slice], colour: Colour) -> float:
+def _wandering(point: FloatArray) -> Colour:
+    """point[2]: logarithm of the waves' size over the fast noise's standard deviation."""
+    fast = _colour(point)
+    size = float(np.exp(np.clip(point[2], -4.0, 6.0)))
+    return replace(fast, wander=size * size * fast.variance_ratio)
+
+
+def restricted_loss(both: FloatArray, stretches: list[slice], colour: Colour, waves: FloatArray | None = None) -> float:
     """-2 log restricted likelihood, up to a constant, of the last column given the others; the size is profiled out."""
-    diagonal = _triangle(whiten(both, stretches, colour))
+    whitener = Whitener(stretches, colour, np.zeros((len(both), 0)) if waves is None else waves)
+    diagonal = _triangle(whitener.apply(both))
     q = both.shape[1] - 1
     usable = diagonal[:q][diagonal[:q] > 1e-12]
     freedom = len(both) - len(usable)
     size = max(diagonal[q] ** 2, 1e-300)
-    return freedom * float(np.log(size)) + 2 * float(np.sum(np.log(usable))) + log_determinant(stretches, colour)
+    return freedom * float(np.log(size)) + 2 * float(np.sum(np.log(usable))) + whitener.log_determinant
 
 
 def _triangle(white: FloatArray) -> FloatArray:

@@ -11,7 +11,7 @@ import numpy as np
 from .polish import bounds_of, polish
 from .regression import Regression
 from .run import FloatArray
-from .whiten import Colour, whiten
+from .whiten import Colour
 
 # Beyond this fall of twice the log likelihood nothing is drawn: a share of 1e-4 in a normal tail.
 _REACH = 16.0
@@ -127,7 +127,7 @@ def _with_conditionals(
         solved = problem.solve(theta, colour)
         _, columns = problem.full_columns(theta, solved.coefficients)
         others = np.delete(columns, len(theta) - 1, axis=1)
-        factor, log_volume = _root_of_covariance(whiten(others, problem.stretches, colour))
+        factor, log_volume = _root_of_covariance(problem.whitener(colour).apply(others))
         centres.append(np.concatenate([theta[:-1], solved.coefficients]))
         factors.append(factor)
         log_volumes.append(log_volume)

@@ -11,7 +11,8 @@ from .friction import friction_response
 from .modes import Modes, modes_of
 from .run import FloatArray, Run
 from .simulate import Grid, grid_of, response
-from .whiten import Colour, stretches_of, whiten
+from .wander import Whitener, slow_waves
+from .whiten import Colour, stretches_of
 
 # Share of the record's whole movement that a stretch of rest may wander, smoothed, and still be rest.
 _STIR = 0.1
@@ -156,6 +157,23 @@ class Regression:
                     columns.append(column)
         return np.column_stack(columns) if columns else None
 
+    @cached_property
+    def waves(self) -> FloatArray:
+        """(n, k) slow waves in which the level may wander."""
+        return slow_waves([grid.time[run.valid] for grid, run in zip(self.grids, self.runs, strict=True)])
+
+    def whitener(self, colour: Colour) -> Whitener:
+        """The whitener of this colour; the last one is kept."""
+        kept = self._whiteners
+        if colour not in kept:
+            kept.clear()
+            kept[colour] = Whitener(self.stretches, colour, self.waves)
+        return kept[colour]
+
+    @cached_property
+    def _whiteners(self) -> dict[Colour, Whitener]:
+        return {}
+
     def solve(self, theta: FloatArray, colour: Colour) -> Solved:
         """Best linear part at theta = (log shapes ..., dead time in s)."""
         shape, dead_time = self.split(theta)
@@ -163,7 +181,7 @@ class Regression:
         initial = self.initial_columns(shape)
         moving = lead if initial is None else np.column_stack([lead, initial])
         target, fixed = self._whitened(colour)
-        white = whiten(moving, self.stretches, colour)
+        white = self.whitener(colour).apply(moving)
         matrix = np.column_stack([white[:, :1], fixed, white[:, 1:]])
         return _least_squares(matrix, target)
 
@@ -177,7 +195,7 @@ class Regression:
         if colour not in cache:
             cache.clear()
             both = np.column_stack([self.measured, self.fixed_columns])
-            white = whiten(both, self.stretches, colour)
+            white = self.whitener(colour).apply(both)
             cache[colour] = (np.ascontiguousarray(white[:, 0]), np.ascontiguousarray(white[:, 1:]))
         return cache[colour]
 

@@ -19,7 +19,11 @@ def autocovariance(colour: Colour, count: int) -> FloatArray:
 
 
 def sandwich_covariance(
-    columns: FloatArray, residual: FloatArray, stretches: list[slice], colour: Colour
+    columns: FloatArray,
+    residual: FloatArray,
+    stretches: list[slice],
+    colour: Colour,
+    waves: FloatArray | None = None,
 ) -> FloatArray:
     """(q, q) covariance of the least-squares coefficients of `columns` under noise of this colour.
 
@@ -36,11 +40,15 @@ def sandwich_covariance(
     for part in stretches:
         gamma = autocovariance(colour, part.stop - part.start)
         spread[part] = matmul_toeplitz(gamma, unit[part])
+    ratio = colour.variance_ratio
+    if waves is not None and colour.wander > 0.0:
+        spread += colour.wander * waves @ (waves.T @ unit)
+        ratio += colour.wander * float(np.mean(np.einsum("ij,ij->i", waves, waves)))
     sizes, vectors = np.linalg.eigh(unit.T @ unit)
     bread = (vectors / np.maximum(sizes, 1e-12 * sizes[-1])) @ vectors.T
     meat = unit.T @ spread
     taken = float(np.trace(bread @ meat))
-    size = float(residual @ residual) / max(len(residual) * colour.variance_ratio - taken, 0.05 * len(residual))
+    size = float(residual @ residual) / max(len(residual) * ratio - taken, 0.05 * len(residual))
     return np.asarray(size * bread @ meat @ bread / np.outer(scale, scale))
 
 

@@ -11,10 +11,18 @@ from .run import FloatArray
 
 @dataclass(frozen=True)
 class Colour:
-    """e[k] - rho e[k-1] = w[k] + c w[k-1]: the noise's shape without its size."""
+    """e[k] - rho e[k-1] = w[k] + c w[k-1]: the noise's shape without its size.
+
+    Attributes
+    ----------
+    rho, c : float
+    wander : float
+        Variance of each slow wave's size (see `slow_waves`) over that of w; 0 where no level wanders.
+    """
 
     rho: float = 0.0
     c: float = 0.0
+    wander: float = 0.0
 
     @property
     def variance_ratio(self) -> float:
