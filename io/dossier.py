@@ -15,6 +15,8 @@ from ..design.closing.compared import Compared
 from ..design.designed import Design, GainInterval, Trajectory
 from ..ident.fitted import Fit, FittedRun, Plausible
 from ..ident.run import FloatArray
+from .dossier_parts import numbers as _numbers
+from .ladder_dossier import put_ladder
 from .outcome import Outcome
 from .parameter_unit import unit_of
 from .record import Record
@@ -46,20 +48,11 @@ def dossier_bytes(outcome: Outcome) -> bytes:
             _put_plausible(file.create_group("plausible"), outcome.fit.plausible, outcome.rig)
         if outcome.design is not None:
             _put_design(file.create_group("design"), outcome.design, outcome.rig)
+        if outcome.ladder is not None:
+            put_ladder(file.create_group("ladder"), outcome.ladder, outcome.rig)
         for place, compared in enumerate(outcome.closing):
             _put_compared(file.create_group(f"closing/{place}"), compared, outcome.rig)
     return memory.getvalue()
-
-
-def _numbers(
-    group: h5py.Group, name: str, values: Iterable[float | None] | FloatArray, units: str, description: str
-) -> None:
-    plain = values if isinstance(values, np.ndarray) else [np.nan if each is None else each for each in values]
-    array = np.asarray(plain, dtype=float)
-    packing = {"compression": "gzip", "shuffle": True} if array.size > 1000 else {}
-    dataset = group.create_dataset(name, data=array, **packing)
-    dataset.attrs["units"] = units
-    dataset.attrs["description"] = description
 
 
 def _words(group: h5py.Group, name: str, values: Iterable[str], description: str) -> None:

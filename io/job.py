@@ -10,6 +10,8 @@ from ..design.closing.compared import Compared
 from ..design.closing.verdict import compare
 from ..design.design import design_gains
 from ..design.designed import Design
+from ..design.ladder.build import build_ladder
+from ..design.ladder.rung import Ladder
 from ..ident.errors import RecordError
 from ..ident.fitted import Fit
 from ..ident.identify import identify
@@ -51,9 +53,10 @@ def process_rig(rig_path: Path, progress: Progress = silent) -> Outcome:
         records = _read_all(rig, progress)
         fit = _identify(rig, records, progress)
         design = _design(rig, fit, progress)
+        ladder = _ladder(rig, fit, design, progress)
         twins = _twins(records)
         closing = _close(rig, records, fit, design, twins, progress)
-    reasons = reasons_to_hold(rig, records, design, closing, twins)
+    reasons = reasons_to_hold(rig, records, design, closing, twins, ladder)
     return Outcome(
         rig=rig,
         records=records,
@@ -62,8 +65,9 @@ def process_rig(rig_path: Path, progress: Progress = silent) -> Outcome:
         closing=closing,
         status="held" if reasons else "released",
         reasons=reasons,
-        cautions=_cautions(rig, records, fit, design, closing),
+        cautions=_cautions(rig, records, fit, design, closing, ladder),
         provenance=provenance_of(rig, records),
+        ladder=ladder,
     )
 
 
@@ -113,6 +117,24 @@ def _design(rig: Rig, fit: Fit, progress: Progress) -> Design:
     )
 
 
+def _ladder(rig: Rig, fit: Fit, design: Design, progress: Progress) -> Ladder | None:
+    """The way up from an open loop; gains that are not stable everywhere get none."""
+    if not design.all_stable:
+        return None
+    progress("building the gain ladder")
+    return build_ladder(
+        design.gains,
+        fit.plant,
+        fit.plausible,
+        operating_command=fit.operating_command,
+        operating_response=fit.operating_response,
+        noise=fit.noise,
+        requirements=rig.requirements,
+        limits=rig.limits,
+        setting=rig.setting,
+    )
+
+
 def _twins(records: Sequence[Record]) -> tuple[tuple[Record, Record], ...]:
     """Held-out records beside the fitted ones that hold the same samples, under whatever name."""
     held_out = [record for record in records if record.spec.use == "held-out"]
@@ -153,11 +175,17 @@ def _not_fresh(compared: Compared, twin: Record) -> Compared:
 
 
 def _cautions(
-    rig: Rig, records: Sequence[Record], fit: Fit, design: Design, closing: Sequence[Compared]
+    rig: Rig,
+    records: Sequence[Record],
+    fit: Fit,
+    design: Design,
+    closing: Sequence[Compared],
+    ladder: Ladder | None,
 ) -> tuple[str, ...]:
     findings = [(record.spec.shown, each) for record in records for each in record.findings]
     said = [f"{shown}: {each.text}" for shown, each in findings if each.refuses == "no"]
     left_out = [each for each in closing if each.verdict == "not comparable"]
     aside = [f"held-out {each.label} was not comparable: {each.why}" for each in left_out]
     usual = cautions_for(rig, design, fit)
-    return tuple(dict.fromkeys([*said, *fit.cautions, *design.cautions, *aside, *usual]))
+    climbing = ladder.cautions if ladder else ()
+    return tuple(dict.fromkeys([*said, *fit.cautions, *design.cautions, *climbing, *aside, *usual]))

@@ -5,6 +5,7 @@ from typing import Any, Literal
 
 from ..design.closing.compared import Compared
 from ..design.designed import Design
+from ..design.ladder.rung import Ladder
 from ..ident.fitted import Fit
 from .record import Record
 from .rigfile.rig import Rig
@@ -23,6 +24,8 @@ class Outcome:
     closing : tuple of Compared
     provenance : dict
         Ready for the sheet.
+    ladder : Ladder or None
+        None where the gains are not stable on every plausible plant.
     """
 
     rig: Rig
@@ -34,3 +37,4 @@ class Outcome:
     reasons: tuple[str, ...]
     cautions: tuple[str, ...]
     provenance: dict[str, Any] = field(default_factory=dict)
+    ladder: Ladder | None = None

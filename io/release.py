@@ -5,6 +5,7 @@ from collections.abc import Iterator, Sequence
 
 from ..design.closing.compared import Compared
 from ..design.designed import Design, Judged, LimitJudged
+from ..design.ladder.rung import Ladder
 from ..design.requirements import RequirementName
 from .record import Record
 from .rigfile.rig import Rig
@@ -19,6 +20,7 @@ def reasons_to_hold(
     design: Design | None,
     closing: Sequence[Compared],
     twins: Sequence[tuple[Record, Record]] = (),
+    ladder: Ladder | None = None,
 ) -> tuple[str, ...]:
     """Why the gains are not released, one sentence a failing condition; empty when all conditions are met.
 
@@ -34,6 +36,8 @@ def reasons_to_hold(
     closing : sequence of Compared, one a held-out record
     twins : sequence of (held-out record, fitted record)
         Pairs that share samples.
+    ladder : Ladder or None
+        One that was refused holds the gains: less gain is not safer there.
     """
     reasons = [
         *_from_rig_file(rig),
@@ -41,6 +45,7 @@ def reasons_to_hold(
         *(_twin_text(held_out, fitted) for held_out, fitted in twins),
         *_from_closing(closing, [held_out.run.label for held_out, _ in twins]),
         *(_from_design(design, rig) if design else ["no controller was found that could be judged"]),
+        *([ladder.refusal] if ladder and ladder.refusal else []),
     ]
     return tuple(dict.fromkeys(reasons))
 

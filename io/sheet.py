@@ -9,8 +9,8 @@ from ..design.closing.compared import Compared
 from ..design.designed import Design, GainInterval, Judged, LimitJudged, Selection
 from ..design.gains import Gains
 from ..ident.fitted import Fit, Parameter
-from ..ident.law import Law
 from .forms_as_printed import forms_as_printed
+from .ladder_rows import bounded, ladder_rows, law_row
 from .outcome import Outcome
 from .parameter_unit import unit_of
 from .provenance import window_of
@@ -48,11 +48,12 @@ def sheet_of(outcome: Outcome) -> dict[str, Any]:
     if released == bool(outcome.reasons) or (released and outcome.design is None):
         raise SheetError(f"status {outcome.status} with {len(outcome.reasons)} reasons")
     chosen = _chosen(outcome)
+    rungs = ladder_rows(outcome.ladder, outcome.rig)
     sheet = {
         "schema": SCHEMA,
         "status": outcome.status,
         "reasons": list(outcome.reasons),
-        "cautions": [*outcome.cautions, NO_LADDER],
+        "cautions": [*outcome.cautions, *([] if rungs else [NO_LADDER])],
         "rig": _rig(outcome),
         "operating_point": _operating_point(outcome),
         "plant": _plant(outcome),
@@ -61,7 +62,7 @@ def sheet_of(outcome: Outcome) -> dict[str, Any]:
         "requirements": [_requirement(each) for each in outcome.design.judged] if outcome.design else [],
         "checked": _checked(outcome.design, outcome.rig.requirements.confidence) if outcome.design else None,
         "limits": [_limit(each) for each in outcome.design.limits] if outcome.design else [],
-        "ladder": [],
+        "ladder": rungs,
         "change": None,
         "closing": _closing(outcome),
         "provenance": outcome.provenance,
@@ -173,7 +174,7 @@ def _chosen(outcome: Outcome) -> dict[str, Any] | None:
         "action": _action(design.gains),
         "forms": forms_as_printed(design.gains, rig.command_unit, rig.response_unit),
         "setpoint_weight": float(design.gains.setpoint_weight),
-        "difference_equation": _difference_equation(design.law),
+        "difference_equation": law_row(design.law),
     }
     return {"controller": controller, "selection": _selection(design.selection)}
 
@@ -182,22 +183,6 @@ def _action(gains: Gains) -> str:
     """Reverse: the command falls when the response rises, as it must where the plant's gain is positive."""
     sign = next((each for each in (gains.integral, gains.proportional, gains.derivative) if each != 0.0), 0.0)
     return "reverse" if sign > 0 else "direct"
-
-
-def _difference_equation(law: Law) -> dict[str, Any]:
-    clamp = law.clamp
-    return {
-        "update_interval": float(law.update_interval),
-        "command": [float(c) for c in law.command],
-        "setpoint": [float(c) for c in law.setpoint],
-        "response": [float(c) for c in law.response],
-        "memory": [float(c) for c in law.memory],
-        "clamp": {
-            "lowest": _bounded(clamp.lowest),
-            "highest": _bounded(clamp.highest),
-            "rate": _bounded(clamp.rate),
-        },
-    }
 
 
 def _selection(selection: Selection) -> dict[str, Any]:
@@ -214,7 +199,7 @@ def _selection(selection: Selection) -> dict[str, Any]:
 
 
 def _intervals(intervals: Sequence[GainInterval]) -> list[list[float | None]]:
-    return [[_bounded(low), _bounded(high)] for low, high in intervals]
+    return [[bounded(low), bounded(high)] for low, high in intervals]
 
 
 def _requirement(judged: Judged) -> dict[str, Any]:
@@ -225,8 +210,8 @@ def _requirement(judged: Judged) -> dict[str, Any]:
     return {
         "name": requirement.name,
         "limit": float(requirement.limit * requirement.scale),
-        "predicted": _bounded(predicted),
-        "interval_95": [_bounded(low), _bounded(high)],
+        "predicted": bounded(predicted),
+        "interval_95": [bounded(low), bounded(high)],
         "unit": requirement.unit or "1",
         "met": bool(judged.met),
         "asked": not judged.floor,
@@ -249,10 +234,10 @@ def _checked(design: Design, confidence: float) -> dict[str, Any]:
 def _limit(limit: LimitJudged) -> dict[str, Any]:
     return {
         "name": limit.name,
-        "limit": _bounded(limit.limit),
-        "predicted_worst": _bounded(limit.predicted_worst),
+        "limit": bounded(limit.limit),
+        "predicted_worst": bounded(limit.predicted_worst),
         "unit": limit.unit,
-        "headroom": _bounded(limit.headroom),
+        "headroom": bounded(limit.headroom),
         "met": bool(limit.met),
     }
 
@@ -268,15 +253,11 @@ def _compared(compared: Compared, record: Record) -> dict[str, Any]:
         "window": window_of(record),
         "samples_sha256": record.samples_sha256,
         "loop": record.spec.loop,
-        "misfit": _bounded(compared.misfit),
-        "noise_floor": _bounded(compared.noise_floor),
+        "misfit": bounded(compared.misfit),
+        "noise_floor": bounded(compared.noise_floor),
         "coverage_95": float(compared.coverage_95),
         "share_meeting": None if compared.share_meeting is None else float(compared.share_meeting),
         "verdict": compared.verdict,
         "why": compared.why,
     }
 
-
-def _bounded(value: float | None) -> float | None:
-    """None for a bound that is not there; NaN stays, to be refused."""
-    return None if value is None or math.isinf(value) else float(value)

@@ -26,7 +26,7 @@ def between(old: Gains, new: Gains, everyone: Field) -> list[Step] | None:
     ratios = [ratio for name in ("proportional", "integral", "derivative") if (ratio := _ratio(old, new, name))]
     if not ratios or math.inf in ratios:
         return None
-    count = max(int(math.ceil(max(ratios) / math.log(LARGEST_STEP) - 1e-9)), 1)
+    count = max(math.ceil(max(ratios) / math.log(LARGEST_STEP) - 1e-9), 1)
     if count > _MOST:
         return None
     last = on_plants(everyone.spectra, new)

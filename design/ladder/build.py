@@ -22,8 +22,8 @@ _SHOWN = 80  # plants that make the bands
 FIRST_STEP = 0.25  # of the test step, on the first rung
 
 UNSTABLE = (
-    "NO GAIN LADDER: THE PLANT RUNS AWAY WITH THE LOOP OPEN, SO LESS GAIN IS NOT SAFER; A FIRST RUN NEEDS A CATCH OF ITS "
-    "OWN (a mechanical stop, an operator's hand, a stabilising loop of lower order), planned by the responsible person"
+    "NO GAIN LADDER: THE PLANT RUNS AWAY WITH THE LOOP OPEN, SO LESS GAIN IS NOT SAFER; a first run needs a catch of "
+    "its own (a mechanical stop, an operator's hand, a calmer loop inside), planned by the responsible person"
 )
 CONDITIONAL = (
     "NO GAIN LADDER: THE LOOP IS CONDITIONALLY STABLE, LESS GAIN IS NOT SAFER; ask for gains that are stable from zero "

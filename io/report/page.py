@@ -15,6 +15,7 @@ from ..figures.words import number, with_unit
 from ..forms_as_printed import forms_as_printed
 from ..outcome import Outcome
 from . import pictures, tables, words
+from .ladder import ladder_of
 
 
 def report_html(outcome: Outcome) -> str:
@@ -46,6 +47,8 @@ def _safe_pictures(page: dict[str, Any]) -> dict[str, Any]:
     from markupsafe import Markup
 
     page.update({name: Markup(page[name]) for name in _PICTURES if name in page})
+    if page.get("ladder"):
+        page["ladder"] = {**page["ladder"], "picture": Markup(page["ladder"]["picture"])}
     page["logs"] = tuple((label, Markup(svg)) for label, svg in page["logs"])
     page["closing"] = tuple((compared, Markup(svg)) for compared, svg in page["closing"])
     return page
@@ -107,6 +110,7 @@ def _designed(outcome: Outcome, design: Design) -> dict[str, Any]:
         "step_guide": _step_guide(outcome),
         "ribbon": pictures.ribbon_picture(design),
         "limits": tables.limits(design),
+        "ladder": ladder_of(outcome),
         "clamped": words.clamped(design),
     }
 
