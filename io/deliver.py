@@ -1,14 +1,31 @@
 """A job with its results on disk: the output folder is held from start to end, and filled whole or not at all."""
 
+from collections.abc import Callable, Mapping
 from pathlib import Path
+from typing import TYPE_CHECKING
 
 from ..ident.errors import RequestError
 from .outcome import Outcome
 from .progress import Progress, silent
 from .write_whole import SHEET, OutputFolder
 
+if TYPE_CHECKING:
+    from .rigfile.rig import Rig
 
-def deliver(rig_path: Path, folder: Path, *, with_report: bool = True, progress: Progress = silent) -> Outcome:
+
+def _nothing(outcome: Outcome) -> Mapping[str, bytes]:
+    return {}
+
+
+def deliver(
+    rig_path: Path,
+    folder: Path,
+    *,
+    with_report: bool = True,
+    progress: Progress = silent,
+    change: "Callable[[Rig], Rig] | None" = None,
+    more: Callable[[Outcome], Mapping[str, bytes]] = _nothing,
+) -> Outcome:
     """Process a rig file and write gain sheet, dossier and report into `folder`.
 
     Parameters
@@ -16,6 +33,10 @@ def deliver(rig_path: Path, folder: Path, *, with_report: bool = True, progress:
     rig_path, folder : Path
     with_report : bool
     progress : Progress
+    change : callable or None
+        As `process_rig` takes it.
+    more : callable
+        Further files, name to content, to be written with the results.
 
     Raises
     ------
@@ -34,9 +55,9 @@ def deliver(rig_path: Path, folder: Path, *, with_report: bool = True, progress:
         progress("loading the libraries")
         from .job import process_rig  # imported late: an output folder that can't be used is said at once
 
-        outcome = process_rig(rig_path, progress)
+        outcome = process_rig(rig_path, progress) if change is None else process_rig(rig_path, progress, change)
         progress("writing the results")
-        output.write(_contents(outcome, with_report))
+        output.write({**more(outcome), **_contents(outcome, with_report)})
     return outcome
 
 

@@ -1,6 +1,6 @@
 """The whole job, and the only place where the stages meet: rig file in, values out, nothing written."""
 
-from collections.abc import Sequence
+from collections.abc import Callable, Sequence
 from dataclasses import replace
 from pathlib import Path
 
@@ -26,7 +26,9 @@ from .rigfile.load import load_rig
 from .rigfile.rig import Rig
 
 
-def process_rig(rig_path: Path, progress: Progress = silent) -> Outcome:
+def process_rig(
+    rig_path: Path, progress: Progress = silent, change: Callable[[Rig], Rig] | None = None
+) -> Outcome:
     """From a rig file to gains with a verdict: read, fit, design, close.
 
     Parameters
@@ -34,6 +36,8 @@ def process_rig(rig_path: Path, progress: Progress = silent) -> Outcome:
     rig_path : Path
     progress : Progress
         Called with each stage in words.
+    change : callable or None
+        Makes the rig to process from the one that the rig file states: with a fresh run, for instance.
 
     Returns
     -------
@@ -50,6 +54,7 @@ def process_rig(rig_path: Path, progress: Progress = silent) -> Outcome:
     with threadpool_limits(limits=1):  # small matrices: more threads only get into each other's way
         progress("reading the rig file")
         rig = load_rig(rig_path)
+        rig = rig if change is None else change(rig)
         records = _read_all(rig, progress)
         fit = _identify(rig, records, progress)
         design = _design(rig, fit, progress)

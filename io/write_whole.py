@@ -13,7 +13,8 @@ from typing import Self
 from ..ident.errors import RequestError
 
 SHEET = "gains.json"
-RESULTS = (SHEET, "dossier.h5", "report.html")
+RECEIPT = "job.json"  # of a job among many: which one it was and how it ended
+RESULTS = (SHEET, "dossier.h5", "report.html", RECEIPT)
 _LOCK = ".gainwright.lock"
 _PART = ".gainwright-part"
 _POLL_S = 0.05
