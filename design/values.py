@@ -21,6 +21,8 @@ from .steady import rest_at, stiction_error
 _MOST_ROOM = 2e7  # numbers of one response table; larger jobs are done in pieces
 _STAND_IN = 300  # samples of the stand-in over the search's horizon
 _ROTATION = 0.35  # rad; turn of a resonance in one sample of the stand-in, at most
+_INNER = 0.8  # of the settling band: a narrower one, which a cautious design enters ...
+_LATER = 1.12  # ... at most so much later; a smooth approach does, a swing that just stays inside does not
 _RAMP = 1e-3  # of the lowest grid frequency: where the limit z -> 1 of the ramp error is taken
 
 
@@ -40,6 +42,8 @@ class Bench:
         Of `running`, over the horizon.
     coarse : Bank
         Few enough samples in the dead time that eigenvalues can start the search for poles.
+    cautious : bool
+        Settling is judged away from the cliff where one more swing just leaves the band.
     """
 
     plausible: Plausible
@@ -49,6 +53,7 @@ class Bench:
     running: Bank
     samples: int
     coarse: Bank
+    cautious: bool = False
 
 
 @dataclass(frozen=True, eq=False)
@@ -301,6 +306,9 @@ class _Stepped:
         if settle is not None:
             band = settle.band or 0.02
             time = usual if band == 0.02 else step_metrics.settling_time(history.response, final, band, spacing)
+            if self.bench.cautious:
+                inner = step_metrics.settling_time(history.response, final, _INNER * band, spacing)
+                time = np.maximum(time, inner / _LATER)
             self._keep("settling_time", np.where(moving, np.inf, time))
         if self.situation.asks(("overshoot",)):
             self._keep("overshoot", step_metrics.overshoot(history.response, final))

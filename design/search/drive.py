@@ -65,7 +65,7 @@ def search(nominal: Plant, plausible: Plausible, situation: Situation, plan: Pla
     used = np.unique(np.linspace(0, len(plausible.plants) - 1, count).astype(int))
     some = with_nominal(nominal, plausible.take(used.tolist()), situation)
     horizon = first_horizon(nominal, situation, SEARCHED)
-    bench = bench_of(some, situation, horizon, stand_in=True, smooth=True, grid=90)
+    bench = replace(bench_of(some, situation, horizon, stand_in=True, smooth=True, grid=90), cautious=True)
     rough = bench_of(some, situation, horizon, stand_in=True, grid=90) if np.any(some.stiction > 0.0) else None
     best: Found | None = None
     tried: list[Tried] = list(plan.skipped)
@@ -108,7 +108,7 @@ def again(
     some = with_nominal(nominal, plausible.take(index.tolist()), tighter)
     horizon = first_horizon(nominal, situation)
     exact = horizon < 2500 * situation.setting.update_interval
-    bench = bench_of(some, tighter, horizon, stand_in=not exact, grid=90)
+    bench = replace(bench_of(some, tighter, horizon, stand_in=not exact, grid=90), cautious=True)
     point = search_.found.point
     space = search_.found.space
     return polish(bench, space, point[None], rounds=2, generations=12, seed=seed, narrow=0.4), bench
