@@ -6,9 +6,10 @@ import numpy as np
 from scipy.stats import f as fisher
 
 from .catalogue import CATALOGUE
-from .choose import Fitted, colour_of
+from .choose import Fitted, colour_of, steady_fit
 from .ensemble import Drawn, draw_structure, freedom_of, plausible_plants
 from .fitted import Fit, Plausible
+from .friction import rough_free_run
 from .polish import polish
 from .regression import Regression
 from .run import FloatArray, Run
@@ -16,6 +17,7 @@ from .start import first_guesses
 from .whiten import WHITE, Colour
 
 _DRAWS = 1024
+_JOINT = 400
 # A residual above this multiple of the fitted noise: the earlier parameters may be too far off to start from.
 _SURPRISED = 1.3
 
@@ -51,12 +53,15 @@ class Confronted:
     changes : tuple of Change
     noise_std : float, response unit
         Residual of this record's own fit.
+    log_likelihood : (p,) array
+        Of the first p plausible plants of the earlier fit under this record, its level and drift free.
     """
 
     plausible: Plausible
     p_value: float
     changes: tuple[Change, ...]
     noise_std: float
+    log_likelihood: FloatArray
 
 
 def confront(run: Run, fit: Fit, seed: int = 1) -> Confronted:
@@ -77,12 +82,32 @@ def confront(run: Run, fit: Fit, seed: int = 1) -> Confronted:
     alone = Fitted(problem, theta, solved, 0.0, 0.0)
     colour = colour_of(alone)
     theta, solved = polish(problem, theta, colour, rounds=12)
-    alone = Fitted(problem, theta, solved, 0.0, 0.0)
+    alone = steady_fit(Fitted(problem, theta, solved, 0.0, 0.0))
     drawn = draw_structure(alone, colour, _DRAWS, seed)
-    return _compared(fit, drawn, colour)
+    return _compared(fit, drawn, colour, _log_likelihood(fit, alone, colour))
 
 
-def _compared(fit: Fit, drawn: Drawn, colour: Colour) -> Confronted:
+def _log_likelihood(fit: Fit, alone: Fitted, colour: Colour) -> FloatArray:
+    """(p,) Student-t log likelihood of fitted plants, the noise of this record's own best fit."""
+    problem = alone.problem
+    best = problem.solve(alone.theta, colour).cost
+    initial = problem.initial_columns(problem.split(alone.theta)[0])
+    free = problem.fixed_columns if initial is None else np.column_stack([problem.fixed_columns, initial])
+    target = problem.whitener(colour).apply(np.column_stack([problem.measured, free]))
+    basis, _ = np.linalg.qr(target[:, 1:])
+    costs = []
+    for plant, friction in zip(fit.plausible.plants[:_JOINT], fit.plausible.stiction, strict=False):
+        pair = (float(friction), float(friction)) if friction > 0 else (0.0, 0.0)
+        model = rough_free_run(plant, problem.runs[0], fit.operating_command, 0.0, pair)[problem.runs[0].valid]
+        away = target[:, 0] - problem.whitener(colour).apply(model)
+        away = away - basis @ (basis.T @ away)
+        costs.append(float(away @ away))
+    freedom = freedom_of(problem, colour, len(alone.theta) + len(alone.solved.coefficients))
+    size = len(problem.measured) if alone.whitened else freedom
+    return np.asarray(-0.5 * size * np.log(np.maximum(np.array(costs), best) / best))
+
+
+def _compared(fit: Fit, drawn: Drawn, colour: Colour, log_likelihood: FloatArray) -> Confronted:
     size = np.hypot(_spread_of(fit.draws[:, -1]), _spread_of(drawn.draws[:, fit.draws.shape[1] - 1]))
     size = float(np.copysign(size, np.median(fit.draws[:, -1])))
     before, after = _straightened(fit.draws, size), _straightened(drawn.draws[:, : fit.draws.shape[1]], size)
@@ -96,6 +121,7 @@ def _compared(fit: Fit, drawn: Drawn, colour: Colour) -> Confronted:
         p_value=p_value,
         changes=_changes(fit, drawn, difference, np.sqrt(np.diag(spread))),
         noise_std=_own_residual(drawn.fitted),
+        log_likelihood=log_likelihood,
     )
 
 

@@ -22,12 +22,8 @@ def draw(profile: Profile, count: int, seed: int = 0) -> FloatArray:
     at = np.abs(profile.dead_times[:, None] - dead_time[None, :]).argmin(axis=0)
     centre = np.column_stack([np.interp(dead_time, profile.dead_times, column) for column in profile.centres.T])
     rest = centre + spread[:, None] * np.einsum("nij,nj->ni", profile.factors[at], normal)
-    shapes = _shape_count(profile, rest)
+    shapes = int(rest.shape[1]) - profile.linear_count
     return np.column_stack([rest[:, :shapes], dead_time, rest[:, shapes:]])
-
-
-def _shape_count(profile: Profile, rest: FloatArray) -> int:
-    return rest.shape[1] - profile.linear_count
 
 
 def _dead_times(profile: Profile, uniform: FloatArray) -> FloatArray:
@@ -43,4 +39,4 @@ def _dead_times(profile: Profile, uniform: FloatArray) -> FloatArray:
     slope = (right - left) / width
     root = np.sqrt(np.maximum(left**2 + 2 * slope * rest, 0.0))
     step = np.where(left + root > 0, 2 * rest / np.maximum(left + root, 1e-300), 0.0)
-    return grid[cell] + np.clip(step, 0.0, width)
+    return np.asarray(grid[cell] + np.clip(step, 0.0, width))

@@ -69,7 +69,7 @@ class Plausible:
 
     def take(self, chosen: FloatArray | list[int] | slice) -> "Plausible":
         """The chosen ones, by index."""
-        index = np.arange(len(self.plants))[chosen]  # type: ignore[index]
+        index = np.arange(len(self.plants))[chosen]
         return Plausible(tuple(self.plants[i] for i in index), self.operating_command[index], self.stiction[index])
 
 

@@ -1,6 +1,8 @@
 """The noise's colour, estimated by restricted maximum likelihood beside the model's own columns."""
 
+from collections.abc import Callable
 from dataclasses import replace
+from typing import Any
 
 import numpy as np
 from scipy.linalg import lapack
@@ -51,12 +53,20 @@ def estimate_colour(
     firsts = [np.array([np.arctanh(rho), share]) for rho in _FIRST_RHO for share in (_FIRST_SHARE if rho else (0.0,))]
     values = [loss(point) for point in firsts]
     best = firsts[int(np.argmin(values))]
-    around = best + np.array([[0.0, 0.0], [0.12, 0.0], [0.0, 0.1]])
-    options = {"xatol": 3e-3, "fatol": 2e-2, "maxfev": 90, "initial_simplex": around}
-    found = minimize(loss, best, method="Nelder-Mead", options=options)
+    point, least = _lowest(loss, best, np.array([0.12, 0.1]), most=90)
     if waves is None:
-        return _colour(found.x)
-    return _with_wander(both, stretches, waves, found.x, float(found.fun), [firsts[i] for i in np.argsort(values)[:4]])
+        return _colour(point)
+    return _with_wander(both, stretches, waves, point, least, [firsts[i] for i in np.argsort(values)[:4]])
+
+
+def _lowest(
+    loss: Callable[[FloatArray], float], start: FloatArray, widths: FloatArray, most: int
+) -> tuple[FloatArray, float]:
+    """Nelder and Mead's simplex from a start: the lowest point and its loss."""
+    around = start + np.vstack([np.zeros(len(start)), np.diag(widths)])
+    options: Any = {"xatol": 3e-3, "fatol": 2e-2, "maxfev": most, "initial_simplex": around}
+    found = minimize(loss, start, method="Nelder-Mead", options=options)
+    return np.asarray(found.x), float(found.fun)
 
 
 def _with_wander(
@@ -77,10 +87,8 @@ def _with_wander(
     if min(values) > plain_loss + 1.0:
         return _colour(plain)
     best = firsts[int(np.argmin(values))]
-    around = best + np.vstack([np.zeros(3), np.diag([0.12, 0.1, 0.5])])
-    options = {"xatol": 1e-2, "fatol": 5e-2, "maxfev": 110, "initial_simplex": around}
-    found = minimize(loss, best, method="Nelder-Mead", options=options)
-    return _wandering(found.x) if found.fun < plain_loss - _WORTH else _colour(plain)
+    point, least = _lowest(loss, best, np.array([0.12, 0.1, 0.5]), most=110)
+    return _wandering(point) if least < plain_loss - _WORTH else _colour(plain)
 
 
 def _colour(point: FloatArray) -> Colour:
@@ -114,7 +122,7 @@ def _triangle(white: FloatArray) -> FloatArray:
     firm, rank = lapack.dpotrf(gram / np.outer(scale, scale), lower=1)
     if rank == 0 and np.min(np.diag(firm)) > 1e-3:
         return np.asarray(np.diag(firm) * scale)
-    return np.abs(np.diag(np.linalg.qr(white, mode="r")))
+    return np.asarray(np.abs(np.diag(np.linalg.qr(white, mode="r"))))
 
 
 def effective_samples(n: int, colour: Colour) -> float:

@@ -62,7 +62,7 @@ def draw_normal(centre: FloatArray, covariance: FloatArray, freedom: float, coun
     sizes, vectors = np.linalg.eigh(covariance / np.outer(scale, scale))
     root = vectors * np.sqrt(np.maximum(sizes, 0.0))
     normal = norm.ppf(points[:, 1:]) @ root.T * scale
-    return centre + spread[:, None] * normal
+    return np.asarray(centre + spread[:, None] * normal)
 
 
 def _scales(covariance: FloatArray) -> FloatArray:

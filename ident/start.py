@@ -3,6 +3,7 @@
 import itertools
 
 import numpy as np
+from numpy.typing import NDArray
 
 from .catalogue import Shape
 from .regression import Regression
@@ -44,7 +45,7 @@ def _different(thetas: list[FloatArray], problem: Regression, count: int) -> lis
     return kept
 
 
-def _thinned(problem: Regression) -> tuple[list[FloatArray], FloatArray, FloatArray]:
+def _thinned(problem: Regression) -> tuple[list[NDArray[np.int64]], FloatArray, FloatArray]:
     """Rows of each run that the library looks at, a basis of the fixed columns there, and the target less it."""
     total = sum(len(grid.time) for grid in problem.grids)
     stride = max(1, total // _ROWS)
@@ -53,15 +54,15 @@ def _thinned(problem: Regression) -> tuple[list[FloatArray], FloatArray, FloatAr
     for run, part in zip(problem.runs, problem.parts, strict=True):
         valid = np.flatnonzero(run.valid)
         take = np.arange(0, len(valid), stride)
-        rows.append(valid[take])
+        rows.append(np.asarray(valid[take], dtype=np.int64))
         picked.append(part.start + take)
     index = np.concatenate(picked)
     basis, _ = np.linalg.qr(problem.fixed_columns[index])
     target = problem.measured[index]
-    return rows, basis, target - basis @ (basis.T @ target)
+    return rows, basis, np.asarray(target - basis @ (basis.T @ target))
 
 
-def _shifts(problem: Regression) -> np.ndarray:
+def _shifts(problem: Regression) -> NDArray[np.int64]:
     longest = max(len(grid.time) for grid in problem.grids)
     share = np.linspace(0, 1, 30) ** 2
     return np.unique(np.round(share * 0.4 * longest).astype(int))
@@ -104,8 +105,8 @@ def _peaks(problem: Regression) -> FloatArray:
 def _costs(
     problem: Regression,
     values: tuple[float, ...],
-    shifts: np.ndarray,
-    rows: list[FloatArray],
+    shifts: NDArray[np.int64],
+    rows: list[NDArray[np.int64]],
     basis: FloatArray,
     target: FloatArray,
 ) -> FloatArray:

@@ -72,7 +72,7 @@ class Whitener:
         if self.colour.wander <= 0.0:
             return plain
         _, sizes = self._basis
-        return plain + 2 * float(np.sum(np.log(sizes))) + self.waves.shape[1] * float(np.log(self.colour.wander))
+        return float(plain + 2 * np.sum(np.log(sizes)) + self.waves.shape[1] * np.log(self.colour.wander))
 
     @cached_property
     def _basis(self) -> tuple[FloatArray, FloatArray]:
