@@ -1,5 +1,6 @@
 """What gains do on plants: every requirement's value and every extreme, a column for each pair of plant and law."""
 
+from collections.abc import Callable
 from dataclasses import dataclass, replace
 
 import numpy as np
@@ -16,7 +17,7 @@ from .sampled.loop import Clamps, History
 from .sampled.poles import poles_of, starting_poles
 from .sampled.pulse import law_response, setpoint_response
 from .situation import DISTURBED, STEP, Situation
-from .steady import rest_at, stiction_error
+from .steady import Rest, rest_at, stiction_error
 
 _MOST_ROOM = 2e7  # numbers of one response table; larger jobs are done in pieces
 _STAND_IN = 300  # samples of the stand-in over the search's horizon
@@ -90,20 +91,21 @@ def bench_of(
     smooth: bool = False,
     most: int = 20_000,
     grid: int = 160,
+    points: int = 0,
 ) -> Bench:
     """Discretise the plants for a horizon in s.
 
     For the search only, `stand_in` allows a coarser interval and `smooth` runs drives as if nothing held them (their
-    steady error still counts).
+    steady error still counts). `points` looked at in each sample; 0: as many as the horizon bears.
     """
     setting = situation.setting
-    exact = _bank(plausible, situation, setting.update_interval, _points(horizon / setting.update_interval))
+    exact = _bank(plausible, situation, setting.update_interval, points or _points(horizon / setting.update_interval))
     least = float(exact.delay.min())
     running = exact
     if stand_in and horizon > 1.2 * _STAND_IN * setting.update_interval:
         longest = setting.update_interval + 2.0 * least + 0.002 * horizon
         longest = max(min(longest, _ROTATION / _swing(exact)), setting.update_interval)
-        running = _bank(plausible, situation, min(horizon / _STAND_IN, longest), 4)
+        running = _bank(plausible, situation, min(horizon / _STAND_IN, longest), points or 4)
     if smooth:
         running = replace(running, drives=None)
     samples = int(min(np.ceil(horizon / running.interval) + 1, most))
@@ -142,8 +144,17 @@ def _coarse(plausible: Plausible, situation: Situation, exact: Bank) -> Bank:
     return _bank(plausible, situation, float(exact.delay.max()) / 6, 1)
 
 
+Watch = Callable[[IndexArray, Rest, History], None]
+
+
 def values_of(
-    bench: Bench, which: IndexArray, gains: GainColumns, *, refine: bool = True, law: LawColumns | None = None
+    bench: Bench,
+    which: IndexArray,
+    gains: GainColumns,
+    *,
+    refine: bool = True,
+    law: LawColumns | None = None,
+    watch: Watch | None = None,
 ) -> Values:
     """Judge gains[i] on plant which[i].
 
@@ -153,6 +164,9 @@ def values_of(
         Refine margins on the exact loop; else interpolate on the grid.
     law : LawColumns, optional
         Coefficients to use instead of those made from the gains (a law given from outside).
+    watch : callable, optional
+        Given the stable columns' indices, their rest before the test step and their history; only for jobs so small
+        that they are done in one piece.
     """
     pieces = int(np.ceil(which.size * bench.samples * bench.running.points / _MOST_ROOM))
     if pieces > 1:
@@ -172,7 +186,7 @@ def values_of(
         "peak_sensitivity": margins.sensitivity,
     }
     of |= _linear_values(bench, which, exact, margins.stable)
-    stepped = _Stepped(bench, which, running, margins.stable)
+    stepped = _Stepped(bench, which, running, margins.stable, watch)
     of |= stepped.values
     return Values(margins.stable, of, stepped.extremes, stepped.clamped, stepped.settled, margins.upper)
 
@@ -237,8 +251,10 @@ def following_time(spectra: Spectra, which: IndexArray, law: LawColumns) -> Floa
 class _Stepped:
     """Everything that is read off simulated steps; unstable columns are not run and get `never`."""
 
-    def __init__(self, bench: Bench, which: IndexArray, law: LawColumns, stable: NDArray[np.bool_]) -> None:
-        self.bench, self.situation = bench, bench.situation
+    def __init__(
+        self, bench: Bench, which: IndexArray, law: LawColumns, stable: NDArray[np.bool_], watch: Watch | None
+    ) -> None:
+        self.bench, self.situation, self.watch = bench, bench.situation, watch
         self.count, self.chosen = which.size, np.flatnonzero(stable)
         self.which, self.law = which[self.chosen], law.take(self.chosen)
         self.offset = self.situation.operating_command - bench.plausible.operating_command[self.which]
@@ -268,6 +284,8 @@ class _Stepped:
         before = rest_at(self.bench.running, self.which, self.law, here, self.offset)
         after = rest_at(self.bench.running, self.which, self.law, here + step, self.offset)
         history = self._run(np.full(here.size, step), np.zeros(here.size), before.command)
+        if self.watch is not None and step == self.situation.step:
+            self.watch(self.chosen, before, history)
         self._read_step(history, after.response - before.response, here + step - before.response)
         self._read_extremes(history, before.response, before.command)
         if history.limited is not None:

@@ -50,7 +50,7 @@ def predicted_step(
     -------
     Figure
     """
-    trajectory = _told(trajectory, judged)
+    trajectory = told(trajectory, judged)
     figure = sheet(3.9)
     factor, unit = time_scale(float(trajectory.time[-1] - trajectory.time[0]))
     time = trajectory.time * factor
@@ -69,7 +69,7 @@ def predicted_step(
     return figure
 
 
-def _told(trajectory: Trajectory, judged: Sequence[Judged]) -> Trajectory:
+def told(trajectory: Trajectory, judged: Sequence[Judged]) -> Trajectory:
     """The stretch in which something happens: until well after the band has come to rest and should have settled."""
     time, final, start = trajectory.time, float(trajectory.setpoint[-1]), float(trajectory.response[0])
     away = np.maximum(np.abs(trajectory.response_high - final), np.abs(trajectory.response_low - final))

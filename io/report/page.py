@@ -16,6 +16,7 @@ from ..forms_as_printed import forms_as_printed
 from ..outcome import Outcome
 from . import pictures, tables, words
 from .ladder import ladder_of
+from .moving import moving_part
 
 
 def report_html(outcome: Outcome) -> str:
@@ -36,7 +37,8 @@ def report_html(outcome: Outcome) -> str:
     environment = Environment(autoescape=True, undefined=StrictUndefined, trim_blocks=True, lstrip_blocks=True)
     template = environment.from_string(_resource("page.html"))
     page = _safe_pictures({**_top(outcome), **_knowing(outcome)})
-    return template.render(page=page, style=Markup(_style()))
+    moving = moving_part(outcome)
+    return template.render(page=page, style=Markup(_style()), moving=moving)
 
 
 _PICTURES = ("step", "ribbon", "headroom", "locus")

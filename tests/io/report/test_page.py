@@ -1,5 +1,7 @@
 """The report: one file that fetches nothing, says the verdict first, escapes names, and stands without its parts."""
 
+import base64
+import hashlib
 import re
 from dataclasses import replace
 from html.parser import HTMLParser
@@ -8,6 +10,7 @@ import pytest
 from gainwright.ident.law import Law
 from gainwright.io.report.page import law_text, report_html
 
+OWN_SCRIPTS = [{"type": "application/json", "id": "moving-data"}, {}]
 VOID = {"meta", "br", "link", "img", "hr", "input"}
 
 
@@ -32,7 +35,7 @@ class Reader(HTMLParser):
         assert self.open.pop() == tag
 
     def handle_data(self, data):
-        if self.open and self.open[-1] not in ("style",):
+        if self.open and self.open[-1] not in ("style", "script"):
             self.texts.append(data)
 
     @property
@@ -45,10 +48,15 @@ def released(made):
     return report_html(made)
 
 
-def test_the_page_fetches_nothing_and_runs_nothing(released):
-    """No element or style that loads: no script, link, image, frame, import or url to outside."""
+def test_the_page_fetches_nothing_and_runs_only_its_own_script(released):
+    """No element or style that loads: no link, image, frame, import or url to outside; one script, by its hash."""
     page = Reader(released)
-    assert not {tag for tag, _ in page.elements} & {"script", "link", "img", "iframe", "object", "embed", "base"}
+    assert not {tag for tag, _ in page.elements} & {"link", "img", "iframe", "object", "embed", "base"}
+    assert [attributes for tag, attributes in page.elements if tag == "script"] == OWN_SCRIPTS
+    text = re.search(r"<script>(.*?)</script>", released, re.DOTALL)[1]
+    digest = base64.b64encode(hashlib.sha256(text.encode()).digest()).decode()
+    policy = next(each["content"] for tag, each in page.elements if each.get("http-equiv"))
+    assert policy == f"default-src 'none'; style-src 'unsafe-inline'; img-src data:; script-src 'sha256-{digest}'"
     for _, attributes in page.elements:
         for name in ("src", "href", "xlink:href", "action", "data", "srcset"):
             assert attributes.get(name, "#").startswith("#")
@@ -69,12 +77,13 @@ def test_the_page_is_well_formed_and_no_id_comes_twice(released):
 def test_it_reads_as_an_engineer_asks(released):
     """May I, the gains, what to expect, headroom, cautions; then how we know."""
     headings = re.findall(r'<h2><span class="no">(\d+)</span>([^<]*)</h2>', released)
-    assert [int(number) for number, _ in headings] == list(range(1, 11))
+    assert [int(number) for number, _ in headings] == list(range(1, 12))
     assert [text for _, text in headings] == [
         "May I use these gains?",
         "The gains to type in",
         "What to expect",
         "Headroom to the hardware limits",
+        "First power-up: the gain ladder",
         "Cautions",
         "The logs",
         "The plant and how its structure was chosen",
@@ -154,7 +163,8 @@ def test_names_from_rig_file_and_logs_do_nothing(make_outcome):
         )
     )  # fmt: skip
     read = Reader(page)
-    assert not {tag for tag, _ in read.elements} & {"script", "img"}
+    assert "img" not in {tag for tag, _ in read.elements}
+    assert [attributes for tag, attributes in read.elements if tag == "script"] == OWN_SCRIPTS
     assert not any(name.startswith("on") for _, attributes in read.elements for name in attributes)
     assert HOSTILE in read.text
     assert "$x_1$ </style>" in read.text
