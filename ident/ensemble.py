@@ -18,6 +18,10 @@ from .sandwich import draw_normal, sandwich_covariance
 from .whiten import WHITE, Colour
 
 
+# Below this Student's t has tails that no rig has: a thousand draws would hold plants from another world.
+_LEAST_FREEDOM = 8.0
+
+
 @dataclass(frozen=True, eq=False)
 class Drawn:
     """Draws of one structure.
@@ -56,8 +60,8 @@ def draw_structure(fitted: Fitted, colour: Colour, count: int, seed: int) -> Dra
 def freedom_of(problem: Regression, colour: Colour, unknowns: int) -> float:
     """Degrees of freedom that the noise's size is known with; a wandering level is known from its few waves only."""
     free = effective_samples(len(problem.measured), colour) - unknowns
-    most = problem.waves.shape[1] if colour.wander > 0.0 else np.inf
-    return float(max(min(free, most), 4.0))
+    most = 2.0 * problem.waves.shape[1] if colour.wander > 0.0 else np.inf
+    return float(max(min(free, most), _LEAST_FREEDOM))
 
 
 def _about_least_squares(fitted: Fitted, colour: Colour, freedom: float, count: int, seed: int) -> FloatArray:

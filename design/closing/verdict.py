@@ -188,6 +188,14 @@ def _decide(run: Run, fit: Fit, alone: Confronted, gap: _Gap, share: float, want
             "loop works: take a longer one with larger steps",
             share,
         )
+    if not real and gap.difference > _ANOTHER_PLANT:
+        return _Finding(
+            "not comparable",
+            f"by itself this run gives another plant ({shown}): its response differs by {100 * gap.difference:.0f} % at "
+            "the speed at which the loop works, and the runs are too short or too rough to say which is right: take "
+            "longer ones with larger steps, or look for drift and slow effects that the structure lacks",
+            share,
+        )
     if not real and share < wanted:
         return _Finding(
             "disagrees",
