@@ -35,15 +35,18 @@ def expected_of(
     plausible : Plausible
         The fitted plant first.
     horizon : float, s
-        Where to begin; it doubles until the fitted plant is at rest.
+        Where to begin; it doubles until the fitted plant is at rest, and shrinks where it rests early.
     """
     smaller = replace(situation, requirements=replace(situation.requirements, test_step=share * situation.step))
     for _ in range(_GROWS):
         run = _Run(gains, plausible, smaller, horizon)
         settled = float(run.settled[0])
-        if settled <= 0.8 * horizon:
+        if 0.0 < settled < 0.25 * horizon:
+            horizon = _PATIENCE * settled
+        elif settled <= 0.8 * horizon:
             return run.expected(noise_std), _PATIENCE * settled
-        horizon *= 2.0
+        else:
+            horizon *= 2.0
     return run.expected(noise_std), horizon
 
 
@@ -137,7 +140,7 @@ def _bank(plausible: Plausible, situation: Situation, horizon: float) -> Bank:
     interval = setting.update_interval
     if horizon > 1.2 * _SAMPLES * interval:
         least = min(plant.dead_time for plant in plausible.plants) + setting.computation_delay
-        longest = interval + 2.0 * least + 0.002 * horizon
+        longest = interval + 2.0 * least + 0.001 * horizon
         interval = max(interval, min(horizon / _SAMPLES, longest, _ROTATION / _swing(plausible)))
     return build_bank(
         plausible.plants,

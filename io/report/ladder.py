@@ -23,7 +23,7 @@ def ladder_of(outcome: Outcome) -> dict[str, Any]:
     """What the page shows of the ladder."""
     ladder = outcome.ladder
     if ladder is None:
-        return {"refusal": "No ladder was made: the gains are not stable on every plausible plant.", "picture": ""}
+        return {"refusal": "No ladder was made for these gains.", "picture": ""}
     if ladder.refusal:
         return {"refusal": ladder.refusal, "picture": ""}
     return {

@@ -159,7 +159,7 @@ def test_a_held_out_record_keeps_its_window_and_its_samples_mark(made) -> None:
 
 
 def test_what_was_not_done_is_said(made) -> None:
-    """No ladder is made yet, and a caution says so."""
+    """A job without a ladder says so in a caution."""
     sheet = read_back(made.outcome())
     assert sheet["ladder"] == []
     assert any("no gain ladder" in caution for caution in sheet["cautions"])

@@ -10,6 +10,8 @@ import pytest
 from gainwright.design.closing.compared import Compared
 from gainwright.design.designed import Design, Judged, LimitJudged, Selection, Trajectory, Tried
 from gainwright.design.gains import Gains
+from gainwright.design.ladder.build import build_ladder
+from gainwright.design.ladder.rung import Ladder
 from gainwright.design.requirements import ControllerSetting, Limits, Requirement, Requirements
 from gainwright.ident.fitted import Candidate, Fit, FittedRun, Noise, Parameter, Plausible
 from gainwright.ident.law import Clamp, Law
@@ -215,7 +217,16 @@ def build_outcome(
     )
     provenance = make_provenance(files)
     outcome = Outcome(rig, records, fit, make_design(rng), (compared,), "released", (), (), provenance)
-    return replace(outcome, **changes)
+    return replace(outcome, **{"ladder": make_ladder(outcome), **changes})
+
+
+def make_ladder(outcome: Outcome) -> Ladder:
+    """The way up to the made-up gains, as the job builds it."""
+    fit, rig = outcome.fit, outcome.rig
+    return build_ladder(
+        outcome.design.gains, fit.plant, fit.plausible, operating_command=COMMAND, operating_response=START,
+        noise=fit.noise, requirements=rig.requirements, limits=rig.limits, setting=rig.setting,
+    )  # fmt: skip
 
 
 @pytest.fixture(scope="session")
