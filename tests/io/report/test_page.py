@@ -143,12 +143,12 @@ def test_the_working_multiplies_to_one_over_the_loop_gain(released):
 
 
 def test_each_picture_tells_how_to_read_it_and_has_a_name_for_a_screen_reader(released):
-    """Six kinds of picture: step, ribbon, headroom, log, locus, held-out."""
+    """Seven kinds of picture: step, ribbon, headroom, ladder, log, locus, held-out."""
     page = Reader(released)
     pictures = [attributes for tag, attributes in page.elements if tag == "svg"]
-    assert len(pictures) == 6
+    assert len(pictures) == 7
     assert all(attributes["role"] == "img" and len(attributes["aria-label"]) > 15 for attributes in pictures)
-    assert len(re.findall(r"<figcaption>[^<]*How to read (?:it|them):", released)) == 6
+    assert len(re.findall(r"<figcaption>[^<]*How to read (?:it|them):", released)) == 7
 
 
 HOSTILE = "<script>alert(1)</script>"
@@ -200,7 +200,7 @@ def test_many_fitted_logs_are_named_and_the_first_few_drawn(make_outcome, made):
     runs = tuple(replace(made.fit.runs[0], label=f"run_{place}.csv") for place in range(7))
     page = report_html(make_outcome(fit=replace(made.fit, runs=runs)))
     assert "Fitted as well, and not drawn here: run_4.csv, run_5.csv and run_6.csv." in page
-    assert page.count("<svg") == 9
+    assert page.count("<svg") == 10
 
 
 def test_a_held_out_run_that_cannot_be_compared_is_said_without_numbers(make_outcome, made):
