@@ -38,6 +38,9 @@ _DELAY_MOVED = 0.5
 _DELAY_MATTERS = 0.08
 _SURE = 5.0
 _HANDFUL = 15
+# A prediction that misses by this multiple of the fitted noise, and by this share of the response's own movement.
+_NOT_NOISE_AHEAD = 2.5
+_VISIBLE = 0.12
 _JUDGED = 400
 _COMPARED = 200
 
@@ -118,6 +121,14 @@ def _judge(
             "take a run with larger steps",
             None,
         )
+    missed = _missed(run, fit, prediction)
+    if missed > _NOT_NOISE_AHEAD * fit.noise.std and missed > _VISIBLE * float(np.nanstd(run.response)):
+        return _Finding(
+            "disagrees",
+            f"the prediction misses the run by {missed:.3g} rms, its level left free; the fitted runs left "
+            f"{fit.noise.std:.3g} rms: the structure lacks something that this run shows, or the plant is another",
+            None,
+        )
     alone = confront(run, fit)
 
     def meets(plausible: Plausible) -> NDArray[np.bool_]:
@@ -139,6 +150,16 @@ def _judge(
     if share < wanted and alone.p_value >= _REAL:
         share = _joint_share(alone, meets(fit.plausible), share)
     return _decide(run, fit, alone, gap, share, wanted)
+
+
+def _missed(run: Run, fit: Fit, prediction: Prediction) -> float:
+    """rms of what the free run misses, apart from a level and, for an integrating plant, a steady drift."""
+    valid = run.valid
+    away = (run.response - prediction.predicted)[valid]
+    time = run.time[valid] - run.time[0]
+    free = np.column_stack([np.ones(len(away)), time]) if fit.plant.integrators else np.ones((len(away), 1))
+    basis, _ = np.linalg.qr(free)
+    return float(np.sqrt(np.mean((away - basis @ (basis.T @ away)) ** 2)))
 
 
 def _joint_share(alone: Confronted, meets: NDArray[np.bool_], share: float) -> float:
@@ -191,8 +212,8 @@ def _decide(run: Run, fit: Fit, alone: Confronted, gap: _Gap, share: float, want
     if not real and gap.difference > _ANOTHER_PLANT:
         return _Finding(
             "not comparable",
-            f"by itself this run gives another plant ({shown}): its response differs by {100 * gap.difference:.0f} % at "
-            "the speed at which the loop works, and the runs are too short or too rough to say which is right: take "
+            f"by itself this run gives another plant ({shown}): its response differs by {100 * gap.difference:.0f} % "
+            "at the speed at which the loop works, and the runs are too short or too rough to say which is right: take "
             "longer ones with larger steps, or look for drift and slow effects that the structure lacks",
             share,
         )
