@@ -249,8 +249,10 @@ def _least_squares(matrix: FloatArray, target: FloatArray) -> Solved:
 
 def starts_unsettled(run: Run) -> bool:
     """Whether the record begins without a stretch of rest long enough to trust that nothing was moving."""
-    if run.command_before is not None:
+    if run.at_rest:
         return False
+    if run.start_command != run.command[0]:
+        return True
     span = np.ptp(run.command)
     changes = np.flatnonzero(np.abs(run.command - run.command[0]) > 1e-3 * span) if span > 0 else np.array([])
     first = int(changes[0]) if len(changes) else len(run.time)

@@ -32,6 +32,8 @@ class Run:
         Steady command before the record began; None takes the first logged command.
     excitation : {"step", "sweep", "random", "frequency-table", "auto"}
     closed_loop : bool
+    at_rest : bool
+        The person says that the rig stood still under `command_before`; else the record has to show it.
     """
 
     label: str
@@ -43,6 +45,7 @@ class Run:
     command_before: float | None = None
     excitation: Excitation = "auto"
     closed_loop: bool = False
+    at_rest: bool = False
 
     @property
     def valid(self) -> NDArray[np.bool_]:

@@ -86,6 +86,7 @@ def read_record(spec: RunSpec, rig: Rig) -> Record:
         setpoint=windowed.setpoint,
         between=spec.between_samples,
         command_before=before,
+        at_rest=before is not None and before == spec.command_before,
         excitation=spec.excitation,
         closed_loop=spec.loop == "closed",
     )

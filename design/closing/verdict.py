@@ -38,9 +38,8 @@ _DELAY_MOVED = 0.5
 _DELAY_MATTERS = 0.08
 _SURE = 5.0
 _HANDFUL = 15
-# A prediction that misses by this multiple of the fitted noise, and by this share of the response's own movement.
-_NOT_NOISE_AHEAD = 2.5
-_VISIBLE = 0.12
+# A prediction that misses by such a multiple of the fitted noise, and by such a share of the response's own movement.
+_MISSES = ((2.5, 0.12), (1.5, 0.2))
 _JUDGED = 400
 _COMPARED = 200
 
@@ -122,7 +121,8 @@ def _judge(
             None,
         )
     missed = _missed(run, fit, prediction)
-    if missed > _NOT_NOISE_AHEAD * fit.noise.std and missed > _VISIBLE * float(np.nanstd(run.response)):
+    times, share_missed = missed / max(fit.noise.std, 1e-300), missed / float(np.nanstd(run.response))
+    if any(times > most and share_missed > least for most, least in _MISSES):
         return _Finding(
             "disagrees",
             f"the prediction misses the run by {missed:.3g} rms, its level left free; the fitted runs left "
