@@ -79,7 +79,7 @@ function gainText(index) {
 let views = null;
 
 function drawAll() {
-  const wide = Math.floor(room.clientWidth);
+  const wide = Math.floor(ribbon.clientWidth);
   drawRibbon(wide);
   views = {
     locus: drawLocus(wide),

@@ -107,7 +107,7 @@ function moveRibbon(rows) {
   put(live, "path", {
     d: `M${x - 13},${scale.top - 30}h26v15l-13,10l-13,-10Z`, fill: ink("model"), stroke: ink("paper"), class: "grip",
   });
-  label(live, x, scale.top - 18, "◂ ▸", { "text-anchor": "middle", fill: ink("paper"), "font-size": 12 });
+  label(live, x, scale.top - 18, "◂ ▸", { "text-anchor": "middle", fill: ink("paper"), "data-on": ".grip" });
 }
 
 function gaugeRow(live, each, y) {
