@@ -126,7 +126,8 @@ def _judge(
         return _Finding(
             "disagrees",
             f"the prediction misses the run by {missed:.3g} rms, its level left free; the fitted runs left "
-            f"{fit.noise.std:.3g} rms: the structure lacks something that this run shows, or the plant is another",
+            f"{fit.noise.std:.3g} rms: the structure lacks something that this run shows, or the plant is another"
+            + _by_itself(confront(run, fit), fit),
             None,
         )
     alone = confront(run, fit)
@@ -265,6 +266,11 @@ def _moved(changes: tuple[Change, ...], fit: Fit) -> str:
     if abs(late.score) > _SURE and grown and fit.plant.dead_time > 0:
         return f"its dead time has changed by {longer:+.3g} s"
     return ""
+
+
+def _by_itself(alone: Confronted, fit: Fit) -> str:
+    """What a run that contradicts the prediction says when it is fitted alone, where that is sure."""
+    return f"; by itself this run gives {_shown(alone.changes, fit)}" if alone.p_value < _REAL else ""
 
 
 def _shown(changes: tuple[Change, ...], fit: Fit) -> str:

@@ -24,7 +24,7 @@ def record(rho, dead_time, seed):
     command = step_sums.steps(time, [(6.0, 1.0), (30.0, 0.3)], 0.0)
     clean = step_sums.response(step_sums.lag(4.0), 2.0, dead_time, time, command, 0.0)
     noisy = 1.0 + clean + step_sums.coloured(rng, COUNT, 0.08, rho)
-    return Run("log", time, command, noisy, command_before=0.0)
+    return Run("log", time, command, noisy, command_before=0.0, at_rest=True)
 
 
 def brute_force(run, rho, lags, dead_times):
@@ -83,7 +83,7 @@ def test_the_level_alone_is_drawn_as_students_t():
     time = np.arange(float(COUNT))
     command = step_sums.steps(time, [(6.0, 1.0), (30.0, 0.3)], 0.0)
     clean = step_sums.response(step_sums.lag(4.0), 2.0, 3.4, time, command, 0.0)
-    run = Run("log", time, command, 1.0 + clean + 2e-3 * rng.standard_normal(COUNT), command_before=0.0)
+    run = Run("log", time, command, 1.0 + clean + 2e-3 * rng.standard_normal(COUNT), command_before=0.0, at_rest=True)
     problem = Regression((run,), LAG, 0.0, False)
     theta, solved = polish(problem, np.array([np.log(4.0), 3.4]), tolerance=1e-12)
 

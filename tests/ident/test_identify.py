@@ -150,7 +150,7 @@ def test_a_record_that_begins_in_full_motion_has_its_initial_state_fitted():
 def test_the_command_before_the_record_is_part_of_the_truth():
     """The log begins with the step itself; 2 V before it is stated, and the operating point follows from it."""
     run = log(step_sums.lag(1.3), 2.0, 0.43, seed=7, profile=((0.0, 3.0), (12.0, 1.0)))
-    stated = Run("step at once", run.time, run.command, run.response, command_before=2.0)
+    stated = Run("step at once", run.time, run.command, run.response, command_before=2.0, at_rest=True)
     fit = identify([stated], structures=[LAG])
     assert fit.operating_command == pytest.approx(2.0)
     assert fit.operating_response == pytest.approx(5.0, abs=0.1)

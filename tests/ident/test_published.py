@@ -20,7 +20,7 @@ def step_log(response, time, size=1.0, seed=0, noise=1e-4):
     """A step at time 0 held from before the record; noise 1e-4 of the response, far below what the rules can read."""
     rng = np.random.default_rng(seed)
     noisy = response + noise * response[-1] * rng.standard_normal(len(time))
-    return Run("step test", time, np.full(len(time), size), noisy, command_before=0.0)
+    return Run("step test", time, np.full(len(time), size), noisy, command_before=0.0, at_rest=True)
 
 
 def values(fit):

@@ -62,18 +62,20 @@ def test_the_hot_air_duct_has_the_gain_and_misfit_of_its_readme():
 
 def test_the_lamp_and_plate_are_fitted_as_a_single_lag_as_well_as_one_can():
     """README: gain 19.6 degC/V, lag 70 s, 7.3 % on the first half and 30.6 % on the second; 6 V before the record."""
-    half = identify([record("lamp_heater/lamp_heater.csv", stop=400, command_before=6.0)], structures=[LAG])
+    half = identify(
+        [record("lamp_heater/lamp_heater.csv", stop=400, command_before=6.0, at_rest=True)], structures=[LAG]
+    )
     assert values(half)["gain"] == pytest.approx(19.6, abs=0.3)
     assert values(half)["time constant"] == pytest.approx(70.0, abs=1.5)
     assert half.misfit == pytest.approx(0.073, abs=0.005)
-    whole = record("lamp_heater/lamp_heater.csv", command_before=6.0)
+    whole = record("lamp_heater/lamp_heater.csv", command_before=6.0, at_rest=True)
     assert held_out_misfit(half, whole, 400) == pytest.approx(0.306, abs=0.01)
 
 
 def test_one_model_of_the_lamp_that_leaves_so_much_unexplained_is_not_called_certain():
     """The residual of 7 % is slow: intervals from half the record must hold the answer of the whole one."""
     half, whole = (
-        identify([record("lamp_heater/lamp_heater.csv", stop=stop, command_before=6.0)], structures=[LAG])
+        identify([record("lamp_heater/lamp_heater.csv", stop=stop, command_before=6.0, at_rest=True)], structures=[LAG])
         for stop in (400, None)
     )
     for one, other in zip(half.parameters, whole.parameters, strict=True):
