@@ -17,7 +17,6 @@ from .run import FloatArray
 from .sandwich import draw_normal, sandwich_covariance
 from .whiten import WHITE, Colour
 
-
 # Below this Student's t has tails that no rig has: a thousand draws would hold plants from another world.
 _LEAST_FREEDOM = 8.0
 

@@ -120,16 +120,6 @@ def _judge(
             "take a run with larger steps",
             None,
         )
-    missed = _missed(run, fit, prediction)
-    times, share_missed = missed / max(fit.noise.std, 1e-300), missed / float(np.nanstd(run.response))
-    if any(times > most and share_missed > least for most, least in _MISSES):
-        return _Finding(
-            "disagrees",
-            f"the prediction misses the run by {missed:.3g} rms, its level left free; the fitted runs left "
-            f"{fit.noise.std:.3g} rms: the structure lacks something that this run shows, or the plant is another"
-            + _by_itself(confront(run, fit), fit),
-            None,
-        )
     alone = confront(run, fit)
 
     def meets(plausible: Plausible) -> NDArray[np.bool_]:
@@ -150,7 +140,7 @@ def _judge(
     wanted = requirements.confidence if design.share_meeting >= requirements.confidence else 0.0
     if share < wanted and alone.p_value >= _REAL:
         share = _joint_share(alone, meets(fit.plausible), share)
-    return _decide(run, fit, alone, gap, share, wanted)
+    return _decide(run, fit, alone, gap, _missed(run, fit, prediction), share, wanted)
 
 
 def _missed(run: Run, fit: Fit, prediction: Prediction) -> float:
@@ -192,7 +182,7 @@ def _gap(alone: Confronted, fit: Fit, distance: float) -> _Gap:
     return _Gap(float(np.max(np.abs(middle - 1))), float(np.max(away)))
 
 
-def _decide(run: Run, fit: Fit, alone: Confronted, gap: _Gap, share: float, wanted: float) -> _Finding:
+def _decide(run: Run, fit: Fit, alone: Confronted, gap: _Gap, missed: float, share: float, wanted: float) -> _Finding:
     real = alone.p_value < _REAL
     shown = _shown(alone.changes, fit)
     response = run.response[run.valid]
@@ -201,6 +191,24 @@ def _decide(run: Run, fit: Fit, alone: Confronted, gap: _Gap, share: float, want
             "disagrees",
             f"no plant of this structure explains the run: residual {alone.noise_std:.3g} rms, noise when fitted "
             f"{fit.noise.std:.3g} rms; look for clipping, friction, a disturbance or a lost sensor",
+            share,
+        )
+    moved = _moved(alone.changes, fit)
+    if real and moved:
+        return _Finding("disagrees", f"another plant than the fitted one: {moved} ({shown})", share)
+    if real and gap.difference > _ANOTHER_PLANT:
+        return _Finding(
+            "disagrees",
+            f"another plant than the fitted one ({shown}): its response differs by {100 * gap.difference:.0f} % at the "
+            "speed at which the loop works",
+            share,
+        )
+    times, share_missed = missed / max(fit.noise.std, 1e-300), missed / float(np.std(response))
+    if any(times > most and share_missed > least for most, least in _MISSES):
+        return _Finding(
+            "disagrees",
+            f"the prediction misses the run by {missed:.3g} rms, its level left free; the fitted runs left "
+            f"{fit.noise.std:.3g} rms: the structure lacks something that this run shows, or the plant is another",
             share,
         )
     if not real and gap.uncertainty > _BLIND:
@@ -228,16 +236,6 @@ def _decide(run: Run, fit: Fit, alone: Confronted, gap: _Gap, share: float, want
         )
     if not real:
         return _Finding("agrees", f"no change of the plant is visible (p = {alone.p_value:.2g})", share)
-    moved = _moved(alone.changes, fit)
-    if moved:
-        return _Finding("disagrees", f"another plant than the fitted one: {moved} ({shown})", share)
-    if gap.difference > _ANOTHER_PLANT:
-        return _Finding(
-            "disagrees",
-            f"another plant than the fitted one ({shown}): its response differs by {100 * gap.difference:.0f} % at the "
-            "speed at which the loop works",
-            share,
-        )
     if share < wanted:
         return _Finding(
             "disagrees",
