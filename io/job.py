@@ -192,5 +192,5 @@ def _cautions(
     left_out = [each for each in closing if each.verdict == "not comparable"]
     aside = [f"held-out {each.label} was not comparable: {each.why}" for each in left_out]
     usual = cautions_for(rig, design, fit)
-    climbing = ladder.cautions if ladder else ()
+    climbing = (*([ladder.refusal] if ladder.refusal else []), *ladder.cautions) if ladder else ()
     return tuple(dict.fromkeys([*said, *fit.cautions, *design.cautions, *climbing, *aside, *usual]))

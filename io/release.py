@@ -45,7 +45,7 @@ def reasons_to_hold(
         *(_twin_text(held_out, fitted) for held_out, fitted in twins),
         *_from_closing(closing, [held_out.run.label for held_out, _ in twins]),
         *(_from_design(design, rig) if design else ["no controller was found that could be judged"]),
-        *([ladder.refusal] if ladder and ladder.refusal else []),
+        *([ladder.refusal] if ladder and ladder.less_is_unsafe else []),
     ]
     return tuple(dict.fromkeys(reasons))
 

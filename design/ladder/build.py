@@ -30,8 +30,8 @@ CONDITIONAL = (
     "gain on, or plan the first run with the responsible person"
 )
 NOT_FOUND = (
-    "NO GAIN LADDER: LESS GAIN IS NOT SAFER, NO CONTROLLER WITH {share:.0f} % OF THE GAIN KEEPS DAMPING AND MARGINS ON "
-    "EVERY PLAUSIBLE PLANT; ask for calmer gains, or plan the first run with the responsible person"
+    "NO GAIN LADDER WAS FOUND: NO CONTROLLER WITH {share:.0f} % OF THE GAIN KEEPS DAMPING AND MARGIN FLOORS ON EVERY "
+    "PLAUSIBLE PLANT, though less gain stays stable; plan the first run with the responsible person"
 )
 
 
@@ -84,7 +84,7 @@ def build_ladder(
     everyone = field_of(checked, situation)
     refusal = _refusal(everyone, gains)
     if refusal:
-        return Ladder(None if everyone.unstable else opening, (), refusal, noise_std=noise_std)
+        return Ladder(None if everyone.unstable else opening, (), refusal, True, noise_std=noise_std)
     steps, origin = None, "nothing"
     if old is not None:
         steps, origin = between(old, gains, everyone), "old gains"
@@ -94,7 +94,8 @@ def build_ladder(
             return Ladder(opening, (), NOT_FOUND.format(share=100.0 * found), noise_std=noise_std)
         steps, origin = found, "nothing"
     rungs = _rungs(steps, shown, situation, noise_std)
-    return Ladder(opening, rungs, "", _cautions(everyone, gains, opening is None or opening.visible), noise_std, origin)
+    cautions = _cautions(everyone, gains, opening is None or opening.visible)
+    return Ladder(opening, rungs, cautions=cautions, noise_std=noise_std, started_from=origin)
 
 
 def _with_fitted(nominal: Plant, plausible: Plausible, count: int, situation: Situation) -> Plausible:

@@ -149,7 +149,9 @@ class Ladder:
     rungs : tuple of Rung
         The last is the target; empty where there is no ladder.
     refusal : str
-        Why there is none, in capitals; empty where there is one. Gains without a ladder are held.
+        Why there is none, in capitals; empty where there is one.
+    less_is_unsafe : bool
+        There is none because less gain is not safer; such gains are held.
     cautions : tuple of str
     noise_std : float, response unit
     started_from : {"nothing", "old gains"}
@@ -158,6 +160,7 @@ class Ladder:
     first_move: FirstMove | None
     rungs: tuple[Rung, ...]
     refusal: str = ""
+    less_is_unsafe: bool = False
     cautions: tuple[str, ...] = ()
     noise_std: float = 0.0
     started_from: str = "nothing"

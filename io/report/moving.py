@@ -21,22 +21,22 @@ from ...design.sweep_gains import sweep_gains
 from ...ident.fitted import Fit
 from ...ident.run import FloatArray
 from ..figures.gain_ribbon import ribbon_span
+from ..figures.gallery import headrooms
 from ..figures.locus import view_of
 from ..figures.locus_lines import locus_lines
 from ..figures.step import told
 from ..outcome import Outcome
 from . import words
-from .pictures import headrooms
 
 _SCRIPTS = ("moving_law.js", "moving_draw.js", "moving_ribbon.js", "moving_follow.js", "moving.js")
 _LINE = 60  # points of a drawn line of the locus
 
 
 def moving_part(outcome: Outcome) -> dict[str, Any] | None:
-    """What the page's template needs; None where there is no fitted plant or no design to move."""
+    """What the page's template needs; None without a fitted plant, a design and a sampled law."""
     from markupsafe import Markup
 
-    if outcome.fit is None or outcome.design is None:
+    if outcome.fit is None or outcome.design is None or getattr(outcome.rig.setting, "continuous", False):
         return None
     sweep = sweep_of(outcome, outcome.fit, outcome.design)
     data, text = moving_data(outcome, outcome.fit, outcome.design, sweep), script()

@@ -41,7 +41,7 @@ def report_html(outcome: Outcome) -> str:
     return template.render(page=page, style=Markup(_style()), moving=moving)
 
 
-_PICTURES = ("step", "ribbon", "headroom", "locus")
+_PICTURES = ("step", "ribbon", "headroom", "locus", "margins")
 
 
 def _safe_pictures(page: dict[str, Any]) -> dict[str, Any]:
@@ -227,7 +227,8 @@ def _located(outcome: Outcome, fit: Fit, design: Design) -> dict[str, Any]:
     found = working(loop, selection.pole)
     return {
         "working": tables.magnitude(found, selection.loop_gain_unit),
-        "locus": pictures.locus_picture(design, loop, found),
+        "locus": pictures.locus_picture(outcome, fit, design),
+        "margins": pictures.margins_picture(outcome, fit, design),
         "tried": tables.tried(design),
         "angle": (
             f"The angle condition holds at {tables.point(selection.pole)} 1/s within "
