@@ -26,6 +26,7 @@ _DRIVE = 4.0
 
 # Rise of the plain sum of squares that a whitened estimate may cost.
 _TRADE = 0.02
+_TRADE_WITH_GAIN = 0.1
 
 
 @dataclass(frozen=True, eq=False)
@@ -141,10 +142,22 @@ def steady_fit(fitted: Fitted) -> Fitted:
     problem = fitted.problem
     at_whitened = problem.solve(fitted.theta, WHITE).cost
     theta, solved = polish(problem, fitted.theta, WHITE)
-    if at_whitened <= (1 + _TRADE) * solved.cost:
+    with_its_gain = _cost_with_gain(problem, fitted)
+    if at_whitened <= (1 + _TRADE) * solved.cost and with_its_gain <= (1 + _TRADE_WITH_GAIN) * solved.cost:
         return fitted
     plain = _weighed(problem, theta, solved)
     return replace(plain, criterion=fitted.criterion, whitened=False)
+
+
+def _cost_with_gain(problem: Regression, fitted: Fitted) -> float:
+    """Plain sum of squares of a whitened estimate with its own gain; levels, drift and initial states free."""
+    shape, dead_time = problem.split(fitted.theta)
+    initial = problem.initial_columns(shape)
+    free = problem.fixed_columns if initial is None else np.column_stack([problem.fixed_columns, initial])
+    away = problem.measured - fitted.solved.coefficients[0] * problem.unit_response(shape, dead_time)
+    basis, _ = np.linalg.qr(free)
+    away = away - basis @ (basis.T @ away)
+    return float(away @ away)
 
 
 def evidence(fitted: Sequence[Fitted]) -> FloatArray:
