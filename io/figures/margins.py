@@ -80,7 +80,7 @@ def _gain(size: "Axes", turn: "Axes", mark: Mark | None) -> None:
     level = float(np.interp(mark.frequency, np.asarray(above.get_xdata()), np.asarray(above.get_ydata())))
     _thread(size, turn, mark.frequency)
     turn.plot([mark.frequency], [0.0], marker="o", markersize=4, color=colour("limit"), zorder=6)
-    _room(size, mark.frequency, 0.0, level, f"gain margin {number(mark.value, 3)} dB", right=_place(size, mark) < 0.7)
+    _room(size, mark.frequency, 0.0, level, f"gain margin {number(mark.value, 3)} dB", right=_place(size, mark) < 0.88)
 
 
 def _phase(size: "Axes", turn: "Axes", mark: Mark | None) -> None:
@@ -114,7 +114,7 @@ def _room(axes: "Axes", frequency: float, edge: float, level: float, text: str, 
 def _peak(axes: "Axes", mark: Mark) -> None:
     axes.plot([mark.frequency], [mark.value], marker="o", markersize=4, color=colour("limit"), zorder=6)
     said = f"peak sensitivity {number(mark.value, 3)}"
-    _say(axes, said, (mark.frequency, mark.value), right=_place(axes, mark) < 0.7, centre=False)
+    _say(axes, said, (mark.frequency, mark.value), right=_place(axes, mark) < 0.85, centre=False)
 
 
 def _say(axes: "Axes", text: str, place: tuple[float, float], *, right: bool, centre: bool) -> None:

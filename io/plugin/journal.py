@@ -101,6 +101,12 @@ class Journal:
             (time.time(), code, status, said, key),
         )
 
+    def adopt(self, key: str, label: str, folder: Path, code: int, status: str, said: str) -> None:
+        """Note a job that was done whole by a program that was killed before it could note so."""
+        if self.done(key) is None:
+            self.begin(key, label, folder)
+            self.end(key, code, status, said)
+
     def find(self, key: str) -> Entry | None:
         """The job of this key."""
         found = [entry for entry in self.entries() if entry.key == key]

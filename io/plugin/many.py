@@ -56,7 +56,7 @@ def run_jobs(
             ended, _ = wait(running, return_when=FIRST_COMPLETED)
             suspects: list[Job] = []
             if any(isinstance(future.exception(), BrokenExecutor) for future in ended):
-                executor.shutdown(wait=True, cancel_futures=True)
+                _close(executor, running)
                 ended, executor = set(running), make()
             for future in ended:
                 job = running.pop(future)
@@ -66,7 +66,14 @@ def run_jobs(
                     yield _noted(journal, future.result() if fault is None else _of_fault(job, fault))
             yield from _suspected(suspects, alone, deaths, journal)
     finally:
-        executor.shutdown(wait=True, cancel_futures=True)
+        _close(executor, running)
+
+
+def _close(executor: Executor, running: Iterable[Future[Done]]) -> None:
+    """Jobs that have not begun are dropped, those that have are waited for: their receipts tell of them."""
+    for future in running:
+        future.cancel()
+    executor.shutdown(wait=True)
 
 
 def _fill(

@@ -129,8 +129,7 @@ class Watcher:
             found = receipt(self._out_of(file), key)
             if found is None:
                 return False
-            self._journal.begin(key, found.label, found.folder)
-            self._journal.end(key, found.code, found.status, found.said)
+            self._journal.adopt(key, found.label, found.folder, found.code, found.status, found.said)
             self.codes[key] = found.code
             return True
         self.codes[key] = int(entry.code or 0)

@@ -1,17 +1,21 @@
 """Each picture shows its values: right places, units on each axis, marks where they belong."""
 
+import re
 from dataclasses import replace
 
 import numpy as np
 import pytest
 from gainwright.design.compensator import open_loop
 from gainwright.design.locus.condition import working
+from gainwright.design.loop_response import loop_response
 from gainwright.io.figures.gain_ribbon import gain_ribbon, ribbon_span
+from gainwright.io.figures.gallery import gallery
 from gainwright.io.figures.headroom_bars import Headroom, headroom_bars
 from gainwright.io.figures.held_out import held_out
 from gainwright.io.figures.locus import locus, tags, view_of
 from gainwright.io.figures.log_and_fit import log_and_fit
 from gainwright.io.figures.look import colour
+from gainwright.io.figures.margins import margins
 from gainwright.io.figures.step import predicted_step
 
 UNITS = {"command_unit": "V", "response_unit": "mm"}
@@ -234,3 +238,35 @@ def test_no_picture_has_a_legend_a_grid_or_a_filled_region_of_the_plane(made):
         assert not any(line.get_visible() for line in axes.get_xgridlines() + axes.get_ygridlines())
     assert not figures[-1].axes[0].patches
     assert not figures[-1].axes[0].collections
+
+
+def test_the_margins_are_drawn_as_long_as_they_are(made):
+    """The stroke from 0 dB ends on the size curve, the one from -180 deg on the angle curve; values as predicted."""
+    response = loop_response(made.design.gains, made.fit.plant, made.fit.plausible, made.rig.setting)
+    figure = margins(response)
+    size, turn, swell = figure.axes
+    strokes = [
+        next(line for line in axes.lines if len(line.get_xdata()) == 2 and line.get_linewidth() == 1.6)
+        for axes in (size, turn)
+    ]
+    assert list(strokes[0].get_ydata()) == pytest.approx([0.0, -response.gain_margin.value], abs=0.05)
+    assert list(strokes[1].get_ydata()) == pytest.approx([0.0, response.phase_margin.value], abs=0.3)
+    said = words_of(figure)
+    for word in (f"gain margin {response.gain_margin.value:.3g} dB", "phase margin", "peak sensitivity"):
+        assert word in said
+    assert swell.get_xlabel() == "angular frequency (rad/s), logarithmic"
+    assert [axes.get_ylabel() for axes in figure.axes] == [
+        "size of the loop\n(dB)", "angle above\n−180 deg (deg)", "sensitivity\n(ratio)",
+    ]  # fmt: skip
+
+
+def test_the_gallery_holds_every_picture_once_under_a_file_name(made):
+    """Names are plain file names, titles say what is seen; a job without a design still has its logs and headroom."""
+    names = [picture.name for picture in gallery(made)]
+    assert names == ["step", "ribbon", "headroom", "ladder", "log-0", "locus", "margins", "held-out-0"]
+    assert all(re.fullmatch(r"[a-z0-9-]+", name) for name in names)
+    assert [picture.name for picture in gallery(replace(made, design=None, ladder=None))] == [
+        "headroom",
+        "log-0",
+        "held-out-0",
+    ]
