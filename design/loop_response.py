@@ -86,9 +86,12 @@ def loop_response(gains: Gains, nominal: Plant, plausible: Plausible, setting: C
     sensitivity = 1.0 / np.abs(1.0 + loops)
     shown = _shown(size[:, 0])
     many = slice(1, None) if total else slice(0, 1)
-    bands = [Band(*inner(values[shown, many])) for values in (size, turn, sensitivity)]
-    marks = _marks(gains, nominal, setting, frequency, loops[:, 0])
-    return LoopResponse(frequency[shown], size[shown, 0], turn[shown, 0], sensitivity[shown, 0], *bands, *marks)
+    sizes, turns, sensitivities = (Band(*inner(values[shown, many])) for values in (size, turn, sensitivity))
+    gain, phase, peak = _marks(gains, nominal, setting, frequency, loops[:, 0])
+    return LoopResponse(
+        frequency[shown], size[shown, 0], turn[shown, 0], sensitivity[shown, 0], sizes, turns, sensitivities, gain,
+        phase, peak,
+    )  # fmt: skip
 
 
 def _loops(gains: Gains, plants: Sequence[Plant], setting: ControllerSetting) -> tuple[FloatArray, ComplexArray]:
@@ -97,7 +100,8 @@ def _loops(gains: Gains, plants: Sequence[Plant], setting: ControllerSetting) ->
     spectra = spectra_of(bank, 300)
     grid = spectra.frequency[:, 0]
     frequency = np.unique(np.concatenate([grid, np.geomspace(grid[0], grid[-1], _EVEN)]))
-    z = np.exp(1j * frequency[:, None] * bank.interval) * np.ones(len(plants))
+    angle = np.repeat(frequency[:, None] * bank.interval, len(plants), axis=1)
+    z = np.asarray(np.exp(1j * angle), dtype=np.complex128)
     law = law_columns(columns_of([gains]), bank.interval).take(np.zeros(len(plants), dtype=int))
     with np.errstate(all="ignore"):
         loops = spectra.pulse.at(z, np.arange(len(plants))) * law_response(law, z)

@@ -16,20 +16,46 @@ if TYPE_CHECKING:
 @click.argument("rigfile", type=click.Path(path_type=Path))
 @click.option("--out", type=click.Path(path_type=Path), help="Output folder [default: out/ beside the rig file].")
 @click.option("--no-report", is_flag=True, help="Leave out report.html.")
-def process(rigfile: Path, out: Path | None, no_report: bool) -> int:
+@click.option("--pictures", type=click.Path(path_type=Path), help="Also write each picture as SVG and PNG to a folder.")
+@click.option("--json", "as_json", is_flag=True, help="Print the gain sheet instead of the verdict, for programs.")
+@click.option("-v", "--verbose", is_flag=True, help="Show the working too: vector lengths, controllers tried.")
+def process(
+    rigfile: Path, out: Path | None, no_report: bool, pictures: Path | None, as_json: bool, verbose: bool
+) -> int:
     """Read the logs that RIGFILE names, fit the plant, choose gains, compare them with the held-out run.
 
     Writes gains.json (the gain sheet), dossier.h5 (every number behind it) and report.html.
     """
     from ..deliver import deliver
+    from ..picture_files import write_pictures
     from ..progress import shown_progress
 
     folder = rigfile.parent / "out" if out is None else out
     with shown_progress() as progress:
         outcome = deliver(rigfile, folder, with_report=not no_report, progress=progress)
-    _print_verdict(outcome)
-    click.echo(f"written to {folder}")
+        if pictures is not None:
+            write_pictures(outcome, pictures, progress)
+    if as_json:
+        _print_sheet(outcome)
+    else:
+        _print_verdict(outcome)
+        if verbose:
+            _print_working(outcome)
+        click.echo(f"written to {folder}" + (f", pictures to {pictures}" if pictures is not None else ""))
     return 0 if outcome.status == "released" else 3
+
+
+def _print_sheet(outcome: "Outcome") -> None:
+    """The very text of gains.json."""
+    from ..sheet import sheet_bytes, sheet_of
+
+    click.echo(sheet_bytes(sheet_of(outcome)).decode(), nl=False)
+
+
+def _print_working(outcome: "Outcome") -> None:
+    from ..terminal_working import working_text
+
+    click.echo(f"\n{working_text(outcome)}\n")
 
 
 def _print_verdict(outcome: "Outcome") -> None:
