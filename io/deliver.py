@@ -17,6 +17,10 @@ def _nothing(outcome: Outcome) -> Mapping[str, bytes]:
     return {}
 
 
+def _as_it_is(outcome: Outcome, progress: Progress) -> Outcome:
+    return outcome
+
+
 def deliver(
     rig_path: Path,
     folder: Path,
@@ -25,6 +29,7 @@ def deliver(
     progress: Progress = silent,
     change: "Callable[[Rig], Rig] | None" = None,
     more: Callable[[Outcome], Mapping[str, bytes]] = _nothing,
+    finish: Callable[[Outcome, Progress], Outcome] = _as_it_is,
 ) -> Outcome:
     """Process a rig file and write gain sheet, dossier and report into `folder`.
 
@@ -37,6 +42,8 @@ def deliver(
         As `process_rig` takes it.
     more : callable
         Further files, name to content, to be written with the results.
+    finish : callable
+        Adds to the finished job before it is written.
 
     Raises
     ------
@@ -56,6 +63,7 @@ def deliver(
         from .job import process_rig  # imported late: an output folder that can't be used is said at once
 
         outcome = process_rig(rig_path, progress) if change is None else process_rig(rig_path, progress, change)
+        outcome = finish(outcome, progress)
         progress("writing the results")
         output.write({**more(outcome), **_contents(outcome, with_report)})
     return outcome

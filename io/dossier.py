@@ -5,7 +5,7 @@ DEVELOPERS.md.
 """
 
 import io
-from collections.abc import Iterable, Sequence
+from collections.abc import Sequence
 
 import h5py
 import numpy as np
@@ -15,7 +15,9 @@ from ..design.closing.compared import Compared
 from ..design.designed import Design, GainInterval, Trajectory
 from ..ident.fitted import Fit, FittedRun, Plausible
 from ..ident.run import FloatArray
+from .change_dossier import put_change
 from .dossier_parts import numbers as _numbers
+from .dossier_parts import texts as _words
 from .ladder_dossier import put_ladder
 from .outcome import Outcome
 from .parameter_unit import unit_of
@@ -50,18 +52,11 @@ def dossier_bytes(outcome: Outcome) -> bytes:
             _put_design(file.create_group("design"), outcome.design, outcome.rig)
         if outcome.ladder is not None:
             put_ladder(file.create_group("ladder"), outcome.ladder, outcome.rig)
+        if outcome.retuned is not None:
+            put_change(file.create_group("change"), outcome.retuned)
         for place, compared in enumerate(outcome.closing):
             _put_compared(file.create_group(f"closing/{place}"), compared, outcome.rig)
     return memory.getvalue()
-
-
-def _words(group: h5py.Group, name: str, values: Iterable[str], description: str) -> None:
-    texts = list(values)
-    dataset = group.create_dataset(name, shape=(len(texts),), dtype=h5py.string_dtype())
-    if texts:
-        dataset[...] = np.array(texts, dtype=object)
-    dataset.attrs["units"] = ""
-    dataset.attrs["description"] = description
 
 
 def _traces(group: h5py.Group, rig: Rig, traces: Sequence[tuple[str, FloatArray, str, str]]) -> None:
@@ -102,6 +97,10 @@ def _put_fit(group: h5py.Group, fit: Fit, rig: Rig) -> None:
     point = [fit.operating_command, *fit.operating_command_interval]
     _numbers(group, "operating_command", point, rig.command_unit, "value, then its 95 % interval")
     _numbers(group, "operating_response", [fit.operating_response], rig.response_unit, "where the deviations start")
+    group.attrs["between_samples"] = fit.between
+    if fit.draws.size:
+        text = "draws of the chosen structure: logarithms of its shape parameters, dead time in s, gain; one row a draw"
+        _numbers(group, "draws", fit.draws, "mixed", text)
     _put_parameters(group.create_group("parameters"), fit, rig)
     _put_noise(group, fit, rig)
     _put_candidates(group.create_group("candidates"), fit)

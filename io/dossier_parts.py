@@ -18,3 +18,13 @@ def numbers(
     dataset = group.create_dataset(name, data=array, **packing)
     dataset.attrs["units"] = units
     dataset.attrs["description"] = description
+
+
+def texts(group: h5py.Group, name: str, values: Iterable[str], description: str) -> None:
+    """Some texts, in order."""
+    words = list(values)
+    dataset = group.create_dataset(name, shape=(len(words),), dtype=h5py.string_dtype())
+    if words:
+        dataset[...] = np.array(words, dtype=object)
+    dataset.attrs["units"] = ""
+    dataset.attrs["description"] = description

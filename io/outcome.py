@@ -8,6 +8,7 @@ from ..design.designed import Design
 from ..design.ladder.rung import Ladder
 from ..ident.fitted import Fit
 from .record import Record
+from .retuned import Retuned
 from .rigfile.rig import Rig
 
 
@@ -26,6 +27,8 @@ class Outcome:
         Ready for the sheet.
     ladder : Ladder or None
         None where the gains are not stable on every plausible plant.
+    retuned : Retuned or None
+        What an earlier sheet says beside this job.
     """
 
     rig: Rig
@@ -38,3 +41,4 @@ class Outcome:
     cautions: tuple[str, ...]
     provenance: dict[str, Any] = field(default_factory=dict)
     ladder: Ladder | None = None
+    retuned: Retuned | None = None

@@ -3,18 +3,24 @@
 import json
 import math
 from collections.abc import Sequence
+from dataclasses import asdict
 from typing import Any
 
+import numpy as np
+
 from ..design.closing.compared import Compared
-from ..design.designed import Design, GainInterval, Judged, LimitJudged, Selection
+from ..design.designed import Design, GainInterval, LimitJudged, Selection
 from ..design.gains import Gains
 from ..ident.fitted import Fit, Parameter
+from .asked import asked_of
+from .change_rows import change_row
 from .forms_as_printed import forms_as_printed
 from .ladder_rows import bounded, ladder_rows, law_row
 from .outcome import Outcome
 from .parameter_unit import unit_of
 from .provenance import window_of
 from .record import Record
+from .requirement_row import requirement_row
 
 SCHEMA = "gainwright.gain-sheet/1"
 NO_LADDER = "no gain ladder was made: the first run on the rig starts at the responsible person's own discretion"
@@ -59,12 +65,13 @@ def sheet_of(outcome: Outcome) -> dict[str, Any]:
         "plant": _plant(outcome),
         "controller": chosen["controller"] if chosen and released else None,
         "selection": chosen["selection"] if chosen and released else None,
-        "requirements": [_requirement(each) for each in outcome.design.judged] if outcome.design else [],
+        "requirements": [requirement_row(each) for each in outcome.design.judged] if outcome.design else [],
         "checked": _checked(outcome.design, outcome.rig.requirements.confidence) if outcome.design else None,
         "limits": [_limit(each) for each in outcome.design.limits] if outcome.design else [],
         "ladder": rungs,
-        "change": None,
+        "change": change_row(outcome.retuned),
         "closing": _closing(outcome),
+        "asked": asked_of(outcome.rig),
         "provenance": outcome.provenance,
     }
     if not released:
@@ -152,7 +159,15 @@ def _plant(outcome: Outcome) -> dict[str, Any] | None:
         },
         "ties": list(fit.ties),
         "misfit": float(fit.misfit),
+        "noise": _noise(fit),
+        "between_samples": fit.between,
     }
+
+
+def _noise(fit: Fit) -> dict[str, Any]:
+    """Of the response, ARMA(1, 1), with the number of samples that it and the plant were found from."""
+    samples = sum(int(np.sum(np.isfinite(run.response))) for run in fit.runs)
+    return {**{name: float(value) for name, value in asdict(fit.noise).items()}, "samples": samples}
 
 
 def _parameter(parameter: Parameter, fit: Fit, command_unit: str, response_unit: str) -> dict[str, Any]:
@@ -202,23 +217,6 @@ def _intervals(intervals: Sequence[GainInterval]) -> list[list[float | None]]:
     return [[bounded(low), bounded(high)] for low, high in intervals]
 
 
-def _requirement(judged: Judged) -> dict[str, Any]:
-    """In the unit the person wrote; an endless margin (no crossing at all) is null and said to be unbounded."""
-    requirement = judged.requirement
-    values = [judged.predicted, judged.low, judged.high]
-    predicted, low, high = (None if value is None else value * requirement.scale for value in values)
-    return {
-        "name": requirement.name,
-        "limit": float(requirement.limit * requirement.scale),
-        "predicted": bounded(predicted),
-        "interval_95": [bounded(low), bounded(high)],
-        "unit": requirement.unit or "1",
-        "met": bool(judged.met),
-        "asked": not judged.floor,
-        "unbounded": requirement.sense == "at_least" and predicted is not None and math.isinf(predicted),
-    }
-
-
 def _checked(design: Design, confidence: float) -> dict[str, Any]:
     return {
         "plausible_plants": int(design.plants_checked),
@@ -260,4 +258,3 @@ def _compared(compared: Compared, record: Record) -> dict[str, Any]:
         "verdict": compared.verdict,
         "why": compared.why,
     }
-

@@ -10,6 +10,8 @@ from .figures.words import number, one_line, with_unit
 from .forms_as_printed import forms_as_printed
 from .outcome import Outcome
 from .report import words
+from .report.changed import verdict
+from .retuned import Retuned
 
 _CODES = {"good": "1;36", "bad": "1;31", "strong": "1", "quiet": "2"}
 MOST_CAUTIONS, MOST_REASONS = 3, 6
@@ -34,6 +36,8 @@ def verdict_text(outcome: Outcome, width: int = 100, *, colour: bool) -> str:
     paint = _Paint(colour)
     width = max(60, min(width, 120))
     parts = [_headline(outcome, paint, width), *_reasons(outcome, width)]
+    if outcome.retuned is not None:
+        parts += ["", *_changed(outcome.retuned, paint, width)]
     if outcome.design is not None:
         parts += ["", *_gains(outcome, outcome.design, paint, width)]
         parts += ["", *_requirements(outcome.design, paint)]
@@ -75,6 +79,18 @@ def _bullets(items: Iterable[str], width: int, most: int, what: str) -> Iterator
         yield from textwrap.wrap(text, width, initial_indent="  - ", subsequent_indent="    ")
     if len(texts) > most:
         yield f"  - and {len(texts) - most} more {what}, in the report"
+
+
+def _changed(found: Retuned, paint: _Paint, width: int) -> Iterator[str]:
+    yield paint("Since the earlier sheet", "strong")
+    yield from textwrap.wrap(verdict(found), width, initial_indent="  ", subsequent_indent="  ")
+    for row in found.changed.parameters:
+        ends = f"{number(row.low, 3)} to {number(row.high, 3)}"
+        mark = "  CHANGED" if row.changed else ""
+        name, unit = one_line(row.name), row.unit
+        yield f"  {name:<22}{with_unit(row.before, unit)} -> {with_unit(row.after, unit)} (by {ends}){mark}"
+    text = f"Old gains: {found.old.verdict.upper()}, {found.old.why}"
+    yield from textwrap.wrap(text, width, initial_indent="  ", subsequent_indent="  ")
 
 
 def _gains(outcome: Outcome, design: Design, paint: _Paint, width: int) -> Iterator[str]:

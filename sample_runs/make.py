@@ -1,4 +1,4 @@
-"""Writes the four samples again: `python -P sample_runs/make.py` (the same bytes every time).
+"""Writes the five samples again: `python -P sample_runs/make.py` (the same bytes every time).
 
 Everything in them is invented; see sample_rigs.py. The rig files beside the logs are written by hand and stay.
 """
@@ -33,7 +33,7 @@ def staircase(rest: float, hold: float, first: float, levels: list[float]) -> li
     return [(first + k * hold, rest + level) for k, level in enumerate(levels)]
 
 
-def paddle(folder: Path) -> None:
+def paddle(folder: Path, plate: float = 1.0, series: int = 1) -> None:
     """Doublets: out and back, so that the paddle stays inside its 300 mm; 5 ms between samples."""
     tests = {
         "doublets_1": doublets(0.03, 0.5, 0.8, 1.0, [1.0, -1.0, 1.4, -1.4, 0.7, -0.7, 1.2]),
@@ -41,8 +41,8 @@ def paddle(folder: Path) -> None:
         "held_out": doublets(0.03, 0.6, 1.0, 1.0, [0.9, -1.3, 1.1, -0.8]),
     }
     for k, (name, changes) in enumerate(tests.items()):
-        generator = np.random.default_rng([1, k])
-        log = open_loop(sample_rigs.paddle(generator), changes, changes[-1][0] + 1.5, 0.005, generator)
+        generator = np.random.default_rng([series, k])
+        log = open_loop(sample_rigs.paddle(generator, plate), changes, changes[-1][0] + 1.5, 0.005, generator)
         lines = ["time_s,drive_V,position_mm"]
         lines += [f"{t:.3f},{u:.3f},{y:.3f}" for t, u, y in rows(log)]
         (folder / f"{name}.csv").write_text("\n".join(lines) + "\n", encoding="utf-8")
@@ -100,10 +100,11 @@ def rows(log: Log) -> zip:
 
 
 def make(base: Path) -> None:
-    """All four samples below `base`."""
-    for name in ("paddle", "oven", "mirror", "mirror_loose"):
+    """All five samples below `base`."""
+    for name in ("paddle", "paddle_heavier", "oven", "mirror", "mirror_loose"):
         (base / name).mkdir(parents=True, exist_ok=True)
     paddle(base / "paddle")
+    paddle(base / "paddle_heavier", plate=1.6, series=4)
     oven(base / "oven")
     mirror(base / "mirror", 1.0)
     mirror(base / "mirror_loose", 0.94**2)

@@ -10,17 +10,18 @@ from true_rig.linear_stages import Gain, Integrator, Lag, Resonance, SlowShare
 from true_rig.rough_stages import Actuator, Disturbed, FrictionDrive, waves
 
 
-def paddle(generator: np.random.Generator) -> TrueRig:
+def paddle(generator: np.random.Generator, plate: float = 1.0) -> TrueRig:
     """A wave-flume paddle on an electric cylinder: drive volts command a speed, a wire sensor measures the position.
 
     45 mm/s per volt behind a lag of 80 ms, Coulomb friction worth 12 mV, dead time 12 ms; the drive rests at 0.03 V.
-    The water sloshes in the flume with periods of a few seconds and pushes with up to about 1 mm/s.
+    The water sloshes in the flume with periods of a few seconds and pushes with up to about 1 mm/s. A heavier plate
+    (its mass over the usual one's) takes longer to get up to speed, and its guides hold it a little more.
     """
     slosh = waves(generator, 0.5, (2.6, 3.9), from_zero=False)
     stages = (
         Actuator(-10.0, 10.0, lag=0.004, rate=1500.0),
         Gain(45.0, balance=0.03),
-        FrictionDrive(0.08, coulomb=0.55, breakaway=0.65),
+        FrictionDrive(0.08 * plate, coulomb=0.55 * plate**0.5, breakaway=0.65 * plate**0.5),
         Disturbed(slosh),
         Integrator(),
     )

@@ -18,10 +18,13 @@ _MOST = 12
 def between(old: Gains, new: Gains, everyone: Field) -> list[Step] | None:
     """From the old gains to the new ones in even ratios of at most 1.5, or None where that can't be done.
 
-    It can't where the structures or signs differ, or where one of the controllers in between (the old gains among
+    It can't where the structures or signs differ, where the old gains are the stronger ones (nothing is climbed by
+    beginning above the target), or where one of the controllers in between (the old gains among
     them) misses a floor on some plausible plant: then a ladder starts from nothing.
     """
     if old.structure != new.structure or loop_gain(old) * loop_gain(new) <= 0.0:
+        return None
+    if abs(loop_gain(old)) > abs(loop_gain(new)):
         return None
     ratios = [ratio for name in ("proportional", "integral", "derivative") if (ratio := _ratio(old, new, name))]
     if not ratios or math.inf in ratios:

@@ -15,6 +15,7 @@ from ..figures.words import number, with_unit
 from ..forms_as_printed import forms_as_printed
 from ..outcome import Outcome
 from . import pictures, tables, words
+from .changed import changed_of
 from .ladder import ladder_of
 from .moving import moving_part
 
@@ -51,6 +52,8 @@ def _safe_pictures(page: dict[str, Any]) -> dict[str, Any]:
     page.update({name: Markup(page[name]) for name in _PICTURES if name in page})
     if page.get("ladder"):
         page["ladder"] = {**page["ladder"], "picture": Markup(page["ladder"]["picture"])}
+    if page.get("changed"):
+        page["changed"] = {**page["changed"], "picture": Markup(page["changed"]["picture"])}
     page["logs"] = tuple((label, Markup(svg)) for label, svg in page["logs"])
     page["closing"] = tuple((compared, Markup(svg)) for compared, svg in page["closing"])
     return page
@@ -80,6 +83,7 @@ def _top(outcome: Outcome) -> dict[str, Any]:
         "headroom": pictures.headroom_picture(outcome),
         "cautions": tuple(each for each in outcome.cautions if each not in FIRST_RUN),
         "usual": FIRST_RUN,
+        "changed": changed_of(outcome),
     }
     if outcome.design is not None:
         page.update(_designed(outcome, outcome.design))

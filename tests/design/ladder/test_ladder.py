@@ -212,6 +212,13 @@ def test_old_gains_that_do_not_hold_are_no_rung():
     assert ladder.rungs[0].gains.proportional < 0.5
 
 
+def test_stronger_old_gains_are_no_start():
+    """A ladder is climbed: it never begins above its target."""
+    ladder = ladder_for(Gains("P", 0.5), [Plant((2.0,), (0.5, 1.0), 0.1)] * 3, old=Gains("P", 0.6))
+    assert ladder.started_from == "nothing"
+    assert ladder.rungs[0].gains.proportional < 0.5
+
+
 def test_without_a_test_step_there_are_margins_and_no_expectation():
     """Nothing says how far to step; the rungs still stand."""
     ladder = ladder_for(Gains("P", 0.5), [Plant((2.0,), (0.5, 1.0), 0.1)] * 3, step=None)
