@@ -18,7 +18,7 @@ from .sweep import Band
 from .sweep_gains import inner
 
 _PLANTS = 80
-_EVEN = 700  # frequencies beside those that resolve resonances and dead time
+_EVEN = 240  # frequencies beside those that resolve resonances and dead time
 _LEAST, _MOST = 0.02, 50.0  # sizes of the loop between which it is shown
 
 

@@ -26,9 +26,9 @@ def working_text(outcome: Outcome) -> str:
     table = tables.magnitude(found, selection.loop_gain_unit)
     lines = [
         f"Magnitude condition at the pole {tables.point(selection.pole)} 1/s",
-        f"  {table.head[0]:<40}{table.head[1]:>22}{table.head[2]:>20}  {table.head[3]}",
+        f"  {table.head[0]:<38}{table.head[1]:>20}{table.head[2]:>18}  {table.head[3]}",
     ]
-    lines += [f"  {name:<40}{root:>22}{size:>20}  {how}".rstrip() for name, root, size, how in table.rows]
+    lines += [f"  {name:<38}{root:>20}{size:>18}  {how}".rstrip() for name, root, size, how in table.rows]
     lines.append(f"  angle condition met within {number(abs(selection.angle_residual_deg), 2)} deg")
     lines.append(f"  exact pole of the sampled loop {tables.point(selection.sampled_pole)} 1/s")
     tried = tables.tried(outcome.design)
