@@ -104,6 +104,8 @@ def open_loop(gains: Gains, plant: Plant, setting: ControllerSetting) -> OpenLoo
     bottom = _times(shape.denominator, plant.denominator)
     if setting.response_filter_time > 0.0:
         bottom = _times(bottom, (setting.response_filter_time, 1.0))
+    if setting.continuous:
+        return OpenLoop(top, bottom, plant.dead_time)
     return OpenLoop(top, bottom, plant.dead_time + setting.computation_delay, setting.update_interval)
 
 

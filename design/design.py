@@ -9,6 +9,7 @@ from ..ident.fitted import Noise, Plausible
 from ..ident.plant import Plant
 from ..ident.run import FloatArray
 from . import trajectories
+from .continuous import standing_in
 from .designed import Design, Judged, Selection, Trajectory
 from .discretise import gains_of, law_from_gains
 from .gains import Gains
@@ -29,6 +30,8 @@ _CHECKED = 1000
 _DIGITS = 5
 _FINE = 12_000  # samples up to which the gain sets are found with the very law
 _REPAIRS = 2
+_MOST_POINTS = 64  # between two samples
+_SHARP = 20_000  # points over the horizon between which the fitted plant's response is read for its gain sets
 
 
 def design_gains(
@@ -80,12 +83,24 @@ def design_gains(
         limits=limits,
         setting=setting,
     )
+    situation = standing_in(situation, nominal)
+    unknown = _unknown_noise(situation)
+    if unknown:
+        situation = situation.without("command_noise")
     say = progress or _silent
     found = search(nominal, plausible, situation, plan_for(nominal, situation), say)
     say("checking the printed gains on plants that the search has not seen", 0.8)
     checked = _check_and_mend(found, nominal, plausible, situation)
     say("the set of gains that hold", 0.9)
-    return _report(checked, found, nominal, plausible, situation, (command_unit, response_unit))
+    design = _report(checked, found, nominal, plausible, situation, (command_unit, response_unit))
+    return replace(design, reasons=(*unknown, *design.reasons)) if unknown else design
+
+
+def _unknown_noise(situation: Situation) -> tuple[str, ...]:
+    """What is asked of the noise, when nobody knows it, can't be judged; the search goes on without it."""
+    if situation.noise is not None or situation.requirements.find("command_noise") is None:
+        return ()
+    return ("command noise is asked for, and no record tells the noise of the response: add a held-out run",)
 
 
 def _silent(_what: str, _share: float) -> None:
@@ -201,6 +216,7 @@ def _report(
         found.tried,
         tuple(hopeless + reasons),
         _cautions(verdicts, nominal, plausible, checked.gains, situation),
+        continuous=situation.setting.continuous,
     )
 
 
@@ -229,7 +245,9 @@ def _selection(
     horizon = first_horizon(nominal, situation)
     alone = with_nominal(nominal, plausible.take([]), situation)
     fine = horizon <= _FINE * situation.setting.update_interval
-    exact = bench_of(alone, asked, horizon, stand_in=not fine)
+    samples = horizon / situation.setting.update_interval
+    points = int(np.clip(_SHARP / samples, 2, _MOST_POINTS)) if fine else 0
+    exact = bench_of(alone, asked, horizon, stand_in=not fine, points=points)
     quick = replace(found.bench, situation=asked)
     return select(gains, nominal, exact, quick, units)
 

@@ -137,6 +137,7 @@ class Design:
     gains : Gains
         As printed: rounded, and checked as rounded.
     law : Law
+        Of a continuous controller: the fine one that stood in for it in time; nothing to be loaded.
     selection : Selection
     judged : tuple of Judged
     limits : tuple of LimitJudged
@@ -152,6 +153,8 @@ class Design:
     reasons : tuple of str
         Why these gains can't be released, in words an engineer can act on; empty when they can.
     cautions : tuple of str
+    continuous : bool
+        The controller is not sampled.
     """
 
     gains: Gains
@@ -169,3 +172,4 @@ class Design:
     tried: tuple[Tried, ...]
     reasons: tuple[str, ...]
     cautions: tuple[str, ...] = ()
+    continuous: bool = False

@@ -1,43 +1,46 @@
-"""Every loop gain at which the requirements hold, zeros fixed: for the fitted plant, and for the share of all."""
+"""Every loop gain at which the requirements hold on the fitted plant, zeros fixed."""
 
+import math
 from collections.abc import Callable
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
-from numpy.typing import NDArray
 
 from ..ident.run import FloatArray
 from .designed import GainInterval
-from .discretise import GainColumns, law_columns
-from .sampled.frequency import margins_of
-from .slack import meets, requirement_slacks
+from .discretise import GainColumns
+from .locus.loop import OpenLoop
+from .requirements import Requirement
+from .sets.curve import Curve, continuous_curve, sampled_curve
+from .sets.frequency import gain_margin_set, phase_margin_set, sensitivity_set
+from .sets.spans import Span, both
+from .sets.time import scanned_sets
+from .situation import MARGINS
+from .slack import UNSTABLE, requirement_slack
 from .values import Bench, values_of
 
-Holds = Callable[[FloatArray], NDArray[np.bool_]]  # (g,) factors of the loop gain -> (rows, g)
-
-_POINTS = 120
-_INSIDE = 8  # points between two neighbours when an edge is closed in
-_ROUNDS = 6
-_NOWHERE = 1e-9  # a factor so small, or by its inverse so large, that it stands for no bound at all
+_LINEAR = ("command_noise", "damping_ratio", "ramp_error")
+_IN_LINE, _IN_TIME = 1e-11, 3e-9  # relative widths at which edges are known
+_FAITHFUL = 0.1  # of the gain at which the stand-in of a continuous loop becomes unstable: as far as it is believed
 
 
 @dataclass(frozen=True)
 class GainSets:
-    """Intervals of the factor on the loop gain (1 is the chosen one).
+    """Intervals of the loop gain K.
 
     Attributes
     ----------
     rows : tuple of (name, intervals)
         Each stated requirement by itself, within stability.
     together : tuple of GainInterval
-        All of them.
+        All of them; every stable K where nothing is stated.
     """
 
     rows: tuple[tuple[str, tuple[GainInterval, ...]], ...]
     together: tuple[GainInterval, ...]
 
 
-def fitted_sets(bench: Bench, gains: GainColumns, chosen: float) -> GainSets:
+def fitted_sets(bench: Bench, gains: GainColumns, chosen: float, loop: OpenLoop | None = None) -> GainSets:
     """Intervals for plant 0 of the bench.
 
     Parameters
@@ -45,97 +48,66 @@ def fitted_sets(bench: Bench, gains: GainColumns, chosen: float) -> GainSets:
     gains : GainColumns of one column
     chosen : float
         Loop gain K > 0 of these gains; the intervals are given in K.
+    loop : OpenLoop, optional
+        The loop itself, where the controller is continuous and the bench a stand-in.
+
+    Notes
+    -----
+    Stability and margins hold on known arcs of the loop's curve, to rounding. The others are closed in where a measure
+    without jumps passes its bound.
     """
+    curve = sampled_curve(bench, gains) if loop is None else continuous_curve(loop, chosen)
+    reach = math.inf if loop is None else _believed(curve, sampled_curve(bench, gains))
+    found: dict[str, tuple[Span, ...]] = {}
     items = bench.situation.requirements.items
-
-    def holds(factors: FloatArray) -> NDArray[np.bool_]:
-        laws = gains.take(np.zeros(factors.size, dtype=int)).times(factors)
-        values = values_of(bench, np.zeros(factors.size, dtype=int), laws)
-        nothing = np.full(factors.size, np.nan)
-        rows = [values.stable & meets(item, values.of.get(item.name, nothing)) for item in items]
-        return np.array([np.all([values.stable, *rows], axis=0), *rows])
-
-    grid = factor_grid(bench, gains)
-    found = intervals_of(holds, grid)
-    names = [item.name for item in items]
-    scaled = [_scaled(intervals, chosen) for intervals in found]
-    return GainSets(tuple(zip(names, scaled[1:], strict=True)), scaled[0])
-
-
-def plausible_sets(
-    bench: Bench, gains: GainColumns, chosen: float, around: tuple[GainInterval, ...], plants: int
-) -> tuple[GainInterval, ...]:
-    """Intervals of K in which at least the share `confidence` of the plants holds everything stated, all stable."""
-    count = min(plants, len(bench.plausible.plants))
-    confidence = bench.situation.requirements.confidence
-    situation = bench.situation
-    index = np.linspace(0, len(bench.plausible.plants) - 1, count).astype(int)
-
-    def holds(factors: FloatArray) -> NDArray[np.bool_]:
-        laws = gains.take(np.zeros(factors.size * count, dtype=int)).times(np.repeat(factors, count))
-        values = values_of(bench, np.tile(index, factors.size), laws, refine=False)
-        slacks = requirement_slacks(values, situation)
-        good = values.stable & np.all(slacks >= 0.0, axis=0)
-        share = good.reshape(factors.size, count).mean(axis=1)
-        steady = values.stable.reshape(factors.size, count).all(axis=1)
-        return np.asarray((steady & (share >= confidence - 1e-9))[None])
-
-    grid = _within(around, chosen)
-    return _scaled(intervals_of(holds, grid, rounds=2, inside=4)[0], chosen)
+    for item in items:
+        if item.name in MARGINS:
+            found[item.name] = _margin_set(curve, item)
+    for linear, tight in ((True, _IN_LINE), (False, _IN_TIME)):
+        some = [item for item in items if item.name not in MARGINS and (item.name in _LINEAR) == linear]
+        if some:
+            sets = scanned_sets(_measure(bench, gains, some), curve.stable, len(some), tight=tight, reach=reach)
+            found |= {item.name: spans for item, spans in zip(some, sets, strict=True)}
+    together = curve.stable
+    for spans in found.values():
+        together = both(together, spans)
+    rows = tuple((item.name, _scaled(found[item.name], chosen)) for item in items)
+    return GainSets(rows, _scaled(together, chosen))
 
 
-def _within(around: tuple[GainInterval, ...], chosen: float) -> FloatArray:
-    """A coarse grid over the fitted plant's intervals, a little beyond their ends, the chosen gain among them."""
-    lows = [low / chosen for low, _ in around if low]
-    highs = [high / chosen for _, high in around if high]
-    low = min([0.9 * x for x in lows] + ([] if lows else [1e-3]) + [0.8])
-    high = max([1.1 * x for x in highs] + ([] if highs else [30.0]) + [1.25])
-    return np.unique(np.append(np.geomspace(low, high, 20), 1.0))
+def _believed(curve: Curve, stand_in: Curve) -> float:
+    """Up to which factor the stand-in may be run: without end where it becomes unstable with the loop itself."""
+    own, last = (max((high for _, high in each.stable), default=1.0) for each in (curve, stand_in))
+    return math.inf if own < 2.0 * last else _FAITHFUL * last
 
 
-def factor_grid(bench: Bench, gains: GainColumns) -> FloatArray:
-    """Factors from far below to just beyond the last gain at which the fitted loop is stable."""
-    law = law_columns(gains, bench.exact.interval)
-    upper = margins_of(bench.spectra, np.zeros(1, dtype=int), law).upper[0]
-    top = 1.02 * float(upper) if np.isfinite(upper) else 1e3
-    return np.unique(np.append(np.geomspace(1e-3, max(top, 1.5), _POINTS), 1.0))
+def _margin_set(curve: Curve, item: Requirement) -> tuple[Span, ...]:
+    if item.name == "gain_margin":
+        return gain_margin_set(curve, item.limit)
+    if item.name == "phase_margin":
+        return phase_margin_set(curve, item.limit)
+    return sensitivity_set(curve, item.limit)
 
 
-def intervals_of(
-    holds: Holds, grid: FloatArray, *, rounds: int = _ROUNDS, inside: int = _INSIDE
-) -> list[tuple[GainInterval, ...]]:
-    """Intervals of each row of `holds`, edges closed in by sections; an end of the grid that holds is followed out."""
-    table = holds(grid)
-    row, place = np.nonzero(table[:, 1:] != table[:, :-1])
-    left, right = grid[place], grid[place + 1]
-    for _ in range(rounds if row.size else 0):
-        steps = np.exp(np.linspace(0.0, 1.0, inside + 2)[1:-1, None] * np.log(right / left)) * left
-        inner = holds(steps.ravel())[row].reshape(row.size, inside, row.size)
-        own = inner[np.arange(row.size), :, np.arange(row.size)]
-        same = np.cumprod(own == table[row, place][:, None], axis=1).sum(axis=1)
-        points = np.column_stack([left, steps.T, right])
-        left, right = points[np.arange(row.size), same], points[np.arange(row.size), same + 1]
-    edges = np.where(table[row, place], left, right)
-    far = holds(np.array([_NOWHERE, 1.0 / _NOWHERE])) if table[:, [0, -1]].any() else np.zeros((len(table), 2), bool)
-    return [
-        _paired(edges[row == i], bool(table[i, 0]), bool(table[i, -1]), grid, far[i]) for i in range(table.shape[0])
-    ]
+def _measure(bench: Bench, gains: GainColumns, items: list[Requirement]) -> Callable[[FloatArray], FloatArray]:
+    """(g,) factors to (items, g) measures without jumps, at most 0 where the item holds."""
+    alone = replace(bench.situation.requirements, items=tuple(items))
+    some = replace(bench, situation=replace(bench.situation, requirements=alone), graded=True)
+
+    def measure(factors: FloatArray) -> FloatArray:
+        zeros = np.zeros(factors.size, dtype=int)
+        values = values_of(some, zeros, gains.take(zeros).times(factors))
+        lost = np.full(factors.size, np.nan)
+        rows = [
+            values.graded[item.name]
+            if item.name in values.graded
+            else -requirement_slack(item, values.of.get(item.name, lost))
+            for item in items
+        ]
+        return np.where(values.stable, np.array(rows), -UNSTABLE)
+
+    return measure
 
 
-def _paired(
-    edges: FloatArray, opens: bool, ends: bool, grid: FloatArray, far: NDArray[np.bool_]
-) -> tuple[GainInterval, ...]:
-    """Edges in order as intervals; below the grid down to 0, above it to no bound, where it holds far out too."""
-    bounds: list[float | None] = [float(e) for e in edges]
-    if opens:
-        bounds.insert(0, 0.0 if far[0] else float(grid[0]))
-    if ends:
-        bounds.append(None if far[1] else float(grid[-1]))
-    return tuple(zip(bounds[::2], bounds[1::2], strict=True))
-
-
-def _scaled(intervals: tuple[GainInterval, ...], chosen: float) -> tuple[GainInterval, ...]:
-    def times(edge: float | None) -> float | None:
-        return None if edge is None else edge * chosen
-
-    return tuple((times(low), times(high)) for low, high in intervals)
+def _scaled(spans: tuple[Span, ...], chosen: float) -> tuple[GainInterval, ...]:
+    return tuple((low * chosen, None if math.isinf(high) else high * chosen) for low, high in spans)

@@ -8,6 +8,7 @@ from numpy.typing import NDArray
 from ..ident.fitted import Noise, Plausible
 from ..ident.law import Law
 from ..ident.run import FloatArray
+from .continuous import standing_in
 from .discretise import columns_of, columns_of_law
 from .gains import Gains
 from .horizon import first_horizon, watched_long_enough
@@ -105,7 +106,7 @@ def judge_plants(
         limits=limits,
         setting=setting,
     )
-    return judged_on(gains, plausible, situation, law=law)
+    return judged_on(gains, plausible, standing_in(situation, plausible.plants[0]), law=law)
 
 
 def judged_on(

@@ -94,7 +94,7 @@ def margins(loop: OpenLoop, loop_gain: float) -> Margins:
 
 def gain_crossovers(loop: OpenLoop, loop_gain: float) -> FloatArray:
     """(k,) every frequency, rad/s, at which |K G_L| = 1, rising; touching points are left out."""
-    mesh = _mesh(loop, loop_gain)
+    mesh = frequency_mesh(loop, loop_gain)
     with np.errstate(divide="ignore"):
         level = np.log(loop_gain * np.abs(loop.at(1j * mesh)))
     change = np.flatnonzero(np.sign(level[1:]) * np.sign(level[:-1]) < 0)
@@ -133,7 +133,7 @@ def _factor_to_stability(intervals: tuple[tuple[float, float | None], ...], loop
     return max(below + above, default=0.0)
 
 
-def _mesh(loop: OpenLoop, loop_gain: float) -> FloatArray:
+def frequency_mesh(loop: OpenLoop, loop_gain: float) -> FloatArray:
     """Frequencies, rad/s, between which ln G_L changes by at most about _STEP, however lightly damped its modes.
 
     |d ln G_L/d w| is at most sum 1/|j w - root| + delay, whose integral is sum asinh((w - Im root)/|Re root|) + delay
@@ -175,7 +175,7 @@ def _peak(loop: OpenLoop, loop_gain: float, *, complementary: bool) -> tuple[flo
     def size(w: FloatArray) -> FloatArray:
         return _closed(loop_gain * loop.at(1j * w), complementary)
 
-    mesh = _mesh(loop, loop_gain)
+    mesh = frequency_mesh(loop, loop_gain)
     value = size(mesh)
     inner = np.flatnonzero((value[1:-1] >= value[:-2]) & (value[1:-1] >= value[2:])) + 1
     inner = inner[value[inner] > 0.9 * value.max()]

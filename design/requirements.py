@@ -103,15 +103,19 @@ class ControllerSetting:
     Attributes
     ----------
     update_interval : float, s
+        Of a continuous controller: that of the fine law that stands in for it in time; 0 lets the tool choose.
     computation_delay : float, s
         From sampling the response to moving the command.
     structures : tuple of StructureName or None
         Allowed ones; None lets the tool choose.
     response_filter_time : float, s
         First-order filter that the controller sees and the log doesn't.
+    continuous : bool
+        No sampling: no hold and no computation delay.
     """
 
     update_interval: float
     computation_delay: float = 0.0
     structures: tuple[StructureName, ...] | None = None
     response_filter_time: float = 0.0
+    continuous: bool = False

@@ -6,11 +6,13 @@ from ..ident.plant import Plant
 from .compensator import loop_gain, loop_gain_unit, open_loop
 from .designed import GainInterval, Selection
 from .discretise import columns_of, law_columns
-from .gain_sets import fitted_sets, plausible_sets
+from .gain_sets import fitted_sets
 from .gains import Gains
 from .locus.condition import LocusError, angle_residual_deg, loop_gain_at, point_on_locus
+from .locus.roots import closed_loop_roots
 from .requirements import ControllerSetting
 from .sampled.poles import poles_of, starting_poles
+from .sets.plausible import plausible_sets
 from .values import Bench
 
 _AGREE = 1e-6  # K of the gains and K of the magnitude condition agree to this share
@@ -58,17 +60,25 @@ def point_at(gains: Gains, plant: Plant, setting: ControllerSetting, near: compl
 
 def _first_on_locus(gains: Gains, plant: Plant, bench: Bench) -> tuple[complex, tuple[complex, float, float]]:
     """The first sampled pole that has its counterpart on the continuous locus, and that point."""
-    for near in sampled_poles(gains, bench):
+    setting = bench.situation.setting
+    sampled = sampled_poles(gains, bench)
+    for near in sampled:
         try:
-            return near, point_at(gains, plant, bench.situation.setting, near)
+            return near, point_at(gains, plant, setting, near)
         except LocusError:
             continue
-    raise SelectionError(
-        "no pole of the continuous locus was reached",
-        where="locus",
-        found=f"gains {gains}",
-        advice="report this with the rig file: the pole search went astray",
-    )
+    # where sampling moves every pole far, the two pictures share no neighbourhood: the nearest of all roots then
+    roots = closed_loop_roots(open_loop(gains, plant, setting), abs(loop_gain(gains)))
+    upper = roots[roots.imag >= 0.0]
+    if not upper.size:
+        raise SelectionError(
+            "no pole of the continuous locus was reached",
+            where="locus",
+            found=f"gains {gains}",
+            advice="report this with the rig file: the pole search went astray",
+        )
+    near = sampled[0] if sampled else complex(upper[0])
+    return near, point_at(gains, plant, setting, complex(upper[np.argmin(np.abs(upper - near))]))
 
 
 def select(
@@ -86,7 +96,10 @@ def select(
     """
     sampled, (pole, chosen, residual) = _first_on_locus(gains, plant, exact)
     columns = columns_of([gains])
-    fitted = fitted_sets(exact, columns, chosen) if sets else None
+    setting = exact.situation.setting
+    loop = open_loop(gains, plant, setting) if setting.continuous else None
+    fitted = fitted_sets(exact, columns, chosen, loop) if sets else None
+    sampled = pole if setting.continuous else sampled
     together: tuple[GainInterval, ...] = fitted.together if fitted else ()
     wide = plausible_sets(quick, columns, chosen, together, 100) if fitted and together else ()
     unit = loop_gain_unit(gains.structure, *units)

@@ -78,6 +78,11 @@ class Situation:
         """The stated requirements only."""
         return replace(self, floors=())
 
+    def without(self, name: RequirementName) -> "Situation":
+        """The same without one requirement."""
+        items = tuple(item for item in self.requirements.items if item.name != name)
+        return replace(self, requirements=replace(self.requirements, items=items))
+
     def asks(self, names: tuple[RequirementName, ...]) -> bool:
         """Whether one of these is judged."""
         return any(item.name in names for item in self.items)

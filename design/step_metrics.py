@@ -32,7 +32,8 @@ def peak(response: FloatArray) -> FloatArray:
     left, here, right = (response[middle + i, columns] for i in (-1, 0, 1))
     bend = left - 2.0 * here + right
     inside = (middle == top) & (bend < 0.0)
-    lift = np.where(inside, -((right - left) ** 2) / (8.0 * np.where(inside, bend, -1.0)), 0.0)
+    with np.errstate(over="ignore"):  # a loop at the edge of stability may have left for good
+        lift = np.where(inside, -((right - left) ** 2) / (8.0 * np.where(inside, bend, -1.0)), 0.0)
     return np.asarray(np.maximum(response[top, columns] + lift, 0.0))
 
 
@@ -73,6 +74,35 @@ def last_entry(distance: FloatArray, band: float, spacing: float, start: float =
     time = spacing * (index + 1 + np.clip(share, 0.0, 1.0))
     time = np.where(ever | (start > band), time, 0.0)
     return np.where(outside[-1], np.inf, time)
+
+
+def largest_from(distance: FloatArray, time: float, spacing: float) -> FloatArray:
+    """(c,) largest distance from `time` (s) on; between rows it is straight, a turning point refined by a parabola.
+
+    Parameters
+    ----------
+    distance : (q, c) array
+        Row i stands at (i + 1) `spacing`, 0 at time 0.
+    """
+    place = min(max(time / spacing - 1.0, 0.0), distance.shape[0] - 1.0)
+    first = int(np.ceil(place))
+    share = first - place
+    at_time = distance[first] if first == 0 else share * distance[first - 1] + (1.0 - share) * distance[first]
+    rest = distance[first:]
+    return np.maximum(at_time, peak(rest) if rest.shape[0] > 2 else rest.max(axis=0, initial=0.0))
+
+
+def short_of_rise(share: FloatArray, limit: float, spacing: float) -> FloatArray:
+    """(c,) what the response (as a share of the step) lacks to 90 % `limit` s after it first reached 10 %."""
+    begun = first_reach(share, 0.1, spacing)
+    rows, columns = share.shape[0], np.arange(share.shape[1])
+    until = np.where(np.isfinite(begun), begun, 0.0) + limit
+    place = np.clip(until / spacing - 1.0, 0.0, rows - 1.0)
+    below = np.floor(place).astype(int)
+    above = np.minimum(below + 1, rows - 1)
+    here = share[below, columns] + (place - below) * (share[above, columns] - share[below, columns])
+    highest = np.maximum(np.maximum.accumulate(share, axis=0)[below, columns], here)
+    return np.where(np.isfinite(begun), 0.9 - highest, 1.0)
 
 
 def rise_time(response: FloatArray, final: FloatArray, spacing: float) -> FloatArray:

@@ -5,6 +5,7 @@ import numpy as np
 from ..ident.fitted import Plausible
 from ..ident.plant import Plant
 from ..ident.run import FloatArray
+from .continuous import half_held
 from .designed import Trajectory
 from .discretise import columns_of, law_columns
 from .gains import Gains
@@ -32,10 +33,11 @@ def trajectory(gains: Gains, nominal: Plant, plausible: Plausible, situation: Si
     bank = build_bank(
         (nominal, *some.plants),
         setting.update_interval,
-        computation_delay=setting.computation_delay,
+        computation_delay=half_held(setting, setting.update_interval),
         filter_time=setting.response_filter_time,
         points=1,
         stiction=np.concatenate([[np.median(some.stiction)], some.stiction]),
+        predict=setting.continuous,
     )
     which = np.arange(bank.lag.size)
     law = law_columns(columns_of([gains]), bank.interval).take(np.zeros(which.size, dtype=int))

@@ -1,7 +1,7 @@
 """What gains do on plants: every requirement's value and every extreme, a column for each pair of plant and law."""
 
 from collections.abc import Callable
-from dataclasses import dataclass, replace
+from dataclasses import dataclass, field, replace
 
 import numpy as np
 from numpy.typing import NDArray
@@ -9,6 +9,7 @@ from numpy.typing import NDArray
 from ..ident.fitted import Plausible
 from ..ident.run import FloatArray
 from . import step_metrics
+from .continuous import half_held
 from .discretise import GainColumns, LawColumns, law_columns
 from .sampled.around import held_by_friction, run_around
 from .sampled.bank import Bank, IndexArray, build_bank
@@ -45,6 +46,8 @@ class Bench:
         Few enough samples in the dead time that eigenvalues can start the search for poles.
     cautious : bool
         Settling is judged away from the cliff where one more swing just leaves the band.
+    graded : bool
+        Whether settling, rise and recovery are graded too, see `Values.graded`.
     """
 
     plausible: Plausible
@@ -55,6 +58,7 @@ class Bench:
     samples: int
     coarse: Bank
     cautious: bool = False
+    graded: bool = False
 
 
 @dataclass(frozen=True, eq=False)
@@ -72,6 +76,9 @@ class Values:
         Settling time into 2 %, whether asked for or not; inf: not within the horizon; NaN without a step.
     upper : array
         Least factor above one on the gain that makes the loop unstable.
+    graded : dict of requirement name to array
+        For times, which jump as the gain changes: how far beyond its band the response is when time is up, a share of
+        the band or step; at most 0 where the requirement holds, and without jumps.
     """
 
     stable: NDArray[np.bool_]
@@ -80,6 +87,7 @@ class Values:
     clamped: FloatArray
     settled: FloatArray
     upper: FloatArray
+    graded: dict[str, FloatArray] = field(default_factory=dict)
 
 
 def bench_of(
@@ -103,28 +111,28 @@ def bench_of(
     least = float(exact.delay.min())
     running = exact
     if stand_in and horizon > 1.2 * _STAND_IN * setting.update_interval:
-        longest = setting.update_interval + 2.0 * least + 0.002 * horizon
+        longest = horizon if setting.continuous else setting.update_interval + 2.0 * least + 0.002 * horizon
         longest = max(min(longest, _ROTATION / _swing(exact)), setting.update_interval)
         running = _bank(plausible, situation, min(horizon / _STAND_IN, longest), points or 4)
     if smooth:
         running = replace(running, drives=None)
     samples = int(min(np.ceil(horizon / running.interval) + 1, most))
     coarse = _coarse(plausible, situation, exact)
-    return Bench(plausible, situation, exact, spectra_of(exact, grid), running, samples, coarse)
+    slow = 0.2 / horizon if setting.continuous else np.inf
+    return Bench(plausible, situation, exact, spectra_of(exact, grid, slow), running, samples, coarse)
 
 
 def _bank(plausible: Plausible, situation: Situation, interval: float, points: int) -> Bank:
     """Sampling at another interval keeps the sum of computation delay and half the hold."""
     setting = situation.setting
-    delay = setting.computation_delay + 0.5 * (setting.update_interval - interval)
-    filter_time = setting.response_filter_time
     return build_bank(
         plausible.plants,
         interval,
-        computation_delay=delay,
-        filter_time=filter_time,
+        computation_delay=half_held(setting, interval),
+        filter_time=setting.response_filter_time,
         points=points,
         stiction=plausible.stiction,
+        predict=setting.continuous,
     )
 
 
@@ -188,7 +196,7 @@ def values_of(
     of |= _linear_values(bench, which, exact, margins.stable)
     stepped = _Stepped(bench, which, running, margins.stable, watch)
     of |= stepped.values
-    return Values(margins.stable, of, stepped.extremes, stepped.clamped, stepped.settled, margins.upper)
+    return Values(margins.stable, of, stepped.extremes, stepped.clamped, stepped.settled, margins.upper, stepped.graded)
 
 
 def _joined(parts: list[Values]) -> Values:
@@ -202,7 +210,13 @@ def _joined(parts: list[Values]) -> Values:
 
     stable = np.concatenate([part.stable for part in parts])
     return Values(
-        stable, beside_by_name("of"), beside_by_name("extremes"), beside("clamped"), beside("settled"), beside("upper")
+        stable,
+        beside_by_name("of"),
+        beside_by_name("extremes"),
+        beside("clamped"),
+        beside("settled"),
+        beside("upper"),
+        beside_by_name("graded"),
     )
 
 
@@ -259,6 +273,7 @@ class _Stepped:
         self.which, self.law = which[self.chosen], law.take(self.chosen)
         self.offset = self.situation.operating_command - bench.plausible.operating_command[self.which]
         self.values: dict[str, FloatArray] = {}
+        self.graded: dict[str, FloatArray] = {}
         self.extremes: dict[str, FloatArray] = {}
         self.clamped, self.settled = np.zeros(self.count), np.full(self.count, np.nan)
         if self.situation.step != 0.0:
@@ -328,10 +343,17 @@ class _Stepped:
                 inner = step_metrics.settling_time(history.response, final, _INNER * band, spacing)
                 time = np.maximum(time, inner / _LATER)
             self._keep("settling_time", np.where(moving, np.inf, time))
+            if self.bench.graded:
+                away = np.abs(history.response / final - 1.0)
+                late = step_metrics.largest_from(away, settle.limit, spacing) / band - 1.0
+                self._grade("settling_time", np.where(moving, np.maximum(late, 1.0), late))
         if self.situation.asks(("overshoot",)):
             self._keep("overshoot", step_metrics.overshoot(history.response, final))
         if self.situation.asks(("rise_time",)):
             self._keep("rise_time", step_metrics.rise_time(history.response, final, spacing))
+            rise = self.situation.requirements.find("rise_time")
+            if self.bench.graded and rise is not None:
+                self._grade("rise_time", step_metrics.short_of_rise(history.response / final, rise.limit, spacing))
         if self.situation.asks(("steady_state_error",)):
             tail = history.response[-max(history.response.shape[0] // 5, 1) :]
             wandering = np.abs(goal - tail).max(axis=0) if tail.size else np.abs(goal)
@@ -347,6 +369,10 @@ class _Stepped:
     def _keep(self, name: str, value: FloatArray) -> None:
         """Keep the worse of what is known and what is new; unstable columns never get there."""
         held = self.values.setdefault(name, np.where(np.isin(np.arange(self.count), self.chosen), -np.inf, np.inf))
+        held[self.chosen] = np.maximum(held[self.chosen], np.where(np.isnan(value), np.inf, value))
+
+    def _grade(self, name: str, value: FloatArray) -> None:
+        held = self.graded.setdefault(name, np.where(np.isin(np.arange(self.count), self.chosen), -np.inf, np.inf))
         held[self.chosen] = np.maximum(held[self.chosen], np.where(np.isnan(value), np.inf, value))
 
     def _read_extremes(self, history: History, response: FloatArray, command: FloatArray) -> None:
@@ -386,7 +412,10 @@ class _Stepped:
             if item.name == "disturbance_peak":
                 self._keep(item.name, step_metrics.peak(away))
             else:
-                self._keep(item.name, step_metrics.last_entry(away, item.band or 0.0, spacing))
+                band = item.band or 0.0
+                self._keep(item.name, step_metrics.last_entry(away, band, spacing))
+                if self.bench.graded and band > 0.0:
+                    self._grade(item.name, step_metrics.largest_from(away, item.limit, spacing) / band - 1.0)
 
 
 def _bounded(limit: float | None) -> bool:

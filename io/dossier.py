@@ -179,6 +179,7 @@ def _put_design(group: h5py.Group, design: Design, rig: Rig) -> None:
     units = f"{rig.command_unit} per {rig.response_unit}: 1, 1/s, s; then s, 1/s, 1/s"
     text = "proportional, integral, derivative, filter time; zero and pole of lead and lag"
     _numbers(group, "gains", parallel, units, text)
+    group.attrs["continuous"] = design.continuous
     _put_law(group.create_group("law"), design)
     picked = group.create_group("selection")
     _numbers(picked, "loop_gain", [selection.loop_gain], selection.loop_gain_unit, "K of the magnitude condition")

@@ -7,6 +7,7 @@ from pathlib import Path
 from threadpoolctl import threadpool_limits
 
 from ..design.closing.compared import Compared
+from ..design.closing.given import compare_given
 from ..design.closing.verdict import compare
 from ..design.design import design_gains
 from ..design.designed import Design
@@ -14,6 +15,7 @@ from ..design.ladder.build import build_ladder
 from ..design.ladder.rung import Ladder
 from ..ident.errors import RecordError
 from ..ident.fitted import Fit
+from ..ident.given import fit_of_given
 from ..ident.identify import identify
 from .cautions import cautions_for
 from .outcome import Outcome
@@ -56,11 +58,12 @@ def process_rig(
         rig = load_rig(rig_path)
         rig = rig if change is None else change(rig)
         records = _read_all(rig, progress)
-        fit = _identify(rig, records, progress)
+        alone = _alone(rig, records, progress)
+        fit = _fit(rig, records, alone, progress)
         design = _design(rig, fit, progress)
         ladder = _ladder(rig, fit, design, progress)
         twins = _twins(records)
-        closing = _close(rig, records, fit, design, twins, progress)
+        closing = _close(rig, records, fit, design, twins, progress, alone)
     reasons = reasons_to_hold(rig, records, design, closing, twins, ladder)
     return Outcome(
         rig=rig,
@@ -94,6 +97,37 @@ def _read_all(rig: Rig, progress: Progress) -> tuple[Record, ...]:
     return tuple(records)
 
 
+def _fit(rig: Rig, records: Sequence[Record], held_out: Sequence[Fit | None], progress: Progress) -> Fit:
+    if rig.given is None:
+        return _identify(rig, records, progress)
+    known = next((alone for alone in held_out if alone is not None), None)
+    return fit_of_given(
+        rig.given,
+        operating_command=_first(rig.operating_command, known.operating_command if known else None),
+        operating_response=_first(rig.operating_response, known.operating_response if known else None),
+        noise=known.noise if known else None,
+    )
+
+
+def _first(*values: float | None) -> float:
+    return next((value for value in values if value is not None), 0.0)
+
+
+def _alone(rig: Rig, records: Sequence[Record], progress: Progress) -> tuple[Fit | None, ...]:
+    """Beside a given plant each held-out record is fitted by itself: only it tells of noise and operating point."""
+    if rig.given is None:
+        return ()
+    return tuple(_fitted_alone(rig, record, progress) for record in records if record.spec.use == "held-out")
+
+
+def _fitted_alone(rig: Rig, record: Record, progress: Progress) -> Fit | None:
+    progress(f"fitting {record.spec.shown} by itself")
+    try:
+        return identify([record.run], operating_command=rig.operating_command, progress=progress)
+    except RecordError:
+        return None  # the comparison says so
+
+
 def _identify(rig: Rig, records: Sequence[Record], progress: Progress) -> Fit:
     fitted = [record.run for record in records if record.spec.use == "fit"]
     progress("fitting the plant")
@@ -112,7 +146,7 @@ def _design(rig: Rig, fit: Fit, progress: Progress) -> Design:
         fit.plausible,
         operating_command=fit.operating_command,
         operating_response=fit.operating_response,
-        noise=fit.noise,
+        noise=fit.noise if fit.noise.std > 0.0 or rig.given is None else None,
         requirements=rig.requirements,
         limits=rig.limits,
         setting=rig.setting,
@@ -123,8 +157,9 @@ def _design(rig: Rig, fit: Fit, progress: Progress) -> Design:
 
 
 def _ladder(rig: Rig, fit: Fit, design: Design, progress: Progress) -> Ladder | None:
-    """The way up from an open loop; gains that are not stable everywhere get none."""
-    if not design.all_stable:
+    """The way up from an open loop; gains that are not stable everywhere get none, nor does a controller
+    that isn't sampled: there is nothing to load."""
+    if not design.all_stable or design.continuous:
         return None
     progress("building the gain ladder")
     return build_ladder(
@@ -154,24 +189,41 @@ def _close(
     design: Design,
     twins: Sequence[tuple[Record, Record]],
     progress: Progress,
+    alone: Sequence[Fit | None],
 ) -> tuple[Compared, ...]:
-    closing = []
+    closing: list[Compared] = []
     for record in records:
         if record.spec.use != "held-out":
             continue
         progress(f"comparing with {record.spec.shown}")
-        compared = compare(
-            record.run,
-            fit,
-            design,
-            requirements=rig.requirements,
-            limits=rig.limits,
-            setting=rig.setting,
-            progress=progress,
+        compared = (
+            _compare(rig, record, fit, design, progress)
+            if rig.given is None
+            else compare_given(
+                record.run,
+                fit,
+                alone[len(closing)],
+                design,
+                requirements=rig.requirements,
+                limits=rig.limits,
+                setting=rig.setting,
+            )
         )
         twin = next((fitted for held_out, fitted in twins if held_out is record), None)
         closing.append(compared if twin is None else _not_fresh(compared, twin))
     return tuple(closing)
+
+
+def _compare(rig: Rig, record: Record, fit: Fit, design: Design, progress: Progress) -> Compared:
+    return compare(
+        record.run,
+        fit,
+        design,
+        requirements=rig.requirements,
+        limits=rig.limits,
+        setting=rig.setting,
+        progress=progress,
+    )
 
 
 def _not_fresh(compared: Compared, twin: Record) -> Compared:

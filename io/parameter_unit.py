@@ -25,5 +25,8 @@ def unit_of(parameter: Parameter, integrators: int, command_unit: str, response_
     'V'
     """
     if parameter.name == "gain":
+        if integrators > 1:
+            below = f"{command_unit} s^{integrators}" if command_unit != "1" else f"s^{integrators}"
+            return f"{response_unit}/({below})"
         return _OVER[integrators](response_unit, command_unit)
     return {"command": command_unit, "response": response_unit}.get(parameter.unit, parameter.unit)

@@ -189,7 +189,7 @@ def _chosen(outcome: Outcome) -> dict[str, Any] | None:
         "action": _action(design.gains),
         "forms": forms_as_printed(design.gains, rig.command_unit, rig.response_unit),
         "setpoint_weight": float(design.gains.setpoint_weight),
-        "difference_equation": law_row(design.law),
+        "difference_equation": None if design.continuous else law_row(design.law),
     }
     return {"controller": controller, "selection": _selection(design.selection)}
 

@@ -102,7 +102,8 @@ def _gains(outcome: Outcome, design: Design, paint: _Paint, width: int) -> Itera
             continue
         yield from textwrap.wrap(f"{name:<10}{_form(form)}", width, initial_indent="  ", subsequent_indent=" " * 12)
     gain = with_unit(selection.loop_gain, selection.loop_gain_unit)
-    yield f"  update every {words.every(design.law.update_interval)}; loop gain K = {gain} {_range(design)}".rstrip()
+    pace = "continuous" if design.continuous else f"update every {words.every(design.law.update_interval)}"
+    yield f"  {pace}; loop gain K = {gain} {_range(design)}".rstrip()
 
 
 def _form(form: dict[str, Any] | None) -> str:

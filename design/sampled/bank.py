@@ -86,6 +86,7 @@ def build_bank(
     filter_time: float = 0.0,
     points: int = 4,
     stiction: FloatArray | None = None,
+    predict: bool = False,
 ) -> Bank:
     """Discretise the plants exactly.
 
@@ -101,6 +102,8 @@ def build_bank(
         Sub-points per sample.
     stiction : (p,) array, command unit, optional
         Dry friction of each plant.
+    predict : bool
+        Where the total delay is negative, let the controller see the response that much ahead, under the old command.
 
     References
     ----------
@@ -112,7 +115,8 @@ def build_bank(
     poles = _poles(models, order)
     if filter_time > 0.0:
         a, b, c = _with_filter(a, b, c, direct, filter_time)
-    delay = np.maximum([plant.dead_time + computation_delay for plant in plants], 0.0)
+    total = np.array([plant.dead_time + computation_delay for plant in plants])
+    delay = np.maximum(total, 0.0)
     whole, part = _split(delay / interval)
     phi, old, new = _sub_steps(a, b, interval, part, points)
     output = np.concatenate([c, np.zeros_like(c[:, :1])], axis=1) if filter_time > 0.0 else c
@@ -120,7 +124,19 @@ def build_bank(
         plants, interval, points, a, b, output, direct, phi, old, new, whole, delay, part, filter_time > 0.0, poles
     )
     drives = None if stiction is None else drives_of(plants, stiction, delay)
-    return replace(smooth, filter_time=filter_time, drives=drives)
+    seen = _ahead(a, b, smooth.seen, np.maximum(-total, 0.0)) if predict and np.any(total < 0.0) else smooth.seen
+    return replace(smooth, filter_time=filter_time, drives=drives, seen=seen)
+
+
+def _ahead(a: FloatArray, b: FloatArray, seen: FloatArray, time: FloatArray) -> FloatArray:
+    """What is seen, (n + 1, p), after another `time` (p,) s under the old command."""
+    count, order = b.shape
+    both = np.zeros((count, order + 1, order + 1))
+    both[:, :order, :order], both[:, :order, order] = a, b
+    moved = expm(both * time[:, None, None])
+    found = np.einsum("ip,pij->jp", seen[:order], moved[:, :order])
+    found[order] += seen[order]
+    return np.asarray(found)
 
 
 @dataclass(frozen=True, eq=False)

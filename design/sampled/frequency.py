@@ -78,14 +78,16 @@ class Margins:
     lower: FloatArray
 
 
-def spectra_of(bank: Bank, size: int = 160) -> Spectra:
-    """Evaluate the plants once on a grid that resolves their resonances and dead time."""
-    pulse, frequency = pulse_of(bank), frequency_grid(bank, size)
+def spectra_of(bank: Bank, size: int = 160, slow: float = np.inf) -> Spectra:
+    """Evaluate the plants once on a grid that resolves resonances and dead time, from `slow` (rad/s) on at least."""
+    pulse, frequency = pulse_of(bank), frequency_grid(bank, size, slow)
     radius = frequency[0] * bank.interval
     arc = 1.0 + radius * np.exp(1j * np.linspace(0.0, 0.5 * np.pi, _ARC)[:, None])
     z = np.concatenate([arc, np.exp(1j * frequency * bank.interval)])
     z[-1] = -1.0
-    return Spectra(pulse, frequency, z, pulse.at(z, np.arange(bank.lag.size)), bank.unstable, slow_edge(bank))
+    return Spectra(
+        pulse, frequency, z, pulse.at(z, np.arange(bank.lag.size)), bank.unstable, np.minimum(slow_edge(bank), slow)
+    )
 
 
 def open_loop_at(spectra: Spectra, which: IndexArray, law: LawColumns) -> LoopAt:
@@ -150,6 +152,17 @@ def _angle_between(at: LoopAt, left: ComplexArray, right: ComplexArray, column: 
 
 def _factors(at: LoopAt, z: ComplexArray, loop: ComplexArray, exact: bool) -> tuple[FloatArray, FloatArray]:
     """Gain factors at which the loop meets -1: the least above one and the largest below."""
+    owner, factor = _meetings(at, z, loop, exact)
+    upper, lower = np.full(loop.shape[1], np.inf), np.zeros(loop.shape[1])
+    above = factor >= 1.0
+    np.minimum.at(upper, owner[above], factor[above])
+    below = factor < 1.0
+    np.maximum.at(lower, owner[below], factor[below])
+    return upper, lower
+
+
+def _meetings(at: LoopAt, z: ComplexArray, loop: ComplexArray, exact: bool) -> tuple[IndexArray, FloatArray]:
+    """Column and gain factor of every place at which the loop meets -1; NaN where an end lies on the positive side."""
     imag, real = loop.imag, loop.real
     crosses = (imag[1:] * imag[:-1] < 0.0) & ((real[1:] < 0.0) | (real[:-1] < 0.0))
     row, column = np.nonzero(crosses)
@@ -157,13 +170,34 @@ def _factors(at: LoopAt, z: ComplexArray, loop: ComplexArray, exact: bool) -> tu
     every = np.arange(loop.shape[1])
     ends = np.concatenate([value, loop[0].real, loop[-1].real])
     owner = np.concatenate([column, every, every])
-    factor = np.where(ends < 0.0, -1.0 / np.minimum(ends, -1e-300), np.nan)
-    upper, lower = np.full(loop.shape[1], np.inf), np.zeros(loop.shape[1])
-    above = factor >= 1.0
-    np.minimum.at(upper, owner[above], factor[above])
-    below = factor < 1.0
-    np.maximum.at(lower, owner[below], factor[below])
-    return upper, lower
+    return owner, np.where(ends < 0.0, -1.0 / np.minimum(ends, -1e-300), np.nan)
+
+
+def stable_factors(spectra: Spectra, which: IndexArray, law: LawColumns) -> tuple[FloatArray, FloatArray]:
+    """(c,) ends of the widest range of factors on the gain, by ratio, in which each loop is stable; NaN where none is.
+
+    A range that reaches down to nothing begins at 0, one without an upper end ends at infinity.
+    """
+    z = spectra.z[:, which]
+    with np.errstate(all="ignore"):
+        loop = spectra.plant[:, which] * law_response(law, z)
+        owner, factor = _meetings(open_loop_at(spectra, which, law), z, loop, exact=False)
+    ends = [np.unique(factor[(owner == i) & (factor > 0.0)]) for i in range(which.size)]
+    inner = [np.sqrt(np.append(e[:1] / 1e4, e) * np.append(e, e[-1:] * 1e4)) if e.size else np.ones(1) for e in ends]
+    columns = np.repeat(np.arange(which.size), [i.size for i in inner])
+    tried = law.take(columns)
+    scaled = LawColumns(tried.command, tried.setpoint, tried.response * np.concatenate(inner), tried.memory)
+    stable = margins_of(spectra, which[columns], scaled, exact=False).stable
+    low, high = np.full(which.size, np.nan), np.full(which.size, np.nan)
+    for i, edges in enumerate(ends):
+        good = np.flatnonzero(stable[columns == i])
+        if not good.size:
+            continue
+        bounds = np.concatenate([[0.0], edges, [np.inf]])
+        width = np.log(np.minimum(bounds[good + 1], 1e18)) - np.log(np.maximum(bounds[good], 1e-18))
+        best = good[int(width.argmax())]
+        low[i], high[i] = bounds[best], bounds[best + 1]
+    return low, high
 
 
 def _phase_margin(at: LoopAt, z: ComplexArray, loop: ComplexArray, exact: bool) -> FloatArray:

@@ -78,13 +78,13 @@ def setpoint_response(law: LawColumns, z: ComplexArray) -> ComplexArray:
     return _in_back(law.setpoint, z) / _in_back(law.command, z)
 
 
-def frequency_grid(bank: Bank, size: int) -> FloatArray:
+def frequency_grid(bank: Bank, size: int, slow: float = np.inf) -> FloatArray:
     """(F, p) increasing angular frequencies in rad/s, up to half the sample rate.
 
     Spread evenly in the logarithm, and in phase as far as the dead time turns it, and gathered round each
     lightly damped plant pole.
     """
-    columns = [_plant_grid(bank, i, size, low) for i, low in enumerate(slow_edge(bank))]
+    columns = [_plant_grid(bank, i, size, min(low, slow)) for i, low in enumerate(slow_edge(bank))]
     longest = max(column.size for column in columns)
     return np.array([_stretched(column, longest) for column in columns]).T
 

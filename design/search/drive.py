@@ -6,6 +6,7 @@ from dataclasses import dataclass, replace
 import numpy as np
 
 from ...ident.fitted import Plausible
+from ...ident.given import plant_sign
 from ...ident.plant import Plant
 from ...ident.run import FloatArray
 from ..designed import Tried
@@ -87,7 +88,7 @@ def search(nominal: Plant, plausible: Plausible, situation: Situation, plan: Pla
 
 def best_of(structure: StructureName, nominal: Plant, bench: Bench) -> Found:
     """The best law of one structure on the bench."""
-    sign = -1.0 if nominal.static_gain < 0.0 else 1.0
+    sign = plant_sign(nominal)
     weighted = can_weight(structure) and bench.situation.step != 0.0 and bench.situation.asks(STEP)
     quick = _FILTER / pace(bench, extremes(bench)[:3])
     space = Space(structure, sign, bench.exact.interval, quick, weighted)

@@ -5,7 +5,8 @@ import numpy as np
 from ...ident.run import FloatArray
 from ..discretise import law_columns
 from ..sampled.bank import IndexArray
-from ..sampled.frequency import margins_of
+from ..sampled.frequency import margins_of, stable_factors
+from ..sampled.pulse import law_response
 from ..values import Bench
 from .candidates import Space
 from .objective import scores_of, wish
@@ -27,6 +28,26 @@ def critical_gains(bench: Bench, space: Space, shapes: FloatArray, plants: Index
     return np.asarray(np.log(least) + unit[:, 0])
 
 
+def stable_gains(bench: Bench, space: Space, shapes: FloatArray, plants: IndexArray) -> tuple[FloatArray, FloatArray]:
+    """(g,) natural logarithms of the ends of the range of gains that all these plants are stable in.
+
+    For plants that a small gain leaves unstable: the range begins at a crossing, too. Where there is none, the ends of
+    the fitted plant's own.
+    """
+    unit = np.column_stack([np.full(shapes.shape[0], -_level(bench)), shapes])
+    gains = space.gains(unit).take(np.repeat(np.arange(shapes.shape[0]), plants.size))
+    law = law_columns(gains, bench.exact.interval)
+    low, high = stable_factors(bench.spectra, np.tile(plants, shapes.shape[0]), law)
+    low, high = low.reshape(-1, plants.size), high.reshape(-1, plants.size)
+    least, most = low.max(axis=1), high.min(axis=1)
+    alone = ~(least < most)
+    least, most = np.where(alone, low[:, 0], least), np.where(alone, high[:, 0], most)
+    lost = ~np.isfinite(least)
+    least = np.where(lost, 1.0, np.maximum(least, 1e-12))
+    most = np.where(lost, 10.0, np.minimum(most, 1e18))
+    return np.log(least) + unit[:, 0], np.log(most) + unit[:, 0]
+
+
 def _level(bench: Bench) -> float:
     return float(np.log(np.abs(bench.exact.static_gain).max()))
 
@@ -38,7 +59,23 @@ def pace(bench: Bench, plants: IndexArray) -> float:
         phase = np.unwrap(np.angle(bench.spectra.plant[7:, i] * np.sign(bench.exact.static_gain[i])))
         turned = np.flatnonzero(phase - phase[0] < -np.pi + (0.5 * np.pi) * min(bench.exact.integrators[i], 1))
         rates.append(bench.spectra.frequency[turned[0] if turned.size else -1, i])
-    return float(np.exp(np.mean(np.log(rates))))
+    mean = float(np.exp(np.mean(np.log(rates))))
+    return min(mean, _quickest(bench)) if bench.situation.setting.continuous else mean
+
+
+def _quickest(bench: Bench) -> float:
+    """Angular frequency in rad/s beyond which a loop would be quicker than anybody asks for."""
+    return 60.0 / (bench.samples * bench.running.interval)
+
+
+def crossing_gains(bench: Bench, space: Space, shapes: FloatArray, count: int) -> FloatArray:
+    """(g, count) natural logarithms of the gains that put the gain crossing of the fitted plant along its pace."""
+    unit = np.column_stack([np.full(shapes.shape[0], -_level(bench)), shapes])
+    law = law_columns(space.gains(unit), bench.exact.interval)
+    quick = _quickest(bench)
+    z = np.exp(1j * np.geomspace(0.02 * quick, quick, count)[:, None] * bench.exact.interval)
+    size = np.abs(bench.spectra.pulse.at(z, np.zeros(1, dtype=int)) * law_response(law, z))
+    return np.asarray(unit[:, :1] - np.log(size).T)
 
 
 def zero_grid(space: Space, bench: Bench, plants: IndexArray) -> FloatArray:
@@ -63,6 +100,11 @@ def zero_grid(space: Space, bench: Bench, plants: IndexArray) -> FloatArray:
     return np.concatenate([light, np.column_stack([shapes, np.full(shapes.shape[0], 0.4)])])
 
 
+def needs_gain(bench: Bench, plants: IndexArray) -> bool:
+    """Whether one of the plants is unstable, or drifts twice over, so that too small a gain can leave it unstable."""
+    return bool(np.any(bench.exact.unstable[plants] > 0) or np.any(bench.exact.integrators[plants] > 1))
+
+
 def _swing(bench: Bench) -> float:
     """Natural frequency of a lightly damped pair of the fitted plant, rad/s; 0 where there is none."""
     poles = bench.plausible.plants[0].poles
@@ -79,10 +121,16 @@ def _longest_time(bench: Bench) -> float:
 def coarse_search(bench: Bench, space: Space, plants: IndexArray, keep: int) -> tuple[FloatArray, FloatArray]:
     """The best (keep, size) points of the grid, apart from each other, and their wishes."""
     shapes = zero_grid(space, bench, plants)
-    top = critical_gains(bench, space, shapes, plants)
     count = 30 if space.zeros == 0 else 10
-    shares = np.log(np.geomspace(0.004 if space.zeros == 0 else 0.03, 0.85, count))
-    points = np.column_stack([(top[:, None] + shares).ravel(), np.repeat(shapes, count, axis=0)])
+    if bench.situation.setting.continuous:
+        levels = crossing_gains(bench, space, shapes, count)
+    elif needs_gain(bench, plants):
+        low, high = stable_gains(bench, space, shapes, plants)
+        levels = low[:, None] + np.linspace(0.03, 0.97, count) * (high - low)[:, None]
+    else:
+        top = critical_gains(bench, space, shapes, plants)
+        levels = top[:, None] + np.log(np.geomspace(0.004 if space.zeros == 0 else 0.03, 0.85, count))
+    points = np.column_stack([levels.ravel(), np.repeat(shapes, count, axis=0)])
     scores = scores_of(bench, plants, space.gains(points))
     everyone = np.ones(plants.size, dtype=bool)
     worth = wish(scores.smallest(everyone), space.gains(points), bench.situation)

@@ -29,7 +29,7 @@ def plan_for(plant: Plant, situation: Situation) -> Plan:
     RequestError
         Only structures are allowed that this version does not search.
     """
-    allowed = situation.setting.structures or _USUAL
+    allowed = situation.setting.structures or (_USUAL if situation.requirements.items else ("P",))
     known = [name for name in ORDER if name in allowed]
     if not known:
         raise RequestError(
@@ -63,4 +63,5 @@ def _hopeless(name: StructureName, plant: Plant, situation: Situation) -> str:
 
 
 def _offset_unasked(situation: Situation) -> bool:
-    return situation.setting.structures is None and situation.requirements.find("steady_state_error") is None
+    asked = situation.requirements
+    return situation.setting.structures is None and bool(asked.items) and asked.find("steady_state_error") is None

@@ -110,7 +110,7 @@ def _designed(outcome: Outcome, design: Design) -> dict[str, Any]:
         "use": words.USE if outcome.status == "released" else words.STUDY,
         "forms": tables.forms(forms_as_printed(design.gains, rig.command_unit, rig.response_unit)),
         "settings": _settings(outcome, design),
-        "law": law_text(design.law),
+        "law": CONTINUOUS if design.continuous else law_text(design.law),
         "requirements": tables.requirements(design),
         "step": pictures.step_picture(outcome, design),
         "step_guide": _step_guide(outcome),
@@ -121,10 +121,13 @@ def _designed(outcome: Outcome, design: Design) -> dict[str, Any]:
     }
 
 
+CONTINUOUS = "none: the controller is continuous, and the forms above are the whole of it"
+
+
 def _settings(outcome: Outcome, design: Design) -> tuple[tuple[str, str], ...]:
     rig, fit = outcome.rig, outcome.fit
     rows = [
-        ("update interval", with_unit(design.law.update_interval, "s", 6)),
+        ("update interval", "none: continuous" if design.continuous else with_unit(design.law.update_interval, "s", 6)),
         ("computation delay", with_unit(rig.setting.computation_delay, "s", 6)),
         ("setpoint weight", number(design.gains.setpoint_weight)),
         ("clamp, from the operating point", words.clamp_in_words(design.law.clamp, rig.command_unit)),

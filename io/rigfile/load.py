@@ -7,6 +7,7 @@ from pathlib import Path
 from typing import Any
 
 from ...ident.errors import RequestError
+from . import given
 from .messages import Problems, shape_problems
 from .quantities import Quantities
 from .rig import LogDialect, Rig
@@ -45,27 +46,63 @@ def load_rig(path: Path) -> Rig:
     folder = path.resolve().parent
     problems = Problems(str(path))
     files = find_files(shape.runs, folder, problems)
-    if not any(run.use == "fit" for run in shape.runs):
-        problems.add("runs", "no run is there to be fitted", f"{len(shape.runs)} runs", 'a run with use = "fit"')
+    _require_a_plant(shape, problems)
+    sheet = given.read_sheet(shape, folder, problems)
     dialect = _dialect(shape.log, problems)
     problems.raise_any()
+    if shape.plant is not None:
+        shape = given.with_units(shape, sheet)
     units = rig_units(shape, files, dialect, problems)
     problems.raise_any()
-    return _values(path, content, shape, files, dialect, units)
+    return _values(path, content, shape, files, dialect, units, sheet)
+
+
+def _require_a_plant(shape: RigFile, problems: Problems) -> None:
+    """Runs to fit or a given plant, one of both; and a controller that is sampled where there are logs to fit."""
+    fitted = [number for number, run in enumerate(shape.runs, 1) if run.use == "fit"]
+    if shape.plant is None:
+        if not fitted:
+            problems.add("runs", "no run is there to be fitted", f"{len(shape.runs)} runs", 'a run with use = "fit"')
+        if "controller" not in shape.model_fields_set:
+            problems.add("controller", "this key is missing", expected="a [controller] table with its update_interval")
+        elif shape.controller.update_interval is None:
+            problems.add("controller.update_interval", "this key is missing", expected='such as "5 ms"')
+    elif fitted:
+        problems.add(
+            f"runs[{fitted[0]}].use",
+            "there is a [plant] already, and nothing is fitted beside it",
+            '"fit"',
+            '"held-out", or no [plant]',
+        )
 
 
 def _values(
-    path: Path, content: bytes, shape: RigFile, files: list[list[Path]], dialect: LogDialect, units: dict[str, str]
+    path: Path,
+    content: bytes,
+    shape: RigFile,
+    files: list[list[Path]],
+    dialect: LogDialect,
+    units: dict[str, str],
+    sheet: dict[str, Any] | None = None,
 ) -> Rig:
     folder = path.resolve().parent
     problems = Problems(str(path))
     wishes = Wishes(problems, units["command"], units["response"])
-    signals = build_signals("signals", signals_of(shape.signals), units, Quantities(problems), problems)
+    parts = signals_of(shape.signals)
+    signals = build_signals("signals", parts, units, Quantities(problems), problems, logged=bool(shape.runs))
     runs = build_runs(shape.runs, files, folder, shape.signals, units, problems)
     limits = wishes.limits(shape.limits)
     requirements = wishes.requirements(shape.requirements, limits)
     setting = wishes.setting(shape.controller)
     operating = _operating_point(shape.operating_point, units, problems)
+    plant = given.build_given(shape.plant, sheet, units, problems) if shape.plant is not None else None
+    if plant is not None:
+        earlier = given.operating_point(sheet, units)
+        command, response = operating
+        operating = (
+            earlier.get("command") if command is None else command,
+            earlier.get("response") if response is None else response,
+        )
     problems.raise_any()
     return Rig(
         name=shape.rig.name,
@@ -82,6 +119,7 @@ def _values(
         operating_command=operating[0],
         operating_response=operating[1],
         guessed=tuple(_guessed(shape)),
+        given=plant,
     )
 
 
@@ -133,14 +171,6 @@ def _shape(path: Path, table: dict[str, Any]) -> RigFile:
 
 
 def _refuse_not_yet(path: Path, shape: RigFile) -> None:
-    if shape.plant is not None:
-        raise RequestError(
-            "a plant that is given instead of fitted is not taken yet",
-            where=f"{path}: plant",
-            found="[plant]",
-            expected='[[runs]] with use = "fit"',
-            advice="give logs of the rig",
-        )
     for number, run in enumerate(shape.runs, 1):
         try:
             refuse_not_yet(number, run)

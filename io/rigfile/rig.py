@@ -4,6 +4,7 @@ from dataclasses import dataclass
 from pathlib import Path
 
 from ...design.requirements import ControllerSetting, Limits, Requirements
+from ...ident.given import GivenPlant
 from ...ident.run import Between, Excitation
 
 
@@ -99,6 +100,8 @@ class Rig:
         None: fitted.
     guessed : tuple of str
         Keys that still stand as `guessed = true`; they hold the job.
+    given : GivenPlant or None
+        The plant of the rig file, in place of fit runs.
     """
 
     name: str
@@ -115,3 +118,4 @@ class Rig:
     operating_command: float | None = None
     operating_response: float | None = None
     guessed: tuple[str, ...] = ()
+    given: GivenPlant | None = None

@@ -70,19 +70,34 @@ def signals_of(shape: Signals, run: RunPart | None = None) -> dict[str, SignalPa
 
 
 def build_signals(
-    key: str, parts: dict[str, SignalPart], rig_units: dict[str, str], quantities: Quantities, problems: Problems
+    key: str,
+    parts: dict[str, SignalPart],
+    rig_units: dict[str, str],
+    quantities: Quantities,
+    problems: Problems,
+    *,
+    logged: bool = True,
 ) -> dict[str, Signal]:
-    """Signals as values; ranges in the unit of the signal, or of the rig where the log states it."""
+    """Signals as values; ranges in the unit of the signal, or of the rig where the log states it.
+
+    Where nothing is logged they need no source.
+    """
     return {
-        role: _build_signal(f"{key}.{role}", role, part, rig_units.get(role), quantities, problems)
+        role: _build_signal(f"{key}.{role}", role, part, rig_units.get(role), quantities, problems, logged)
         for role, part in parts.items()
     }
 
 
 def _build_signal(
-    key: str, role: str, part: SignalPart, rig_unit: str | None, quantities: Quantities, problems: Problems
+    key: str,
+    role: str,
+    part: SignalPart,
+    rig_unit: str | None,
+    quantities: Quantities,
+    problems: Problems,
+    logged: bool,
 ) -> Signal:
-    if (part.source is None) == (part.sample_rate is None):
+    if (part.source is None) == (part.sample_rate is None) and (logged or part.source is not None):
         problems.add(
             key,
             "needs a source" + (" or a sample_rate, one of both" if role == "time" else ""),

@@ -3,7 +3,7 @@
 from datetime import date
 from typing import Annotated, Any, Literal
 
-from pydantic import BaseModel, BeforeValidator, ConfigDict, Field
+from pydantic import BaseModel, BeforeValidator, ConfigDict, Field, model_validator
 
 from ...design.requirements import StructureName
 
@@ -152,9 +152,9 @@ class RunPart(Part):
 
 
 class Controller(Part):
-    """[controller]"""
+    """[controller]; without `update_interval` it is continuous, which only a [plant] allows."""
 
-    update_interval: TimeText
+    update_interval: TimeText | None = None
     computation_delay: Text = Field(default="0 s", examples=["1 ms"])
     structures: list[StructureName] | None = Field(default=None, examples=[["P", "PI"]], min_length=1)
     response_filter_time: Text = Field(default="0 s", examples=["2 ms"])
@@ -306,7 +306,18 @@ class RigFile(Part):
     log: Log = Log()
     signals: Signals
     runs: list[RunPart] = Field(default=[], examples=["[[runs]] tables"])
-    controller: Controller
+    controller: Controller = Controller()
     requirements: RequirementsPart = RequirementsPart()
     limits: LimitsPart = LimitsPart()
     plant: PlantPart | None = None
+
+    @model_validator(mode="before")
+    @classmethod
+    def _signals_of_a_given_plant(cls, content: Any) -> Any:
+        """A given plant needs no signals: the tables that are left out are empty."""
+        if not isinstance(content, dict) or "plant" not in content or content.get("runs"):
+            return content
+        signals = content.get("signals", {})
+        if not isinstance(signals, dict):
+            return content
+        return {**content, "signals": {"time": {}, "command": {}, "response": {}, **signals}}

@@ -39,13 +39,16 @@ class Wishes:
         numbers, key = self._quantities, "controller"
         if part.current is not None:
             self._check_current(part.current)
+        interval, delay = part.update_interval, part.computation_delay
+        late = numbers.difference(f"{key}.computation_delay", delay, "s", least=0.0)
         return ControllerSetting(
-            update_interval=numbers.positive(f"{key}.update_interval", part.update_interval, "s"),
-            computation_delay=numbers.difference(f"{key}.computation_delay", part.computation_delay, "s", least=0.0),
+            update_interval=0.0 if interval is None else numbers.positive(f"{key}.update_interval", interval, "s"),
+            computation_delay=0.0 if interval is None else late,
             structures=tuple(dict.fromkeys(part.structures)) if part.structures is not None else None,
             response_filter_time=numbers.difference(
                 f"{key}.response_filter_time", part.response_filter_time, "s", least=0.0
             ),
+            continuous=interval is None,
         )
 
     def _check_current(self, part: Current) -> None:

@@ -274,7 +274,11 @@ CASES: dict[str, tuple[str, str, str]] = {
     ),
     "closed loop": ('from = "1 s"', 'from = "1 s"\nloop = "closed"', r"runs\[2\].loop[\s\S]*not used yet"),
     "frequency table": ('from = "1 s"', 'excitation = "frequency-table"', r"not read yet"),
-    "a given plant": ("[limits]", "[plant]\nnumerator = [1.0]\n[limits]", r"plant[\s\S]*not taken yet"),
+    "a given plant beside fit runs": (
+        "[limits]",
+        "[plant]\nnumerator = [1.0]\ndenominator = [1.0, 1.0]\n[limits]",
+        r"runs\[1\].use: there is a \[plant\] already",
+    ),
     "unknown key of a given plant": ("[limits]", "[plant]\nnumerators = [1.0]\n[limits]", r'did you mean "numerator"'),
     "scale of zero": ('unit = "V" }', 'unit = "V", scale = 0.0 }', r"signals.command.scale: a scale of zero"),
     "scale as a text": ('unit = "V" }', 'unit = "V", scale = "2" }', r"signals.command.scale: this is a bare number"),

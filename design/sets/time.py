@@ -1,0 +1,134 @@
+"""Gains that meet what has no formula: a measure without jumps is scanned and its roots are closed in."""
+
+import math
+from collections.abc import Callable
+
+import numpy as np
+from numpy.typing import NDArray
+
+from ...ident.run import FloatArray
+from .spans import Span, joined
+
+Measure = Callable[[FloatArray], FloatArray]  # (g,) factors to (rows, g): at most 0 where the row holds
+
+_POINTS = 80  # in each stable span
+_DECADES = 1e4  # how far below its upper end, or the chosen gain, a span is scanned
+_CLOSE = 0.25  # a turning point whose measure is this near to 0 is looked at closely
+_ZOOMS = 3
+_INSIDE = 5  # points between two neighbours in a closer look
+_ROUNDS = 48
+_MARGIN = 1e-9  # relative distance that is kept from the ends of a stable span
+
+
+def scanned_sets(
+    measure: Measure, stable: tuple[Span, ...], rows: int, *, tight: float = 1e-9, reach: float = math.inf
+) -> list[tuple[Span, ...]]:
+    """Sets of each row of a measure within the stable spans.
+
+    Parameters
+    ----------
+    measure : callable
+        Continuous in the factor within each span.
+    stable : tuple of Span
+        Factors; 1 is the chosen gain.
+    rows : int
+    tight : float
+        Relative width at which an edge is known.
+    reach : float
+        Factor up to which the measure is to be believed; what holds there holds to the end of its span.
+    """
+    found: list[list[Span]] = [[] for _ in range(rows)]
+    for span in stable:
+        grid = _grid(span, reach)
+        table = measure(grid)
+        for _ in range(_ZOOMS):
+            fresh = _near_misses(grid, table)
+            if not fresh.size:
+                break
+            grid, table = _merged(grid, table, fresh, measure(fresh))
+        for row, spans in enumerate(_closed_in(measure, grid, table, span, tight)):
+            found[row] += spans
+    return [joined(spans) for spans in found]
+
+
+def _grid(span: Span, reach: float) -> FloatArray:
+    low, high = span
+    high = min(high, max(reach, 2.0 * low))
+    top = high * (1.0 - _MARGIN) if np.isfinite(high) else max(1.0, low) * _DECADES
+    bottom = low * (1.0 + _MARGIN) if low > 0.0 else min(top, 1.0) / _DECADES
+    grid = np.geomspace(bottom, top, _POINTS)
+    return np.unique(np.append(grid, 1.0)) if bottom < 1.0 < top else grid
+
+
+def _near_misses(grid: FloatArray, table: FloatArray) -> FloatArray:
+    """Points round every turning point of a row that comes near to its bound without crossing it."""
+    inner, before, after = table[:, 1:-1], table[:, :-2], table[:, 2:]
+    with np.errstate(invalid="ignore"):
+        dips = (inner > 0.0) & (inner <= before) & (inner <= after) & (inner < _CLOSE)
+        tops = (inner <= 0.0) & (inner >= before) & (inner >= after) & (inner > -_CLOSE)
+        flat = (before == inner) & (after == inner)
+    places = np.unique(np.nonzero((dips | tops) & ~flat)[1]) + 1
+    places = places[grid[places + 1] - grid[places - 1] > 1e-7 * grid[places]]
+    steps = np.linspace(0.0, 1.0, _INSIDE + 2)[1:-1]
+    parts = [grid[a] + steps * (grid[b] - grid[a]) for i in places for a, b in ((i - 1, i), (i, i + 1))]
+    return np.unique(np.concatenate(parts)) if parts else np.empty(0)
+
+
+def _merged(
+    grid: FloatArray, table: FloatArray, fresh: FloatArray, values: FloatArray
+) -> tuple[FloatArray, FloatArray]:
+    every = np.concatenate([grid, fresh])
+    order = np.argsort(every, kind="stable")
+    return every[order], np.concatenate([table, values], axis=1)[:, order]
+
+
+def _closed_in(measure: Measure, grid: FloatArray, table: FloatArray, span: Span, tight: float) -> list[list[Span]]:
+    holds = table <= 0.0
+    row, place = np.nonzero(holds[:, 1:] != holds[:, :-1])
+    ends = table[row, place], table[row, place + 1]
+    edges = _roots(measure, row, (grid[place], grid[place + 1]), ends, tight)
+    sets = []
+    for i in range(len(table)):
+        bounds = [float(edge) for edge in edges[row == i]]
+        bounds = [span[0], *bounds] if holds[i, 0] else bounds
+        bounds = [*bounds, span[1]] if holds[i, -1] else bounds
+        sets.append(list(zip(bounds[::2], bounds[1::2], strict=True)))
+    return sets
+
+
+def _roots(
+    measure: Measure,
+    row: NDArray[np.int64],
+    bracket: tuple[FloatArray, FloatArray],
+    ends: tuple[FloatArray, FloatArray],
+    tight: float,
+) -> FloatArray:
+    """Edges of all rows at once, by false position with halved ends (Illinois) and a bisection at every third turn.
+
+    Halving the interval keeps a measure that jumps in check, too.
+    """
+    a, b = bracket
+    fa, fb = (np.clip(end, -1e3, 1e3) for end in ends)
+    side = np.zeros(a.size)
+    for turn in range(_ROUNDS):
+        open_ = np.flatnonzero(b - a > tight * b)
+        if not open_.size:
+            break
+        x = 0.5 * (a + b)
+        if turn % 3 != 2:
+            with np.errstate(all="ignore"):
+                guess = (a * fb - b * fa) / (fb - fa)
+            inset = 0.02 * tight * b
+            guess = np.clip(guess, a + inset, b - inset)
+            x = np.where(np.isfinite(guess), guess, x)
+        f = np.zeros(a.size)
+        f[open_] = np.clip(measure(x[open_])[row[open_], np.arange(open_.size)], -1e3, 1e3)
+        left = (f <= 0.0) == (fa <= 0.0)
+        again = np.where(left, 1.0, -1.0)
+        moved = np.isin(np.arange(a.size), open_)
+        fb = np.where(moved & left & (side == again), 0.5 * fb, fb)
+        fa = np.where(moved & ~left & (side == again), 0.5 * fa, fa)
+        a, fa = np.where(moved & left, x, a), np.where(moved & left, f, fa)
+        b, fb = np.where(moved & ~left, x, b), np.where(moved & ~left, f, fb)
+        side = np.where(moved, again, side)
+    return 0.5 * (a + b)
