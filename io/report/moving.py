@@ -61,8 +61,8 @@ def _guides(sweep: GainSweep) -> dict[str, str]:
             "page up and down by ten, home and end to the ends. The zeros stay, only K moves; the dotted line is the "
             "chosen K. Rows are filled where a requirement holds. On each row the bead shows the slack of the fitted "
             "plant: the bound is the upright line, room is to its right; the bar behind it holds 95 % of "
-            f"{sweep.plants} plausible plants, and the figure is the worse of its end and the bead. A hollow bead "
-            "misses its bound."
+            f"{sweep.plants} plausible plants (at the chosen K: of all that the gains were checked on), and the figure "
+            "is the worse of its end and the bead. A hollow bead misses its bound."
         ),
         "locus_guide": (
             "How to read it: filled diamonds are the closed-loop poles of the fitted plant at this K, dotted ones "
@@ -123,7 +123,7 @@ def moving_data(outcome: Outcome, fit: Fit, design: Design, sweep: GainSweep) ->
         "share": {"stable": _exact(sweep.share_stable), "meeting": _exact(sweep.share_meeting)},
         "plants": sweep.plants,
         "checked": _checked(design, situation.requirements.confidence),
-        "rows": [_row(item, dict(design.selection.rows), sweep) for item in situation.requirements.items],
+        "rows": [_row(item, design, sweep) for item in situation.requirements.items],
         "together": _pairs(design.selection.intervals),
         "plausible": _pairs(design.selection.intervals_plausible),
         "limits": _limits(outcome, design, sweep),
@@ -162,9 +162,10 @@ def _pairs(intervals: Iterable[GainInterval]) -> list[list[float | None]]:
     return [[low, high] for low, high in intervals]
 
 
-def _row(item: Requirement, rows: dict[str, tuple[GainInterval, ...]], sweep: GainSweep) -> dict[str, Any]:
+def _row(item: Requirement, design: Design, sweep: GainSweep) -> dict[str, Any]:
     nothing = np.full(sweep.gains.size, np.nan)
-    band = sweep.bands.get(item.name, Band(nothing, nothing))
+    band = _with_checked(sweep.bands.get(item.name, Band(nothing, nothing)), item, design, sweep.chosen)
+    rows = dict(design.selection.rows)
     return {
         "name": item.name,
         "said": words.in_words(item),
@@ -182,6 +183,16 @@ def _row(item: Requirement, rows: dict[str, tuple[GainInterval, ...]], sweep: Ga
     }
 
 
+def _with_checked(band: Band, item: Requirement, design: Design, chosen: int) -> Band:
+    """At the chosen K the band of the many plants that the printed gains were checked on, as the table has it."""
+    judged = next((each for each in design.judged if each.requirement == item and not each.floor), None)
+    if judged is None or not design.all_stable:
+        return band
+    low, high = band.low.copy(), band.high.copy()
+    low[chosen], high[chosen] = (math.inf if end is None else end for end in (judged.low, judged.high))
+    return Band(low, high)
+
+
 def _limits(outcome: Outcome, design: Design, sweep: GainSweep) -> list[dict[str, Any]]:
     rows = []
     for row in headrooms(outcome):
@@ -190,9 +201,18 @@ def _limits(outcome: Outcome, design: Design, sweep: GainSweep) -> list[dict[str
             continue
         rows.append({
             "name": row.name, "role": row.role, "unit": row.unit, "start": row.start, "limit": row.limit,
-            "worst": None if worst is None else _short(worst),
+            "worst": None if worst is None else _short(_with_worst(worst, row.worst, sweep.chosen)),
         })  # fmt: skip
     return rows
+
+
+def _with_worst(worst: FloatArray, checked: float | None, chosen: int) -> FloatArray:
+    """The same for a limit."""
+    if checked is None or not math.isfinite(checked):
+        return worst
+    found = worst.copy()
+    found[chosen] = checked
+    return found
 
 
 def _locus(outcome: Outcome, fit: Fit, design: Design, sweep: GainSweep) -> dict[str, Any]:

@@ -6,7 +6,7 @@ function layout(wide) {
   const gauge = narrow ? 70 : 96;
   const text = narrow ? 0 : 58;
   return {
-    narrow, left, gauge, row: narrow ? 42 : 27, top: 40, wide: wide - left - gauge - text - 26,
+    narrow, left, gauge, row: narrow ? 35 : 27, top: 40, wide: wide - left - gauge - text - 26,
     gaugeLeft: wide - gauge - text - 6, text: wide - 2, lift: narrow ? 9 : 0,
   };
 }

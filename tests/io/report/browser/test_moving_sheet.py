@@ -250,3 +250,13 @@ def test_each_picture_names_its_quantities_with_units(opened, released):
     assert count == 6  # one a requirement of the made-up job
     assert page.run("return document.querySelectorAll('.drag .many').length") == 6
     assert page.run("return document.querySelectorAll('[data-part=locus] .pole').length") >= 4
+
+
+def test_at_the_chosen_gain_the_sheet_says_what_the_table_says(made, released):
+    """Bands and worst cases there are those of all plants that the printed gains were checked on."""
+    data = data_of(released)
+    i = data["chosen"]
+    for row, judged in zip(data["rows"], made.design.judged, strict=False):
+        assert (row["low"][i], row["high"][i]) == pytest.approx((judged.low, judged.high)), row["name"]
+    worst = {each.name: each.predicted_worst for each in made.design.limits}
+    assert {limit["name"]: limit["worst"][i] for limit in data["limits"]} == pytest.approx(worst)
