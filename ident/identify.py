@@ -18,8 +18,8 @@ from .whiten import WHITE, Colour
 _TIED = 0.03
 # Noise with more memory than this is a wandering level to anybody who looks at the record.
 _DRIFTING = 0.995
-_DRAWS = 1400
-_PLANTS = 1280
+_DRAWS = 1100
+_PLANTS = 1100
 # A tied structure is drawn more thinly; its draws stand several times where its share asks for more.
 _TIED_DRAWS = 192
 

@@ -10,11 +10,12 @@ from scipy.optimize import minimize
 
 from .run import FloatArray
 from .wander import Whitener
-from .whiten import Colour
+from .whiten import Colour, log_determinant, whiten
 
 _RHO_MOST = 0.9995
 _FIRST_RHO = (0.0, 0.4, 0.7, 0.85, 0.93, 0.97, 0.99)
-_FIRST_WANDER = (-1.2, 0.0, 1.2)
+# Logarithms of the slow waves' size over the fast noise's standard deviation.
+_SIZES = np.linspace(-3.0, 4.0, 22)
 # Twice the log likelihood that a wandering level must win: two would be even odds for one more parameter.
 _WORTH = 2.0
 _FIRST_SHARE = (0.0, 0.5, 0.8, 0.95)
@@ -80,15 +81,47 @@ def _with_wander(
     """The colour with a wandering level beside it, if that is enough more likely than the one without."""
 
     def loss(point: FloatArray) -> float:
-        return restricted_loss(both, stretches, _wandering(point), waves)
+        return best_wander(both, stretches, waves, _colour(point))[0]
 
-    firsts = [np.array([*point, size]) for point in (plain, *others) for size in _FIRST_WANDER]
+    firsts = [plain, *others]
     values = [loss(point) for point in firsts]
     if min(values) > plain_loss + 1.0:
         return _colour(plain)
-    best = firsts[int(np.argmin(values))]
-    point, least = _lowest(loss, best, np.array([0.12, 0.1, 0.5]), most=110)
-    return _wandering(point) if least < plain_loss - _WORTH else _colour(plain)
+    point, least = _lowest(loss, firsts[int(np.argmin(values))], np.array([0.12, 0.1]), most=60)
+    if least >= plain_loss - _WORTH:
+        return _colour(plain)
+    fast = _colour(point)
+    return replace(fast, wander=best_wander(both, stretches, waves, fast)[1])
+
+
+def best_wander(both: FloatArray, stretches: list[slice], waves: FloatArray, fast: Colour) -> tuple[float, float]:
+    """Least restricted loss over the size of a wandering level beside this fast noise, and that size.
+
+    One whitening serves all sizes: what the waves take from the inner products of the columns depends on their size
+    only through the eigenvalues of the waves' own inner products.
+
+    Returns
+    -------
+    loss, wander
+        As `restricted_loss` has it at `replace(fast, wander=wander)`.
+    """
+    white = whiten(np.column_stack([both, waves]), stretches, fast)
+    m = both.shape[1]
+    gram = white.T @ white
+    own, vectors = np.linalg.eigh(gram[m:, m:])
+    shared = gram[:m, m:] @ vectors
+    least, best = np.inf, 0.0
+    for size in _SIZES:
+        wander = float(np.exp(2 * size)) * fast.variance_ratio
+        stiff = own + 1.0 / wander
+        diagonal = _diagonal(gram[:m, :m] - (shared / stiff) @ shared.T)
+        if diagonal is None:
+            continue
+        determinant = float(np.sum(np.log(stiff)) + len(stiff) * np.log(wander)) + log_determinant(stretches, fast)
+        found = _loss(diagonal, len(both), determinant)
+        if found < least:
+            least, best = found, wander
+    return least, best
 
 
 def _colour(point: FloatArray) -> Colour:
@@ -97,32 +130,30 @@ def _colour(point: FloatArray) -> Colour:
     return Colour(rho, -share * rho)
 
 
-def _wandering(point: FloatArray) -> Colour:
-    """point[2]: logarithm of the waves' size over the fast noise's standard deviation."""
-    fast = _colour(point)
-    size = float(np.exp(np.clip(point[2], -4.0, 6.0)))
-    return replace(fast, wander=size * size * fast.variance_ratio)
-
-
 def restricted_loss(both: FloatArray, stretches: list[slice], colour: Colour, waves: FloatArray | None = None) -> float:
     """-2 log restricted likelihood, up to a constant, of the last column given the others; the size is profiled out."""
     whitener = Whitener(stretches, colour, np.zeros((len(both), 0)) if waves is None else waves)
-    diagonal = _triangle(whitener.apply(both))
-    q = both.shape[1] - 1
-    usable = diagonal[:q][diagonal[:q] > 1e-12]
-    freedom = len(both) - len(usable)
-    size = max(diagonal[q] ** 2, 1e-300)
-    return freedom * float(np.log(size)) + 2 * float(np.sum(np.log(usable))) + whitener.log_determinant
+    white = whitener.apply(both)
+    diagonal = _diagonal(white.T @ white)
+    if diagonal is None:
+        diagonal = np.abs(np.diag(np.linalg.qr(white, mode="r")))
+    return _loss(diagonal, len(both), whitener.log_determinant)
 
 
-def _triangle(white: FloatArray) -> FloatArray:
-    """Diagonal of the triangular factor: by Cholesky where that is safe, else by QR."""
-    gram = white.T @ white
+def _loss(diagonal: FloatArray, n: int, determinant: float) -> float:
+    """The loss from the diagonal of the triangular factor of the whitened columns, the residual last."""
+    usable = diagonal[:-1][diagonal[:-1] > 1e-12]
+    size = max(float(diagonal[-1]) ** 2, 1e-300)
+    return (n - len(usable)) * float(np.log(size)) + 2 * float(np.sum(np.log(usable))) + determinant
+
+
+def _diagonal(gram: FloatArray) -> FloatArray | None:
+    """Diagonal of the triangular factor by Cholesky; None where that is not safe."""
     scale = np.sqrt(np.maximum(np.diag(gram), 1e-300))
     firm, rank = lapack.dpotrf(gram / np.outer(scale, scale), lower=1)
-    if rank == 0 and np.min(np.diag(firm)) > 1e-3:
-        return np.asarray(np.diag(firm) * scale)
-    return np.asarray(np.abs(np.diag(np.linalg.qr(white, mode="r"))))
+    if rank != 0 or np.min(np.diag(firm)) <= 1e-3:
+        return None
+    return np.asarray(np.diag(firm) * scale)
 
 
 def effective_samples(n: int, colour: Colour) -> float:
