@@ -17,7 +17,7 @@ from .start import first_guesses
 from .whiten import WHITE, Colour
 
 _DRAWS = 1024
-_JOINT = 400
+_JOINT = 250
 # A residual above this multiple of the fitted noise: the earlier parameters may be too far off to start from.
 _SURPRISED = 1.3
 
@@ -33,11 +33,17 @@ class Change:
         New over fitted; for the dead time 1 + difference over (fitted dead time + slowest time of the plant).
     score : float
         Difference over its standard error.
+    difference : float
+        As compared: of logarithms; of the dead time in s.
+    own_error : float
+        What the new record alone leaves open of it.
     """
 
     name: str
     ratio: float
     score: float
+    difference: float = 0.0
+    own_error: float = 0.0
 
 
 @dataclass(frozen=True, eq=False)
@@ -119,7 +125,7 @@ def _compared(fit: Fit, drawn: Drawn, colour: Colour, log_likelihood: FloatArray
     return Confronted(
         plausible=plausible_plants([drawn], np.ones(1), fit.operating_response, _DRAWS),
         p_value=p_value,
-        changes=_changes(fit, drawn, difference, np.sqrt(np.diag(spread))),
+        changes=_changes(fit, drawn, difference, np.sqrt(np.diag(spread)), np.sqrt(np.diag(_robust_covariance(after)))),
         noise_std=_own_residual(drawn.fitted),
         log_likelihood=log_likelihood,
     )
@@ -148,17 +154,18 @@ def _robust_covariance(draws: FloatArray) -> FloatArray:
     return np.atleast_2d(np.cov(np.clip(draws, low, high).T)) + 1e-18 * np.eye(draws.shape[1])
 
 
-def _changes(fit: Fit, drawn: Drawn, difference: FloatArray, errors: FloatArray) -> tuple[Change, ...]:
+def _changes(fit: Fit, drawn: Drawn, difference: FloatArray, errors: FloatArray, own: FloatArray) -> tuple[Change, ...]:
     structure = next(s for s in CATALOGUE if s.name == fit.structure)
     shapes = len(difference) - 2
     slowest = float(np.max(1.0 / np.maximum(np.abs(fit.plant.poles[fit.plant.poles != 0]), 1e-300), initial=0.0))
     scale = fit.plant.dead_time + slowest
     ratio = float(np.median(drawn.draws[:, shapes + 1]) / np.median(fit.draws[:, -1]))
-    out = [Change("gain", ratio, float(difference[-1] / errors[-1]))]
+    scores, moved, alone = (difference / errors).tolist(), difference.tolist(), own.tolist()
+    out = [Change("gain", ratio, scores[-1], moved[-1], alone[-1])]
     lag = 1.0 + float(difference[shapes]) / scale if scale > 0 else 1.0
-    out.append(Change("dead time", lag, float(difference[shapes] / errors[shapes])))
+    out.append(Change("dead time", lag, scores[shapes], moved[shapes], alone[shapes]))
     for i, shape in enumerate(structure.shapes):
-        out.append(Change(shape.name, float(np.exp(difference[i])), float(difference[i] / errors[i])))
+        out.append(Change(shape.name, float(np.exp(difference[i])), scores[i], moved[i], alone[i]))
     return tuple(out)
 
 

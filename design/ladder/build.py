@@ -91,7 +91,8 @@ def build_ladder(
     if not steps:
         found = climb(gains, checked, everyone, situation)
         if isinstance(found, float):
-            return Ladder(opening, (), NOT_FOUND.format(share=100.0 * found), noise_std=noise_std)
+            said = NOT_FOUND.format(share=100.0 * found)
+            return Ladder(opening, (), said, cautions=(said,), noise_std=noise_std)
         steps, origin = found, "nothing"
     rungs = _rungs(steps, shown, situation, noise_std)
     cautions = _cautions(everyone, gains, opening is None or opening.visible)

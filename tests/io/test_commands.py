@@ -61,27 +61,12 @@ def test_help_loads_nothing_heavy() -> None:
     assert run(script=script).stdout.splitlines()[-1] == "[]"
 
 
-NOT_YET = ["recheck"]
-
-
-def test_help_names_every_command_and_says_which_are_still_to_come() -> None:
-    """Seven promised names; those that are not there yet say so."""
+def test_help_names_every_command() -> None:
+    """Seven promised names, none of them an empty promise."""
     shown = run("--help").stdout
     for name in ("process", "inspect", "retune", "recheck", "draft", "watch", "batch"):
         assert f"\n  {name} " in shown
-    assert shown.count("(not yet)") == len(NOT_YET)
-
-
-@pytest.mark.parametrize("name", NOT_YET)
-def test_a_command_that_is_not_there_yet_says_so_and_ends_with_2(name: str, capsys) -> None:
-    """Whatever its arguments: on the error stream, with what to do instead; and its own help says it too."""
-    assert main([name, "something", "--before", "gains.json"]) == 2
-    told = capsys.readouterr()
-    assert told.out == ""
-    assert "not there yet" in told.err
-    assert "next:" in told.err
-    assert main([name, "--help"]) == 0
-    assert "Not yet" in capsys.readouterr().out
+    assert "(not yet)" not in shown
 
 
 @pytest.mark.parametrize("arguments", [["proces", "x"], ["process"], ["process", "a", "--bad"], ["--bad"], ["inspect"]])

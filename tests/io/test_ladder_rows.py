@@ -67,7 +67,7 @@ def test_each_rung_says_when_to_stop_and_that_zero_command_may_not_be_safe(climb
 
 def test_a_refused_ladder_holds_the_gains_in_capitals(made) -> None:
     """The reason stands in the sheet as it was said, and no rung does."""
-    ladder = Ladder(None, (), "NO GAIN LADDER: LESS GAIN IS NOT SAFER")
+    ladder = Ladder(None, (), "NO GAIN LADDER: LESS GAIN IS NOT SAFER", True)
     reasons = reasons_to_hold(made.rig, made.records, made.design, made.closing, (), ladder)
     assert reasons == ("NO GAIN LADDER: LESS GAIN IS NOT SAFER",)
     outcome = replace(made.outcome(reasons), ladder=ladder)
