@@ -11,7 +11,7 @@ import click
 from ...ident.errors import GainwrightError, RecordError, RequestError
 
 _THREADS = ("OPENBLAS_NUM_THREADS", "OMP_NUM_THREADS", "MKL_NUM_THREADS", "VECLIB_MAXIMUM_THREADS")
-_COMMANDS = ("process", "inspect", "retune", "recheck", "draft", "watch", "batch")
+_COMMANDS = ("process", "inspect", "retune", "recheck", "draft", "watch", "batch", "schema")
 
 RELEASED, FAULT, WRONG_CALL, HELD, BAD_RECORD, INTERRUPTED = 0, 1, 2, 3, 4, 130
 

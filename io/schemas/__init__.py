@@ -1,0 +1,1 @@
+"""JSON Schemas of the files that other programs read and write: the rig file and the gain sheet."""
