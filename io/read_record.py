@@ -18,6 +18,7 @@ from .readers.port import Channel, Hints, Log
 from .readers.registry import reader_of
 from .record import Finding, Record
 from .rigfile.rig import Rig, RunSpec, Signal
+from .unit_slips import unit_slips
 
 _LARGEST_SECONDS = 1e11  # the year 5138 as a stamp in s: a larger one is in a smaller unit
 
@@ -77,6 +78,7 @@ def read_record(spec: RunSpec, rig: Rig) -> Record:
     _require_samples(spec, windowed, samples)
     looked = _looked(spec, rig, windowed, before)
     findings += [_finding(seen) for seen in looked.seen]
+    findings += unit_slips(spec, rig, windowed.time, windowed.response)
     _raise_stops(spec, findings)
     run = Run(
         label=spec.shown,
@@ -291,9 +293,12 @@ def _looked(spec: RunSpec, rig: Rig, samples: _Samples, before: float | None) ->
         response_range=ranges["response"],
         command_range=ranges["command"],
     )
-    if spec.use == "fit":
-        return looked
-    return Looked(looked.response, tuple(_softened(seen) for seen in looked.seen))
+    seen = looked.seen if spec.use == "fit" else tuple(_softened(each) for each in looked.seen)
+    if spec.loop == "closed":  # there the response moves the command, and rightly
+        seen = tuple(
+            each for each in seen if each.kind not in {"command and response swapped", "actuator did not follow"}
+        )
+    return Looked(looked.response, seen)
 
 
 def _softened(seen: Seen) -> Seen:

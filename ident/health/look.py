@@ -8,11 +8,16 @@ from ..run import FloatArray
 from .clipping import see_clipping, see_declared_clipping
 from .clock import see_gaps
 from .dead_response import see_dead_response
+from .drift import see_drift
 from .idle_command import see_idle_command
 from .lost import see_loss, see_spikes
+from .sampling import see_slow_sampling, see_weak_excitation
 from .seen import Seen
 from .shape import see_coarse, see_early_end, see_few_samples, see_unsettled_start
 from .stuck import see_stuck
+from .swapped import see_swapped
+from .tones import see_tones
+from .unanswered import see_unanswered
 
 
 @dataclass(frozen=True, eq=False)
@@ -61,6 +66,11 @@ def look_at(
         return Looked(response, few)
     spikes = see_spikes(time, command, response, response_unit)
     mended = np.where(spikes.mask, np.nan, response)
+    flat = (
+        *_clipping(time, command, mended, response_unit, response_range),
+        *see_stuck(time, command, mended, response_unit),
+    )
+    dead = see_dead_response(time, command, mended, response_unit)
     return Looked(
         mended,
         (
@@ -69,14 +79,28 @@ def look_at(
             *spikes.seen,
             *see_loss(time, mended),
             *see_idle_command(time, command, before, command_unit),
-            *see_dead_response(time, command, mended, response_unit),
-            *_clipping(time, command, mended, response_unit, response_range),
-            *see_stuck(time, command, mended, response_unit),
+            *dead,
+            *flat,
             *_command_beyond(time, command, command_unit, command_range),
             *see_coarse(mended, response_unit),
             *see_unsettled_start(time, command, mended, response_unit, before),
             *see_early_end(time, command, mended, response_unit),
+            *(() if flat or dead else _relation(time, command, mended, command_unit, response_unit)),
         ),
+    )
+
+
+def _relation(
+    time: FloatArray, command: FloatArray, response: FloatArray, command_unit: str, response_unit: str
+) -> tuple[Seen, ...]:
+    """What the response makes of the command; a sensor that stands still would be blamed twice."""
+    return (
+        *see_swapped(time, command, response),
+        *see_unanswered(time, command, response, command_unit),
+        *see_drift(time, command, response, response_unit),
+        *see_weak_excitation(time, command, response, response_unit),
+        *see_slow_sampling(time, command, response),
+        *see_tones(time, command, response, response_unit),
     )
 
 

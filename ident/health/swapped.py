@@ -7,7 +7,7 @@ from .seen import Seen
 
 MOST_SAMPLES = 4000  # longer records are averaged in blocks
 FEWEST = 100
-FORETOLD = 0.05  # log of the variance ratio, a sample
+FORETOLD = 0.07  # log of the variance ratio, a sample
 NOT_FORETOLD = 0.02
 FLOOR = 1e-4  # of the standard deviation: what is smaller is rounding
 
