@@ -80,10 +80,11 @@ def mend_clock(stamps: FloatArray, rows: FloatArray) -> Clock:
 
 def _without_zero_tail(keep: IndexArray, stamps: FloatArray, rows: FloatArray, seen: list[Seen]) -> IndexArray:
     """A file that was laid out in advance and not filled ends in zeros."""
-    empty = (stamps[keep] == 0.0) & np.all(rows[keep] == 0.0, axis=1)
+    last = stamps[keep[-1]]  # zero in the file, below zero once the stamps count from the first one
+    empty = (stamps[keep] == last) & np.all(rows[keep] == 0.0, axis=1)
     filled = np.flatnonzero(~empty)
     tail = len(keep) - 1 - (filled[-1] if len(filled) else 0)
-    if tail > 0 and stamps[keep[0]] <= stamps[keep[len(keep) - 1 - tail]]:
+    if 0 < tail < len(keep) and last <= stamps[keep[0]] <= stamps[keep[len(keep) - 1 - tail]]:
         seen.append(
             Seen(
                 "zeros at the end",
