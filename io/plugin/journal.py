@@ -109,7 +109,7 @@ class Journal:
 
     def find(self, key: str) -> Entry | None:
         """The job of this key."""
-        found = [entry for entry in self.entries() if entry.key == key]
+        found = self._entries("where key = ?", (key,))
         return found[0] if found else None
 
     def done(self, key: str) -> Entry | None:
@@ -119,7 +119,11 @@ class Journal:
 
     def entries(self) -> tuple[Entry, ...]:
         """Every job, in the order in which they first began."""
-        rows = self._run("select key, label, folder, attempts, code, status, said from jobs order by rowid")
+        return self._entries("")
+
+    def _entries(self, which: str, values: tuple[object, ...] = ()) -> tuple[Entry, ...]:
+        words = f"select key, label, folder, attempts, code, status, said from jobs {which} order by rowid"
+        rows = self._run(words, values)
         return tuple(
             Entry(key, label, folder, attempts, code, status or "", said or "")
             for key, label, folder, attempts, code, status, said in rows
