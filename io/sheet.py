@@ -21,6 +21,7 @@ from .parameter_unit import unit_of
 from .provenance import window_of
 from .record import Record
 from .requirement_row import requirement_row
+from .validity import validity_row
 
 SCHEMA = "gainwright.gain-sheet/1"
 NO_LADDER = "no gain ladder was made: the first run on the rig starts at the responsible person's own discretion"
@@ -72,6 +73,7 @@ def sheet_of(outcome: Outcome) -> dict[str, Any]:
         "change": change_row(outcome.retuned),
         "closing": _closing(outcome),
         "asked": asked_of(outcome.rig),
+        "validity": validity_row(outcome),
         "provenance": outcome.provenance,
     }
     if not released:

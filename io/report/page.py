@@ -18,6 +18,7 @@ from . import pictures, tables, words
 from .changed import changed_of
 from .ladder import ladder_of
 from .moving import moving_part
+from .paper import paper_of
 
 
 def report_html(outcome: Outcome) -> str:
@@ -84,6 +85,7 @@ def _top(outcome: Outcome) -> dict[str, Any]:
         "cautions": tuple(each for each in outcome.cautions if each not in FIRST_RUN),
         "usual": FIRST_RUN,
         "changed": changed_of(outcome),
+        "paper": paper_of(outcome),
     }
     if outcome.design is not None:
         page.update(_designed(outcome, outcome.design))
