@@ -107,9 +107,8 @@ def sweep_gains(
 def _fitted_bench(nominal: Plant, plausible: Plausible, situation: Situation) -> Bench:
     horizon = first_horizon(nominal, situation)
     fine = horizon <= _FINE * situation.setting.update_interval
-    alone = with_nominal(nominal, Plausible((), np.zeros(0), np.zeros(0)), situation)
-    friction = np.array([np.median(plausible.stiction)]) if plausible.stiction.size else np.zeros(1)
-    return bench_of(Plausible(alone.plants, alone.operating_command, friction), situation, horizon, stand_in=not fine)
+    alone = with_nominal(nominal, plausible, situation).take([0])
+    return bench_of(alone, situation, horizon, stand_in=not fine)
 
 
 def _poles(gains: Gains, plant: Plant, situation: Situation, grid: FloatArray) -> tuple[ComplexArray, ...]:

@@ -162,7 +162,7 @@ def margins_picture(outcome: Outcome, fit: Fit, design: Design) -> Picture | Non
     from .margins import margins
 
     setting = outcome.rig.setting
-    if getattr(setting, "continuous", False):
+    if setting.continuous:
         return None
     figure = margins(loop_response(design.gains, fit.plant, fit.plausible, setting))
     return Picture("margins", "Size, angle and sensitivity of the loop over frequency, with the margins", figure)

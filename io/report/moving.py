@@ -36,7 +36,7 @@ def moving_part(outcome: Outcome) -> dict[str, Any] | None:
     """What the page's template needs; None without a fitted plant, a design and a sampled law."""
     from markupsafe import Markup
 
-    if outcome.fit is None or outcome.design is None or getattr(outcome.rig.setting, "continuous", False):
+    if outcome.fit is None or outcome.design is None or outcome.rig.setting.continuous:
         return None
     sweep = sweep_of(outcome, outcome.fit, outcome.design)
     data, text = moving_data(outcome, outcome.fit, outcome.design, sweep), script()
@@ -55,6 +55,11 @@ def _guides(sweep: GainSweep) -> dict[str, str]:
         f" The band is run with an update interval of {words.every(sweep.band_interval)} and the same total delay, to "
         "keep the sheet small."
     )  # fmt: skip
+    held = (
+        " The filled rows leave dry friction out; beads, bars and the pictures below count it."
+        if sweep.fitted.running.drives is not None
+        else ""
+    )
     return {
         "ribbon_guide": (
             "How to use it: drag the handle, or click on the ribbon; with the keyboard the arrows move by one gain, "
@@ -62,7 +67,7 @@ def _guides(sweep: GainSweep) -> dict[str, str]:
             "chosen K. Rows are filled where a requirement holds. On each row the bead shows the slack of the fitted "
             "plant: the bound is the upright line, room is to its right; the bar behind it holds 95 % of "
             f"{sweep.plants} plausible plants (at the chosen K: of all that the gains were checked on), and the figure "
-            "is the worse of its end and the bead. A hollow bead misses its bound."
+            f"is the worse of its end and the bead. A hollow bead misses its bound.{held}"
         ),
         "locus_guide": (
             "How to read it: filled diamonds are the closed-loop poles of the fitted plant at this K, dotted ones "

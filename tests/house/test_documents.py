@@ -1,5 +1,6 @@
 """What README.md and DEVELOPERS.md show is true: commands, rig file, examples."""
 
+import functools
 import re
 import shutil
 import subprocess
@@ -7,6 +8,7 @@ import sys
 from pathlib import Path
 
 import pytest
+from gainwright.io import job
 from gainwright.io.commands.main import main
 from gainwright.io.rigfile.load import load_rig
 
@@ -132,17 +134,22 @@ def test_the_example_structure_is_fitted(developers: str) -> None:
 def test_the_readme_pictures_are_made_by_the_block_that_says_so(
     developers: str, readme: str, checkout: Path, tmp_path: Path, monkeypatch: pytest.MonkeyPatch
 ) -> None:
-    """Run beside a copy of the sample, it makes every picture that the README shows, as SVG with its axes in it."""
+    """Beside a copy of the sample it draws every SVG of the README; the README's own block draws all, from one job."""
     (example,) = fenced(developers, "<!-- pictures -->")
+    (notebook,) = fenced(readme, "<!-- notebook -->")
     shutil.copytree(checkout / "sample_runs" / "paddle", tmp_path / "sample_runs" / "paddle")
     monkeypatch.chdir(tmp_path)
+    monkeypatch.setattr(job, "process_rig", functools.cache(job.process_rig))
     exec(compile(example, "DEVELOPERS.md", "exec"), {})  # noqa: S102  (the document's own example)
-    shown = re.findall(r"!\[[^\]]*\]\(([^)]+)\)", readme)
-    assert shown
+    shown = [path for path in re.findall(r"!\[[^\]]*\]\(([^)]+)\)", readme) if path.endswith(".svg")]
+    assert len(shown) == 2
     for path in shown:
         picture = (tmp_path / path).read_text("utf-8")
         assert picture.startswith("<?xml")
         assert picture.count("<path") > 5
+    exec(compile(notebook, "README.md", "exec"), {})  # noqa: S102  (the document's own example)
+    drawn = {path.stem for path in tmp_path.glob("*.png")}
+    assert {"step", "ribbon", "headroom", "ladder", "log-0", "locus", "margins", "held-out-0"} <= drawn
 
 
 def test_the_block_finder_finds_marked_blocks_only() -> None:
