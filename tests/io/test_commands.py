@@ -13,9 +13,11 @@ from gainwright.io.commands.main import main
 
 HEAVY = ("numpy", "scipy", "pandas", "lmfit", "h5py", "matplotlib", "pydantic", "pint", "rich", "jinja2")
 # A stand-in for the job: the command line is under test here, and not what it calls.
+# A shell that starts the tests in the background hands its children an ignored Control-C: the job takes it back.
 STAND_IN = """
-import sys, time
+import signal, sys, time
 import types
+signal.signal(signal.SIGINT, signal.default_int_handler)
 from gainwright.io.commands.main import main
 def process_rig(rig, progress):
     progress("pretending")

@@ -203,8 +203,10 @@ def test_a_run_that_was_stopped_early_is_not_fitted_by_later_jobs_either(rig: Pa
     assert job.left_out == (rig.parent / "runs" / "step_1.csv",)
 
 
+# A shell that starts the tests in the background hands its children an ignored Control-C: the watcher takes it back.
 SCRIPT = """
-import sys
+import signal, sys
+signal.signal(signal.SIGINT, signal.default_int_handler)
 sys.path.insert(0, {here!r})
 import gainwright.io.plugin.watching as watching
 from stand_in import quick_work
@@ -229,7 +231,10 @@ def test_a_watch_ends_by_its_signals(rig: Path, number: int, code: int) -> None:
         assert watcher.stdout.readline().startswith("a.csv: held")
         time.sleep(0.2)
         watcher.send_signal(number)
-        watcher.communicate(timeout=30)
+        try:
+            watcher.communicate(timeout=30)
+        finally:
+            watcher.kill()
     assert watcher.returncode == code
 
 
