@@ -1,8 +1,11 @@
 """A job with its results on disk: the output folder is held from start to end, and filled whole or not at all."""
 
+import hashlib
+import json
 from collections.abc import Callable, Mapping
+from dataclasses import replace
 from pathlib import Path
-from typing import TYPE_CHECKING
+from typing import TYPE_CHECKING, Any
 
 from ..ident.errors import RequestError
 from .outcome import Outcome
@@ -11,6 +14,9 @@ from .write_whole import SHEET, OutputFolder
 
 if TYPE_CHECKING:
     from .rigfile.rig import Rig
+
+
+SUPERSEDED = "gains.superseded.json"
 
 
 def _nothing(outcome: Outcome) -> Mapping[str, bytes]:
@@ -63,10 +69,24 @@ def deliver(
         from .job import process_rig  # imported late: an output folder that can't be used is said at once
 
         outcome = process_rig(rig_path, progress) if change is None else process_rig(rig_path, progress, change)
-        outcome = finish(outcome, progress)
+        outcome = _with_trail(finish(outcome, progress), folder / SUPERSEDED)
         progress("writing the results")
         output.write({**more(outcome), **_contents(outcome, with_report)})
     return outcome
+
+
+def _with_trail(outcome: Outcome, earlier: Path) -> Outcome:
+    """The sheet that this one replaces, in its provenance, unless the job knows better."""
+    if "replaces" in outcome.provenance or not earlier.is_file():
+        return outcome
+    content = earlier.read_bytes()
+    trail: dict[str, Any] = {"file": earlier.name, "sha256": hashlib.sha256(content).hexdigest()}
+    try:
+        sheet = json.loads(content)
+        trail |= {"created": sheet["provenance"]["created"], "status": sheet["status"]}
+    except (ValueError, KeyError, TypeError):
+        pass  # the hash alone still finds it
+    return replace(outcome, provenance={**outcome.provenance, "replaces": trail})
 
 
 def _contents(outcome: Outcome, with_report: bool) -> dict[str, bytes]:

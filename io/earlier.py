@@ -110,9 +110,19 @@ def law_of_row(row: dict[str, Any] | None) -> Law | None:
     """The difference equation; None for a continuous controller."""
     if row is None:
         return None
-    coefficients = (tuple(float(c) for c in row[name]) for name in ("command", "setpoint", "response", "memory"))
     clamp = row["clamp"]
-    return Law(row["update_interval"], *coefficients, Clamp(clamp["lowest"], clamp["highest"], clamp["rate"]))
+    return Law(
+        float(row["update_interval"]),
+        _coefficients(row["command"]),
+        _coefficients(row["setpoint"]),
+        _coefficients(row["response"]),
+        _coefficients(row["memory"]),
+        Clamp(clamp["lowest"], clamp["highest"], clamp["rate"]),
+    )
+
+
+def _coefficients(row: list[Any]) -> tuple[float, ...]:
+    return tuple(float(c) for c in row)
 
 
 def _known(plant: dict[str, Any]) -> Known:

@@ -107,11 +107,23 @@ def judge_rung(
     low = np.minimum(middle - _NORMAL_999 * spread, response.min(axis=1) - _NORMAL_999 * noise_std)
     high = np.maximum(middle + _NORMAL_999 * spread, response.max(axis=1) + _NORMAL_999 * noise_std)
     low, high = _loosened(low, np.minimum), _loosened(high, np.maximum)
-    shown = [np.interp(run.time - run.time[0], time, line) for line in (response[:, 0], low, high)]
-    outside = np.isfinite(run.response) & ((run.response < shown[1]) | (run.response > shown[2]))
-    advice, why = _advice(run, run.setpoint, asked, outside, shown[0], noise_std, limits)
+    predicted, lowest, highest = (np.interp(run.time - run.time[0], time, line) for line in (response[:, 0], low, high))
+    outside = np.isfinite(run.response) & ((run.response < lowest) | (run.response > highest))
+    advice, why = _advice(run, run.setpoint, asked, outside, predicted, noise_std, limits)
     share = float(np.mean(outside[run.valid])) if run.valid.any() else 1.0
-    return RungRun(run.label, run.time, run.response, run.command, run.setpoint, *shown, share, advice, why)
+    return RungRun(
+        run.label,
+        run.time,
+        run.response,
+        run.command,
+        run.setpoint,
+        predicted,
+        lowest,
+        highest,
+        share,
+        advice,
+        why,
+    )
 
 
 def _with_fitted(nominal: Plant, plausible: Plausible, command: float) -> Plausible:
@@ -157,7 +169,7 @@ def _simulated(
     change = np.inf if law.clamp.rate is None else law.clamp.rate * interval
     clamps = Clamps(low - rest.command, high - rest.command, change)
     response, _ = follow(bank, columns, goal - goal[0], clamps)
-    return time, response + rest.response + operating_response
+    return np.asarray(time, dtype=np.float64), response + rest.response + operating_response
 
 
 def _loosened(line: FloatArray, widest: np.ufunc) -> FloatArray:

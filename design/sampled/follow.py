@@ -73,7 +73,7 @@ class _Follower:
     def _smooth(self, old: FloatArray, new: FloatArray) -> FloatArray:
         out = np.einsum("ijc,jc->ic", self.step, np.vstack([self.state, old, new]))
         self.state = out[self.bank.points :]
-        return self.state[-1].copy() if self.bank.filtered else out[self.bank.points - 1].copy()
+        return np.asarray(self.state[-1] if self.bank.filtered else out[self.bank.points - 1])
 
     def _held(self, old: FloatArray, new: FloatArray) -> FloatArray:
         assert self.drives is not None
