@@ -6,9 +6,11 @@ from datetime import UTC, date, datetime
 from pathlib import Path
 from typing import Any, Literal
 
+import numpy as np
 from threadpoolctl import threadpool_limits
 
 from ..design.closing.compared import Compared
+from ..design.closing.first_move import OpeningAsked, judge_opening
 from ..design.closing.rung import RungAsked, RungRun, judge_rung
 from ..design.closing.verdict import compare
 from ..ident.confront import confront
@@ -85,19 +87,34 @@ def recheck_rung(
     """
     earlier = read_earlier(sheet)
     rows = {row["rung"]: row for row in earlier.sheet["ladder"]}
-    if number not in rows or number == 0:
+    if number not in rows:
         raise RequestError(
-            "there is no such closed-loop rung on the sheet",
+            "there is no such rung on the sheet",
             where=str(sheet),
             found=f"--rung {number}",
-            expected=f"one of {', '.join(str(each) for each in rows if each)}" if rows else "a sheet with a ladder",
-            advice="rung 0 has its loop open: look at the response by eye, as the ladder says",
+            expected=f"one of {', '.join(str(each) for each in rows)}" if rows else "a sheet with a ladder",
         )
     with threadpool_limits(limits=1):
         again = job_again(earlier)
         reader, _ = _rig_of(earlier, again, rig)
+        if number == 0:
+            asked = _opening(rows[0]["expected"], rows[0]["abort"])
+            return tuple(judge_opening(_read(path, reader, progress).run, asked) for path in runs)
         records = [_read(path, _with_setpoint(reader, setpoint), progress, rung=True) for path in runs]
         return tuple(_judge(record, rows[number], again, progress) for record in records)
+
+
+def _opening(expected: dict[str, Any], abort: dict[str, Any]) -> OpeningAsked:
+    band, start = expected["band_99_9"], expected["response_from"]["value"]
+    return OpeningAsked(
+        expected["command_to"]["value"] - expected["command_from"]["value"],
+        expected["response_moves"]["predicted"],
+        abort["moved_less_than"]["value"],
+        expected["within"]["value"],
+        np.array(band["time"]),
+        np.array(band["low"]) - start,
+        np.array(band["high"]) - start,
+    )
 
 
 def _judge(record: Record, row: dict[str, Any], again: Again, progress: Progress) -> RungRun:

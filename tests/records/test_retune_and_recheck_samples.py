@@ -10,7 +10,7 @@ import numpy as np
 import pytest
 import sample_rigs
 from gainwright.io.commands.main import main
-from true_rig import SheetController, closed_loop
+from true_rig import SheetController, closed_loop, open_loop
 
 SAMPLES = Path(__file__).resolve().parents[2] / "sample_runs"
 
@@ -169,6 +169,32 @@ def test_a_rung_that_is_not_there_and_a_log_without_setpoint_are_refused(paddle_
     """Exit code 2, in words."""
     log = rung_log(json.loads(paddle_sheet.read_text("utf-8")), 1, tmp_path, 1.0, 1.0)
     assert main(["recheck", str(paddle_sheet), str(log), "--rung", "9"]) == 2
-    assert "no such closed-loop rung" in capsys.readouterr().err
+    assert "no such rung" in capsys.readouterr().err
     assert main(["recheck", str(paddle_sheet), str(log), "--rung", "1"]) == 2
     assert "--setpoint" in capsys.readouterr().err
+
+
+def opening_log(sheet: dict, folder: Path, sign: float) -> Path:
+    """The true paddle under rung 0's move of the command; a sign of -1 stands for a sensor wired the wrong way."""
+    expected = sheet["ladder"][0]["expected"]
+    rig = sample_rigs.paddle(np.random.default_rng(9))
+    rig = replace(rig, stages=tuple(s for s in rig.stages if type(s).__name__ != "Disturbed"))
+    rest = rig.command_rest
+    size = expected["command_to"]["value"] - expected["command_from"]["value"]
+    log = open_loop(rig, [(1.0, rest + size), (1.8, rest)], 2.5, 0.005, np.random.default_rng(10))
+    lines = ["time_s,drive_V,position_mm"]
+    lines += [f"{t:.3f},{u:.4f},{150.0 + sign * (y - 150.0):.3f}" for t, u, y in zip(log.time, log.command, log.reading,
+                                                                                     strict=True)]  # fmt: skip
+    file = folder / f"opening_{sign:g}.csv"
+    file.write_text("\n".join(lines) + "\n", "utf-8")
+    return file
+
+
+def test_rung_0_says_climb_and_a_sensor_wired_the_wrong_way_says_stop(paddle_sheet, tmp_path, capsys) -> None:
+    """The open-loop move on the true rig, its water still."""
+    sheet = json.loads(paddle_sheet.read_text("utf-8"))
+    code, answer = told(capsys, paddle_sheet, opening_log(sheet, tmp_path, 1.0), "--rung", 0)
+    assert (code, answer["advice"]) == (0, "climb"), answer
+    code, answer = told(capsys, paddle_sheet, opening_log(sheet, tmp_path, -1.0), "--rung", 0)
+    assert (code, answer["advice"]) == (3, "stop")
+    assert "wiring, sign or unit" in answer["runs"][0]["why"]
