@@ -10,10 +10,12 @@ from concurrent.futures import FIRST_COMPLETED, BrokenExecutor, Executor, Future
 from functools import partial
 from multiprocessing import get_context
 
+from ...ident.errors import GainwrightError
 from .jobs import FAULT, STATUS, Done, Job, Work, do, fault_line
 from .journal import Journal
 
 MOST_DEATHS = 4  # of workers that had only this job; killed from outside is not the job's fault, so more than one
+MOST_STARTS = 50
 _PARENT_LOOKS_S = 0.2
 
 
@@ -57,7 +59,7 @@ def run_jobs(
             suspects: list[Job] = []
             if any(isinstance(future.exception(), BrokenExecutor) for future in ended):
                 _close(executor, running)
-                ended, executor = set(running), make()
+                ended, executor = set(running), _started(make)
             for future in ended:
                 job = running.pop(future)
                 if future.cancelled() or isinstance(fault := future.exception(), BrokenExecutor):
@@ -67,6 +69,27 @@ def run_jobs(
             yield from _suspected(suspects, alone, deaths, journal)
     finally:
         _close(executor, running)
+
+
+def _started(make: Callable[[], Executor]) -> Executor:
+    """An executor of which a worker has answered: whoever dies afterwards died of its job, or by a hand from outside.
+
+    Raises
+    ------
+    GainwrightError
+        When worker after worker dies before it has begun.
+    """
+    for _ in range(MOST_STARTS):
+        executor = make()
+        fault = executor.submit(os.getpid).exception()
+        if not isinstance(fault, BrokenExecutor):
+            return executor
+        executor.shutdown(wait=True)
+    raise GainwrightError(
+        "no worker stays alive",
+        found=f"{MOST_STARTS} died before they had begun",
+        advice="look for what ends processes on this machine (memory?); what is done is kept: give the command again",
+    )
 
 
 def _close(executor: Executor, running: Iterable[Future[Done]]) -> None:

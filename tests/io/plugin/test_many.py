@@ -1,11 +1,12 @@
 """Many jobs: in the journal before and after, a bad one stops no other, a dead worker loses nothing."""
 
 from collections.abc import Iterator
-from concurrent.futures import ThreadPoolExecutor
+from concurrent.futures import BrokenExecutor, Executor, Future, ThreadPoolExecutor
 from pathlib import Path
 
 import pytest
-from gainwright.ident.errors import RequestError
+from gainwright.ident.errors import GainwrightError, RequestError
+from gainwright.io.plugin import many
 from gainwright.io.plugin.jobs import Done, Job, gravest
 from gainwright.io.plugin.journal import Journal
 from gainwright.io.plugin.many import process_pool, run_jobs
@@ -97,3 +98,25 @@ def test_the_gravest_code_is_a_fault_then_a_wrong_call_then_a_bad_log() -> None:
     order = [1, 2, 4, 3, 0]
     for place, code in enumerate(order):
         assert gravest(order[place:]) == code
+
+
+def test_a_machine_on_which_no_worker_lives_is_an_error_in_words(
+    tmp_path: Path, monkeypatch: pytest.MonkeyPatch
+) -> None:
+    """After the first death no worker comes up again: the program's own fault code, and what is done is kept."""
+    jobs = make_jobs(tmp_path, ["fine", "poison"])
+    pools = iter([process_pool(1)])
+    monkeypatch.setattr(many, "MOST_STARTS", 2)
+    with Journal(tmp_path) as journal:
+        with pytest.raises(GainwrightError, match="no worker stays alive"):
+            list(run_jobs(jobs, journal, lambda: next(pools, None) or Stillborn(), at_once=1, work=quick_work))
+        assert [entry.code for entry in journal.entries()] == [0, None]
+
+
+class Stillborn(Executor):
+    """Its workers die before they begin."""
+
+    def submit(self, *arguments: object, **more: object) -> Future:  # type: ignore[override]
+        future: Future = Future()
+        future.set_exception(BrokenExecutor("dead"))
+        return future
