@@ -6,8 +6,8 @@ function layout(wide) {
   const gauge = narrow ? 70 : 96;
   const text = narrow ? 0 : 58;
   return {
-    narrow, left, gauge, row: narrow ? 35 : 27, top: 40, wide: wide - left - gauge - text - 26,
-    gaugeLeft: wide - gauge - text - 6, text: wide - 2, lift: narrow ? 9 : 0,
+    narrow, left, gauge, row: narrow ? 39 : 27, top: 40, wide: wide - left - gauge - text - 26,
+    gaugeLeft: wide - gauge - text - 6, text: wide - 2, lift: narrow ? 10 : 0,
   };
 }
 
@@ -61,7 +61,7 @@ function ribbonRow(svg, row, middle) {
   const { left, wide, narrow, lift } = scale;
   const y = middle + lift;
   const name = { "font-weight": row.strong ? 700 : 400, "text-anchor": narrow ? "start" : "end" };
-  label(svg, narrow ? 2 : left - 9, narrow ? y - 11 : y + 4, row.name, name);
+  label(svg, narrow ? 2 : left - 9, narrow ? y - 12 : y + 4, row.name, name);
   line(svg, left, y, left + wide, y, "faint");
   const half = row.strong ? 8 : 5.5;
   for (const [from, to] of row.intervals) {
@@ -130,5 +130,5 @@ function gaugeRow(live, each, y) {
   const worst = each.worst === null ? each.slack : Math.min(each.worst, each.slack ?? Infinity);
   const shown = { "text-anchor": "end", fill: ink(worst !== null && worst < 0 ? "limit" : "ink") };
   if (!scale.narrow) label(live, scale.text, y + 4, percent(worst), shown);
-  else label(live, gaugeLeft + gauge, y - 11, percent(worst), { ...shown, "font-size": 11 });
+  else label(live, gaugeLeft + gauge, y - 12, percent(worst), { ...shown, "font-size": 11 });
 }
