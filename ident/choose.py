@@ -5,12 +5,14 @@ from dataclasses import dataclass, replace
 
 import numpy as np
 
-from .catalogue import CATALOGUE, Structure
+from .catalogue import CATALOGUE, RESONANCE_BEHIND_LAG, Structure
 from .noise import estimate_colour
+from .plant import ComplexArray
 from .polish import polish
 from .regression import Regression, Solved
 from .run import FloatArray, Run
 from .start import first_guesses
+from .unexplained import unexplained
 from .whiten import WHITE, Colour
 
 Progress = Callable[[str, float], None]
@@ -23,6 +25,9 @@ _LONGEST = 8.0
 
 # An integrating structure whose misfit is within this factor of the best may be a drive with friction.
 _DRIVE = 4.0
+
+# Above this gain of twice the log likelihood, to first order, the further structures are fitted.
+_UNEXPLAINED = 6.0
 
 # Rise of the plain sum of squares that a whitened estimate may cost.
 _TRADE = 0.02
@@ -61,8 +66,9 @@ class Fitted:
 
 def name_of(structure: Structure, theta: FloatArray) -> str:
     """Name that these values deserve: a second order is a resonance below damping ratio one, else two lags."""
-    if structure.name in ("resonance", "two lags"):
-        return "two lags" if theta[1] >= 0 else "resonance"
+    tail = " with zero" if structure.zero else ""
+    if structure.name in ("resonance" + tail, "two lags" + tail):
+        return ("two lags" if theta[1] >= 0 else "resonance") + tail
     return structure.name
 
 
@@ -73,21 +79,60 @@ def fit_candidates(
     structures: Sequence[Structure] = CATALOGUE,
     progress: Progress | None = None,
 ) -> tuple[list[Fitted], Colour]:
-    """Every structure fitted by least squares, then all again under the noise of the best; best first."""
+    """Every structure fitted by least squares, then all again under the noise of the best; best first.
+
+    The further structures are fitted only where the best of the others leaves something of the command's effect, and
+    kept only where one of them is the best: what a simpler one explains as well needs no zero.
+    """
+    families = _families(structures)
+    usual = [family for family in families if not family[0].further] or families
     fitted: list[Fitted] = []
-    for i, family in enumerate(_families(structures)):
-        if fitted and family[0].friction and not _friction_may_matter(fitted):
-            continue
-        if progress:
-            progress("fitting " + " or ".join(s.name for s in family), i / (len(structures) + 1))
-        fitted.append(_from_library(tuple(runs), reference, fixed_command, family))
+    for i, family in enumerate(usual):
+        if not fitted or _may_matter(family[0], fitted):
+            if progress:
+                progress("fitting " + " or ".join(s.name for s in family), i / (len(families) + 1))
+            fitted.append(_from_library(tuple(runs), reference, fixed_command, family))
     fitted = sorted(_distinct(fitted), key=lambda f: f.criterion)
+    recoloured, colour = _under_one_noise(fitted)
+    left = [family for family in families if family not in usual and _kin(family[0], recoloured[0])]
+    if not left or _left_by(recoloured[0], colour) < _UNEXPLAINED:
+        return recoloured, colour
+    for i, family in enumerate(left):
+        if progress:
+            progress("fitting " + " or ".join(s.name for s in family), (len(usual) + i) / (len(families) + 1))
+        fitted.append(_from_library(tuple(runs), reference, fixed_command, family))
+    together, own_colour = _under_one_noise(sorted(_distinct(fitted), key=lambda f: f.criterion))
+    together = [f for f in together if not _three_lags(f)]
+    return (together, own_colour) if together[0].problem.structure.further else (recoloured, colour)
+
+
+def _under_one_noise(fitted: list[Fitted]) -> tuple[list[Fitted], Colour]:
+    """All again under the noise of the best; where that makes another the best, under its own."""
     colour = colour_of(fitted[0])
     recoloured = sorted((refit(f, colour) for f in fitted), key=lambda f: f.criterion)
     if recoloured[0].problem is not fitted[0].problem:
         colour = colour_of(recoloured[0])
         recoloured = sorted((refit(f, colour) for f in recoloured), key=lambda f: f.criterion)
     return recoloured, colour
+
+
+def _kin(structure: Structure, best: Fitted) -> bool:
+    """Whether the structure could be the best one with something added."""
+    return best.problem.structure.integrators == structure.integrators
+
+
+def _left_by(best: Fitted, colour: Colour) -> float:
+    return unexplained(best.problem, best.theta, best.solved.coefficients, colour)
+
+
+def _may_matter(structure: Structure, fitted: list[Fitted]) -> bool:
+    """Whether a costly structure is worth a fit, judged from those before it."""
+    if structure.friction:
+        return _friction_may_matter(fitted)
+    if structure.integrators > 1:
+        times = [np.max(lags(f), initial=0.0) for f in fitted if f.problem.structure.integrators]
+        return max(times, default=np.inf) > fitted[0].problem.duration
+    return True
 
 
 def _friction_may_matter(fitted: list[Fitted]) -> bool:
@@ -99,23 +144,32 @@ def _friction_may_matter(fitted: list[Fitted]) -> bool:
 def _distinct(fitted: list[Fitted]) -> list[Fitted]:
     """Without the candidates that pass for a simpler one.
 
-    A lag shorter than the sampling can show would pass for dead time, one far longer than the record for an integrator.
+    A lag shorter than the sampling can show would pass for dead time, one far longer than the record for an integrator,
+    a resonance far slower than the record for two. A resonance behind a lag that does not ring is no resonance.
     """
     kept = []
     for one in fitted:
-        times = lags(one)
-        short = np.min(times, initial=np.inf) < _SHORTEST * one.problem.interval
-        long = np.max(times, initial=0.0) > _LONGEST * one.problem.duration
-        if not short and not long:
+        short = np.min(lags(one), initial=np.inf) < _SHORTEST * one.problem.interval
+        slowest = np.min(np.abs(_moving_poles(one)), initial=np.inf)
+        long = slowest * _LONGEST * one.problem.duration < 1
+        if not short and not long and not _three_lags(one):
             kept.append(one)
     return kept or fitted
 
 
+def _three_lags(fitted: Fitted) -> bool:
+    return fitted.name == RESONANCE_BEHIND_LAG.name and bool(fitted.theta[1] >= 0)
+
+
 def lags(fitted: Fitted) -> FloatArray:
     """Time constants of the real poles away from the origin, s."""
+    poles = _moving_poles(fitted)
+    return np.asarray(-1.0 / poles[poles.imag == 0].real)
+
+
+def _moving_poles(fitted: Fitted) -> ComplexArray:
     poles = fitted.problem.modes(fitted.problem.split(fitted.theta)[0]).poles
-    real = poles[(poles.imag == 0) & (poles.real < 0)]
-    return np.asarray(-1.0 / real.real)
+    return np.asarray(poles[poles.real < 0])
 
 
 def colour_of(fitted: Fitted) -> Colour:
@@ -172,12 +226,16 @@ def _families(structures: Sequence[Structure]) -> list[list[Structure]]:
     families: list[list[Structure]] = []
     for structure in structures:
         for family in families:
-            if family[0].polynomials is structure.polynomials and family[0].friction == structure.friction:
+            if _formula(family[0]) == _formula(structure):
                 family.append(structure)
                 break
         else:
             families.append([structure])
     return families
+
+
+def _formula(structure: Structure) -> tuple[object, bool, bool]:
+    return structure.polynomials, structure.friction, structure.zero
 
 
 def _from_library(runs: tuple[Run, ...], reference: float, fixed_command: bool, family: Sequence[Structure]) -> Fitted:
@@ -193,18 +251,7 @@ def _weighed(problem: Regression, theta: FloatArray, solved: Solved) -> Fitted:
     n = len(problem.measured)
     unknowns = len(theta) + len(solved.coefficients)
     criterion = n * float(np.log(max(solved.cost, 1e-300) / n)) + unknowns * float(np.log(n))
-    model, _ = _model(problem, theta, solved)
+    model = problem.columns(theta) @ solved.coefficients
     spread = float(np.std(problem.measured))
     rms = float(np.sqrt(np.mean((problem.measured - model) ** 2)))
     return Fitted(problem, theta, solved, rms / spread if spread > 0 else np.inf, criterion)
-
-
-def _model(problem: Regression, theta: FloatArray, solved: Solved) -> tuple[FloatArray, FloatArray]:
-    shape, dead_time = problem.split(theta)
-    lead = problem.unit_response(shape, dead_time)
-    r = problem.fixed_columns.shape[1]
-    model = lead * solved.coefficients[0] + problem.fixed_columns @ solved.coefficients[1 : 1 + r]
-    initial = problem.initial_columns(shape)
-    if initial is not None:
-        model = model + initial @ solved.coefficients[1 + r :]
-    return model, lead

@@ -13,17 +13,47 @@ def draw(profile: Profile, count: int, seed: int = 0) -> FloatArray:
     The dead time comes from its mixed density, the rest from a Student t about its best at that dead time. The points
     are a scrambled Sobol sequence, so that a thousand of them fill the distribution evenly.
     """
-    shapes_and_linear = profile.centres.shape[1]
-    with_noise = qmc.Sobol(shapes_and_linear + 2, seed=seed).random(1 << int(np.ceil(np.log2(count))))[:count]
-    uniform = np.clip(with_noise, 1e-9, 1 - 1e-9)
-    dead_time = _dead_times(profile, uniform[:, 0])
-    spread = np.sqrt(profile.variance * profile.freedom / chi2.ppf(uniform[:, 1], profile.freedom))
-    normal = norm.ppf(uniform[:, 2:])
-    at = np.abs(profile.dead_times[:, None] - dead_time[None, :]).argmin(axis=0)
-    centre = np.column_stack([np.interp(dead_time, profile.dead_times, column) for column in profile.centres.T])
-    rest = centre + spread[:, None] * np.einsum("nij,nj->ni", profile.factors[at], normal)
-    shapes = int(rest.shape[1]) - profile.linear_count
+    at = _points(profile, profile.centres.shape[1] + 2, count, seed)
+    dead_time = _dead_times(profile, at[:, 0])
+    spread = np.sqrt(profile.variance * profile.freedom / chi2.ppf(at[:, 1], profile.freedom))
+    centre, cell = _along(profile, dead_time)
+    rest = centre + spread[:, None] * np.einsum("nij,nj->ni", profile.factors[cell], norm.ppf(at[:, 2:]))
+    shapes = profile.shape_count
     return np.column_stack([rest[:, :shapes], dead_time, rest[:, shapes:]])
+
+
+def propose(profile: Profile, count: int, seed: int, widen: float) -> tuple[FloatArray, FloatArray]:
+    """Log shapes and dead times alone, (count, s + 1), and their log density, (count,).
+
+    The shapes' spread is `widen` times that of the record.
+    """
+    shapes = profile.shape_count
+    at = _points(profile, shapes + 2, count, seed)
+    dead_time = _dead_times(profile, at[:, 0])
+    spread = widen * np.sqrt(profile.variance * profile.freedom / chi2.ppf(at[:, 1], profile.freedom))
+    centre, cell = _along(profile, dead_time)
+    covariance = profile.factors[:, :shapes] @ profile.factors[:, :shapes].transpose(0, 2, 1)
+    roots = np.linalg.cholesky(covariance)
+    normal = norm.ppf(at[:, 2:])
+    theta = np.column_stack(
+        [centre[:, :shapes] + spread[:, None] * np.einsum("nij,nj->ni", roots[cell], normal), dead_time]
+    )
+    distance = (spread / (widen * np.sqrt(profile.variance))) ** 2 * np.sum(normal**2, axis=1)
+    volume = np.sum(np.log(np.diagonal(roots, axis1=1, axis2=2)), axis=1)[cell]
+    tail = -0.5 * (profile.freedom + shapes) * np.log1p(distance / profile.freedom) - volume
+    along = np.interp(dead_time, profile.dead_times, profile.log_weights - profile.log_weights.max())
+    return theta, tail + (along if len(profile.dead_times) > 1 else 0.0)
+
+
+def _points(profile: Profile, dimensions: int, count: int, seed: int) -> FloatArray:
+    points = qmc.Sobol(dimensions, seed=seed).random(1 << int(np.ceil(np.log2(count))))[:count]
+    return np.clip(points, 1e-9, 1 - 1e-9)
+
+
+def _along(profile: Profile, dead_time: FloatArray) -> tuple[FloatArray, np.ndarray]:
+    """Conditional centres at these dead times, and the nearest grid point of each."""
+    centre = np.column_stack([np.interp(dead_time, profile.dead_times, column) for column in profile.centres.T])
+    return centre, np.abs(profile.dead_times[:, None] - dead_time[None, :]).argmin(axis=0)
 
 
 def _dead_times(profile: Profile, uniform: FloatArray) -> FloatArray:

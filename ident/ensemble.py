@@ -5,7 +5,6 @@ from dataclasses import dataclass
 import numpy as np
 
 from .choose import Fitted
-from .draw import draw
 from .fitted import Plausible
 from .noise import effective_samples
 from .plant import Plant
@@ -13,6 +12,7 @@ from .polish import bounds_of
 from .profile import profile_dead_time
 from .regression import Regression
 from .rein import rein_in
+from .resample import resampled
 from .run import FloatArray
 from .sandwich import draw_normal, sandwich_covariance
 from .whiten import WHITE, Colour
@@ -45,15 +45,13 @@ def draw_structure(fitted: Fitted, colour: Colour, count: int, seed: int) -> Dra
     problem = fitted.problem
     unknowns = len(fitted.theta) + len(fitted.solved.coefficients)
     freedom = freedom_of(problem, colour, unknowns)
-    if fitted.whitened:
-        draws = draw(profile_dead_time(problem, fitted.theta, colour, freedom), count, seed)
-    else:
-        draws = _about_least_squares(fitted, colour, freedom, count, seed)
     s = len(fitted.theta)
+    if fitted.whitened:
+        profile = profile_dead_time(problem, fitted.theta, colour, freedom)
+        return Drawn(fitted, resampled(problem, profile, colour, count, seed))
+    draws = _about_least_squares(fitted, colour, freedom, count, seed)
     draws[:, :s] = np.clip(draws[:, :s], *bounds_of(problem))
-    working = colour if fitted.whitened else WHITE
-    size = len(problem.measured) - unknowns if fitted.whitened else freedom
-    return Drawn(fitted, rein_in(problem, fitted.theta, draws, working, size))
+    return Drawn(fitted, rein_in(problem, fitted.theta, draws, WHITE, freedom))
 
 
 def freedom_of(problem: Regression, colour: Colour, unknowns: int) -> float:
@@ -68,7 +66,25 @@ def _about_least_squares(fitted: Fitted, colour: Colour, freedom: float, count: 
     model, columns = problem.full_columns(fitted.theta, fitted.solved.coefficients)
     covariance = sandwich_covariance(columns, problem.measured - model, problem.stretches, colour, problem.waves)
     centre = np.concatenate([fitted.theta, fitted.solved.coefficients])
-    return draw_normal(centre, covariance, freedom, count, seed)
+    draws = draw_normal(centre, covariance, freedom, count, seed)
+    return _within_sample(fitted, draws) if problem.jumps else draws
+
+
+def _within_sample(fitted: Fitted, draws: FloatArray) -> FloatArray:
+    """Draws with a dead time anywhere in its sample interval, the linear part moved as the fitted one would be."""
+    problem, s = fitted.problem, len(fitted.theta) - 1
+    before = np.ceil(fitted.theta[s] / problem.interval - 1e-6) - 1
+    if before < 0:
+        return draws
+    shares = np.linspace(1e-3, 1.0 - 1e-3, 9)
+    dead_times = (before + shares) * problem.interval
+    there = [problem.solve(np.append(fitted.theta[:s], at), WHITE).coefficients for at in dead_times]
+    moved = np.array(there) - problem.solve(fitted.theta, WHITE).coefficients
+    share = (np.random.default_rng(0).permutation(len(draws)) + 0.5) / len(draws)
+    shifts = [np.interp(share, shares, column) for column in moved.T]
+    return np.column_stack(
+        [draws[:, :s], (before + share) * problem.interval, draws[:, s + 1 :] + np.transpose(shifts)]
+    )
 
 
 def plant_of(fitted: Fitted, draw_row: FloatArray) -> Plant:
@@ -77,7 +93,10 @@ def plant_of(fitted: Fitted, draw_row: FloatArray) -> Plant:
     shape = tuple(float(v) for v in np.exp(draw_row[:s]))
     numerator, denominator = fitted.problem.structure.polynomials(shape)
     gain = float(draw_row[s + 1])
-    return Plant(tuple(gain * c for c in numerator), denominator, float(max(draw_row[s], 0.0)))
+    top = tuple(gain * c for c in numerator)
+    if fitted.problem.structure.zero:
+        top = (float(draw_row[s + 1 + fitted.problem.zero_at]), *top)
+    return Plant(top, denominator, float(max(draw_row[s], 0.0)))
 
 
 def stiction_of(fitted: Fitted, draw_row: FloatArray) -> float:

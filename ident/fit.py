@@ -36,7 +36,7 @@ def finish(
     parameters = lmfit.Parameters()
     for i, value in enumerate(theta[:-1]):
         parameters.add(f"shape_{i}", value=float(value))
-    parameters.add("dead_time", value=max(float(theta[-1]) / dt, 1e-6), min=0.0)
+    parameters.add("dead_time", value=max(float(theta[-1]) / dt, 1e-6), min=0.0, vary=not problem.jumps)
     for i, value in enumerate(coefficients / sizes):
         parameters.add(f"linear_{i}", value=float(value))
 
@@ -46,13 +46,7 @@ def finish(
 
     def residual(trial: lmfit.Parameters) -> FloatArray:
         point, linear = vectors(np.array([p.value for p in trial.values()]))
-        shape, dead_time = problem.split(point)
-        lead = problem.unit_response(shape, dead_time)
-        initial = problem.initial_columns(shape)
-        r = problem.fixed_columns.shape[1]
-        model = lead * linear[0] + problem.fixed_columns @ linear[1 : 1 + r]
-        if initial is not None:
-            model = model + initial @ linear[1 + r :]
+        model = problem.columns(point) @ linear
         out = target - whitener.apply(model)
         return np.nan_to_num(out, nan=1e150, posinf=1e150, neginf=-1e150)
 

@@ -144,12 +144,13 @@ def _parameters(drawn: Drawn, row: FloatArray) -> tuple[tuple[Parameter, ...], F
     def natural(rows: FloatArray) -> FloatArray:
         shapes = np.exp(rows[:, :s])
         values = np.array([named.values(tuple(shape)) for shape in shapes]).reshape(len(rows), -1)
-        return np.column_stack([rows[:, s + 1], rows[:, s], values])
+        zeros = [rows[:, s + 1 + drawn.fitted.problem.zero_at] / rows[:, s + 1]] if structure.zero else []
+        return np.column_stack([rows[:, s + 1], rows[:, s], values, *zeros])
 
     draws = natural(drawn.draws)
     best = natural(row[None, :])[0]
-    labels = [("gain", "gain/s" if structure.integrators else "gain"), ("dead time", "s")]
-    labels += [(n.name, n.unit) for n in named.named]
+    labels = [("gain", ("gain", "gain/s", "gain/s^2")[structure.integrators]), ("dead time", "s")]
+    labels += [(n.name, n.unit) for n in named.parameters]
     low = np.minimum(np.quantile(draws, 0.025, axis=0), best)
     high = np.maximum(np.quantile(draws, 0.975, axis=0), best)
     covariance = np.atleast_2d(np.cov(draws.T))
@@ -191,10 +192,12 @@ def _fitted_runs(chosen: Fitted, row: FloatArray) -> tuple[FittedRun, ...]:
 
 def _equal_lags(drawn: Drawn) -> tuple[str, ...]:
     name = drawn.fitted.name
-    if name not in ("resonance", "two lags"):
+    other = {"resonance": "two lags", "two lags": "resonance"}
+    other |= {f"{one} with zero": f"{two} with zero" for one, two in other.items()}
+    if name not in other:
         return ()
     low, high = np.quantile(drawn.draws[:, 1], [0.025, 0.975])
-    return (("resonance" if name == "two lags" else "two lags"),) if low < 0 < high else ()
+    return (other[name],) if low < 0 < high else ()
 
 
 def _note(place: int, weight: float) -> str:

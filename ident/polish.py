@@ -52,6 +52,8 @@ def polish(
 ) -> tuple[FloatArray, Solved]:
     """Walk down from theta; the cost never rises.
 
+    The dead time of a response that jumps stays where it is: no sample tells where between two samples the jump was.
+
     Returns
     -------
     theta, Solved
@@ -60,7 +62,7 @@ def polish(
     low, high = bounds_of(problem)
     theta = np.clip(theta, low, high)
     free = np.ones(len(theta), dtype=bool)
-    free[-1] = not hold_dead_time
+    free[-1] = not (hold_dead_time or problem.jumps)
     best = problem.solve(theta, colour)
     if not free.any():
         return theta, best

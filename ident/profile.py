@@ -9,7 +9,7 @@ from dataclasses import dataclass
 import numpy as np
 
 from .polish import bounds_of, polish
-from .regression import Regression
+from .regression import Regression, root_of_covariance
 from .run import FloatArray
 from .whiten import Colour
 
@@ -44,6 +44,11 @@ class Profile:
     variance: float
     freedom: float
     linear_count: int
+
+    @property
+    def shape_count(self) -> int:
+        """s, the number of shapes."""
+        return int(self.centres.shape[1]) - self.linear_count
 
 
 def profile_dead_time(
@@ -127,7 +132,7 @@ def _with_conditionals(
         solved = problem.solve(theta, colour)
         _, columns = problem.full_columns(theta, solved.coefficients)
         others = np.delete(columns, len(theta) - 1, axis=1)
-        factor, log_volume = _root_of_covariance(problem.whitener(colour).apply(others))
+        factor, log_volume = root_of_covariance(problem.whitener(colour).apply(others))
         centres.append(np.concatenate([theta[:-1], solved.coefficients]))
         factors.append(factor)
         log_volumes.append(log_volume)
@@ -136,12 +141,3 @@ def _with_conditionals(
     grid = np.array([theta[-1] for theta in thetas])
     linear_count = len(solved.coefficients)
     return Profile(grid, log_density, np.array(centres), np.array(factors), float(variance), freedom, linear_count)
-
-
-def _root_of_covariance(white: FloatArray) -> tuple[FloatArray, float]:
-    """A with A A' = (white' white)^-1, and the log of its volume; directions that say nothing spread far."""
-    scale = np.sqrt(np.einsum("ij,ij->j", white, white))
-    scale[scale == 0] = 1.0
-    _, sizes, rotation = np.linalg.svd(white / scale, full_matrices=False)
-    inverse = 1.0 / np.maximum(sizes, 1e-7 * sizes[0])
-    return (rotation.T * inverse) / scale[:, None], float(np.sum(np.log(inverse)) - np.sum(np.log(scale)))

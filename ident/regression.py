@@ -10,7 +10,7 @@ from .catalogue import Structure
 from .friction import friction_response
 from .modes import Modes, modes_of
 from .run import FloatArray, Run
-from .simulate import Grid, grid_of, response
+from .simulate import Grid, at_rest, grid_of, response
 from .wander import Whitener, slow_waves
 from .whiten import Colour, stretches_of
 
@@ -33,7 +33,8 @@ class Solved:
     residual : (n,) array
         Whitened.
     coefficients : (q,) array
-        Gain first, then a level for each run, then the common drift rate of an integrating plant, then initial states.
+        Gain first, then a level for each run, then the common drift rate of an integrating plant (and of one with two
+        integrators the runs' first speeds), then gain times zero time, then initial states.
     """
 
     cost: float
@@ -103,21 +104,36 @@ class Regression:
 
     @cached_property
     def fixed_columns(self) -> FloatArray:
-        """(n, r) columns that no shape changes: levels, and the drift of an integrating plant."""
+        """(n, r) columns that no shape changes: levels, an integrating plant's drift, a double one's first speeds."""
         n = len(self.measured)
         columns = []
         for part in self.parts:
             level = np.zeros(n)
             level[part] = 1.0
             columns.append(level)
+        times = [grid.time[run.valid] for grid, run in zip(self.grids, self.runs, strict=True)]
         if self.drifts:
-            columns.append(np.concatenate([g.time[r.valid] for g, r in zip(self.grids, self.runs, strict=True)]))
+            columns.append(np.concatenate([at_rest(self.structure.integrators, time) for time in times]))
+        if self.structure.integrators > 1:
+            for part, time in zip(self.parts, times, strict=True):
+                speed = np.zeros(n)
+                speed[part] = time
+                columns.append(speed)
         return np.column_stack(columns)
 
     @property
     def drifts(self) -> bool:
         """Whether a common drift rate is fitted."""
         return bool(self.structure.integrators) and not self.fixed_command
+
+    @property
+    def jumps(self) -> bool:
+        """Whether the response jumps with the command: a structure with as many zeros as poles.
+
+        Between which samples it jumped is seen, but not when: the dead time is known to an interval at best.
+        """
+        numerator, denominator = self.structure.polynomials((1.0,) * len(self.structure.shapes))
+        return len(numerator) + int(self.structure.zero) == len(denominator)
 
     @cached_property
     def span(self) -> float:
@@ -139,7 +155,33 @@ class Regression:
         if self.structure.friction:
             return friction_response(grid, bias, shape[0], (shape[1], shape[2]), dead_time)
         moved = response(self.modes(shape), grid, dead_time)
-        return moved + bias * (grid.time if self.structure.integrators else 1.0)
+        return moved + bias * at_rest(self.structure.integrators, grid.time)
+
+    def zero_response(self, i: int, shape: tuple[float, ...], dead_time: float) -> FloatArray:
+        """Response of run i to the slope of its command: what a zero adds, per gain and second of zero time."""
+        numerator, denominator = self.structure.polynomials(shape)
+        return response(modes_of((*numerator, 0.0), denominator), self.grids[i], dead_time)
+
+    @property
+    def zero_at(self) -> int:
+        """Where gain times zero time stands among the coefficients of a structure with a zero."""
+        return 1 + int(self.fixed_columns.shape[1])
+
+    def moving_columns(self, shape: tuple[float, ...], dead_time: float) -> FloatArray:
+        """(n, 1 + k) columns that change with the shapes: unit response, a zero's part, initial states."""
+        columns = [self.unit_response(shape, dead_time)[:, None]]
+        if self.structure.zero:
+            zero = [self.zero_response(i, shape, dead_time)[run.valid] for i, run in enumerate(self.runs)]
+            columns.append(np.concatenate(zero)[:, None])
+        initial = self.initial_columns(shape)
+        if initial is not None:
+            columns.append(initial)
+        return np.column_stack(columns) if len(columns) > 1 else columns[0]
+
+    def columns(self, theta: FloatArray) -> FloatArray:
+        """(n, q) columns that the coefficients weigh, in their order."""
+        moving = self.moving_columns(*self.split(theta))
+        return np.column_stack([moving[:, :1], self.fixed_columns, moving[:, 1:]])
 
     def initial_columns(self, shape: tuple[float, ...]) -> FloatArray | None:
         """(n, k) decays of the initial states of unsettled runs, or None."""
@@ -176,14 +218,17 @@ class Regression:
 
     def solve(self, theta: FloatArray, colour: Colour) -> Solved:
         """Best linear part at theta = (log shapes ..., dead time in s)."""
-        shape, dead_time = self.split(theta)
-        lead = self.unit_response(shape, dead_time)[:, None]
-        initial = self.initial_columns(shape)
-        moving = lead if initial is None else np.column_stack([lead, initial])
+        moving = self.moving_columns(*self.split(theta))
         target, fixed = self._whitened(colour)
         white = self.whitener(colour).apply(moving)
         matrix = np.column_stack([white[:, :1], fixed, white[:, 1:]])
         return _least_squares(matrix, target)
+
+    def conditional(self, theta: FloatArray, colour: Colour) -> tuple[Solved, FloatArray, float]:
+        """`solve`, A with A A' = (X' X)^-1 of the whitened columns, and the log of A's volume."""
+        white = self.whitener(colour).apply(self.columns(theta))
+        solved = _least_squares(white, self._whitened(colour)[0])
+        return solved, *root_of_covariance(white)
 
     def split(self, theta: FloatArray) -> tuple[tuple[float, ...], float]:
         """Shape values and dead time of theta."""
@@ -205,19 +250,15 @@ class Regression:
 
     def full_columns(self, theta: FloatArray, coefficients: FloatArray) -> tuple[FloatArray, FloatArray]:
         """Unwhitened model, (n,), and its derivatives, (n, s + 1 + q): log shapes, dead time, then the linear part."""
-
-        def linear(at: FloatArray) -> FloatArray:
-            shape, dead_time = self.split(at)
-            lead = self.unit_response(shape, dead_time)[:, None]
-            initial = self.initial_columns(shape)
-            tail = [] if initial is None else [initial]
-            return np.column_stack([lead, self.fixed_columns, *tail])
-
-        columns = linear(theta)
+        columns = self.columns(theta)
+        steps = self.steps(theta)
         slopes = [
-            (linear(theta + step) - linear(theta - step)) @ coefficients / (2 * step.max())
-            for step in self.steps(theta)
+            (self.columns(theta + step) - self.columns(theta - step)) @ coefficients / (2 * step.max())
+            for step in (steps[:-1] if self.jumps else steps)
         ]
+        if self.jumps:
+            # between two samples the dead time does nothing that the linear part could not
+            slopes.append(np.zeros(len(columns)))
         return columns @ coefficients, np.column_stack([*slopes, columns])
 
     def steps(self, theta: FloatArray) -> list[FloatArray]:
@@ -245,6 +286,15 @@ def _least_squares(matrix: FloatArray, target: FloatArray) -> Solved:
     residual = target - q @ along
     coefficients = solve_triangular(r, along) / scale
     return Solved(float(residual @ residual), residual, coefficients)
+
+
+def root_of_covariance(white: FloatArray) -> tuple[FloatArray, float]:
+    """A with A A' = (white' white)^-1, and the log of its volume; directions that say nothing spread far."""
+    scale = np.sqrt(np.einsum("ij,ij->j", white, white))
+    scale[scale == 0] = 1.0
+    sizes, rotation = np.linalg.eigh((white / scale).T @ (white / scale))
+    inverse = 1.0 / np.sqrt(np.maximum(sizes, 1e-14 * sizes[-1]))
+    return (rotation * inverse) / scale[:, None], float(np.sum(np.log(inverse)) - np.sum(np.log(scale)))
 
 
 def starts_unsettled(run: Run) -> bool:

@@ -58,6 +58,8 @@ def response(modes: Modes, grid: Grid, dead_time: float) -> FloatArray:
         total = _uneven(modes, grid, dead_time)
     if modes.direct:
         total = total + modes.direct * _delayed(grid, dead_time)
+    if modes.double:
+        total = total + modes.double * _twice_integrated(grid, dead_time)
     return total
 
 
@@ -182,6 +184,25 @@ def _delayed(grid: Grid, dead_time: float) -> FloatArray:
     return np.where(index >= 0, grid.moved[np.maximum(index, 0)], 0.0)
 
 
+def at_rest(integrators: int, time: FloatArray) -> FloatArray:
+    """(n,) what a steady unit of command makes of a unit-gain plant by itself: 1, t or t^2/2."""
+    return np.asarray(time**integrators / max(integrators, 1))
+
+
+def _twice_integrated(grid: Grid, dead_time: float) -> FloatArray:
+    """(n,) second integral of the command moved, `dead_time` later: parabolas between samples, or cubics."""
+    h = np.diff(grid.time)
+    start = grid.moved[:-1]
+    rise = np.diff(grid.moved) / h if grid.interpolated else np.zeros(len(h))
+    once = np.concatenate([[0.0], np.cumsum(h * (start + h * rise / 2))])
+    twice = np.concatenate([[0.0], np.cumsum(h * (once[:-1] + h * (start / 2 + h * rise / 6)))])
+    at = grid.time - dead_time
+    index = np.clip(np.searchsorted(grid.time, at, side="right") - 1, 0, len(h) - 1)
+    since = np.maximum(at - grid.time[index], 0.0)
+    moved = twice[index] + since * (once[index] + since * (start[index] / 2 + since * rise[index] / 6))
+    return np.where(at > 0, moved, 0.0)
+
+
 def free_run(plant: Plant, run: Run, operating_command: float, level: float) -> FloatArray:
     """Response, (n,), that the plant gives to a run's command, started at rest.
 
@@ -208,6 +229,4 @@ def free_run(plant: Plant, run: Run, operating_command: float, level: float) -> 
     grid = grid_of(run)
     moved = response(modes_of(plant.numerator, plant.denominator), grid, plant.dead_time)
     bias = run.start_command - operating_command
-    if plant.integrators:
-        return level + moved + plant.static_gain * bias * grid.time
-    return level + moved + plant.static_gain * bias
+    return level + moved + plant.static_gain * bias * at_rest(plant.integrators, grid.time)

@@ -1,6 +1,7 @@
 """First guesses from the data: a library of unit-gain responses, held against the record at many dead times at once."""
 
 import itertools
+from collections.abc import Sequence
 
 import numpy as np
 from numpy.typing import NDArray
@@ -24,8 +25,15 @@ def first_guesses(problem: Regression, count: int = 3) -> list[FloatArray]:
     for values in _library(problem):
         costs = _costs(problem, values, shifts, rows, basis, target)
         at = int(np.argmin(costs))
-        theta = np.array([*np.log(values), shifts[at] * problem.interval])
-        scored.append((float(costs[at]), theta))
+        if problem.jumps:
+            # a jump is at one sample or at the next: the grid of dead times must not miss it
+            near = np.arange(shifts[max(at - 1, 0)], shifts[min(at + 1, len(shifts) - 1)] + 1)
+            costs = _costs(problem, values, near, rows, basis, target)
+            at = int(np.argmin(costs))
+            dead_time = max(near[at] - 0.5, 0.0) * problem.interval
+        else:
+            dead_time = shifts[at] * problem.interval
+        scored.append((float(costs[at]), np.array([*np.log(values), dead_time])))
     scored.sort(key=lambda pair: pair[0])
     return _different([theta for _, theta in scored], problem, count)
 
@@ -110,15 +118,28 @@ def _costs(
     basis: FloatArray,
     target: FloatArray,
 ) -> FloatArray:
+    lead = _shifted(rows, shifts, [problem.whole_response(i, values, 0.0) for i in range(len(rows))])
+    lead = lead - basis @ (basis.T @ lead)
+    total: FloatArray = np.full(len(shifts), float(target @ target))
+    power, along = np.einsum("ij,ij->j", lead, lead), target @ lead
+    if problem.structure.zero:
+        slope = _shifted(rows, shifts, [problem.zero_response(i, values, 0.0) for i in range(len(rows))])
+        slope = slope - basis @ (basis.T @ slope)
+        # the zero's part is taken off by one step of orthogonalisation
+        size = np.einsum("ij,ij->j", slope, slope)
+        size = np.where(size > 1e-12 * max(float(size.max()), 1e-300), size, np.inf)
+        share = np.einsum("ij,ij->j", lead, slope) / size
+        rest = target @ slope
+        total = total - rest**2 / size
+        along, power = along - share * rest, power - share**2 * np.where(np.isinf(size), 0.0, size)
+    safe = power > 1e-12 * max(float(power.max()), 1e-300)
+    return np.asarray(np.where(safe, total - along**2 / np.where(safe, power, 1.0), total))
+
+
+def _shifted(rows: Sequence[np.ndarray], shifts: np.ndarray, whole: list[FloatArray]) -> FloatArray:
+    """(rows, shifts) responses of all runs, each column later by whole samples; at rest before."""
     blocks = []
-    for i, index in enumerate(rows):
-        moved = problem.whole_response(i, values, 0.0)
+    for index, moved in zip(rows, whole, strict=True):
         at = np.asarray(index)[:, None] - shifts[None, :]
         blocks.append(np.where(at >= 0, moved[np.maximum(at, 0)], moved[0]))
-    matrix = np.concatenate(blocks)
-    matrix = matrix - basis @ (basis.T @ matrix)
-    power = np.einsum("ij,ij->j", matrix, matrix)
-    along = target @ matrix
-    total = float(target @ target)
-    safe = power > 1e-12 * max(float(power.max()), 1e-300)
-    return np.where(safe, total - along**2 / np.where(safe, power, 1.0), total)
+    return np.concatenate(blocks)

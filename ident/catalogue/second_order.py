@@ -12,6 +12,6 @@ def polynomials(shape: tuple[float, ...]) -> Polynomials:
     return (1.0,), (1.0 / (frequency * frequency), 2.0 * damping / frequency, 1.0)
 
 
-def frequency_shape() -> Shape:
+def frequency_shape(steps: int = 18) -> Shape:
     """The natural frequency as an internal parameter."""
-    return Shape("natural frequency", "frequency", steps=18)
+    return Shape("natural frequency", "frequency", steps=steps)

@@ -57,6 +57,11 @@ class Structure:
     integrators : int
     friction : bool
         The last two shapes are dry frictions, forward and backward, that the command must overcome.
+    zero : bool
+        The numerator is Tz s + 1 in place of 1. The zero time Tz may have either sign, so it is no shape: K Tz enters
+        the response linearly, as K does, and is solved for with it.
+    further : bool
+        Fitted only where the others leave something of what the command does unexplained.
     """
 
     name: str
@@ -67,3 +72,10 @@ class Structure:
     values: Callable[[tuple[float, ...]], tuple[float, ...]]
     integrators: int = 0
     friction: bool = False
+    zero: bool = False
+    further: bool = False
+
+    @property
+    def parameters(self) -> tuple[Named, ...]:
+        """All parameters for people but gain and dead time, the zero time last."""
+        return (*self.named, Named("zero time", "s")) if self.zero else self.named

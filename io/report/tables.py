@@ -5,13 +5,13 @@ from dataclasses import dataclass
 from pathlib import PurePath
 from typing import Any
 
-from ...design.compensator import over_second, per_response
 from ...design.designed import Design
 from ...design.locus.condition import Working
 from ...ident.fitted import Fit
 from ..figures.locus import tags
 from ..figures.words import number, with_unit
 from ..outcome import Outcome
+from ..parameter_unit import unit_of
 from . import words
 
 
@@ -102,9 +102,7 @@ def parameters(fit: Fit, command_unit: str, response_unit: str) -> Table:
     """The fitted plant."""
     rows = []
     for each in fit.parameters:
-        unit = each.unit
-        if each.name == "gain":
-            unit = (over_second if fit.plant.integrators else per_response)(response_unit, command_unit)
+        unit = unit_of(each, fit.plant.integrators, command_unit, response_unit)
         ends = f"{number(each.low)} to {with_unit(each.high, unit)}"
         rows.append((each.name, with_unit(each.value, unit), number(each.std_error, 2), ends))
     return Table("Fitted plant", ("parameter", "value", "standard error", "95 % interval"), tuple(rows))

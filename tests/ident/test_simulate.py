@@ -231,9 +231,9 @@ def test_a_very_fast_and_a_very_slow_lag_stay_finite():
     assert slow == pytest.approx(np.maximum(time - 5, 0.0), rel=1e-6)
 
 
-def test_two_integrators_and_more_zeros_than_poles_are_refused():
+def test_three_integrators_and_more_zeros_than_poles_are_refused():
     """Neither has a place in the catalogue, and the partial fractions would be wrong."""
-    with pytest.raises(ValueError, match="more than one integrator"):
-        modes_of((1.0,), (1.0, 0.0, 0.0))
+    with pytest.raises(ValueError, match="more than two integrators"):
+        modes_of((1.0,), (1.0, 0.0, 0.0, 0.0))
     with pytest.raises(ValueError, match="more zeros than poles"):
         modes_of((1.0, 0.0, 0.0), (1.0, 1.0))

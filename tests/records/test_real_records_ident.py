@@ -60,6 +60,19 @@ def test_the_hot_air_duct_has_the_gain_and_misfit_of_its_readme():
     assert held_out_misfit(half, run, 500) == pytest.approx(0.142, abs=0.006)
 
 
+def test_the_lamp_and_plate_are_two_lags_with_a_zero_as_their_readme_says():
+    """README: two lags with a zero leave 2.9 % of the first half and 18.3 % of the second; a single lag 7.3 and 30.6 %.
+
+    The prediction of the second half hangs on the slow lag, which half a record shows to some ten per cent.
+    """
+    half = identify([record("lamp_heater/lamp_heater.csv", stop=400, command_before=6.0)])
+    assert half.structure == "two lags with zero"
+    assert half.misfit < 0.029
+    assert 0 < values(half)["time constant 2"] < values(half)["zero time"] < values(half)["time constant 1"]
+    whole = record("lamp_heater/lamp_heater.csv", command_before=6.0)
+    assert held_out_misfit(half, whole, 400) == pytest.approx(0.183, abs=0.02)
+
+
 def test_the_lamp_and_plate_are_fitted_as_a_single_lag_as_well_as_one_can():
     """README: gain 19.6 degC/V, lag 70 s, 7.3 % on the first half and 30.6 % on the second; 6 V before the record."""
     half = identify(
@@ -117,7 +130,9 @@ def test_the_electronic_resonator_needs_a_straight_command_between_samples():
 
 
 def test_the_resonator_is_called_a_resonance_among_all_structures():
-    """First 1500 samples, every structure tried."""
-    fit = identify([record("silverbox/arrow_low_amplitude.csv", stop=1500)], structures=CATALOGUE)
-    assert fit.structure == "resonance"
-    assert fit.ties == ()
+    """First 1500 samples, every structure tried; a zero at a sixth of its period is seen too, and misses less."""
+    run = record("silverbox/arrow_low_amplitude.csv", stop=1500)
+    fit = identify([run], structures=CATALOGUE)
+    assert fit.structure.startswith("resonance")
+    assert values(fit)["natural frequency"] / (2 * np.pi) == pytest.approx(68.4, abs=0.3)
+    assert fit.misfit <= identify([run], structures=[RESONANCE]).misfit * (1 + 1e-6)
