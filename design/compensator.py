@@ -12,7 +12,8 @@ from .requirements import ControllerSetting
 class Shape:
     """numerator(s)/denominator(s), highest power first, both with leading coefficient one where the contract says so.
 
-    PI: (s+z)/s. PD: (s+z)/(Tf s+1). PID: (s^2+bs+c)/(s(Tf s+1)). lead, lag: (s+z)/(s+p). P: 1. I: 1/s.
+    PI: (s+z)/s. PD: (s+z)/(Tf s+1). PID: (s^2+bs+c)/(s(Tf s+1)). lead, lag: (s+z)/(s+p); lead-lag: two of them. P: 1.
+    I: 1/s.
     """
 
     numerator: tuple[float, ...]
@@ -50,7 +51,12 @@ def shape_of(gains: Gains) -> Shape:
         middle = (gains.proportional + gains.integral * lag) / gain
         bottom = (lag, 1.0, 0.0) if lag else (1.0, 0.0)
         return Shape((1.0, middle, gains.integral / gain), bottom)
-    return Shape((1.0, float(gains.zero or 0.0)), (1.0, float(gains.pole or 0.0)))
+    top: tuple[float, ...] = (1.0, float(gains.zero or 0.0))
+    bottom: tuple[float, ...] = (1.0, float(gains.pole or 0.0))
+    if gains.structure == "lead-lag":
+        top = _times(top, (1.0, float(gains.second_zero or 0.0)))
+        bottom = _times(bottom, (1.0, float(gains.second_pole or 0.0)))
+    return Shape(top, bottom)
 
 
 def with_loop_gain(gains: Gains, wanted: float) -> Gains:

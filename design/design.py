@@ -183,6 +183,8 @@ def rounded(space: Space, point: FloatArray) -> Gains:
         setpoint_weight=round(raw.setpoint_weight, 2),
         zero=None if raw.zero is None else cut(raw.zero),
         pole=None if raw.pole is None else cut(raw.pole),
+        second_zero=None if raw.second_zero is None else cut(raw.second_zero),
+        second_pole=None if raw.second_pole is None else cut(raw.second_pole),
     )
 
 

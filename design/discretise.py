@@ -1,7 +1,7 @@
 """From gains to the difference equation that a controller runs, for one law or many at once."""
 
 from collections.abc import Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, field
 
 import numpy as np
 from numpy.typing import NDArray
@@ -10,7 +10,7 @@ from ..ident.law import Clamp, Law
 from ..ident.run import FloatArray
 from .gains import Gains
 
-LEAD_LAG = ("lead", "lag")
+LEAD_LAG = ("lead", "lag", "lead-lag")
 
 
 @dataclass(frozen=True, eq=False)
@@ -20,8 +20,8 @@ class GainColumns:
     Attributes
     ----------
     structure : StructureName
-    proportional, integral, derivative, filter_time, setpoint_weight, zero, pole : (c,) arrays
-        Units as in `Gains`; zero and pole are used by lead and lag only.
+    proportional, integral, derivative, filter_time, setpoint_weight, zero, pole, second_zero, second_pole : (c,) arrays
+        Units as in `Gains`; zeros and poles are used by lead, lag and lead-lag only.
     """
 
     structure: str
@@ -32,6 +32,8 @@ class GainColumns:
     setpoint_weight: FloatArray
     zero: FloatArray
     pole: FloatArray
+    second_zero: FloatArray = field(default_factory=lambda: np.zeros(0))
+    second_pole: FloatArray = field(default_factory=lambda: np.zeros(0))
 
     @property
     def count(self) -> int:
@@ -42,7 +44,8 @@ class GainColumns:
         """The chosen columns, by index."""
         values = (self.proportional, self.integral, self.derivative, self.filter_time)
         rest = (self.setpoint_weight, self.zero, self.pole)
-        return GainColumns(self.structure, *(v[chosen] for v in values + rest))
+        second = (v[chosen] if v.size else v for v in (self.second_zero, self.second_pole))
+        return GainColumns(self.structure, *(v[chosen] for v in values + rest), *second)
 
     def times(self, factor: FloatArray) -> "GainColumns":
         """The same zeros with the loop gain times (c,) `factor`."""
@@ -55,6 +58,7 @@ class GainColumns:
             self.setpoint_weight + 0.0 * factor,
             self.zero + 0.0 * factor,
             self.pole + 0.0 * factor,
+            *(v + 0.0 * factor if v.size else v for v in (self.second_zero, self.second_pole)),
         )
 
 
@@ -78,7 +82,8 @@ def columns_of(gains: Sequence[Gains]) -> GainColumns:
     def gather(name: str) -> FloatArray:
         return np.array([float(getattr(g, name) or 0.0) for g in gains])
 
-    names = ("proportional", "integral", "derivative", "filter_time", "setpoint_weight", "zero", "pole")
+    names = ["proportional", "integral", "derivative", "filter_time", "setpoint_weight", "zero", "pole"]
+    names += ["second_zero", "second_pole"] if gains[0].structure == "lead-lag" else []
     return GainColumns(gains[0].structure, *(gather(name) for name in names))
 
 
@@ -94,6 +99,8 @@ def gains_of(columns: GainColumns, index: int) -> Gains:
         float(columns.setpoint_weight[index]),
         float(columns.zero[index]) if network else None,
         float(columns.pole[index]) if network else None,
+        float(columns.second_zero[index]) if columns.second_zero.size else None,
+        float(columns.second_pole[index]) if columns.second_pole.size else None,
     )
 
 
@@ -197,12 +204,24 @@ def _product(a: tuple[FloatArray, FloatArray], b: tuple[FloatArray, FloatArray])
 
 
 def _network(gains: GainColumns, interval: float) -> LawColumns:
-    """Lead or lag P (s + z)/(s + p) on the error, by the bilinear rule."""
-    twice = 2.0 / interval
-    bottom = twice + gains.pole
-    top = gains.proportional * np.array([twice + gains.zero, gains.zero - twice, 0.0 * bottom]) / bottom
-    command = np.array([np.ones_like(bottom), (gains.pole - twice) / bottom, 0.0 * bottom])
+    """P (s + z)/(s + p), for lead-lag two in series, on the error, by the bilinear rule."""
+    top, command = _section(gains.zero, gains.pole, interval)
+    if gains.structure == "lead-lag":
+        above, below = _section(gains.second_zero, gains.second_pole, interval)
+        top, command = (
+            _product((top[0], top[1]), (above[0], above[1])),
+            _product((command[0], command[1]), (below[0], below[1])),
+        )
+    top = gains.proportional * top
     return LawColumns(command, top, top, command)
+
+
+def _section(zero: FloatArray, pole: FloatArray, interval: float) -> tuple[FloatArray, FloatArray]:
+    """(3, c) numerator and denominator of (s + z)/(s + p)."""
+    twice = 2.0 / interval
+    bottom = twice + pole
+    top = np.array([twice + zero, zero - twice, 0.0 * bottom]) / bottom
+    return top, np.array([np.ones_like(bottom), (pole - twice) / bottom, 0.0 * bottom])
 
 
 def _length(columns: LawColumns) -> int:

@@ -4,6 +4,7 @@ import math
 from dataclasses import dataclass
 
 from .compensator import over_second, per_response, times_second
+from .discretise import LEAD_LAG
 from .gains import Gains
 
 
@@ -36,7 +37,7 @@ def forms_of(gains: Gains, command_unit: str, response_unit: str) -> dict[str, F
     Åström and Hägglund, Advanced PID Control (ISA, 2006), section 3.2: standard and series form.
     """
     per = per_response(command_unit, response_unit)
-    network = gains.structure in ("lead", "lag")
+    network = gains.structure in LEAD_LAG
     return {
         "parallel": None if network else _parallel(gains, per, over_second(command_unit, response_unit)),
         "standard": None if network else _timed(standard(gains), per),
@@ -162,8 +163,12 @@ def _timed(form: Timed | None, per: str) -> Form | None:
 
 
 def _zero_pole(gains: Gains, per: str) -> Form:
-    return {
+    found = {
         "gain": Quantity(gains.proportional, per),
         "zero": Quantity(float(gains.zero or 0.0), "1/s"),
         "pole": Quantity(float(gains.pole or 0.0), "1/s"),
     }
+    if gains.structure == "lead-lag":
+        found["second_zero"] = Quantity(float(gains.second_zero or 0.0), "1/s")
+        found["second_pole"] = Quantity(float(gains.second_pole or 0.0), "1/s")
+    return found

@@ -22,7 +22,9 @@ class Gains:
     setpoint_weight : float
         The proportional part sees setpoint_weight * setpoint - response.
     zero, pole : float or None, 1/s
-        lead and lag only: proportional * (s + zero)/(s + pole) on the error.
+        lead, lag and lead-lag only: proportional * (s + zero)/(s + pole) on the error.
+    second_zero, second_pole : float or None, 1/s
+        lead-lag only: (s + second_zero)/(s + second_pole) in series, the lag; the first ones are then the lead's.
     """
 
     structure: StructureName
@@ -33,3 +35,5 @@ class Gains:
     setpoint_weight: float = 1.0
     zero: float | None = None
     pole: float | None = None
+    second_zero: float | None = None
+    second_pole: float | None = None

@@ -103,6 +103,8 @@ def gains_of_row(row: dict[str, Any]) -> Gains:
         float(row["setpoint_weight"]),
         values.get("zero"),
         values.get("pole"),
+        values.get("second_zero"),
+        values.get("second_pole"),
     )
 
 

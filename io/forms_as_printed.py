@@ -36,4 +36,6 @@ def forms_as_printed(gains: Gains, command_unit: str, response_unit: str) -> dic
 def _full(form: Form | None, keys: tuple[str, ...]) -> dict[str, Any] | None:
     if form is None:
         return None
-    return {key: {"value": float(form[key].value), "unit": form[key].unit} if key in form else None for key in keys}
+    more = [key for key in form if key not in keys]
+    every = (*keys, *more)
+    return {key: {"value": float(form[key].value), "unit": form[key].unit} if key in form else None for key in every}

@@ -59,7 +59,8 @@ def _mixed(old: Gains, new: Gains, share: float) -> Gains:
         a, b = float(getattr(old, name) or 0.0), float(getattr(new, name) or 0.0)
         return float(f"{a * (b / a) ** share:.{_DIGITS}g}") if a * b > 0.0 else b
 
-    network = new.structure in ("lead", "lag")
+    network = new.structure in ("lead", "lag", "lead-lag")
+    double = new.structure == "lead-lag"
     return replace(
         new,
         proportional=mix("proportional"),
@@ -69,4 +70,6 @@ def _mixed(old: Gains, new: Gains, share: float) -> Gains:
         setpoint_weight=round((1.0 - share) * old.setpoint_weight + share * new.setpoint_weight, 2),
         zero=mix("zero") if network else None,
         pole=mix("pole") if network else None,
+        second_zero=mix("second_zero") if double else None,
+        second_pole=mix("second_pole") if double else None,
     )

@@ -5,9 +5,10 @@ from dataclasses import dataclass
 import numpy as np
 
 from ...ident.run import FloatArray
-from ..discretise import GainColumns
+from ..discretise import LEAD_LAG, GainColumns
 
 FILTER_SHARE = 8.0  # Td/Tf; 8 to 20: common practice, no source
+MOST_SPREAD = 20.0  # pole over zero of a lead, zero over pole of a lag; common practice, no source
 _WEIGHTED = ("PI", "PID")
 
 
@@ -16,7 +17,7 @@ class Space:
     """How points become gains for one structure.
 
     A point is [ln gain, ln zeros ..., setpoint weight]: P [P]; I [I]; PI [P, I/P]; PD [P, Td]; PID [P, I/P, Td];
-    lead, lag [P, z, p/z or z/p]. The weight is there when `weighted`.
+    lead, lag [P, z, p/z or z/p]; lead-lag [P, z, p/z, z', z'/p'], the lag second. The weight is there when `weighted`.
 
     Attributes
     ----------
@@ -39,7 +40,7 @@ class Space:
     @property
     def zeros(self) -> int:
         """How many logarithms follow the gain."""
-        return {"P": 0, "I": 0, "PI": 1, "PD": 1, "PID": 2, "lead": 2, "lag": 2}[self.structure]
+        return {"P": 0, "I": 0, "PI": 1, "PD": 1, "PID": 2, "lead": 2, "lag": 2, "lead-lag": 4}[self.structure]
 
     @property
     def size(self) -> int:
@@ -57,16 +58,20 @@ class Space:
         integral = main * rest[0] if self.structure in _WEIGHTED else none
         time = rest[-1] if self.structure in ("PD", "PID") else none
         lag = np.where(time > 0.0, self.filter_time(time), 0.0)
-        zero, pole = self._network(rest) if self.structure in ("lead", "lag") else (none, none)
-        return GainColumns(self.structure, main, integral, main * time, lag, weight, zero, pole)
+        network = self._network(rest) if self.structure in LEAD_LAG else (none, none)
+        return GainColumns(self.structure, main, integral, main * time, lag, weight, *network)
 
     def filter_time(self, derivative_time: FloatArray) -> FloatArray:
         """Td/8; not above `quick`, where Td is long because P is small, and not under half an update interval."""
         return np.maximum(np.minimum(derivative_time / FILTER_SHARE, self.quick), 0.5 * self.interval)
 
-    def _network(self, rest: FloatArray) -> tuple[FloatArray, FloatArray]:
-        spread = np.clip(rest[1], 1.05, 20.0)
-        return rest[0], rest[0] * spread if self.structure == "lead" else rest[0] / spread
+    def _network(self, rest: FloatArray) -> tuple[FloatArray, ...]:
+        """Zero and pole, and those of a second section; not more than 20 apart."""
+        spread = np.clip(rest[1], 1.05, MOST_SPREAD)
+        if self.structure == "lag":
+            return rest[0], rest[0] / spread
+        second = (rest[2], rest[2] / np.clip(rest[3], 1.05, MOST_SPREAD)) if self.structure == "lead-lag" else ()
+        return rest[0], rest[0] * spread, *second
 
 
 def can_weight(structure: str) -> bool:

@@ -70,8 +70,11 @@ def search(nominal: Plant, plausible: Plausible, situation: Situation, plan: Pla
     rough = bench_of(some, situation, horizon, stand_in=True, grid=90) if np.any(some.stiction > 0.0) else None
     best: Found | None = None
     tried: list[Tried] = list(plan.skipped)
-    for i, structure in enumerate(plan.structures):
-        progress(f"searching zeros and gain of {structure}", i / len(plan.structures))
+    order = plan.structures + plan.last
+    for i, structure in enumerate(order):
+        if i >= len(plan.structures) and best is not None and best.slack >= 0.0:
+            break
+        progress(f"searching zeros and gain of {structure}", i / len(order))
         found = best_of(structure, nominal, _asking(bench, structure, nominal))
         if rough is not None:
             held = check(rough, found.space, found.point)
@@ -119,7 +122,7 @@ def _asking(bench: Bench, structure: str, nominal: Plant) -> Bench:
     """P and PD must not leave an offset that nobody allowed."""
     situation = bench.situation
     free = situation.setting.structures is None and situation.requirements.find("steady_state_error") is None
-    if structure not in ("P", "PD", "lead", "lag") or not free or situation.step == 0.0:
+    if structure not in ("P", "PD", "lead", "lag", "lead-lag") or not free or situation.step == 0.0:
         return bench
     hidden = Requirement("steady_state_error", _LEFT_OVER * abs(situation.step), "at_most")
     return replace(bench, situation=replace(situation, floors=(*situation.floors, hidden)))

@@ -91,6 +91,12 @@ def zero_grid(space: Space, bench: Bench, plants: IndexArray) -> FloatArray:
         "PID": [reset[::2], lead],
         "lead": [np.geomspace(0.1 * ultimate, 2.0 * ultimate, 7), np.array([2.5, 5.0, 10.0])],
         "lag": [np.geomspace(0.02 * ultimate, 0.5 * ultimate, 6), np.array([3.0, 10.0])],
+        "lead-lag": [
+            np.geomspace(0.1 * ultimate, 1.5 * ultimate, 5),
+            np.array([3.0, 10.0]),
+            np.geomspace(0.01 * ultimate, 0.3 * ultimate, 4),
+            np.array([8.0]),
+        ],
     }.get(space.structure, [])
     mesh = np.meshgrid(*[np.log(g) for g in grids], indexing="ij") if grids else []
     shapes = np.array([m.ravel() for m in mesh]).T if mesh else np.zeros((1, 0))

@@ -2,44 +2,31 @@
 
 from dataclasses import dataclass
 
-from ...ident.errors import RequestError
 from ...ident.plant import Plant
 from ..designed import Tried
 from ..requirements import StructureName
 from ..situation import Situation
 
-ORDER: tuple[StructureName, ...] = ("P", "I", "PI", "PD", "PID", "lead", "lag")
+ORDER: tuple[StructureName, ...] = ("P", "I", "PI", "PD", "PID", "lead", "lag", "lead-lag")
+LAST: tuple[StructureName, ...] = ("lead", "lag", "lead-lag")
 _USUAL: tuple[StructureName, ...] = ("P", "I", "PI", "PD", "PID")
 SKIPPED = float("-inf")
 
 
 @dataclass(frozen=True)
 class Plan:
-    """Structures to search in this order, and rows for those that are not."""
+    """Structures to search in this order, rows for those that are not, and those to fall back on where none holds."""
 
     structures: tuple[StructureName, ...]
     skipped: tuple[Tried, ...]
+    last: tuple[StructureName, ...] = ()
 
 
 def plan_for(plant: Plant, situation: Situation) -> Plan:
-    """Drop what cannot work in principle.
-
-    Raises
-    ------
-    RequestError
-        Only structures are allowed that this version does not search.
-    """
+    """Drop what cannot work in principle."""
     allowed = situation.setting.structures or (_USUAL if situation.requirements.items else ("P",))
     known = [name for name in ORDER if name in allowed]
-    if not known:
-        raise RequestError(
-            "this structure is not searched yet",
-            where="controller.structures",
-            found=", ".join(allowed),
-            expected="one of " + ", ".join(ORDER),
-            advice="allow one of these as well; lead-lag comes later",
-        )
-    rows = [Tried(name, SKIPPED, 0.0, "not tried: not built yet") for name in allowed if name not in ORDER]
+    rows: list[Tried] = []
     kept: list[StructureName] = []
     for name in known:
         why = _hopeless(name, plant, situation)
@@ -47,7 +34,9 @@ def plan_for(plant: Plant, situation: Situation) -> Plan:
             rows.append(Tried(name, SKIPPED, 0.0, f"not tried: {why}"))
         else:
             kept.append(name)
-    return Plan(tuple(kept) if kept else tuple(known[-1:]), tuple(rows))
+    free = situation.setting.structures is None and bool(situation.requirements.items)
+    last = tuple(name for name in LAST if not _hopeless(name, plant, situation)) if free else ()
+    return Plan(tuple(kept) if kept else tuple(known[-1:]), tuple(rows), last)
 
 
 def _hopeless(name: StructureName, plant: Plant, situation: Situation) -> str:
@@ -57,7 +46,7 @@ def _hopeless(name: StructureName, plant: Plant, situation: Situation) -> str:
         return "without an integral the ramp error grows without end"
     if name == "I" and plant.integrators:
         return "an integral alone around an integrating plant is unstable at every gain"
-    if name in ("P", "PD", "lead", "lag") and not plant.integrators and _offset_unasked(situation):
+    if name in ("P", "PD", "lead", "lag", "lead-lag") and not plant.integrators and _offset_unasked(situation):
         return "it leaves a steady offset, and no steady-state error was stated that would allow one"
     return ""
 

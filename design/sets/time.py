@@ -11,9 +11,9 @@ from .spans import Span, joined
 
 Measure = Callable[[FloatArray], FloatArray]  # (g,) factors to (rows, g): at most 0 where the row holds
 
-_POINTS = 80  # in each stable span
+_POINTS = 100  # in each stable span
 _DECADES = 1e4  # how far below its upper end, or the chosen gain, a span is scanned
-_CLOSE = 0.25  # a turning point whose measure is this near to 0 is looked at closely
+_CLOSE = 1.0  # a turning point whose measure is this near to 0 is looked at closely
 _ZOOMS = 3
 _INSIDE = 5  # points between two neighbours in a closer look
 _ROUNDS = 48

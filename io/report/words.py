@@ -21,7 +21,7 @@ FORMS = {
     "parallel": "P + I/s on the error, D s/(Tf s + 1) on minus the response",
     "standard": "G (1 + 1/(Ti s) + Td s/(Tf s + 1))",
     "series": "G (1 + 1/(Ti s)) (Td s + 1)/(Tf s + 1)",
-    "zero-pole": "G (s + zero)/(s + pole) on the error",
+    "zero-pole": "G (s + zero)/(s + pole) on the error; for lead-lag times (s + second zero)/(s + second pole)",
 }
 GAIN_NAMES = {
     "proportional": "proportional P",
@@ -33,6 +33,8 @@ GAIN_NAMES = {
     "derivative_time": "derivative time Td",
     "zero": "zero",
     "pole": "pole",
+    "second_zero": "second zero",
+    "second_pole": "second pole",
 }
 
 
