@@ -169,6 +169,15 @@ def _trimmed(row: FloatArray) -> tuple[float, ...]:
 
 def _drawn(earlier: Earlier, structure: Structure) -> tuple[Plausible, FloatArray]:
     """From the parameters and their covariance: log shapes, dead time and gain of each drawn plant."""
+    order = np.trim_zeros(np.asarray(earlier.known.plant.denominator), "b").size - 1
+    if len(earlier.known.plant.numerator) > 1 or order > 2:
+        raise RequestError(
+            "a sheet of this structure can't be rechecked without its dossier",
+            where=str(earlier.file),
+            found=f'structure "{earlier.known.structure}", and no dossier of that job beside the sheet',
+            expected=f"{DOSSIER} of the same job in the same folder",
+            advice="put the dossier back, or process the rig file again",
+        )
     command = np.array([earlier.operating_command, earlier.operating_command_error])
     plausible = plausible_of(earlier.known, _PLANTS, command)
     names = [named.name for named in structure.named]
