@@ -24,6 +24,7 @@ from .search.polish import Found
 from .search.structures import plan_for
 from .selection import select
 from .situation import Situation, situation_of
+from .slow_controller import slow_controller
 from .values import bench_of
 
 _CHECKED = 1000
@@ -264,7 +265,7 @@ def _trajectory(checked: _Checked, nominal: Plant, plausible: Plausible, situati
 def _cautions(
     verdicts: PlantVerdicts, nominal: Plant, plausible: Plausible, gains: Gains, situation: Situation
 ) -> tuple[str, ...]:
-    said = list(limit_cautions(situation))
+    said = [*limit_cautions(situation), *slow_controller(gains, nominal, situation.setting)]
     wanted = first_horizon(nominal, situation)
     if situation.step and verdicts.horizon < 0.99 * wanted:
         said.append(

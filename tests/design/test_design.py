@@ -7,7 +7,6 @@ import pytest
 from gainwright.design.design import design_gains
 from gainwright.design.judge import judge_plants
 from gainwright.design.requirements import ControllerSetting, Limits, Requirement, Requirements
-from gainwright.ident.errors import RequestError
 from gainwright.ident.fitted import Noise, Plausible
 from gainwright.ident.plant import Plant
 
@@ -215,10 +214,11 @@ def test_with_nothing_asked_the_interval_is_the_stable_set():
     assert design.selection.intervals == ((0.0, pytest.approx(1 / 0.02, rel=1e-5)),)
 
 
-def test_a_structure_that_is_not_searched_yet_is_refused():
-    """lead-lag alone: one clear error."""
-    with pytest.raises(RequestError, match="not searched yet"):
-        designed(setting=ControllerSetting(0.02, 0.002, ("lead-lag",)))
+def test_lead_lag_is_refused_to_nobody_who_allows_it(done):
+    """Allowed by name it is the one that is tried; `done`, which names nothing, never needed it."""
+    alone = designed(setting=ControllerSetting(0.02, 0.002, ("lead-lag",)))
+    assert [row.structure for row in alone.tried] == ["lead-lag"]
+    assert "lead-lag" not in [row.structure for row in done.tried]
 
 
 def test_the_trajectory_starts_at_rest_and_ends_at_the_setpoint_inside_its_band(done):
