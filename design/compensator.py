@@ -52,11 +52,11 @@ def shape_of(gains: Gains) -> Shape:
         bottom = (lag, 1.0, 0.0) if lag else (1.0, 0.0)
         return Shape((1.0, middle, gains.integral / gain), bottom)
     top: tuple[float, ...] = (1.0, float(gains.zero or 0.0))
-    bottom: tuple[float, ...] = (1.0, float(gains.pole or 0.0))
+    below: tuple[float, ...] = (1.0, float(gains.pole or 0.0))
     if gains.structure == "lead-lag":
         top = _times(top, (1.0, float(gains.second_zero or 0.0)))
-        bottom = _times(bottom, (1.0, float(gains.second_pole or 0.0)))
-    return Shape(top, bottom)
+        below = _times(below, (1.0, float(gains.second_pole or 0.0)))
+    return Shape(top, below)
 
 
 def with_loop_gain(gains: Gains, wanted: float) -> Gains:
