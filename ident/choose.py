@@ -29,11 +29,6 @@ _DRIVE = 4.0
 # Above this gain of twice the log likelihood, to first order, the further structures are fitted.
 _UNEXPLAINED = 6.0
 
-# A residual under this share of the response's movement moves no gain: nothing further is looked for, and a further
-# structure must lower the visible misfit by this factor (common practice, no source).
-_SLIGHT = 0.01
-_VISIBLY = 0.97
-
 # Rise of the plain sum of squares that a whitened estimate may cost.
 _TRADE = 0.02
 _TRADE_WITH_GAIN = 0.1
@@ -100,8 +95,7 @@ def fit_candidates(
     fitted = sorted(_distinct(fitted), key=lambda f: f.criterion)
     recoloured, colour = _under_one_noise(fitted)
     left = [family for family in families if family not in usual and _kin(family[0], recoloured[0])]
-    slight = recoloured[0].misfit < _SLIGHT
-    if not left or slight or _left_by(recoloured[0], colour) < _UNEXPLAINED:
+    if not left or _left_by(recoloured[0], colour) < _UNEXPLAINED:
         return recoloured, colour
     for i, family in enumerate(left):
         if progress:
@@ -109,8 +103,7 @@ def fit_candidates(
         fitted.append(_from_library(tuple(runs), reference, fixed_command, family))
     together, own_colour = _under_one_noise(sorted(_distinct(fitted), key=lambda f: f.criterion))
     together = [f for f in together if not _three_lags(f)]
-    better = together[0].problem.structure.further and together[0].misfit < _VISIBLY * recoloured[0].misfit
-    return (together, own_colour) if better else (recoloured, colour)
+    return (together, own_colour) if together[0].problem.structure.further else (recoloured, colour)
 
 
 def _under_one_noise(fitted: list[Fitted]) -> tuple[list[Fitted], Colour]:
@@ -199,7 +192,15 @@ def steady_fit(fitted: Fitted) -> Fitted:
     Under noise alone both estimates agree within their spread, and the whitened one is the sharper. When the model is
     not quite the plant the residual is coloured by the model's own error; whitening then trades the slow part of the
     record for the fast one, and the two part. Plain least squares stays near what the record shows.
+
+    In closed loop the noise moves the command, and only the whitened estimate is free of the bias that this gives.
+
+    References
+    ----------
+    Ljung, System Identification, chapter on closed-loop data: the direct method needs the noise model (from memory).
     """
+    if any(run.closed_loop for run in fitted.problem.runs):
+        return fitted
     problem = fitted.problem
     at_whitened = problem.solve(fitted.theta, WHITE).cost
     theta, solved = polish(problem, fitted.theta, WHITE)

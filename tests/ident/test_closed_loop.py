@@ -1,0 +1,40 @@
+"""Logs taken in closed loop: the noise moves the command through the controller, and biases what ignores its colour."""
+
+import numpy as np
+import pytest
+from gainwright.ident.catalogue import LAG
+from gainwright.ident.identify import identify
+from gainwright.ident.run import Run
+from scipy.signal import lfilter
+
+INTERVAL, GAIN, LAG_TIME = 0.1, 2.0, 1.0
+
+
+def closed_loop_log(seed, count=3000):
+    """A lag under PI control, the setpoint stepping between two levels, AR(1) 0.8 noise fed back; exact for the hold."""
+    rng = np.random.default_rng(seed)
+    setpoint = np.repeat(rng.choice([-1.0, 1.0], count // 40), 40)
+    noise = lfilter([1.0], [1.0, -0.8], rng.standard_normal(count)) * 0.12
+    decay = np.exp(-INTERVAL / LAG_TIME)
+    state = integral = 0.0
+    command, response = np.zeros(count), np.zeros(count)
+    for k in range(count):
+        response[k] = state + noise[k]
+        error = setpoint[k] - response[k]
+        command[k] = 1.5 * error + integral
+        integral += 0.1 * error
+        state = decay * state + GAIN * (1 - decay) * command[k]
+    time = INTERVAL * np.arange(count)
+    return Run(f"loop {seed}", time, command, response, setpoint, between="held", command_before=0.0, closed_loop=True)
+
+
+def test_a_plant_in_closed_loop_is_fitted_without_the_bias_of_feedback():
+    """Mean of four logs within 1 % in gain and 2 % in lag; no dead time is made up where there is none.
+
+    The dead time's own standard error is some hundredth of a sample interval here; plain least squares finds half one.
+    """
+    fits = [identify([closed_loop_log(seed)], structures=[LAG]) for seed in range(4)]
+    gain, dead_time, lag = np.array([[p.value for p in fit.parameters] for fit in fits]).T
+    assert np.mean(gain) == pytest.approx(GAIN, rel=0.01)
+    assert np.mean(lag) == pytest.approx(LAG_TIME, rel=0.02)
+    assert np.max(dead_time) < 0.1 * INTERVAL
