@@ -29,6 +29,11 @@ _DRIVE = 4.0
 # Above this gain of twice the log likelihood, to first order, the further structures are fitted.
 _UNEXPLAINED = 6.0
 
+# A residual under this share of the response's movement moves no gain: nothing further is looked for, and a further
+# structure must lower the visible misfit by this factor (common practice, no source).
+_SLIGHT = 0.01
+_VISIBLY = 0.97
+
 # Rise of the plain sum of squares that a whitened estimate may cost.
 _TRADE = 0.02
 _TRADE_WITH_GAIN = 0.1
@@ -95,7 +100,8 @@ def fit_candidates(
     fitted = sorted(_distinct(fitted), key=lambda f: f.criterion)
     recoloured, colour = _under_one_noise(fitted)
     left = [family for family in families if family not in usual and _kin(family[0], recoloured[0])]
-    if not left or _left_by(recoloured[0], colour) < _UNEXPLAINED:
+    slight = recoloured[0].misfit < _SLIGHT
+    if not left or slight or _left_by(recoloured[0], colour) < _UNEXPLAINED:
         return recoloured, colour
     for i, family in enumerate(left):
         if progress:
@@ -103,7 +109,8 @@ def fit_candidates(
         fitted.append(_from_library(tuple(runs), reference, fixed_command, family))
     together, own_colour = _under_one_noise(sorted(_distinct(fitted), key=lambda f: f.criterion))
     together = [f for f in together if not _three_lags(f)]
-    return (together, own_colour) if together[0].problem.structure.further else (recoloured, colour)
+    better = together[0].problem.structure.further and together[0].misfit < _VISIBLY * recoloured[0].misfit
+    return (together, own_colour) if better else (recoloured, colour)
 
 
 def _under_one_noise(fitted: list[Fitted]) -> tuple[list[Fitted], Colour]:

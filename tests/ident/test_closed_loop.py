@@ -11,7 +11,7 @@ INTERVAL, GAIN, LAG_TIME = 0.1, 2.0, 1.0
 
 
 def closed_loop_log(seed, count=3000):
-    """A lag under PI control, the setpoint stepping between two levels, AR(1) 0.8 noise fed back; exact for the hold."""
+    """A lag under PI control, the setpoint stepping between two levels, AR(1) 0.8 noise fed back; exact."""
     rng = np.random.default_rng(seed)
     setpoint = np.repeat(rng.choice([-1.0, 1.0], count // 40), 40)
     noise = lfilter([1.0], [1.0, -0.8], rng.standard_normal(count)) * 0.12
