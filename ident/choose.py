@@ -100,8 +100,8 @@ def fit_candidates(
     fitted = sorted(_distinct(fitted), key=lambda f: f.criterion)
     recoloured, colour = _under_one_noise(fitted)
     left = [family for family in families if family not in usual and _kin(family[0], recoloured[0])]
-    slight = recoloured[0].misfit < _SLIGHT
-    if not left or slight or _left_by(recoloured[0], colour) < _UNEXPLAINED:
+    visible = min(f.misfit for f in fitted)
+    if not left or visible < _SLIGHT or _left_by(recoloured[0], colour) < _UNEXPLAINED:
         return recoloured, colour
     for i, family in enumerate(left):
         if progress:
@@ -109,7 +109,7 @@ def fit_candidates(
         fitted.append(_from_library(tuple(runs), reference, fixed_command, family))
     together, own_colour = _under_one_noise(sorted(_distinct(fitted), key=lambda f: f.criterion))
     together = [f for f in together if not _three_lags(f)]
-    better = together[0].problem.structure.further and together[0].misfit < _VISIBLY * recoloured[0].misfit
+    better = together[0].problem.structure.further and min(f.misfit for f in fitted) < _VISIBLY * visible
     return (together, own_colour) if better else (recoloured, colour)
 
 
