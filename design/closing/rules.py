@@ -27,6 +27,8 @@ _DELAY_MOVED, _DELAY_MATTERS = 0.5, 0.08
 _SURE = 5.0
 # A prediction that misses by such a multiple of the fitted noise, and by such a share of the response's own movement.
 _MISSES = ((2.5, 0.12), (1.5, 0.2))
+# A run foretold within this multiple of the fitted noise is not at odds with the fit, whatever it gives by itself.
+_FORETOLD = 1.3
 
 
 @dataclass(frozen=True)
@@ -137,6 +139,8 @@ def _blind(evidence: Evidence) -> Answer:
 
 def _at_odds(evidence: Evidence) -> Answer:
     if evidence.real or evidence.difference <= _ANOTHER_PLANT:
+        return None
+    if evidence.missed <= _FORETOLD * evidence.fit.noise.std:
         return None
     return "not comparable", (
         f"by itself this run gives another plant ({evidence.shown}): its response differs by "
