@@ -89,7 +89,7 @@ def largest_from(distance: FloatArray, time: float, spacing: float) -> FloatArra
     share = first - place
     at_time = distance[first] if first == 0 else share * distance[first - 1] + (1.0 - share) * distance[first]
     rest = distance[first:]
-    return np.maximum(at_time, peak(rest) if rest.shape[0] > 2 else rest.max(axis=0, initial=0.0))
+    return np.asarray(np.maximum(at_time, peak(rest) if rest.shape[0] > 2 else rest.max(axis=0, initial=0.0)))
 
 
 def short_of_rise(share: FloatArray, limit: float, spacing: float) -> FloatArray:
