@@ -20,7 +20,7 @@ from .slack import UNSTABLE, requirement_slack
 from .values import Bench, values_of
 
 _LINEAR = ("command_noise", "damping_ratio", "ramp_error")
-_IN_LINE, _IN_TIME = 1e-11, 3e-9  # relative widths at which edges are known
+_IN_LINE, _IN_TIME = 1e-11, 3e-8  # relative widths at which edges are known
 _FAITHFUL = 0.1  # of the gain at which the stand-in of a continuous loop becomes unstable: as far as it is believed
 
 

@@ -53,6 +53,8 @@ class _Rough:
         part = np.maximum(drives.delay - whole * interval, 0.0)
         begins = self.stride * np.arange(points)[:, None]
         self.old_share = np.clip(part[None, :] - begins, 0.0, self.stride)
+        self.any_old = np.any(self.old_share > 0.0, axis=1)
+        self.any_new = np.any(self.old_share < self.stride, axis=1)
         self.smooth = np.exp(-self.stride / filter_time) if filter_time > 0.0 else 0.0
 
     def run(self, setpoint: FloatArray, disturbance: FloatArray, samples: int) -> History:
@@ -79,9 +81,14 @@ class _Rough:
             new, old = sent[k + depth - self.lag, columns], sent[k + depth - self.lag - 1, columns]
             for j in range(self.points):
                 share = self.old_share[j]
-                speed, moved = self.drives.advance(speed, old, share)
-                speed, more = self.drives.advance(speed, new, self.stride - share)
-                seen, place = self._seen(seen, place, place + moved + more)
+                after = place
+                if self.any_old[j]:
+                    speed, moved = self.drives.advance(speed, old, share)
+                    after = after + moved
+                if self.any_new[j]:
+                    speed, moved = self.drives.advance(speed, new, self.stride - share)
+                    after = after + moved
+                seen, place = self._seen(seen, place, after)
                 response[k, j] = place
                 np.maximum(fastest, np.abs(speed), out=fastest)
         flat = response.reshape(samples * self.points, count)

@@ -7,9 +7,9 @@ DRIVE_WITH_FRICTION = Structure(
     name="integrator with lag and friction",
     formula="K / (s (T s + 1)), the command less its dry friction",
     shapes=(
-        Shape("time constant", "time", steps=12),
-        Shape("friction forward", "command", steps=4),
-        Shape("friction backward", "command", steps=4),
+        Shape("time constant", "time", steps=10),
+        Shape("friction forward", "command", steps=3),
+        Shape("friction backward", "command", steps=3),
     ),
     polynomials=polynomials,
     named=(Named("time constant", "s"), Named("friction forward", "command"), Named("friction backward", "command")),
