@@ -12,7 +12,7 @@ from .run import Run
 from .start import first_guesses
 
 # Above this share of samples at which the command moves, the question matters; below, the record is one of steps.
-_BUSY = 0.15
+_BUSY = 0.3
 
 
 def settle_between(runs: Sequence[Run]) -> tuple[tuple[Run, ...], str]:
