@@ -32,7 +32,7 @@ _DIGITS = 5
 _FINE = 12_000  # samples up to which the gain sets are found with the very law
 _REPAIRS = 2
 _MOST_POINTS = 64  # between two samples
-_SHARP = 20_000  # points over the horizon between which the fitted plant's response is read for its gain sets
+_SHARP = 6_000  # points over the horizon between which the fitted plant's response is read for its gain sets
 
 
 def design_gains(

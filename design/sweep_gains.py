@@ -24,7 +24,7 @@ from .sweep import Band, GainSweep
 from .values import Bench, Values, bench_of, values_of
 
 _GAINS = 161
-_FEWEST, _MOST = 40, 100  # plausible plants
+_FEWEST, _MOST = 30, 100  # plausible plants
 _WORK, _ROUGH_WORK = 7.5e6, 2.4e6  # steps of single plants in all; friction is run in closed form, which costs more
 _STAND_IN = 360  # samples from which on a longer update interval may stand in
 _FEW = 200  # samples; where there are more, nothing is looked at between them

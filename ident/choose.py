@@ -34,6 +34,9 @@ _UNEXPLAINED = 6.0
 _SLIGHT = 0.01
 _VISIBLY = 0.97
 
+# Steps down from each first guess before only the lowest goes on.
+_SCOUT = 9
+
 # Rise of the plain sum of squares that a whitened estimate may cost.
 _TRADE = 0.02
 _TRADE_WITH_GAIN = 0.1
@@ -257,8 +260,9 @@ def _from_library(runs: tuple[Run, ...], reference: float, fixed_command: bool, 
     ends = []
     for structure in family:
         problem = Regression(runs, structure, reference, fixed_command)
-        ends += [(problem, *polish(problem, theta)) for theta in first_guesses(problem)]
+        ends += [(problem, *polish(problem, theta, rounds=_SCOUT)) for theta in first_guesses(problem)]
     problem, theta, solved = min(ends, key=lambda end: end[2].cost)
+    theta, solved = polish(problem, theta)
     return _weighed(problem, theta, solved)
 
 
