@@ -114,8 +114,13 @@ def judged_on(
 ) -> PlantVerdicts:
     """The same for a situation already gathered; the horizon grows until five settling times fit."""
     horizon = max(horizon, first_horizon(plausible.plants[0], situation))
-    horizon = _long_enough(gains, plausible, situation, horizon, law)
+    if len(plausible.plants) > 3 * _SAMPLED:
+        horizon = _long_enough(gains, plausible, situation, horizon, law)
     bench, values = _evaluated(gains, plausible, situation, horizon, law)
+    wanted = min(watched_long_enough(horizon, values.settled), _MOST_SAMPLES * situation.setting.update_interval)
+    if len(plausible.plants) <= 3 * _SAMPLED and wanted > 1.05 * horizon:
+        horizon = _long_enough(gains, plausible, situation, wanted, law)
+        bench, values = _evaluated(gains, plausible, situation, horizon, law)
     return _verdicts(values, situation, bench.samples * bench.running.interval)
 
 

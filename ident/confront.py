@@ -17,7 +17,7 @@ from .start import first_guesses
 from .whiten import WHITE, Colour
 
 _DRAWS = 1024
-_JOINT = 160
+_JOINT = 120
 # A residual above this multiple of the fitted noise: the earlier parameters may be too far off to start from.
 _SURPRISED = 1.3
 

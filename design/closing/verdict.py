@@ -22,7 +22,7 @@ from .rules import REAL, Evidence, Finding, decide
 # Where the loop works, in multiples of the chosen pole's distance from the origin.
 _WORKS = (0.2, 0.5, 1.0, 1.5)
 _HANDFUL = 15
-_JUDGED = 160
+_JUDGED = 120
 _COMPARED = 200
 
 

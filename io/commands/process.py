@@ -1,5 +1,6 @@
 """`gainwright process`: the whole job, from a rig file to a gain sheet with its dossier and report."""
 
+import gc
 import os
 import shutil
 import sys
@@ -26,6 +27,7 @@ def process(
 
     Writes gains.json (the gain sheet), dossier.h5 (every number behind it) and report.html.
     """
+    gc.set_threshold(100_000, 50, 50)  # a short process with many small values and hardly a cycle among them
     from ..deliver import deliver
     from ..picture_files import write_pictures
     from ..progress import shown_progress
