@@ -5,7 +5,7 @@ from dataclasses import replace
 
 import numpy as np
 
-from .between import settle_between
+from .between import Between, settle_between
 from .catalogue import CATALOGUE, Structure
 from .choose import Fitted, Progress, colour_of, evidence, fit_candidates, name_of, refit, steady_fit
 from .ensemble import Drawn, draw_structure, operating_commands, plant_of, plausible_plants
@@ -71,6 +71,7 @@ def identify(
         progress("drawing plausible plants", 0.8)
     kept = [i for i in range(len(fitted)) if i == 0 or weights[i] >= _TIED]
     drawn = [draw_structure(fitted[i], colour, _DRAWS if i == 0 else _TIED_DRAWS, seed) for i in kept]
+    drawn = [replace(d, draws=between.spread(d.draws, len(d.fitted.theta) - 1)) for d in drawn]
     return _assembled(fitted, weights, drawn, weights[kept], colour, operating_response, between)
 
 
@@ -92,7 +93,7 @@ def _assembled(
     shares: FloatArray,
     colour: Colour,
     operating_response: float | None,
-    between: str,
+    between: Between,
 ) -> Fit:
     chosen = fitted[0]
     problem = chosen.problem
@@ -122,7 +123,7 @@ def _assembled(
         candidates=candidates,
         ties=ties,
         plausible=plausible_plants(drawn, shares, response_there, _PLANTS),
-        explanation=_explanation(candidates, ties, between),
+        explanation=_explanation(candidates, ties, between.words),
         cautions=_cautions(drawn[0], colour),
         drift=colour.rho > _DRIFTING or colour.wander > 0.0,
         draws=drawn[0].draws[:, : s + 2],

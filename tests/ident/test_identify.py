@@ -7,6 +7,7 @@ from gainwright.ident.catalogue import INTEGRATOR, LAG, TWO_LAGS
 from gainwright.ident.errors import RecordError
 from gainwright.ident.identify import identify
 from gainwright.ident.run import Run
+from scipy.signal import lfilter
 
 TIME = 0.1 * np.arange(300)
 PROFILE = ((3.0, 3.0), (12.0, 1.0), (20.0, 2.5))
@@ -176,6 +177,29 @@ def test_a_straight_command_between_samples_is_told_from_a_held_one():
         assert kind in fit.explanation
         assert found(fit)["time constant"].value == pytest.approx(slow, rel=0.05)
         assert found(fit)["dead time"].value < 0.02
+
+
+def test_a_held_command_that_a_forgotten_lag_makes_look_straight_leaves_the_dead_time_open():
+    """Two lags fitted to three, 0.26, 0.12 and 0.05 s, under a held random command: the delay of 0.16 s and the third
+    lag act together as 0.16 to 0.21 s; a straight command would need half an interval, 0.04 s, more.
+    """
+    rng = np.random.default_rng(3)
+    fine, every = 0.002, 40
+    level, held = 1.0, np.zeros(600)
+    for k in range(10, 600):
+        level = -level if rng.random() < 0.2 else level
+        held[k] = level
+    clean = np.concatenate([np.zeros(80), np.repeat(held, every)[:-80]])
+    for slow in (0.26, 0.12, 0.05):
+        keep = np.exp(-fine / slow)
+        clean = lfilter([0.0, 1 - keep], [1.0, -keep], clean)
+    noise = lfilter([1.0], [1.0, -0.8], rng.standard_normal(600))
+    run = Run("busy", fine * every * np.arange(600), held, clean[::every] + 0.02 * noise)
+    fit = identify([run], structures=[TWO_LAGS])
+    dead_time = found(fit)["dead time"]
+    assert dead_time.low < 0.21 < dead_time.high
+    assert dead_time.high - dead_time.low > 0.04
+    assert "don't tell it surely" in fit.explanation
 
 
 def test_plausible_plants_are_as_many_and_as_wide_as_promised():
