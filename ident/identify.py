@@ -8,6 +8,7 @@ import numpy as np
 from .between import Between, settle_between
 from .catalogue import CATALOGUE, Structure
 from .choose import Fitted, Progress, colour_of, evidence, fit_candidates, name_of, refit, steady_fit
+from .closed_loop import resting_response
 from .ensemble import Drawn, draw_structure, operating_commands, plant_of, plausible_plants
 from .fit import finish
 from .fitted import Candidate, Fit, FittedRun, Noise, Parameter
@@ -40,7 +41,8 @@ def identify(
     runs : sequence of Run
         At least one, with a command that moves.
     operating_command, operating_response : float or None
-        As the rig file states them; None: the first run's steady command, and the response it holds.
+        As the rig file states them; None: the first run's steady command, and the response it holds; in closed loop the
+        response before the setpoint moves, and the command that holds it.
     structures : sequence of Structure
     seed : int
         Of the scrambled draws.
@@ -63,6 +65,7 @@ def identify(
     require_usable(runs)
     runs, between = settle_between(runs)
     reference = runs[0].start_command if operating_command is None else operating_command
+    operating_response = resting_response(runs) if operating_response is None else operating_response
     fitted, colour = fit_candidates(runs, reference, operating_command is not None, structures, progress)
     weights = evidence(fitted)
     chosen, colour = _finished(fitted[0], colour)

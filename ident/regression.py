@@ -135,6 +135,22 @@ class Regression:
         numerator, denominator = self.structure.polynomials((1.0,) * len(self.structure.shapes))
         return len(numerator) + int(self.structure.zero) == len(denominator)
 
+    @property
+    def soonest(self) -> float:
+        """Least dead time, s: in closed loop the command follows from the sample, which it can't have moved yet."""
+        return 1e-3 * self.interval if self.jumps and self.feeds_back else 0.0
+
+    @property
+    def earliest(self) -> float:
+        """Least dead time at which columns may be asked for, s: in closed loop a command ahead of its time has seen the
+        noise of the very sample that it would explain."""
+        return self.soonest if self.feeds_back else -np.inf
+
+    @cached_property
+    def feeds_back(self) -> bool:
+        """Whether any run was taken in closed loop."""
+        return any(run.closed_loop for run in self.runs)
+
     @cached_property
     def span(self) -> float:
         """Largest distance of any command from the reference, command unit."""
@@ -252,10 +268,11 @@ class Regression:
         """Unwhitened model, (n,), and its derivatives, (n, s + 1 + q): log shapes, dead time, then the linear part."""
         columns = self.columns(theta)
         steps = self.steps(theta)
-        slopes = [
-            (self.columns(theta + step) - self.columns(theta - step)) @ coefficients / (2 * step.max())
-            for step in (steps[:-1] if self.jumps else steps)
-        ]
+        slopes = []
+        for step in steps[:-1] if self.jumps else steps:
+            low = theta - step
+            low[-1] = max(low[-1], self.earliest)
+            slopes.append((self.columns(theta + step) - self.columns(low)) @ coefficients / np.sum(theta + step - low))
         if self.jumps:
             # between two samples the dead time does nothing that the linear part could not
             slopes.append(np.zeros(len(columns)))

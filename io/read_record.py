@@ -10,10 +10,10 @@ from numpy.typing import NDArray
 from ..ident.errors import RecordError, RequestError
 from ..ident.health.clock import mend_clock
 from ..ident.health.copied import share_stretch
-from ..ident.health.look import Looked, look_at
 from ..ident.health.seen import Seen
-from ..ident.run import FloatArray, Run
+from ..ident.run import Between, FloatArray, Run
 from . import units
+from .look_at_record import looked_at
 from .readers.port import Channel, Hints, Log
 from .readers.registry import reader_of
 from .record import Finding, Record
@@ -76,7 +76,9 @@ def read_record(spec: RunSpec, rig: Rig) -> Record:
     samples = _with_clock(spec, samples, findings)
     windowed, before = _windowed(spec, samples)
     _require_samples(spec, windowed, samples)
-    looked = _looked(spec, rig, windowed, before)
+    looked = looked_at(
+        spec, rig, windowed.time, windowed.command, windowed.response, setpoint=windowed.setpoint, before=before
+    )
     findings += [_finding(seen) for seen in looked.seen]
     findings += unit_slips(spec, rig, windowed.time, windowed.response)
     _raise_stops(spec, findings)
@@ -86,7 +88,7 @@ def read_record(spec: RunSpec, rig: Rig) -> Record:
         command=windowed.command,
         response=looked.response,
         setpoint=windowed.setpoint,
-        between=spec.between_samples,
+        between=_between(spec),
         command_before=before,
         at_rest=before is not None and before == spec.command_before,
         excitation=spec.excitation,
@@ -278,44 +280,9 @@ def _require_samples(spec: RunSpec, windowed: _Samples, whole: _Samples) -> None
     )
 
 
-def _looked(spec: RunSpec, rig: Rig, samples: _Samples, before: float | None) -> Looked:
-    ranges = {
-        role: _range(spec.signals[role], wanted)
-        for role, wanted in (("command", rig.command_unit), ("response", rig.response_unit))
-    }
-    looked = look_at(
-        samples.time,
-        samples.command,
-        samples.response,
-        command_unit=rig.command_unit,
-        response_unit=rig.response_unit,
-        before=before,
-        response_range=ranges["response"],
-        command_range=ranges["command"],
-    )
-    seen = looked.seen if spec.use == "fit" else tuple(_softened(each) for each in looked.seen)
-    if spec.loop == "closed":  # there the response moves the command, and rightly
-        seen = tuple(
-            each for each in seen if each.kind not in {"command and response swapped", "actuator did not follow"}
-        )
-    return Looked(looked.response, seen)
-
-
-def _softened(seen: Seen) -> Seen:
-    """A held-out run without excitation stops nothing: it just can't confirm."""
-    if seen.kind not in {"idle command", "dead response"} or seen.refuses != "stops":
-        return seen
-    return Seen(seen.kind, seen.where, seen.size, seen.action, "holds")
-
-
-def _range(signal: Signal, wanted: str) -> tuple[float | None, float | None]:
-    if signal.unit is None:
-        return signal.lowest, signal.highest
-    ends = [
-        None if end is None else units.convert_reading(end, signal.unit, wanted)
-        for end in (signal.lowest, signal.highest)
-    ]
-    return ends[0], ends[1]
+def _between(spec: RunSpec) -> Between:
+    """A sampled controller holds its command: a log taken in closed loop need not be asked."""
+    return "held" if spec.loop == "closed" and spec.between_samples == "auto" else spec.between_samples
 
 
 def _finding(seen: Seen) -> Finding:

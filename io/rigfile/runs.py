@@ -228,11 +228,3 @@ def refuse_not_yet(number: int, run: RunPart) -> None:
             expected="a log in time",
             advice="log the response to a step, a sweep or a random command",
         )
-    if run.loop == "closed":
-        raise RequestError(
-            "logs taken in closed loop are not used yet",
-            where=f"runs[{number}].loop",
-            found='"closed"',
-            expected='"open"',
-            advice="log a run with the controller switched off",
-        )

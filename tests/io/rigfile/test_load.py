@@ -272,7 +272,6 @@ CASES: dict[str, tuple[str, str, str]] = {
         'from = "1 s"\nbefore = { command = "6 mm" }',
         r"runs\[2\].before.command: wrong kind",
     ),
-    "closed loop": ('from = "1 s"', 'from = "1 s"\nloop = "closed"', r"runs\[2\].loop[\s\S]*not used yet"),
     "frequency table": ('from = "1 s"', 'excitation = "frequency-table"', r"not read yet"),
     "a given plant beside fit runs": (
         "[limits]",
