@@ -53,7 +53,7 @@ def _double(slow):
 
 
 def plant(name: str, rng: np.random.Generator) -> tuple[float, float, Callable]:
-    """Gain, dead time and unit step response of a random plant; a zero's time differs from every lag by 40 % or more."""
+    """Gain, dead time and unit step response of a random plant; a zero is 40 % or more away from every lag."""
     slow = float(np.exp(rng.uniform(np.log(0.5), np.log(2.5))))
     fast = slow * rng.uniform(0.2, 0.8)
     frequency, damping = 2.0 / slow, float(np.exp(rng.uniform(np.log(0.05), np.log(0.8))))
@@ -125,7 +125,7 @@ def main() -> int:
             names = FIVE if five else FIVE + FURTHER
             tasks = [(n, decibels, rho, asked.seed + i, five) for n in names for i in range(asked.replicates)]
             outcomes = list(pool.map(chosen, tasks))
-            right = {n: 0 for n in names}
+            right = dict.fromkeys(names, 0)
             first, tied, wrong = 0, 0, []
             for (name, _, _, seed, _), (found, ties) in zip(tasks, outcomes, strict=True):
                 among = found == name or (name in ties and len(ties) <= 2)
@@ -135,8 +135,9 @@ def main() -> int:
                 if not among:
                     wrong.append(f"{name} {seed}: {found}")
             total = len(tasks)
-            print(f"{title}: the true one {100 * first / total:.1f} %, or in a tie of at most three "
-                  f"{100 * sum(right.values()) / total:.1f} %, ties in {100 * tied / total:.1f} % of {total}")  # fmt: skip
+            shares = [100 * count / total for count in (first, sum(right.values()), tied)]
+            words = "{}: the true one {:.1f} %, or in a tie of at most three {:.1f} %, ties in {:.1f} %"
+            print(words.format(title, *shares))
             print("    " + ", ".join(f"{n} {100 * c / asked.replicates:.0f} %" for n, c in right.items()))
             print("    " + "; ".join(wrong), flush=True)
     return 0

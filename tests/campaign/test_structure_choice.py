@@ -20,10 +20,10 @@ def test_the_third_order_step_response_is_that_of_its_differential_equation():
 
 
 def test_the_structure_is_chosen_right_at_35_db_under_coloured_noise():
-    """25 plants of five structures; 95 % right, in a tie of at most three, is 23.75 of them: 23 are asked."""
+    """15 plants of five structures; 95 % right, in a tie of at most three, is 14.25 of them: 14 are asked."""
     right = 0
     for name in structure_choice.FIVE:
-        for seed in range(5):
+        for seed in range(3):
             found, ties = structure_choice.chosen((name, 35.0, 0.8, 500 + seed, True))
             right += found == name or (name in ties and len(ties) <= 2)
-    assert right >= 23
+    assert right >= 14
