@@ -51,7 +51,7 @@ def friction_response(
     >>> [round(float(x), 6) for x in friction_response(grid, 0.0, 1e-9, (1.0, 1.0), 0.0)]
     [0.0, 0.0, 2.0, 4.0]
     """
-    times, levels = _changes(grid, start, dead_time)
+    times, levels = _changes(grid, start, dead_time + grid.late)
     phases = _phases(times, levels, float(grid.time[-1]), time_constant, friction)
     at = np.searchsorted(phases.start, grid.time, side="right") - 1
     begin, speed = np.array(phases.start)[at], np.array(phases.speed)[at]

@@ -34,6 +34,9 @@ class Run:
     closed_loop : bool
     at_rest : bool
         The person says that the rig stood still under `command_before`; else the record has to show it.
+    command_late : float, s
+        So long after its sample the command moves. Zero where the command itself was logged; a command worked out from
+        what the controller saw is late by its computation.
     """
 
     label: str
@@ -46,6 +49,7 @@ class Run:
     excitation: Excitation = "auto"
     closed_loop: bool = False
     at_rest: bool = False
+    command_late: float = 0.0
 
     @property
     def valid(self) -> NDArray[np.bool_]:

@@ -27,12 +27,15 @@ class Grid:
         Of an even grid; None where the stamps are uneven.
     interpolated : bool
         The command runs straight between samples; else it is held.
+    late : float, s
+        The command moves so long after its samples.
     """
 
     time: FloatArray
     moved: FloatArray
     interval: float | None
     interpolated: bool
+    late: float = 0.0
 
 
 def grid_of(run: Run) -> Grid:
@@ -41,7 +44,8 @@ def grid_of(run: Run) -> Grid:
     n = len(time)
     interval = float(time[-1] / (n - 1))
     even = bool(np.max(np.abs(time - interval * np.arange(n))) <= _EVEN * interval)
-    return Grid(time, run.command - run.start_command, interval if even else None, run.between == "interpolated")
+    moved = run.command - run.start_command
+    return Grid(time, moved, interval if even else None, run.between == "interpolated", run.command_late)
 
 
 def response(modes: Modes, grid: Grid, dead_time: float) -> FloatArray:
@@ -50,6 +54,7 @@ def response(modes: Modes, grid: Grid, dead_time: float) -> FloatArray:
     Each mode obeys x' = pole x + residue u(t - dead_time); the response is the real part of the sum of x. Even grids go
     through one recursion a mode; uneven ones through a scan over all instants at which anything changes.
     """
+    dead_time = dead_time + grid.late
     if grid.interval is not None:
         total = np.zeros(len(grid.time))
         for pole, residue in zip(modes.poles, modes.residues, strict=True):

@@ -77,13 +77,18 @@ def _put_record(group: h5py.Group, record: Record, rig: Rig) -> None:
         rig,
         [
             ("time", run.time, "s", "from the record's first sample"),
-            ("command", run.command, "command", "as logged, scaled to the reading"),
+            ("command", run.command, "command", _command_from(record)),
             ("response", run.response, "response", "as logged, scaled to the reading; NaN where a sample is lost"),
         ],
     )
     if run.setpoint is not None:
         _traces(group, rig, [("setpoint", run.setpoint, "response", "as logged")])
     _words(group, "findings", (each.text for each in record.findings), "what was seen in this record")
+
+
+def _command_from(record: Record) -> str:
+    logged = "command" in record.spec.signals
+    return "as logged, scaled to the reading" if logged else "not logged: worked out from the gains in force"
 
 
 def _put_fit(group: h5py.Group, fit: Fit, rig: Rig) -> None:

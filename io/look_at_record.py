@@ -37,7 +37,7 @@ def looked_at(
         Steady command before the window.
     """
     ranges = {
-        role: _range(spec.signals[role], wanted)
+        role: _range(spec.signals[role], wanted) if role in spec.signals else (None, None)
         for role, wanted in (("command", rig.command_unit), ("response", rig.response_unit))
     }
     looked = look_at(

@@ -1,7 +1,7 @@
 """One run from its file to a record: channels, units, clock, window, health, and the trail back to the bytes."""
 
 import hashlib
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from pathlib import Path
 
 import numpy as np
@@ -13,6 +13,7 @@ from ..ident.health.copied import share_stretch
 from ..ident.health.seen import Seen
 from ..ident.run import Between, FloatArray, Run
 from . import units
+from .command_worked_out import work_out_command
 from .look_at_record import looked_at
 from .readers.port import Channel, Hints, Log
 from .readers.registry import reader_of
@@ -31,7 +32,7 @@ class _Samples:
     command: FloatArray
     response: FloatArray
     setpoint: FloatArray | None
-    logged_command: FloatArray
+    logged_command: FloatArray  # its setpoint where the command is not logged
     logged_response: FloatArray
 
     def take(self, chosen: "NDArray[np.intp] | NDArray[np.bool_] | slice") -> "_Samples":
@@ -74,6 +75,12 @@ def read_record(spec: RunSpec, rig: Rig) -> Record:
     findings = list(log.findings)
     samples = _samples(spec, rig, log)
     samples = _with_clock(spec, samples, findings)
+    late, stated = 0.0, spec.command_before
+    if "command" not in spec.signals:
+        worked_out = work_out_command(spec, rig, samples.time, samples.setpoint, samples.response)
+        samples, late = replace(samples, command=worked_out.command), worked_out.late
+        findings += worked_out.findings
+        spec = replace(spec, command_before=worked_out.before)
     windowed, before = _windowed(spec, samples)
     _require_samples(spec, windowed, samples)
     looked = looked_at(
@@ -90,9 +97,10 @@ def read_record(spec: RunSpec, rig: Rig) -> Record:
         setpoint=windowed.setpoint,
         between=_between(spec),
         command_before=before,
-        at_rest=before is not None and before == spec.command_before,
+        at_rest=before is not None and before == stated,
         excitation=spec.excitation,
         closed_loop=spec.loop == "closed",
+        command_late=late,
     )
     return Record(spec, run, _sha256(spec.file), _samples_sha256(windowed), tuple(findings))
 
@@ -110,15 +118,18 @@ def shares_samples(a: Record, b: Record) -> bool:
 
 def _samples(spec: RunSpec, rig: Rig, log: Log) -> _Samples:
     where = str(spec.file)
-    command = _reading(where, "command", spec.signals["command"], log, rig.command_unit)
     response = _reading(where, "response", spec.signals["response"], log, rig.response_unit)
     setpoint = None
     if "setpoint" in spec.signals:
         setpoint = _reading(where, "setpoint", spec.signals["setpoint"], log, rig.response_unit)
-    time = _time(where, spec.signals["time"], log, len(command))
+    command = np.zeros(len(response))  # until it is worked out
+    if "command" in spec.signals:
+        command = _reading(where, "command", spec.signals["command"], log, rig.command_unit)
+    time = _time(where, spec.signals["time"], log, len(response))
     _require_one_clock(where, spec, log, time)
-    logged = {role: log.channels[str(spec.signals[role].source)].values for role in ("command", "response")}
-    return _Samples(time, command, response, setpoint, logged["command"], logged["response"])
+    cause = "command" if "command" in spec.signals else "setpoint"
+    logged = {role: log.channels[str(spec.signals[role].source)].values for role in (cause, "response")}
+    return _Samples(time, command, response, setpoint, logged[cause], logged["response"])
 
 
 def _reading(where: str, role: str, signal: Signal, log: Log, wanted: str) -> FloatArray:

@@ -11,7 +11,7 @@ from . import given
 from .messages import Problems, shape_problems
 from .quantities import Quantities
 from .rig import LogDialect, Rig
-from .runs import build_runs, build_signals, find_files, refuse_not_yet, signals_of
+from .runs import build_runs, build_signals, find_files, logged_roles, refuse_not_yet, signals_of
 from .schema import Log, OperatingPoint, RigFile
 from .signal_units import rig_units
 from .wishes import Wishes
@@ -89,11 +89,12 @@ def _values(
     problems = Problems(str(path))
     wishes = Wishes(problems, units["command"], units["response"])
     parts = signals_of(shape.signals)
-    signals = build_signals("signals", parts, units, Quantities(problems), problems, logged=bool(shape.runs))
-    runs = build_runs(shape.runs, files, folder, shape.signals, units, problems)
+    signals = build_signals("signals", parts, units, Quantities(problems), problems, logged=logged_roles(shape))
     limits = wishes.limits(shape.limits)
     requirements = wishes.requirements(shape.requirements, limits)
     setting = wishes.setting(shape.controller)
+    interval = None if setting.continuous else setting.update_interval
+    runs = build_runs(shape.runs, files, folder, shape, units, problems, interval)
     operating = _operating_point(shape.operating_point, units, problems)
     plant = given.build_given(shape.plant, sheet, units, problems) if shape.plant is not None else None
     if plant is not None:

@@ -3,6 +3,7 @@
 from dataclasses import dataclass
 from pathlib import Path
 
+from ...design.gains import Gains
 from ...design.requirements import ControllerSetting, Limits, Requirements
 from ...ident.given import GivenPlant
 from ...ident.run import Between, Excitation
@@ -54,6 +55,24 @@ class Signal:
 
 
 @dataclass(frozen=True)
+class InForce:
+    """The gains that a controller had during a run.
+
+    Attributes
+    ----------
+    gains : Gains
+        In the units of the signals.
+    update_interval : float, s
+    derivative_on_error : bool
+        The derivative sees setpoint - response; else minus the response.
+    """
+
+    gains: Gains
+    update_interval: float
+    derivative_on_error: bool = False
+
+
+@dataclass(frozen=True)
 class RunSpec:
     """One run to read: a file that exists, and how to read it.
 
@@ -66,8 +85,11 @@ class RunSpec:
     use : {"fit", "held-out"}
     signals : dict of role ("time", "command", "response", "setpoint") to Signal
         Overrides of this run already applied.
+        A command that is not in the log is missing: the gains in force tell what it was.
     from_s, to_s : float or None, s
         Window, from the first sample, half-open.
+    in_force : InForce or None
+        The gains during this run, where they are stated.
     """
 
     file: Path
@@ -82,6 +104,7 @@ class RunSpec:
     command_before: float | None = None
     group: str | None = None
     taken: str | None = None
+    in_force: InForce | None = None
 
 
 @dataclass(frozen=True)

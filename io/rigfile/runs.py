@@ -6,10 +6,11 @@ from pathlib import Path
 
 from ...ident.errors import RequestError
 from .. import units
+from .in_force import build_in_force, require_known_command
 from .messages import Problems, listed, nearest
 from .quantities import Quantities
 from .rig import RunSpec, Signal
-from .schema import RunPart, SignalPart, Signals
+from .schema import RigFile, RunPart, SignalPart, Signals
 
 ROLES = ("time", "command", "response", "setpoint")
 Window = tuple[float, float]
@@ -18,6 +19,11 @@ Window = tuple[float, float]
 def find_files(runs: list[RunPart], folder: Path, problems: Problems) -> list[list[Path]]:
     """The files of each [[runs]] table, patterns expanded and sorted."""
     return [_files_of(f"runs[{number}].file", run.file, folder, problems) for number, run in enumerate(runs, 1)]
+
+
+def logged_roles(shape: RigFile) -> frozenset[str]:
+    """Signals that at least one run has in its log."""
+    return frozenset(role for run in shape.runs for role in signals_of(shape.signals, run))
 
 
 def _files_of(key: str, pattern: str, folder: Path, problems: Problems) -> list[Path]:
@@ -76,14 +82,14 @@ def build_signals(
     quantities: Quantities,
     problems: Problems,
     *,
-    logged: bool = True,
+    logged: frozenset[str] = frozenset(ROLES),
 ) -> dict[str, Signal]:
     """Signals as values; ranges in the unit of the signal, or of the rig where the log states it.
 
-    Where nothing is logged they need no source.
+    Those that no run logs need no source.
     """
     return {
-        role: _build_signal(f"{key}.{role}", role, part, rig_units.get(role), quantities, problems, logged)
+        role: _build_signal(f"{key}.{role}", role, part, rig_units.get(role), quantities, problems, role in logged)
         for role, part in parts.items()
     }
 
@@ -133,12 +139,15 @@ def build_runs(
     runs: list[RunPart],
     files: list[list[Path]],
     folder: Path,
-    shape: Signals,
+    rig_file: RigFile,
     rig_units: dict[str, str],
     problems: Problems,
+    controller_interval: float | None = None,
 ) -> tuple[RunSpec, ...]:
     """Every run to read, in the order of the file."""
-    quantities = Quantities(problems)
+    quantities, shape = Quantities(problems), rig_file.signals
+    usual = rig_file.controller.current
+    common = build_in_force("controller.current", usual, controller_interval, rig_units, problems) if usual else None
     specs: list[RunSpec] = []
     windows: dict[Path, list[tuple[Window, str]]] = {}
     for number, (run, found) in enumerate(zip(runs, files, strict=True), 1):
@@ -151,12 +160,15 @@ def build_runs(
             quantities,
             problems if run.signals else Problems(""),
         )
+        own = run.current
+        in_force = build_in_force(f"{key}.current", own, controller_interval, rig_units, problems) if own else common
+        require_known_command(number, run, rig_file, signals, in_force, problems)
         before = None
         if run.before is not None:
             before = quantities.reading(f"{key}.before.command", run.before.command, rig_units["command"])
         for file in found:
             _refuse_overlap(key, file, window, windows, problems)
-            specs.append(_spec(run, file, folder, signals, before, window))
+            specs.append(replace(_spec(run, file, folder, signals, before, window), in_force=in_force))
     return tuple(specs)
 
 

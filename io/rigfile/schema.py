@@ -102,10 +102,10 @@ class Signals(Part):
 
 
 class RunSignals(Part):
-    """[runs.signals]: what differs in this run; `setpoint = false` reads as an empty table."""
+    """[runs.signals]: what differs in this run; `setpoint = false` and `command = false` read as an empty table."""
 
     time: SignalPart | None = None
-    command: SignalPart | None = None
+    command: Annotated[SignalPart | None, BeforeValidator(_absent)] = Field(default=None, examples=[False])
     response: SignalPart | None = None
     setpoint: Annotated[SignalPart | None, BeforeValidator(_absent)] = Field(default=None, examples=[False])
 

@@ -6,7 +6,7 @@ from ...design.requirements import ControllerSetting, Limits, Requirement, Requi
 from .messages import Problems
 from .quantities import Quantities, display, is_percent
 from .runs import require_order
-from .schema import Controller, Current, LevelLimit, LimitsPart, RequirementsPart
+from .schema import Controller, LevelLimit, LimitsPart, RequirementsPart
 
 IN_TIME: tuple[RequirementName, ...] = (
     "overshoot",
@@ -35,10 +35,8 @@ class Wishes:
         self._response = response_unit
 
     def setting(self, part: Controller) -> ControllerSetting:
-        """[controller]; the gains now in force are checked for known units and not used yet."""
+        """[controller] without the gains now in force, which belong to the runs."""
         numbers, key = self._quantities, "controller"
-        if part.current is not None:
-            self._check_current(part.current)
         interval, delay = part.update_interval, part.computation_delay
         late = numbers.difference(f"{key}.computation_delay", delay, "s", least=0.0)
         return ControllerSetting(
@@ -50,20 +48,6 @@ class Wishes:
             ),
             continuous=interval is None,
         )
-
-    def _check_current(self, part: Current) -> None:
-        gain = f"({self._command})/({self._response})"
-        wanted = {
-            "proportional": gain,
-            "integral": f"{gain}/s",
-            "derivative": f"{gain}*s",
-            "derivative_filter_time": "s",
-            "update_interval": "s",
-        }
-        for name, unit in wanted.items():
-            text = getattr(part, name)
-            if text is not None:
-                self._quantities.difference(f"controller.current.{name}", text, unit)
 
     def limits(self, part: LimitsPart) -> Limits:
         """[limits]"""

@@ -20,7 +20,8 @@ def rig_file_schema() -> dict[str, Any]:
     parts = shape["$defs"]
     for name in ("command", "command_rate", "response", "response_rate"):
         _allow(parts["LimitsPart"]["properties"], name, _FREE)
-    _allow(parts["RunSignals"]["properties"], "setpoint", {"const": False, "description": "not in this log"})
+    for name in ("command", "setpoint"):
+        _allow(parts["RunSignals"]["properties"], name, {"const": False, "description": "not in this log"})
     title = {"$schema": DIALECT, "title": "gainwright rig file"}
     return {**title, **{key: value for key, value in shape.items() if key != "title"}}
 
