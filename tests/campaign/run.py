@@ -10,6 +10,7 @@ from pathlib import Path
 sys.path.insert(0, str(Path(__file__).resolve().parent))
 
 import paths  # noqa: F401  (puts the kit on the path before it is imported)
+from proof.excitations import KINDS, TESTS
 from proof.job import PYTHON
 from proof.many import run_many, tasks
 from proof.table import line, summary
@@ -29,7 +30,9 @@ def main() -> None:
     ask.add_argument("--keep", type=Path, help="folder that keeps every job's logs, rig file and sheet")
     ask.add_argument("--lines", type=Path, help="write one JSON line a job here")
     ask.add_argument("--python", help="interpreter whose gainwright is judged, such as that of a clean install")
+    ask.add_argument("--tests", choices=KINDS, default=KINDS[0], help="how the engineer moves the command in fit runs")
     given = ask.parse_args()
+    os.environ[TESTS] = given.tests
     if given.python:
         os.environ[PYTHON] = given.python
     chosen = tasks(given.rigs, given.must_hold, given.seed, given.further, given.start)

@@ -15,6 +15,7 @@ from true_rig import Log, SheetController
 from . import logs
 from .achievable import tune
 from .asked import Asked, RigFile, draw_asked, write_rig_file
+from .excitations import changes_of_test
 from .families import Drawn, draw
 from .judged import Values, finer, missed, run_law
 from .margins import frequencies, sampled_plant
@@ -70,7 +71,7 @@ def prepare(family: str, generator: np.random.Generator, held_out_rig: Any = Non
     drift = generator.random() < 0.3
     rough, clean = replace(drawn.rig, longest_step=min(drawn.rig.longest_step, style.interval)), []
     for k, levels in enumerate(sequences):
-        changes, duration = logs.profile(drawn, levels, generator)
+        changes, duration = changes_of_test(drawn, levels, style.interval, generator, k < count)
         rig = held_out_rig(rough) if held_out_rig is not None and k == count else rough
         clean.append(logs.record(rig, changes, duration, style.interval, 0.0, 0))
     sensor = logs.draw_sensor(drawn, clean, style.interval, generator)
