@@ -14,7 +14,7 @@ KINDS = ("levels", "few steps", "random levels", "sweep")
 def changes_of_test(
     drawn: Drawn, levels: tuple[float, ...], interval: float, generator: np.random.Generator, fit: bool
 ) -> tuple[list, float]:
-    """[(time, command)] of one test and its duration, s. A held-out run is one of levels, unless there are few steps."""
+    """[(time, command)] of one test and its duration, s. Held-out: levels, unless few steps."""
     kind = os.environ.get(TESTS, KINDS[0])
     if kind == "few steps":
         return _few_steps(drawn, generator, fit)
@@ -26,7 +26,7 @@ def changes_of_test(
 
 
 def _few_steps(drawn: Drawn, generator: np.random.Generator, fit: bool) -> tuple[list, float]:
-    """One step that stays; a single pulse where the response would run away. The held-out one the other way, smaller."""
+    """One step that stays; one pulse where the response would run away. Held-out: the other way, smaller."""
     size = 1.0 if fit else -0.8
     return profile(drawn, (size, 0.0) if drawn.integrating else (size,), generator)
 
@@ -42,8 +42,8 @@ def _random_levels(drawn: Drawn, generator: np.random.Generator) -> tuple[list, 
 def _sweep(drawn: Drawn, interval: float, generator: np.random.Generator) -> tuple[list, float]:
     """A sine whose frequency rises evenly in its logarithm, six dwells long, new at every sample of the logger.
 
-    From half a period a dwell to three times the rig's main corner, at least ten samples a period; as a cosine where the
-    response would otherwise keep what the first half wave moved.
+    From half a period a dwell to three times the rig's main corner, at least ten samples a period; as a cosine
+    where the response would otherwise keep what the first half wave moved.
     """
     length = 6.0 * drawn.dwell
     first = 0.5 / drawn.dwell
