@@ -9,7 +9,8 @@ from .catalogue import CATALOGUE, RESONANCE_BEHIND_LAG, Structure
 from .noise import estimate_colour
 from .plant import ComplexArray
 from .polish import polish
-from .regression import Regression, Solved
+from .projected import Solved
+from .regression import Regression
 from .run import FloatArray, Run
 from .start import first_guesses
 from .unexplained import unexplained

@@ -1,6 +1,9 @@
 """A rational plant as a sum of first-order modes, each exact under a held or an interpolated command."""
 
+import math
+from collections.abc import Sequence
 from dataclasses import dataclass
+from functools import lru_cache
 
 import numpy as np
 
@@ -31,6 +34,7 @@ class Modes:
     double: float = 0.0
 
 
+@lru_cache(maxsize=256)
 def modes_of(numerator: tuple[float, ...], denominator: tuple[float, ...]) -> Modes:
     """Partial fractions of numerator(s)/denominator(s), coefficients with the highest power first.
 
@@ -53,20 +57,30 @@ def modes_of(numerator: tuple[float, ...], denominator: tuple[float, ...]) -> Mo
         raise ValueError("more zeros than poles")
     lead = denominator[0]
     direct = numerator[0] / lead if len(numerator) == len(denominator) else 0.0
-    rest = np.polysub(numerator, direct * np.asarray(denominator)) if direct else np.asarray(numerator)
-    moving, at_origin = _exact_poles(denominator)
-    moving = _apart(moving)
-    poles = np.concatenate([np.zeros(min(at_origin, 1)), moving])
-    residues = np.empty(len(poles), dtype=np.complex128)
+    rest = [n - direct * d for n, d in zip(numerator, denominator, strict=True)] if direct else list(numerator)
+    found, at_origin = _exact_poles(denominator)
+    moving = _apart(found)
+    poles = [complex(0.0)] * min(at_origin, 1) + moving
+    residues = []
     for i, pole in enumerate(poles):
-        others = np.concatenate([np.delete(moving, i - (at_origin > 0)), np.zeros(at_origin)]) if pole else moving
-        residues[i] = np.polyval(rest, pole) / (lead * np.prod(pole - others))
+        below = complex(lead)
+        for j, other in enumerate(poles):
+            below *= pole - other if j != i else 1.0
+        residues.append(value_at(rest, pole) / (below * pole ** max(at_origin - 1, 0)) if pole or at_origin < 2 else 0j)
     double = 0.0
     if at_origin == 2:
         double, residues[0] = _at_double_origin(np.asarray(rest, dtype=float), np.asarray(denominator)[:-2])
-    keep = poles.imag >= 0
-    doubled = np.where(poles.imag > 0, 2.0, 1.0)
-    return Modes(poles[keep], (residues * doubled)[keep], float(direct), double)
+    keep = [i for i, pole in enumerate(poles) if pole.imag >= 0]
+    doubled = [residues[i] * (2.0 if poles[i].imag > 0 else 1.0) for i in keep]
+    return Modes(np.array([poles[i] for i in keep], complex), np.array(doubled, complex), float(direct), double)
+
+
+def value_at(coefficients: Sequence[float], s: complex) -> complex:
+    """Value of a polynomial, highest power first."""
+    total = complex(0.0)
+    for coefficient in coefficients:
+        total = total * s + coefficient
+    return total
 
 
 def _at_double_origin(numerator: FloatArray, moving: FloatArray) -> tuple[float, float]:
@@ -77,35 +91,39 @@ def _at_double_origin(numerator: FloatArray, moving: FloatArray) -> tuple[float,
     return value, float((top[0] - value * below[0]) / below[1])
 
 
-def _exact_poles(denominator: tuple[float, ...]) -> tuple[ComplexArray, int]:
+def _exact_poles(denominator: Sequence[float]) -> tuple[list[complex], int]:
     """Roots away from the origin, two of them in closed form without cancellation, and how many are at it."""
-    coefficients = np.trim_zeros(np.asarray(denominator, dtype=float), "f")
+    coefficients = [float(c) for c in denominator]
+    while coefficients and coefficients[0] == 0.0:
+        coefficients = coefficients[1:]
     at_origin = 0
     while coefficients[-1] == 0.0:
         coefficients = coefficients[:-1]
         at_origin += 1
     if at_origin > 2:
         raise ValueError("more than two integrators")
-    roots = _quadratic(coefficients) if len(coefficients) == 3 else np.roots(coefficients)
-    return roots.astype(np.complex128), at_origin
+    if len(coefficients) == 2:
+        return [complex(-coefficients[1] / coefficients[0])], at_origin
+    if len(coefficients) == 3:
+        return _quadratic(*coefficients), at_origin
+    return [complex(root) for root in np.roots(coefficients)], at_origin
 
 
-def _quadratic(coefficients: np.ndarray) -> ComplexArray:
-    a, b, c = coefficients
-    root = np.sqrt(complex(b * b - 4 * a * c))
-    if root.imag:
-        return np.array([(-b + root) / (2 * a), (-b - root) / (2 * a)])
-    far = -0.5 * (b + np.copysign(root.real, b))
-    return np.array([far / a, c / far], dtype=np.complex128)
+def _quadratic(a: float, b: float, c: float) -> list[complex]:
+    under = b * b - 4 * a * c
+    if under < 0:
+        root = complex(0.0, math.sqrt(-under))
+        return [(-b + root) / (2 * a), (-b - root) / (2 * a)]
+    far = -0.5 * (b + math.copysign(math.sqrt(under), b))
+    return [complex(far / a), complex(c / far)]
 
 
-def _apart(poles: ComplexArray) -> ComplexArray:
+def _apart(poles: list[complex]) -> list[complex]:
     """Move poles apart that are too near for partial fractions; conjugate symmetry is kept."""
-    moved = poles.copy()
+    moved = list(poles)
     for i in range(len(moved)):
         for j in range(i):
-            size = abs(moved[i])
-            if abs(moved[i] - moved[j]) < _APART * size:
+            if abs(moved[i] - moved[j]) < _APART * abs(moved[i]):
                 middle = 0.5 * (moved[i] + moved[j]).real
-                moved[i], moved[j] = middle * (1 + _APART / 2), middle * (1 - _APART / 2)
+                moved[i], moved[j] = complex(middle * (1 + _APART / 2)), complex(middle * (1 - _APART / 2))
     return moved

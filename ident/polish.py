@@ -1,9 +1,9 @@
 """Damped Gauss-Newton on the projected residual: from a first guess to the bottom of its valley."""
 
 import numpy as np
-from numpy.typing import NDArray
 
-from .regression import Regression, Solved
+from .projected import Solved
+from .regression import Regression
 from .run import FloatArray
 from .whiten import WHITE, Colour
 
@@ -26,21 +26,6 @@ def bounds_of(problem: Regression) -> tuple[FloatArray, FloatArray]:
     return np.array([*low, problem.soonest]), np.array([*high, 0.9 * length])
 
 
-def jacobian(
-    problem: Regression, theta: FloatArray, here: Solved, colour: Colour, free: NDArray[np.bool_]
-) -> FloatArray:
-    """(n, f) differences of the projected whitened residual over the free parameters.
-
-    The way down needs no better than forward differences: where it ends is decided by the cost alone.
-    """
-    columns = [
-        (problem.solve(theta + step, colour).residual - here.residual) / float(step.sum())
-        for i, step in enumerate(problem.steps(theta))
-        if free[i]
-    ]
-    return np.column_stack(columns) if columns else np.zeros((len(problem.measured), 0))
-
-
 def polish(
     problem: Regression,
     theta: FloatArray,
@@ -53,42 +38,50 @@ def polish(
     """Walk down from theta; the cost never rises.
 
     The dead time of a response that jumps stays where it is: no sample tells where between two samples the jump was.
+    The slopes are those of the model at the best linear part, cleared of the columns.
 
     Returns
     -------
     theta, Solved
         The end point and its linear part. `tolerance` is relative, on the cost.
+
+    References
+    ----------
+    Kaufman, L., BIT 15 (1975) 49-57: variable projection without the slopes of the projection (from memory).
     """
     low, high = bounds_of(problem)
     theta = np.clip(theta, low, high)
     free = np.ones(len(theta), dtype=bool)
     free[-1] = not (hold_dead_time or problem.jumps)
-    best = problem.solve(theta, colour)
+    here = problem.at(theta)
+    best = problem.solve_at(here, colour)
     if not free.any():
-        return theta, best
+        return theta, best.solved
     damping = 1e-3
     reach = np.array([1.5] * (len(theta) - 1) + [high[-1]])
     for _ in range(rounds):
-        slope = jacobian(problem, theta, best, colour, free)
-        normal, pull = slope.T @ slope, slope.T @ best.residual
+        slopes = here.slopes(best.solved.coefficients, rough=True)[:, free]
+        slope = best.cleared(problem.whitener(colour).apply(slopes))
+        normal, pull = slope.T @ slope, slope.T @ best.solved.residual
         size = np.diag(normal).copy()
         size[size == 0] = 1.0
         improved = False
         for _ in range(7):
-            step = -np.linalg.solve(normal + damping * np.diag(size), pull)
+            step = np.linalg.solve(normal + damping * np.diag(size), pull)
             trial = theta.copy()
             trial[free] = theta[free] + np.clip(step, -reach[free], reach[free])
             trial = np.clip(trial, low, high)
-            solved = problem.solve(trial, colour)
-            if solved.cost < best.cost:
+            there = problem.at(trial)
+            found = problem.solve_at(there, colour)
+            if found.solved.cost < best.solved.cost:
                 improved = True
                 break
             damping *= 6
         if not improved:
             break
-        gain = best.cost - solved.cost
-        theta, best = trial, solved
+        gain = best.solved.cost - found.solved.cost
+        theta, here, best = trial, there, found
         damping = max(damping / 8, 1e-9)
-        if gain < tolerance * best.cost:
+        if gain < tolerance * best.solved.cost:
             break
-    return theta, best
+    return theta, best.solved

@@ -4,11 +4,12 @@ from dataclasses import dataclass
 from functools import cached_property
 
 import numpy as np
-from scipy.linalg import lapack, solve_triangular
 
 from .catalogue import Structure
 from .friction import friction_response
+from .local import Local
 from .modes import Modes, modes_of
+from .projected import Projected, Solved, projected, root_of_covariance
 from .run import FloatArray, Run
 from .simulate import Grid, at_rest, grid_of, response
 from .wander import Whitener, slow_waves
@@ -16,30 +17,6 @@ from .whiten import Colour, stretches_of
 
 # Share of the record's whole movement that a stretch of rest may wander, smoothed, and still be rest.
 _STIR = 0.1
-
-
-# Columns as independent as this lose at most ten of sixteen digits in their normal equations; others go through QR.
-_FIRM = 1e-3
-
-
-@dataclass(frozen=True, eq=False)
-class Solved:
-    """The best linear part at given shape and dead time.
-
-    Attributes
-    ----------
-    cost : float
-        Sum of squares of the whitened residual.
-    residual : (n,) array
-        Whitened.
-    coefficients : (q,) array
-        Gain first, then a level for each run, then the common drift rate of an integrating plant (and of one with two
-        integrators the runs' first speeds), then gain times zero time, then initial states.
-    """
-
-    cost: float
-    residual: FloatArray
-    coefficients: FloatArray
 
 
 @dataclass(frozen=True, eq=False)
@@ -170,8 +147,18 @@ class Regression:
         bias = run.start_command - self.reference
         if self.structure.friction:
             return friction_response(grid, bias, shape[0], (shape[1], shape[2]), dead_time)
-        moved = response(self.modes(shape), grid, dead_time)
-        return moved + bias * at_rest(self.structure.integrators, grid.time)
+        return response(self.modes(shape), grid, dead_time) + self.bias_response(i)
+
+    def bias_response(self, i: int) -> FloatArray | float:
+        """What the steady command before run i makes of the unit-gain structure by itself."""
+        bias = self.runs[i].start_command - self.reference
+        return bias * at_rest(self.structure.integrators, self.grids[i].time) if bias else 0.0
+
+    @property
+    def exact_slopes(self) -> bool:
+        """Whether every run is sampled evenly and every mode is of first order."""
+        even = all(grid.interval is not None for grid in self.grids)
+        return even and not self.structure.friction and self.structure.integrators < 2
 
     def zero_response(self, i: int, shape: tuple[float, ...], dead_time: float) -> FloatArray:
         """Response of run i to the slope of its command: what a zero adds, per gain and second of zero time."""
@@ -234,16 +221,22 @@ class Regression:
 
     def solve(self, theta: FloatArray, colour: Colour) -> Solved:
         """Best linear part at theta = (log shapes ..., dead time in s)."""
-        moving = self.moving_columns(*self.split(theta))
+        return self.solve_at(self.at(theta), colour).solved
+
+    def solve_at(self, here: Local, colour: Colour) -> Projected:
+        """The same from columns already made, with what `Projected.cleared` needs."""
         target, fixed = self._whitened(colour)
-        white = self.whitener(colour).apply(moving)
-        matrix = np.column_stack([white[:, :1], fixed, white[:, 1:]])
-        return _least_squares(matrix, target)
+        white = self.whitener(colour).apply(here.moving)
+        return projected(np.column_stack([white[:, :1], fixed, white[:, 1:]]), target)
+
+    def at(self, theta: FloatArray) -> Local:
+        """Columns and slopes about theta."""
+        return Local(self, theta)
 
     def conditional(self, theta: FloatArray, colour: Colour) -> tuple[Solved, FloatArray, float]:
         """`solve`, A with A A' = (X' X)^-1 of the whitened columns, and the log of A's volume."""
         white = self.whitener(colour).apply(self.columns(theta))
-        solved = _least_squares(white, self._whitened(colour)[0])
+        solved = projected(white, self._whitened(colour)[0]).solved
         return solved, *root_of_covariance(white)
 
     def split(self, theta: FloatArray) -> tuple[tuple[float, ...], float]:
@@ -266,52 +259,15 @@ class Regression:
 
     def full_columns(self, theta: FloatArray, coefficients: FloatArray) -> tuple[FloatArray, FloatArray]:
         """Unwhitened model, (n,), and its derivatives, (n, s + 1 + q): log shapes, dead time, then the linear part."""
-        columns = self.columns(theta)
-        steps = self.steps(theta)
-        slopes = []
-        for step in steps[:-1] if self.jumps else steps:
-            low = theta - step
-            low[-1] = max(low[-1], self.earliest)
-            slopes.append((self.columns(theta + step) - self.columns(low)) @ coefficients / np.sum(theta + step - low))
-        if self.jumps:
-            # between two samples the dead time does nothing that the linear part could not
-            slopes.append(np.zeros(len(columns)))
-        return columns @ coefficients, np.column_stack([*slopes, columns])
+        here = self.at(theta)
+        columns = here.columns
+        return columns @ coefficients, np.column_stack([here.slopes(coefficients), columns])
 
     def steps(self, theta: FloatArray) -> list[FloatArray]:
         """Difference steps, one vector a parameter of theta."""
         sizes = np.full(len(theta), 1e-4)
         sizes[-1] = min(0.02 * self.interval, max(theta[-1], 1e-3 * self.interval))
         return [np.where(np.arange(len(theta)) == i, size, 0.0) for i, size in enumerate(sizes)]
-
-
-def _least_squares(matrix: FloatArray, target: FloatArray) -> Solved:
-    gram = matrix.T @ matrix
-    scale = np.sqrt(np.diag(gram))
-    scale[scale == 0] = 1.0
-    firm, rank = lapack.dpotrf(gram / np.outer(scale, scale), lower=1)
-    if rank == 0 and np.min(np.diag(firm)) > _FIRM:
-        coefficients = lapack.dpotrs(firm, (matrix.T @ target) / scale, lower=1)[0] / scale
-        residual = target - matrix @ coefficients
-        return Solved(float(residual @ residual), residual, coefficients)
-    q, r = np.linalg.qr(matrix / scale)
-    diagonal = np.abs(np.diag(r))
-    weak = diagonal < 1e-11
-    r[weak, weak.nonzero()[0]] = 1.0
-    along = q.T @ target
-    along[weak] = 0.0
-    residual = target - q @ along
-    coefficients = solve_triangular(r, along) / scale
-    return Solved(float(residual @ residual), residual, coefficients)
-
-
-def root_of_covariance(white: FloatArray) -> tuple[FloatArray, float]:
-    """A with A A' = (white' white)^-1, and the log of its volume; directions that say nothing spread far."""
-    scale = np.sqrt(np.einsum("ij,ij->j", white, white))
-    scale[scale == 0] = 1.0
-    sizes, rotation = np.linalg.eigh((white / scale).T @ (white / scale))
-    inverse = 1.0 / np.sqrt(np.maximum(sizes, 1e-14 * sizes[-1]))
-    return (rotation * inverse) / scale[:, None], float(np.sum(np.log(inverse)) - np.sum(np.log(scale)))
 
 
 def starts_unsettled(run: Run) -> bool:

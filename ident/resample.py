@@ -12,7 +12,8 @@ from scipy.stats import f as fisher
 from .draw import draw, propose
 from .polish import bounds_of
 from .profile import Profile
-from .regression import Regression, Solved
+from .projected import Solved
+from .regression import Regression
 from .run import FloatArray
 from .whiten import Colour
 

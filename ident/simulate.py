@@ -58,33 +58,57 @@ def response(modes: Modes, grid: Grid, dead_time: float) -> FloatArray:
     if grid.interval is not None:
         total = np.zeros(len(grid.time))
         for pole, residue in zip(modes.poles, modes.residues, strict=True):
-            total += _even_mode(complex(pole), complex(residue), grid, dead_time)
+            state = mode_state(complex(pole), grid, dead_time)
+            total += residue.real * state.real
+            if residue.imag:
+                total -= residue.imag * state.imag
     else:
         total = _uneven(modes, grid, dead_time)
     if modes.direct:
-        total = total + modes.direct * _delayed(grid, dead_time)
+        total = total + modes.direct * delayed_command(grid, dead_time)
     if modes.double:
         total = total + modes.double * _twice_integrated(grid, dead_time)
     return total
 
 
-def _even_mode(pole: complex, residue: complex, grid: Grid, dead_time: float) -> FloatArray:
-    step = grid.interval
-    assert step is not None
+def mode_state(pole: complex, grid: Grid, dead_time: float) -> np.ndarray:
+    """State, (n,), of x' = pole x + u(t - dead_time) on an even grid; real for a real pole."""
+    assert grid.interval is not None
+    drive = delayed_drive(mode_weights(pole, grid, dead_time), grid, dead_time)
+    growth = np.exp(pole * grid.interval)
+    if pole.imag == 0.0:
+        return np.asarray(lfilter([0.0, 1.0], [1.0, -growth.real], drive.real))
+    return np.asarray(lfilter([0.0, 1.0], [1.0, -growth], drive))
+
+
+def mode_weights(pole: complex, grid: Grid, dead_time: float) -> tuple[complex, complex, complex]:
+    """Weights of u[k-d+1], u[k-d], u[k-d-1] in x[k+1] on an even grid, d the whole samples of the dead time."""
+    assert grid.interval is not None
+    _, part = _whole_and_part(grid.interval, dead_time)
+    return _weights(pole, grid.interval, part, grid.interpolated)
+
+
+def delayed_drive(weights: tuple[complex, ...], grid: Grid, dead_time: float) -> np.ndarray:
+    """The commands that `mode_weights` weighs, summed: (n,), real where the weights are."""
+    assert grid.interval is not None
+    whole, _ = _whole_and_part(grid.interval, dead_time)
+    ahead, now, before = (w.real if w.imag == 0.0 else w for w in map(complex, weights))
+    drive = now * _shift(grid.moved, whole)
+    if before:
+        drive = drive + before * _shift(grid.moved, whole + 1)
+    return drive + ahead * _shift(grid.moved, whole - 1) if ahead else drive
+
+
+def delayed_parts(grid: Grid, dead_time: float) -> tuple[FloatArray, FloatArray, float]:
+    """u[k-d], u[k-d-1] and the share of a sample that the dead time is past d whole ones."""
+    assert grid.interval is not None
+    whole, part = _whole_and_part(grid.interval, dead_time)
+    return _shift(grid.moved, whole), _shift(grid.moved, whole + 1), part / grid.interval
+
+
+def _whole_and_part(step: float, dead_time: float) -> tuple[int, float]:
     whole = int(np.floor(dead_time / step * (1 + 1e-12)))
-    part = min(max(dead_time - whole * step, 0.0), step)
-    ahead, now, before = _weights(pole, step, part, grid.interpolated)
-    real = pole.imag == 0.0
-    scale = residue.real if real else residue
-    growth = np.exp(pole * step)
-    u = grid.moved
-    drive = now * _shift(u, whole) + before * _shift(u, whole + 1)
-    if ahead:
-        drive = drive + ahead * _shift(u, whole - 1)
-    if real:
-        return np.asarray(scale * lfilter([0.0, 1.0], [1.0, -growth.real], drive.real))
-    state = lfilter([0.0, 1.0], [1.0, -growth], drive)
-    return np.asarray((scale * state).real)
+    return whole, min(max(dead_time - whole * step, 0.0), step)
 
 
 def _weights(pole: complex, step: float, part: float, interpolated: bool) -> tuple[complex, complex, complex]:
@@ -179,7 +203,7 @@ def _scan(factor: ComplexArray, drive: ComplexArray) -> ComplexArray:
     return b
 
 
-def _delayed(grid: Grid, dead_time: float) -> FloatArray:
+def delayed_command(grid: Grid, dead_time: float) -> FloatArray:
     """The command moved, seen `dead_time` later, at each sample; a jump counts from the instant it arrives."""
     left = grid.time - dead_time
     if grid.interpolated:
