@@ -15,6 +15,8 @@ from .whiten import Colour
 
 # Beyond this fall of twice the log likelihood nothing is drawn: a share of 1e-4 in a normal tail.
 _REACH = 16.0
+# Variance of an even distribution of width one: what the bounds alone leave open of a shape the record is blind to.
+_EVEN = 1.0 / 12.0
 
 
 @dataclass(frozen=True, eq=False)
@@ -128,11 +130,14 @@ def _with_conditionals(
     freedom: float,
 ) -> Profile:
     centres, factors, log_volumes = [], [], []
+    bounds = _bounds_as_rows(problem, variance)
     for theta in thetas:
         solved = problem.solve(theta, colour)
         _, columns = problem.full_columns(theta, solved.coefficients)
         others = np.delete(columns, len(theta) - 1, axis=1)
-        factor, log_volume = root_of_covariance(problem.whitener(colour).apply(others))
+        white = problem.whitener(colour).apply(others)
+        wide = np.pad(bounds, ((0, 0), (0, len(solved.coefficients))))
+        factor, log_volume = root_of_covariance(np.vstack([white, wide]))
         centres.append(np.concatenate([theta[:-1], solved.coefficients]))
         factors.append(factor)
         log_volumes.append(log_volume)
@@ -141,3 +146,13 @@ def _with_conditionals(
     grid = np.array([theta[-1] for theta in thetas])
     linear_count = len(solved.coefficients)
     return Profile(grid, log_density, np.array(centres), np.array(factors), float(variance), freedom, linear_count)
+
+
+def _bounds_as_rows(problem: Regression, variance: float) -> FloatArray:
+    """(s, s) rows that say no more than that each log shape lies between its bounds.
+
+    A friction far too small to be felt, or a lag far below a sample, leaves no trace in the record; without these rows
+    its logarithm would spread over thousands of decades.
+    """
+    low, high = bounds_of(problem)
+    return np.diag(np.sqrt(variance / _EVEN) / (high[:-1] - low[:-1]))

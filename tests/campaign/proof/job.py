@@ -10,7 +10,7 @@ from time import perf_counter
 from typing import Any
 
 import numpy as np
-from true_rig import Log, SheetController
+from true_rig import Log, SheetController, TrueRig
 
 from . import logs
 from .achievable import tune
@@ -36,6 +36,7 @@ class Prepared:
     records: list[tuple[str, str, logs.Record]]  # (file, use, record)
     about: RigFile
     clean: list[Log]
+    drift: bool = False  # the response wanders slowly
 
 
 @dataclass
@@ -86,7 +87,22 @@ def prepare(family: str, generator: np.random.Generator, held_out_rig: Any = Non
         operating_point=(drawn.rig.command_rest, drawn.rig.response_rest) if generator.random() < 0.3 else None,
         sensor_range=_sensor_range(drawn, records) if generator.random() < 0.5 else None,
     )  # fmt: skip
-    return Prepared(replace(drawn, rig=replace(drawn.rig, sensor=sensor)), asked, style, records, about, clean)
+    sensed = replace(drawn, rig=replace(drawn.rig, sensor=sensor))
+    return Prepared(sensed, asked, style, records, about, clean, drift)
+
+
+def held_out_again(job: Prepared, rig: TrueRig, generator: np.random.Generator) -> logs.Record:
+    """A further held-out record as the job's own is made, of this rig about its own balance."""
+    kinds = logs.HELD_OUT_PULSES if job.drawn.integrating else logs.HELD_OUT
+    rig = replace(rig, sensor=rig.sensor.quiet())  # the noise comes once, in `sense`
+    there = replace(job.drawn, rig=rig)
+    changes, duration = logs.profile(there, kinds[generator.integers(len(kinds))], generator)
+    rough = replace(rig, longest_step=min(rig.longest_step, job.style.interval))
+    clean = logs.record(rough, changes, duration, job.style.interval, 0.0, 0)
+    sensor = job.drawn.rig.sensor
+    if job.drift:
+        clean = replace(clean, reading=clean.reading + _wander(clean, sensor.noise, generator))
+    return logs.sense(clean, sensor, generator)
 
 
 def _wander(log: Log, noise: float, generator: np.random.Generator) -> Any:
