@@ -50,9 +50,21 @@ def finish(
         out = target - whitener.apply(model)
         return np.nan_to_num(out, nan=1e150, posinf=1e150, neginf=-1e150)
 
+    def slopes(trial: lmfit.Parameters) -> FloatArray:
+        """Of the residual in the values that vary; lmfit adds what its bounds do to them."""
+        values = np.array([p.value for p in trial.values()])
+        point, linear = vectors(values)
+        here = problem.at(point)
+        inside = (values[: len(theta) - 1] > low[:-1]) & (values[: len(theta) - 1] < high[:-1])
+        of_theta = here.slopes(linear) * np.concatenate([inside, [dt]])
+        whole = -whitener.apply(np.column_stack([of_theta, here.columns * sizes]))
+        return np.nan_to_num(whole[:, [p.vary for p in trial.values()]], nan=0.0, posinf=0.0, neginf=0.0)
+
     start = residual(parameters)
     before = float(start @ start)
-    result = lmfit.minimize(residual, parameters, method="leastsq", max_nfev=40 * len(parameters), calc_covar=False)
+    result = lmfit.minimize(
+        residual, parameters, method="leastsq", Dfun=slopes, max_nfev=40 * len(parameters), calc_covar=False
+    )
     after = float(np.sum(np.asarray(result.residual) ** 2))
     if not after < before:
         return theta, coefficients, before

@@ -110,18 +110,36 @@ def best_wander(both: FloatArray, stretches: list[slice], waves: FloatArray, fas
     gram = white.T @ white
     own, vectors = np.linalg.eigh(gram[m:, m:])
     shared = gram[:m, m:] @ vectors
-    least, best = np.inf, 0.0
-    for size in _SIZES:
-        wander = float(np.exp(2 * size)) * fast.variance_ratio
-        stiff = own + 1.0 / wander
-        diagonal = _diagonal(gram[:m, :m] - (shared / stiff) @ shared.T)
-        if diagonal is None:
-            continue
-        determinant = float(np.sum(np.log(stiff)) + len(stiff) * np.log(wander)) + log_determinant(stretches, fast)
-        found = _loss(diagonal, len(both), determinant)
-        if found < least:
-            least, best = found, wander
-    return least, best
+    wander = np.exp(2 * _SIZES) * fast.variance_ratio
+    stiff = own + 1.0 / wander[:, None]
+    left = gram[:m, :m] - (shared / stiff[:, None, :]) @ shared.T
+    plain = log_determinant(stretches, fast)
+    determinants = np.sum(np.log(stiff), axis=1) + len(own) * np.log(wander) + plain
+    losses = _losses(left, len(both), determinants)
+    at = int(np.argmin(losses))
+    return float(losses[at]), float(wander[at])
+
+
+def _losses(grams: FloatArray, n: int, determinants: FloatArray) -> FloatArray:
+    """(k,) losses from (k, m, m) inner products; infinite where the factor is not safe."""
+    scale = np.sqrt(np.maximum(np.diagonal(grams, axis1=1, axis2=2), 1e-300))
+    try:
+        firm = np.linalg.cholesky(grams / (scale[:, :, None] * scale[:, None, :]))
+    except np.linalg.LinAlgError:
+        diagonals = [_diagonal(gram) for gram in grams]
+        return np.array(
+            [
+                np.inf if diagonal is None else _loss(diagonal, n, float(determinant))
+                for diagonal, determinant in zip(diagonals, determinants, strict=True)
+            ]
+        )
+    unit = np.diagonal(firm, axis1=1, axis2=2)
+    diagonal = unit * scale
+    usable = diagonal[:, :-1] > 1e-12
+    size = np.maximum(diagonal[:, -1] ** 2, 1e-300)
+    logs = np.sum(np.log(np.where(usable, diagonal[:, :-1], 1.0)), axis=1)
+    found = (n - usable.sum(axis=1)) * np.log(size) + 2 * logs + determinants
+    return np.asarray(np.where(unit.min(axis=1) > 1e-3, found, np.inf))
 
 
 def _colour(point: FloatArray) -> Colour:

@@ -21,24 +21,26 @@ def first_guesses(problem: Regression, count: int = 3) -> list[FloatArray]:
     """
     rows, basis, target = _thinned(problem)
     shifts = _shifts(problem)
+    later = _later(rows, shifts)
     scored: list[tuple[float, FloatArray]] = []
     for values in _library(problem):
-        costs = _costs(problem, values, shifts, rows, basis, target)
+        costs = _costs(problem, values, later, basis, target)
         at = int(np.argmin(costs))
         if problem.jumps:
             # a jump is at one sample or at the next: the grid of dead times must not miss it
             near = np.arange(shifts[max(at - 1, 0)], shifts[min(at + 1, len(shifts) - 1)] + 1)
-            costs = _costs(problem, values, near, rows, basis, target)
+            costs = _costs(problem, values, _later(rows, near), basis, target)
             at = int(np.argmin(costs))
             dead_time = max(near[at] - 0.5, 0.0) * problem.interval
         else:
             dead_time = shifts[at] * problem.interval
         scored.append((float(costs[at]), np.array([*np.log(values), dead_time])))
     scored.sort(key=lambda pair: pair[0])
-    return _different([theta for _, theta in scored], problem, count)
+    return different([theta for _, theta in scored], problem, count)
 
 
-def _different(thetas: list[FloatArray], problem: Regression, count: int) -> list[FloatArray]:
+def different(thetas: list[FloatArray], problem: Regression, count: int) -> list[FloatArray]:
+    """The first `count` of these that are no near neighbours of one before."""
     kept: list[FloatArray] = []
     for theta in thetas:
         far = all(
@@ -110,25 +112,31 @@ def _peaks(problem: Regression) -> FloatArray:
     return 2 * np.pi * np.array(found, dtype=float) / (len(change) * problem.interval)
 
 
+def _later(rows: Sequence[np.ndarray], shifts: np.ndarray) -> list[NDArray[np.int64]]:
+    """(rows, shifts) samples that stand at each row once shifted, a run each; the first one before the record."""
+    return [np.maximum(np.asarray(index)[:, None] - shifts[None, :], 0) for index in rows]
+
+
 def _costs(
     problem: Regression,
     values: tuple[float, ...],
-    shifts: NDArray[np.int64],
-    rows: list[NDArray[np.int64]],
+    later: list[NDArray[np.int64]],
     basis: FloatArray,
     target: FloatArray,
 ) -> FloatArray:
-    lead = _shifted(rows, shifts, [problem.whole_response(i, values, 0.0) for i in range(len(rows))])
-    lead = lead - basis @ (basis.T @ lead)
-    total: FloatArray = np.full(len(shifts), float(target @ target))
-    power, along = np.einsum("ij,ij->j", lead, lead), target @ lead
+    """Sum of squares left at each shift; the target is clear of the basis already."""
+    runs = range(len(later))
+    lead = _shifted(later, [problem.whole_response(i, values, 0.0) for i in runs])
+    of_lead = basis.T @ lead
+    power, along = _inner(lead, lead) - _inner(of_lead, of_lead), target @ lead
+    total: FloatArray = np.full(len(along), float(target @ target))
     if problem.structure.zero:
-        slope = _shifted(rows, shifts, [problem.zero_response(i, values, 0.0) for i in range(len(rows))])
-        slope = slope - basis @ (basis.T @ slope)
+        slope = _shifted(later, [problem.zero_response(i, values, 0.0) for i in runs])
+        of_slope = basis.T @ slope
         # the zero's part is taken off by one step of orthogonalisation
-        size = np.einsum("ij,ij->j", slope, slope)
+        size = _inner(slope, slope) - _inner(of_slope, of_slope)
         size = np.where(size > 1e-12 * max(float(size.max()), 1e-300), size, np.inf)
-        share = np.einsum("ij,ij->j", lead, slope) / size
+        share = (_inner(lead, slope) - _inner(of_lead, of_slope)) / size
         rest = target @ slope
         total = total - rest**2 / size
         along, power = along - share * rest, power - share**2 * np.where(np.isinf(size), 0.0, size)
@@ -136,10 +144,11 @@ def _costs(
     return np.asarray(np.where(safe, total - along**2 / np.where(safe, power, 1.0), total))
 
 
-def _shifted(rows: Sequence[np.ndarray], shifts: np.ndarray, whole: list[FloatArray]) -> FloatArray:
+def _inner(a: FloatArray, b: FloatArray) -> FloatArray:
+    """Inner products of the columns of one with those of the other."""
+    return np.asarray(np.einsum("ij,ij->j", a, b))
+
+
+def _shifted(later: list[NDArray[np.int64]], whole: list[FloatArray]) -> FloatArray:
     """(rows, shifts) responses of all runs, each column later by whole samples; at rest before."""
-    blocks = []
-    for index, moved in zip(rows, whole, strict=True):
-        at = np.asarray(index)[:, None] - shifts[None, :]
-        blocks.append(np.where(at >= 0, moved[np.maximum(at, 0)], moved[0]))
-    return np.concatenate(blocks)
+    return np.concatenate([moved.take(index) for index, moved in zip(later, whole, strict=True)])
