@@ -1,63 +1,24 @@
 """The child process that opens HDF5 files: `python -m gainwright.io.readers.hdf5_child`, a request on its input.
 
-It imports numpy and h5py only. The answer is one line of JSON, then the float64 bytes of each array.
+It imports numpy and h5py only.
 External links, raw external storage and virtual datasets over other files are refused: they would read any path of the
 machine, and a missing source would read as zeros.
 """
 
 import contextlib
-import json
-import sys
+from collections.abc import Iterator, Sequence
 from typing import Any
 
-Answer = tuple[dict[str, Any], list[bytes]]
+from .answering import Answer, Refused, numbers, serve, text_of, unit_of
+
 MOST_OBJECTS = 20000
 MOST_COLUMNS = 256
 MOST_LINKS = 16
 
 
-class Refused(Exception):  # noqa: N818 - crosses the process as data, not as an error
-    """What the parent is to say."""
-
-    def __init__(self, what: str, **parts: Any) -> None:
-        super().__init__(what)
-        self.parts = {"what": what, **parts}
-
-
 def main() -> None:
     """Answer one request."""
-    request = json.load(sys.stdin)
-    _bound(int(request["memory"]), int(request["seconds"]))
-    try:
-        header, blobs = _answer(request)
-    except Refused as refused:
-        header, blobs = {"refused": refused.parts}, []
-    except MemoryError:
-        header, blobs = {"refused": {"what": "the log needs more memory than is allowed"}}, []
-    except (OSError, RuntimeError, KeyError, ValueError, TypeError) as problem:
-        header, blobs = {"refused": {"what": "the HDF5 file can't be read", "found": str(problem)[:300]}}, []
-    output = sys.stdout.buffer
-    output.write(json.dumps(header).encode() + b"\n")
-    for blob in blobs:
-        output.write(blob)
-    output.flush()
-
-
-def _bound(memory: int, seconds: int) -> None:
-    """Bound this process, where the system can."""
-    with contextlib.suppress(ImportError, ValueError, OSError):
-        import resource
-
-        resource.setrlimit(resource.RLIMIT_AS, (memory, memory))
-        resource.setrlimit(resource.RLIMIT_CPU, (seconds, seconds + 1))
-
-
-def _answer(request: dict[str, Any]) -> Answer:
-    tree = _Tree(_open(request["file"]), request["group"])
-    if request["sources"] is None:
-        return {"channels": tree.channels()}, []
-    parts = [tree.read(source, int(request["memory"]) // 16) for source in request["sources"]]
-    return {"channels": [head for head, _ in parts]}, [blob for _, blobs in parts for blob in blobs]
+    serve(lambda request: _Tree(_open(request["file"]), request["group"]), "HDF5")
 
 
 def _open(path: str) -> Any:
@@ -170,15 +131,29 @@ class _Tree:
         from . import nexus
 
         dataset, field = self._find(source)
-        values, texts = _values(dataset, field, most)
+        _require_own_storage(dataset)
+        _require_room(dataset, most)
+        values, texts = numbers(_raw(dataset, field, slice(None)), dataset.name)
         head: dict[str, Any] = {"samples": len(values), "unit": _unit(dataset, field), "texts": texts, "clock": 0}
         blobs = [(values * nexus.clock_scale(dataset)).tobytes()]
         clock = nexus.clock_of(dataset, self.follow)
         if clock is not None:
-            stamps, _ = _values(clock, None, most)
+            _require_own_storage(clock)
+            _require_room(clock, most)
+            stamps, _ = numbers(_raw(clock, None, slice(None)), clock.name)
             head.update(clock=len(stamps), clock_unit=_unit(clock, None))
             blobs.append((stamps * nexus.clock_scale(clock)).tobytes())
         return head, blobs
+
+    def chunks(self, sources: Sequence[str], rows: int) -> Iterator[Answer]:
+        """The heads of the channels first, then `rows` samples of all of them at a time, up to the shortest."""
+        parts = [_Part(source, *self._find(source), self.follow) for source in sources]
+        lengths = {part.source: part.length for part in parts}
+        yield {"lengths": lengths, "channels": [part.head for part in parts]}, []
+        shortest = min(lengths.values())
+        for start in range(0, shortest, rows):
+            read = [part.read(slice(start, min(start + rows, shortest))) for part in parts]
+            yield {"texts": [texts for texts, _ in read]}, [blob for _, blobs in read for blob in blobs]
 
     def _find(self, source: str) -> tuple[Any, str | int | None]:
         """The dataset, and the field or column of it, that a source names."""
@@ -216,11 +191,40 @@ class _Tree:
         return item
 
 
-def _values(dataset: Any, field: str | int | None, most: int) -> tuple[Any, list[str] | None]:
-    """(n,) float64 array, or the texts of stamps with an empty array."""
-    import numpy as np
+class _Part:
+    """One channel that is read by slices."""
 
-    _require_own_storage(dataset)
+    def __init__(self, source: str, dataset: Any, field: str | int | None, follow: Any) -> None:
+        from . import nexus
+
+        self.source, self._dataset, self._field = source, dataset, field
+        self._clock = nexus.clock_of(dataset, follow)
+        self._scale = nexus.clock_scale(dataset)
+        _require_own_storage(dataset)
+        self.length = dataset.shape[0] if field is not None else dataset.size
+        unit = None
+        if self._clock is not None:
+            _require_own_storage(self._clock)
+            self.length = min(self.length, self._clock.size)
+            unit = _unit(self._clock, None)
+        self.head = {"unit": _unit(dataset, field), "clock": self._clock is not None, "clock_unit": unit}
+
+    def read(self, rows: slice) -> tuple[list[str] | None, list[bytes]]:
+        """The texts of stamps or None, and the bytes of values and clock."""
+        from . import nexus
+
+        values, texts = self._slice(self._dataset, self._field, rows)
+        blobs = [(values * self._scale).tobytes()]
+        if self._clock is not None:
+            blobs.append((self._slice(self._clock, None, rows)[0] * nexus.clock_scale(self._clock)).tobytes())
+        return texts, blobs
+
+    def _slice(self, dataset: Any, field: str | int | None, rows: slice) -> tuple[Any, list[str] | None]:
+        ends = [_raw(dataset, field, slice(place, place + 1))[0] for place in (0, self.length - 1)]
+        return numbers(_raw(dataset, field, rows), dataset.name, *ends)
+
+
+def _require_room(dataset: Any, most: int) -> None:
     width = dataset.dtype.itemsize * dataset.size
     if max(width, 8 * dataset.size) > most:
         raise Refused(
@@ -228,27 +232,25 @@ def _values(dataset: Any, field: str | int | None, most: int) -> tuple[Any, list
             found=f"{dataset.name}: {width / 1e9:.1f} GB",
             expected=f"at most {most / 1e9:.1f} GB",
         )
+
+
+def _raw(dataset: Any, field: str | int | None, rows: slice) -> Any:
+    """(n,) array of some samples of one channel, as stored."""
     if isinstance(field, str):
-        raw = dataset.fields(field)[...]
-    elif field is not None:
-        raw = dataset[:, field]
-    else:
-        raw = dataset[...]
-    if raw.ndim != 1 and raw.size != max(raw.shape, default=0):
+        return dataset.fields(field)[rows].reshape(-1)
+    if field is not None:
+        return dataset[rows, field]
+    if dataset.ndim != 1 and dataset.size != max(dataset.shape, default=0):
         raise Refused(
             "this dataset is not one channel",
-            found=f"{dataset.name} with shape {raw.shape}",
+            found=f"{dataset.name} with shape {dataset.shape}",
             expected="one number a sample",
             advice='name a column, such as "data/1"',
         )
-    raw = raw.reshape(-1)
-    if raw.dtype.kind in "SO":
-        return np.empty(0), [_text(item) for item in raw]
-    if raw.dtype.kind not in "fiub":
-        raise Refused("this dataset holds no numbers", found=f"{dataset.name} of {raw.dtype}", expected="numbers")
-    if raw.dtype.kind in "iu" and raw.size and int(np.abs(raw.astype(object)[[0, -1]]).max()) > 2**53:
-        raw = raw - raw[0]  # only a stamp in ns is that large; float64 would round it
-    return raw.astype(np.float64), None
+    if dataset.ndim == 1:
+        return dataset[rows]
+    long = dataset.shape.index(dataset.size) if dataset.ndim else 0
+    return dataset[tuple(rows if axis == long else 0 for axis in range(dataset.ndim))].reshape(-1)
 
 
 def _require_own_storage(dataset: Any) -> None:
@@ -275,7 +277,7 @@ def _require_own_storage(dataset: Any) -> None:
         if not h5py.h5z.filter_avail(code):
             raise Refused(
                 "a compression filter is missing",
-                found=f"{dataset.name} needs {_text(name)} ({code})",
+                found=f"{dataset.name} needs {text_of(name)} ({code})",
                 advice="write the log again without it, or with gzip",
             )
 
@@ -304,20 +306,7 @@ def _attribute(dataset: Any, name: str, field: str | int | None) -> str | None:
         place = field
     if place >= len(items):
         return None
-    return _text(items[place]).strip("\x00 \t\n") or None
-
-
-def _text(item: Any) -> str:
-    if isinstance(item, bytes):
-        try:
-            return item.decode("utf-8")
-        except UnicodeDecodeError:
-            return item.decode("latin-1")
-    return str(item).encode("utf-8", "surrogateescape").decode("latin-1" if _has_surrogate(str(item)) else "utf-8")
-
-
-def _has_surrogate(text: str) -> bool:
-    return any("\ud800" <= sign <= "\udfff" for sign in text)
+    return unit_of(items[place])
 
 
 if __name__ == "__main__":

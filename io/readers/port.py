@@ -1,6 +1,6 @@
 """The port of log readers: what any reader, built in or from outside, has to offer."""
 
-from collections.abc import Sequence
+from collections.abc import Iterator, Sequence
 from dataclasses import dataclass, field
 from pathlib import Path
 from typing import Protocol, runtime_checkable
@@ -128,6 +128,31 @@ class Reader(Protocol):
             When the file can't be read.
         RequestError
             When a source isn't in it; `missing_source` words it.
+        """
+        ...
+
+
+@runtime_checkable
+class ChunkedReader(Reader, Protocol):
+    """A reader that can also read part by part, for logs larger than memory. It need not be one."""
+
+    def rows(self, file: Path, sources: Sequence[str], hints: Hints) -> int:
+        """About how many samples the longest of these channels has, told without reading them all.
+
+        Raises
+        ------
+        RecordError, RequestError
+            As `read`.
+        """
+        ...
+
+    def chunks(self, file: Path, sources: Sequence[str], hints: Hints, rows: int) -> Iterator[Log]:
+        """The named channels in order, about `rows` samples at a time; stamps go on from part to part.
+
+        Raises
+        ------
+        RecordError, RequestError
+            As `read`.
         """
         ...
 

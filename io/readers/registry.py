@@ -10,22 +10,26 @@ from .port import Reader
 GROUP = "gainwright.readers"
 HEAD_BYTES = 65536
 _BUILT_IN = "gainwright.io.readers."
+_TEXT = _BUILT_IN + "csv:"
 
 
 @functools.lru_cache(maxsize=1)
 def readers() -> tuple[Reader, ...]:
     """Every installed reader, one of each entry point of the group "gainwright.readers".
 
-    Readers of other packages are asked first: they know special formats, while the built-in one for text takes any
-    text.
+    Readers of other packages are asked first: they know special formats. The built-in one for text takes any text and
+    is asked last.
 
     Raises
     ------
     GainwrightError
         When a reader can't be loaded or doesn't fit the port.
     """
-    points = sorted(entry_points(group=GROUP), key=lambda point: (point.value.startswith(_BUILT_IN), point.name))
-    return tuple(_load(point) for point in points)
+    return tuple(_load(point) for point in sorted(entry_points(group=GROUP), key=_rank))
+
+
+def _rank(point: EntryPoint) -> tuple[bool, bool, str]:
+    return point.value.startswith(_TEXT), point.value.startswith(_BUILT_IN), point.name
 
 
 def _load(point: EntryPoint) -> Reader:

@@ -61,6 +61,42 @@ def seconds_of(texts: Sequence[str], where: str, first_line: int) -> FloatArray:
     return np.asarray(_over_midnight(seconds) - seconds[0])
 
 
+class Stamps:
+    """The stamps of one column that comes in parts, each going on from the one before.
+
+    Parameters
+    ----------
+    where : str
+        File and column, for messages.
+
+    Examples
+    --------
+    >>> stamps = Stamps("a log")
+    >>> stamps.seconds(["23:59:58", "23:59:59"]), stamps.seconds(["00:00:01"])
+    (array([0., 1.]), array([3.]))
+    """
+
+    def __init__(self, where: str) -> None:
+        self._where = where
+        self._last: tuple[str, float] | None = None
+
+    def seconds(self, texts: Sequence[str], first_line: int = 1) -> FloatArray:
+        """(n,) array, s, from the first stamp of all.
+
+        Raises
+        ------
+        RecordError
+            As `seconds_of`.
+        """
+        if self._last is None:
+            seconds = seconds_of(texts, self._where, first_line)
+        else:
+            text, before = self._last
+            seconds = before + seconds_of([text, *texts], self._where, first_line - 1)[1:]
+        self._last = texts[-1], float(seconds[-1])
+        return seconds
+
+
 def _of_day(match: re.Match[str]) -> float:
     hours = int(match[2])
     if match[5]:
