@@ -66,9 +66,23 @@ class _Tree:
                 )
             if isinstance(link, h5py.SoftLink):
                 base = "" if link.path.startswith("/") else here.name.rstrip("/") + "/"
+                self._require_target(path, base + link.path, links + 1)
                 return self.follow("/".join([base + link.path, *parts[number + 1 :]]), links + 1)
             here = here[part]
         return here
+
+    def _require_target(self, path: str, target: str, links: int) -> None:
+        try:
+            self.follow(target, links)
+        except Refused as refused:
+            if "missing" not in refused.parts:
+                raise
+            raise Refused(
+                "this log links to something that is not in it",
+                found=f"{path} -> {target}",
+                expected="the samples in the file itself",
+                advice="let the logger write them, or name another source",
+            ) from refused
 
     def channels(self) -> list[dict[str, Any]]:
         """Everything that can be named as a source, links left out."""
@@ -297,6 +311,8 @@ def _attribute(dataset: Any, name: str, field: str | int | None) -> str | None:
     try:
         value = dataset.attrs[name]
     except (OSError, UnicodeDecodeError, ValueError, TypeError):
+        return None
+    if type(value).__name__ == "Empty":
         return None
     items = list(value.reshape(-1)) if hasattr(value, "reshape") else [value]
     place = 0
