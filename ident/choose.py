@@ -13,6 +13,8 @@ from .projected import Solved
 from .regression import Regression
 from .run import FloatArray, Run
 from .start import first_guesses
+from .table_guesses import table_guesses
+from .table_regression import TableRegression, Weighed
 from .unexplained import unexplained
 from .whiten import WHITE, Colour
 
@@ -87,11 +89,12 @@ def fit_candidates(
     fixed_command: bool,
     structures: Sequence[Structure] = CATALOGUE,
     progress: Progress | None = None,
+    weighed: tuple[Weighed, ...] = (),
 ) -> tuple[list[Fitted], Colour]:
     """Every structure fitted by least squares, then all again under the noise of the best; best first.
 
-    The further structures are fitted only where the best of the others leaves something of the command's effect, and
-    kept only where one of them is the best: what a simpler one explains as well needs no zero.
+    The further structures are fitted only where the best of the others leaves something of the command's effect (with
+    tables always), and kept only where one of them is the best: what a simpler one explains as well needs no zero.
     """
     families = _families(structures)
     usual = [family for family in families if not family[0].further] or families
@@ -100,17 +103,18 @@ def fit_candidates(
         if not fitted or _may_matter(family[0], fitted):
             if progress:
                 progress("fitting " + " or ".join(s.name for s in family), i / (len(families) + 1))
-            fitted.append(_from_library(tuple(runs), reference, fixed_command, family))
+            fitted.append(_from_library(tuple(runs), reference, fixed_command, family, weighed))
     fitted = sorted(_distinct(fitted), key=lambda f: f.criterion)
     recoloured, colour = _under_one_noise(fitted)
     left = [family for family in families if family not in usual and _kin(family[0], recoloured[0])]
     visible = min(f.misfit for f in fitted)
-    if not left or visible < _SLIGHT or _left_by(recoloured[0], colour) < _UNEXPLAINED:
+    explained = not weighed and (visible < _SLIGHT or _left_by(recoloured[0], colour) < _UNEXPLAINED)
+    if not left or explained:
         return recoloured, colour
     for i, family in enumerate(left):
         if progress:
             progress("fitting " + " or ".join(s.name for s in family), (len(usual) + i) / (len(families) + 1))
-        fitted.append(_from_library(tuple(runs), reference, fixed_command, family))
+        fitted.append(_from_library(tuple(runs), reference, fixed_command, family, weighed))
     together, own_colour = _under_one_noise(sorted(_distinct(fitted), key=lambda f: f.criterion))
     together = [f for f in together if not _three_lags(f)]
     better = together[0].problem.structure.further and min(f.misfit for f in fitted) < _VISIBLY * visible
@@ -184,8 +188,10 @@ def _moving_poles(fitted: Fitted) -> ComplexArray:
 
 
 def colour_of(fitted: Fitted) -> Colour:
-    """Noise colour from one candidate's residual."""
+    """Noise colour from one candidate's residual; tables alone know none."""
     problem = fitted.problem
+    if not problem.runs:
+        return WHITE
     coefficients = problem.solve(fitted.theta, Colour()).coefficients
     model, columns = problem.full_columns(fitted.theta, coefficients)
     return estimate_colour(columns, problem.measured - model, problem.stretches, problem.waves)
@@ -257,14 +263,28 @@ def _formula(structure: Structure) -> tuple[object, bool, bool]:
     return structure.polynomials, structure.friction, structure.zero
 
 
-def _from_library(runs: tuple[Run, ...], reference: float, fixed_command: bool, family: Sequence[Structure]) -> Fitted:
+def _from_library(
+    runs: tuple[Run, ...],
+    reference: float,
+    fixed_command: bool,
+    family: Sequence[Structure],
+    weighed: tuple[Weighed, ...],
+) -> Fitted:
     ends = []
     for structure in family:
         problem = Regression(runs, structure, reference, fixed_command)
-        ends += [(problem, *polish(problem, theta, rounds=_SCOUT)) for theta in first_guesses(problem)]
+        if weighed:
+            problem = TableRegression(runs, structure, reference, fixed_command, weighed)
+        ends += [(problem, *polish(problem, theta, rounds=_SCOUT)) for theta in _guesses(problem)]
     problem, theta, solved = min(ends, key=lambda end: end[2].cost)
     theta, solved = polish(problem, theta)
     return _weighed(problem, theta, solved)
+
+
+def _guesses(problem: Regression) -> list[FloatArray]:
+    if not isinstance(problem, TableRegression):
+        return first_guesses(problem)
+    return [*table_guesses(problem), *(first_guesses(problem.timed) if problem.timed else [])]
 
 
 def _weighed(problem: Regression, theta: FloatArray, solved: Solved) -> Fitted:
@@ -272,6 +292,6 @@ def _weighed(problem: Regression, theta: FloatArray, solved: Solved) -> Fitted:
     unknowns = len(theta) + len(solved.coefficients)
     criterion = n * float(np.log(max(solved.cost, 1e-300) / n)) + unknowns * float(np.log(n))
     model = problem.columns(theta) @ solved.coefficients
-    spread = float(np.std(problem.measured))
+    spread = problem.movement
     rms = float(np.sqrt(np.mean((problem.measured - model) ** 2)))
     return Fitted(problem, theta, solved, rms / spread if spread > 0 else np.inf, criterion)

@@ -118,6 +118,8 @@ def operating_commands(drawn: Drawn, operating_response: float) -> FloatArray:
     s = len(drawn.fitted.theta) - 1
     gain = draws[:, s + 1]
     runs = len(problem.runs)
+    if not problem.runs:
+        return np.full(len(draws), problem.reference)
     if problem.structure.integrators:
         if not problem.drifts or problem.structure.friction:
             return np.full(len(draws), problem.reference)

@@ -6,6 +6,7 @@ import numpy as np
 
 from .plant import Plant
 from .run import Between, FloatArray
+from .tables import FittedTable
 
 
 @dataclass(frozen=True)
@@ -154,6 +155,9 @@ class Fit:
         What the command was taken to do between samples where no run said so.
     friction : (forward, backward), command unit
         Dry friction of the fitted plant; zeros where the structure has none.
+    tables : tuple of FittedTable
+        Frequency tables among what was fitted. With tables alone `runs` is empty and the noise in time is not known:
+        its standard deviation is zero.
     """
 
     structure: str
@@ -175,3 +179,4 @@ class Fit:
     draws: FloatArray = field(default_factory=lambda: np.zeros((0, 0)))
     between: Between = "held"
     friction: tuple[float, float] = (0.0, 0.0)
+    tables: tuple[FittedTable, ...] = ()

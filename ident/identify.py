@@ -13,6 +13,8 @@ from .ensemble import Drawn, draw_structure, operating_commands, plant_of, plaus
 from .fit import finish
 from .fitted import Candidate, Fit, FittedRun, Noise, Parameter
 from .run import FloatArray, Run
+from .table_fit import fitted_tables, require_tables, structures_for, table_cautions, weigh
+from .tables import Table
 from .usable import require_usable
 from .whiten import WHITE, Colour
 
@@ -28,6 +30,7 @@ _TIED_DRAWS = 192
 def identify(
     runs: Sequence[Run],
     *,
+    tables: Sequence[Table] = (),
     operating_command: float | None = None,
     operating_response: float | None = None,
     structures: Sequence[Structure] = CATALOGUE,
@@ -39,7 +42,9 @@ def identify(
     Parameters
     ----------
     runs : sequence of Run
-        At least one, with a command that moves.
+        At least one, with a command that moves; none where tables stand in.
+    tables : sequence of Table
+        Frequency tables to be fitted jointly with the runs; without runs both operating values must be stated.
     operating_command, operating_response : float or None
         As the rig file states them; None: the first run's steady command, and the response it holds; in closed loop the
         response before the setpoint moves, and the command that holds it.
@@ -54,7 +59,7 @@ def identify(
     Raises
     ------
     RecordError
-        Nothing can be made of the runs: see `require_usable`.
+        Nothing can be made of the runs: see `require_usable` and `require_tables`.
 
     Notes
     -----
@@ -62,11 +67,17 @@ def identify(
     again under that colour, weighed by the Bayesian information criterion; the chosen one finished by lmfit; the dead
     time profiled, and the plausible plants drawn from the mixture over it.
     """
-    require_usable(runs)
-    runs, between = settle_between(runs)
+    if tables:
+        require_tables(tables, runs, operating_command, operating_response)
+        structures = structures_for(structures, tables, runs)
+    if runs or not tables:
+        require_usable(runs)
+    runs, between = settle_between(runs) if runs else ((), Between("held"))
     reference = runs[0].start_command if operating_command is None else operating_command
-    operating_response = resting_response(runs) if operating_response is None else operating_response
-    fitted, colour = fit_candidates(runs, reference, operating_command is not None, structures, progress)
+    operating_response = resting_response(runs) if operating_response is None and runs else operating_response
+    fixed = operating_command is not None
+    weighed = weigh(tables, runs, reference, fixed, structures) if tables else ()
+    fitted, colour = fit_candidates(runs, reference, fixed, structures, progress, weighed)
     weights = evidence(fitted)
     chosen, colour = _finished(fitted[0], colour)
     fitted = [chosen, *(f if chosen.whitened else steady_fit(f) for f in fitted[1:])]
@@ -127,10 +138,11 @@ def _assembled(
         ties=ties,
         plausible=plausible_plants(drawn, shares, response_there, _PLANTS),
         explanation=_explanation(candidates, ties, between.words),
-        cautions=_cautions(drawn[0], colour),
+        cautions=(*_cautions(drawn[0], colour), *table_cautions(chosen)),
         drift=colour.rho > _DRIFTING or colour.wander > 0.0,
         draws=drawn[0].draws[:, : s + 2],
-        between=problem.runs[0].between,
+        between=problem.runs[0].between if problem.runs else "held",
+        tables=fitted_tables(chosen, row),
         friction=(float(np.exp(row[s - 2])), float(np.exp(row[s - 1]))) if problem.structure.friction else (0.0, 0.0),
     )
 
@@ -173,6 +185,8 @@ def _named(fitted: Fitted) -> Structure:
 
 def _noise(chosen: Fitted, colour: Colour) -> Noise:
     problem = chosen.problem
+    if not problem.runs:
+        return Noise(1.0, 0.0, 0.0)
     n = len(problem.measured)
     unknowns = len(chosen.theta) + len(chosen.solved.coefficients)
     model, _ = problem.full_columns(chosen.theta, problem.solve(chosen.theta, WHITE).coefficients)

@@ -23,7 +23,7 @@ def bounds_of(problem: Regression) -> tuple[FloatArray, FloatArray]:
             edge = (1e-3, 1e2)
         low.append(np.log(edge[0]))
         high.append(np.log(edge[1]))
-    return np.array([*low, problem.soonest]), np.array([*high, 0.9 * length])
+    return np.array([*low, problem.soonest]), np.array([*high, problem.latest])
 
 
 def polish(

@@ -48,6 +48,11 @@ class Regression:
         """(n,) valid responses of all runs, response unit."""
         return np.concatenate([run.response[run.valid] for run in self.runs])
 
+    @property
+    def movement(self) -> float:
+        """Standard deviation of the response, to which a misfit is relative."""
+        return float(np.std(self.measured))
+
     @cached_property
     def stretches(self) -> list[slice]:
         """Consecutive valid samples, numbered in `measured`."""
@@ -116,6 +121,11 @@ class Regression:
     def soonest(self) -> float:
         """Least dead time, s: in closed loop the command follows from the sample, which it can't have moved yet."""
         return 1e-3 * self.interval if self.jumps and self.feeds_back else 0.0
+
+    @property
+    def latest(self) -> float:
+        """Greatest dead time, s: a longer one than this share of the record is not looked for."""
+        return 0.9 * self.duration
 
     @property
     def earliest(self) -> float:
