@@ -15,6 +15,7 @@ from ..ident.fitted import Fit, Parameter
 from .asked import asked_of
 from .change_rows import change_row
 from .forms_as_printed import forms_as_printed
+from .further_forms import further_forms_as_printed, missing_forms
 from .ladder_rows import bounded, ladder_rows, law_row
 from .outcome import Outcome
 from .parameter_unit import unit_of
@@ -190,6 +191,8 @@ def _chosen(outcome: Outcome) -> dict[str, Any] | None:
         "structure": design.gains.structure,
         "action": _action(design.gains),
         "forms": forms_as_printed(design.gains, rig.command_unit, rig.response_unit),
+        "further_forms": further_forms_as_printed(design.gains, rig),
+        "forms_missing": missing_forms(design.gains, rig),
         "setpoint_weight": float(design.gains.setpoint_weight),
         "difference_equation": None if design.continuous else law_row(design.law),
     }

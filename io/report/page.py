@@ -13,6 +13,7 @@ from ..cautions import FIRST_RUN
 from ..figures.svg import variables
 from ..figures.words import number, with_unit
 from ..forms_as_printed import forms_as_printed
+from ..further_forms import further_forms_as_printed, missing_forms
 from ..outcome import Outcome
 from . import pictures, tables, words
 from .changed import changed_of
@@ -106,11 +107,13 @@ def _cells(outcome: Outcome) -> tuple[tuple[str, str], ...]:
 
 def _designed(outcome: Outcome, design: Design) -> dict[str, Any]:
     rig = outcome.rig
+    missing = missing_forms(design.gains, rig)
     return {
         "checked": words.checked_on(design, rig.requirements.confidence),
         "action": words.action(design),
         "use": words.USE if outcome.status == "released" else words.STUDY,
-        "forms": tables.forms(forms_as_printed(design.gains, rig.command_unit, rig.response_unit)),
+        "forms": tables.forms(forms_as_printed(design.gains, rig.command_unit, rig.response_unit), missing),
+        "further_forms": tables.forms(further_forms_as_printed(design.gains, rig), missing),
         "settings": _settings(outcome, design),
         "law": CONTINUOUS if design.continuous else law_text(design.law),
         "requirements": tables.requirements(design),

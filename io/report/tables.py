@@ -41,16 +41,22 @@ class Form:
     ----------
     name, formula : str
     rows : tuple of (name, value with unit), or None where the form does not exist
+    why : str
+        Why it does not.
     """
 
     name: str
     formula: str
     rows: tuple[tuple[str, str], ...] | None
+    why: str = ""
 
 
-def forms(printed: dict[str, Any]) -> tuple[Form, ...]:
-    """The forms of the sheet, in its order."""
-    return tuple(Form(name, words.FORMS.get(name, ""), _gains(found)) for name, found in printed.items())
+def forms(printed: dict[str, Any], missing: dict[str, str] | None = None) -> tuple[Form, ...]:
+    """The forms of the sheet, in its order; `missing` says why one is not there."""
+    why = missing or {}
+    return tuple(
+        Form(name, words.FORMS.get(name, ""), _gains(found), why.get(name, "")) for name, found in printed.items()
+    )
 
 
 def _gains(found: dict[str, Any] | None) -> tuple[tuple[str, str], ...] | None:

@@ -22,6 +22,11 @@ FORMS = {
     "standard": "G (1 + 1/(Ti s) + Td s/(Tf s + 1))",
     "series": "G (1 + 1/(Ti s)) (Td s + 1)/(Tf s + 1)",
     "zero-pole": "G (s + zero)/(s + pole) on the error; for lead-lag times (s + second zero)/(s + second pole)",
+    "standard, minutes": "the standard form with its times in minutes",
+    "standard, repeats": "the standard form with 1/Ti, repeats of the proportional move, in place of Ti",
+    "per sample": "P, I T for a sum of errors and D/T for a difference of responses, T the update interval",
+    "proportional band": "100 %/G in shares of both signals' ranges; the controller's action gives the sign",
+    "zeros": "K (s + zero) (s + second zero) over s and Tf s + 1, as far as the structure has them",
 }
 GAIN_NAMES = {
     "proportional": "proportional P",
@@ -35,6 +40,13 @@ GAIN_NAMES = {
     "pole": "pole",
     "second_zero": "second zero",
     "second_pole": "second pole",
+    "repeats_per_second": "repeats, per second",
+    "repeats_per_minute": "repeats, per minute",
+    "integral_per_sample": "integral, per sample",
+    "derivative_per_sample": "derivative, per sample",
+    "filter_samples": "derivative filter time Tf",
+    "sample": "update interval T",
+    "loop_gain": "loop gain K",
 }
 
 

@@ -169,3 +169,29 @@ def test_a_requirement_without_a_unit_is_a_pure_number(made) -> None:
     """peak_sensitivity has no unit: the sheet writes 1, as rig files do."""
     judged = replace(made.design.judged[0], requirement=Requirement("peak_sensitivity", 1.7, "at_most"))
     assert read_back(made.with_design(judged=(judged,)).outcome())["requirements"][0]["unit"] == "1"
+
+
+def test_further_forms_stand_on_the_sheet_and_a_missing_one_says_why(made) -> None:
+    """A PI: minutes, repeats and per sample beside the four; no band without ranges, no zero-pole form."""
+    signals = {**made.rig.signals, "response": replace(made.rig.signals["response"], highest=None)}
+    controller = read_back(replace(made.outcome(), rig=replace(made.rig, signals=signals)))["controller"]
+    gains, further = made.design.gains, controller["further_forms"]
+    seconds = gains.proportional / gains.integral
+    assert further["standard, minutes"]["integral_time"] == {"value": pytest.approx(seconds / 60.0), "unit": "min"}
+    per_sample = made.rig.setting.update_interval * gains.integral
+    assert further["per sample"]["integral_per_sample"]["value"] == pytest.approx(per_sample)
+    assert further["proportional band"] is None
+    assert "range" in controller["forms_missing"]["proportional band"]
+    assert "no lead or lag" in controller["forms_missing"]["zero-pole"]
+    lost = {name for name, form in {**controller["forms"], **further}.items() if form is None}
+    assert lost == set(controller["forms_missing"])
+
+
+def test_ranges_of_both_signals_give_a_proportional_band(made) -> None:
+    """0 to 300 mm; a command of -10 to 10 V by its limits, or of 5 V by its range: 100 %/G times 20/300 or 5/300."""
+    ranged = {**made.rig.signals, "command": replace(made.rig.signals["command"], lowest=0.0, highest=5.0)}
+    for rig, wide in ((made.rig, 20.0), (replace(made.rig, signals=ranged), 5.0)):
+        sheet = read_back(replace(made.outcome(), rig=rig))
+        band = sheet["controller"]["further_forms"]["proportional band"]["proportional_band"]
+        wanted = 100.0 * wide / 300.0 / abs(made.design.gains.proportional)
+        assert band == {"value": pytest.approx(wanted), "unit": "%"}

@@ -99,7 +99,7 @@ def test_a_released_page_says_so_with_gains_units_forms_and_the_law(released):
     text = Reader(released).text
     for said in (
         "RELEASED.", "0.13 V/mm", "0.21 V/(mm s)", "integral time Ti", "0.6190476 s",
-        "This form does not exist for these gains.", "update interval", "0.02 s",
+        "This form does not exist for these gains: PI is no lead or lag.", "Further forms", "update interval", "0.02 s",
         "lowest -13 V, highest 7 V, rate 200 V/s",
         "1200 plausible plants were checked", "98.1 % meet all requirements together (95 % asked for)",
     ):  # fmt: skip
