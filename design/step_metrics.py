@@ -4,6 +4,9 @@ import numpy as np
 from numpy.typing import NDArray
 
 from ..ident.run import FloatArray
+from .sampled.bank import IndexArray
+
+_AROUND, _SHARP = 3, 3.0  # rows on each side of a corner; its break of slope over the bends beside it
 
 
 def overshoot(response: FloatArray, final: FloatArray) -> FloatArray:
@@ -25,16 +28,47 @@ def overshoot(response: FloatArray, final: FloatArray) -> FloatArray:
 
 
 def peak(response: FloatArray) -> FloatArray:
-    """(c,) largest value of (q, c) `response`, refined by a parabola; zero at the start counts."""
+    """(c,) largest value of (q, c) `response`, refined by a parabola, or where two curves meet in a corner.
+
+    Zero at the start counts. A corner is where a delayed jump of the command arrives at a plant of relative degree one.
+    """
     columns = np.arange(response.shape[1])
     top = response.argmax(axis=0)
     middle = np.clip(top, 1, max(response.shape[0] - 2, 1))
     left, here, right = (response[middle + i, columns] for i in (-1, 0, 1))
     bend = left - 2.0 * here + right
     inside = (middle == top) & (bend < 0.0)
-    with np.errstate(over="ignore"):  # a loop at the edge of stability may have left for good
+    with np.errstate(over="ignore", invalid="ignore"):  # a loop at the edge of stability may have left for good
         lift = np.where(inside, -((right - left) ** 2) / (8.0 * np.where(inside, bend, -1.0)), 0.0)
-    return np.asarray(np.maximum(response[top, columns] + lift, 0.0))
+        highest = np.maximum(response[top, columns] + lift, 0.0)
+        if response.shape[0] < 2 * _AROUND:
+            return np.asarray(highest)
+        for first in (0, -1):
+            corner, height = _corner(response, top + first, columns)
+            highest = np.where(corner, np.maximum(height, np.maximum(response[top, columns], 0.0)), highest)
+    return np.asarray(highest)
+
+
+def _corner(response: FloatArray, before: IndexArray, columns: IndexArray) -> tuple[NDArray[np.bool_], FloatArray]:
+    """Whether the curves left and right of the gap after row `before` meet in a corner within it, and how high.
+
+    Each side is continued as a parabola through its three nearest rows. It is a corner where the slope breaks by far
+    more than the sides bend.
+    """
+    place = np.clip(before, _AROUND - 1, response.shape[0] - _AROUND - 1)
+    a, b, c, d, e, f = (response[place + i, columns] for i in (-2, -1, 0, 1, 2, 3))
+    left, right = c - b, e - d
+    bends = c - 2.0 * b + a, f - 2.0 * e + d
+    at = np.full(place.size, 0.5)
+    for _ in range(3):
+        low = c + at * left + 0.5 * at * (at + 1.0) * bends[0]
+        high = d + (at - 1.0) * right + 0.5 * (at - 1.0) * (at - 2.0) * bends[1]
+        slopes = left + (at + 0.5) * bends[0], right + (at - 1.5) * bends[1]
+        fall = slopes[0] - slopes[1]
+        at = np.clip(at + (high - low) / np.where(fall > 0.0, fall, 1.0), -0.05, 1.05)
+    sharp = fall > _SHARP * (np.abs(bends[0]) + np.abs(bends[1]))
+    inside = (at > -0.02) & (at < 1.02) & (place == before) & (slopes[0] > 0.0) & (slopes[1] < 0.0)
+    return inside & sharp & (np.abs(high - low) < 1e-6 * np.abs(c)), low
 
 
 def settling_time(response: FloatArray, final: FloatArray, band: float, spacing: float) -> FloatArray:

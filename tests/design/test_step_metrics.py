@@ -2,7 +2,13 @@
 
 import numpy as np
 import pytest
+from gainwright.design.discretise import columns_of, law_columns
+from gainwright.design.gains import Gains
+from gainwright.design.sampled.around import run_around
+from gainwright.design.sampled.bank import build_bank
+from gainwright.design.sampled.loop import Clamps
 from gainwright.design.step_metrics import last_entry, overshoot, rise_time, settling_time, still_moving
+from gainwright.ident.plant import Plant
 
 ZETA = np.array([0.1, 0.2, 0.3, 0.4, 0.5, 0.6, 0.7, 0.8, 0.9])
 ONE = np.ones(1)
@@ -83,3 +89,26 @@ def test_a_clamp_that_never_lets_go_is_noticed():
     limited = np.zeros((50, 2), dtype=bool)
     limited[40:, 1] = True
     assert still_moving(limited, 2).tolist() == [False, True]
+
+
+def test_a_peak_in_a_corner_is_where_both_sides_meet():
+    """exp(2t) - 1 up to t = c, then exp(2c) - 1 - 3 (t - c): the peak is exp(2c) - 1 wherever c falls between rows of
+    0.02 s; a parabola through the corner is off by up to 1 %."""
+    corners = np.linspace(0.5, 0.54, 17)
+    time = 0.02 * np.arange(1, 60)[:, None]
+    top = np.expm1(2.0 * corners)
+    response = np.where(time < corners, np.expm1(2.0 * time), top - 3.0 * (time - corners))
+    found = overshoot(response, np.ones(17))
+    assert found == pytest.approx(top - 1.0, abs=1.8e-4)  # third difference of exp(2t) over 0.02 s: 0.04^3 e
+
+
+def test_overshoot_of_a_relative_degree_one_loop_does_not_hang_on_where_it_is_looked_at():
+    """An unstable lag with a tenth of a sample of dead time peaks in a corner: 0.85808 by sub-steps that fall on it."""
+    plant = Plant((2.4409294030109763,), (1.0, -1.0), 0.1 * 0.10443831655310702)
+    gains = Gains("PI", 6.64939725386149, 6.64939725386149 * 0.76407296908141)
+    for points in (8, 20, 64):
+        bank = build_bank([plant], 0.10443831655310702, points=points)
+        law = law_columns(columns_of([gains]), bank.interval)
+        history = run_around(bank, np.zeros(1, int), law, setpoint=np.ones(1), disturbance=np.zeros(1),
+                             clamps=Clamps(np.full(1, -np.inf), np.full(1, np.inf), np.inf), samples=60)  # fmt: skip
+        assert overshoot(history.response, np.ones(1))[0] == pytest.approx(0.85808028, abs=2e-5)
