@@ -20,6 +20,7 @@ from .slack import UNSTABLE, requirement_slack
 from .values import Bench, values_of
 
 _LINEAR = ("command_noise", "damping_ratio", "ramp_error")
+_SWINGING = ("settling_time", "disturbance_recovery")
 _IN_LINE, _IN_TIME = 1e-11, 3e-8  # relative widths at which edges are known
 _FAITHFUL = 0.1  # of the gain at which the stand-in of a continuous loop becomes unstable: as far as it is believed
 
@@ -66,7 +67,9 @@ def fitted_sets(bench: Bench, gains: GainColumns, chosen: float, loop: OpenLoop 
     for linear, tight in ((True, _IN_LINE), (False, _IN_TIME)):
         some = [item for item in items if item.name not in MARGINS and (item.name in _LINEAR) == linear]
         if some:
-            sets = scanned_sets(_measure(bench, gains, some), curve.stable, len(some), tight=tight, reach=reach)
+            swinging = [i for i, item in enumerate(some) if item.name in _SWINGING]
+            measure = _measure(bench, gains, some)
+            sets = scanned_sets(measure, curve.stable, len(some), tight=tight, reach=reach, swinging=swinging)
             found |= {item.name: spans for item, spans in zip(some, sets, strict=True)}
     together = curve.stable
     for spans in found.values():

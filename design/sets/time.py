@@ -1,7 +1,7 @@
 """Gains that meet what has no formula: a measure without jumps is scanned and its roots are closed in."""
 
 import math
-from collections.abc import Callable
+from collections.abc import Callable, Sequence
 
 import numpy as np
 from numpy.typing import NDArray
@@ -14,6 +14,7 @@ Measure = Callable[[FloatArray], FloatArray]  # (g,) factors to (rows, g): at mo
 _POINTS = 80  # in each stable span
 _DECADES = 1e4  # how far below its upper end, or the chosen gain, a span is scanned
 _CLOSE = 1.0  # a turning point whose measure is this near to 0 is looked at closely
+_BESIDE = 0.35  # a measure this near to 0 at both neighbours may pass it twice between them
 _ZOOMS = 3
 _INSIDE = 5  # points between two neighbours in a closer look
 _CUTS = 8
@@ -22,7 +23,13 @@ _MARGIN = 1e-9  # relative distance that is kept from the ends of a stable span
 
 
 def scanned_sets(
-    measure: Measure, stable: tuple[Span, ...], rows: int, *, tight: float = 1e-9, reach: float = math.inf
+    measure: Measure,
+    stable: tuple[Span, ...],
+    rows: int,
+    *,
+    tight: float = 1e-9,
+    reach: float = math.inf,
+    swinging: Sequence[int] = (),
 ) -> list[tuple[Span, ...]]:
     """Sets of each row of a measure within the stable spans.
 
@@ -37,11 +44,16 @@ def scanned_sets(
         Relative width at which an edge is known.
     reach : float
         Factor up to which the measure is to be believed; what holds there holds to the end of its span.
+    swinging : indices of rows
+        Those that can pass their bound and come back within a few per cent of gain.
     """
     found: list[list[Span]] = [[] for _ in range(rows)]
     for span in stable:
         grid = _grid(span, reach)
         table = measure(grid)
+        fresh = _beside_bounds(grid, table[list(swinging)])
+        if fresh.size:
+            grid, table = _merged(grid, table, fresh, measure(fresh))
         for _ in range(_ZOOMS):
             fresh = _near_misses(grid, table)
             if not fresh.size:
@@ -59,6 +71,14 @@ def _grid(span: Span, reach: float) -> FloatArray:
     bottom = low * (1.0 + _MARGIN) if low > 0.0 else min(top, 1.0) / _DECADES
     grid = np.geomspace(bottom, top, _POINTS)
     return np.unique(np.append(grid, 1.0)) if bottom < 1.0 < top else grid
+
+
+def _beside_bounds(grid: FloatArray, table: FloatArray) -> FloatArray:
+    """A point between any neighbours at which a row is near its bound: it may pass it and come back in one step."""
+    with np.errstate(invalid="ignore"):
+        near = (np.abs(table[:, 1:]) < _BESIDE) & (np.abs(table[:, :-1]) < _BESIDE)
+    places = np.flatnonzero(near.any(axis=0))
+    return np.asarray(0.5 * (grid[places] + grid[places + 1]))
 
 
 def _near_misses(grid: FloatArray, table: FloatArray) -> FloatArray:
