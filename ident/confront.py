@@ -4,12 +4,12 @@ from dataclasses import dataclass, replace
 
 import numpy as np
 from scipy.stats import f as fisher
+from scipy.stats import norm
 
 from .catalogue import CATALOGUE
 from .choose import Fitted, colour_of, steady_fit
-from .ensemble import Drawn, draw_structure, freedom_of, plausible_plants
+from .ensemble import Drawn, draw_structure, freedom_of, internal_draws, plant_of, plausible_plants, stiction_of
 from .fitted import Fit, Plausible
-from .friction import rough_free_run
 from .polish import polish
 from .regression import Regression
 from .run import FloatArray, Run
@@ -17,9 +17,11 @@ from .start import first_guesses
 from .whiten import WHITE, Colour
 
 _DRAWS = 1024
-_JOINT = 120
+_JOINT = 400
 # A residual above this multiple of the fitted noise: the earlier parameters may be too far off to start from.
 _SURPRISED = 1.3
+# A level further from the fitted one than this many standard errors has moved: the fresh run's own one counts.
+_MOVED = 3.0
 
 
 @dataclass(frozen=True, eq=False)
@@ -59,15 +61,19 @@ class Confronted:
     changes : tuple of Change
     noise_std : float, response unit
         Residual of this record's own fit.
-    log_likelihood : (p,) array
-        Of the first p plausible plants of the earlier fit under this record, its level and drift free.
+    joint : Plausible
+        Plants of the earlier fit, about the operating command that fit and record give together, or where the level
+        has moved, about the record's own.
+    joint_weights : (p,) array
+        How well each of them explains this record too; they sum to one.
     """
 
     plausible: Plausible
     p_value: float
     changes: tuple[Change, ...]
     noise_std: float
-    log_likelihood: FloatArray
+    joint: Plausible
+    joint_weights: FloatArray
 
 
 def confront(run: Run, fit: Fit, seed: int = 1) -> Confronted:
@@ -81,7 +87,7 @@ def confront(run: Run, fit: Fit, seed: int = 1) -> Confronted:
         run = replace(run, between=fit.between)
     problem = Regression((run,), structure, fit.operating_command, False)
     centre = np.median(fit.draws, axis=0)
-    theta, solved = polish(problem, centre[:-1])
+    theta, solved = polish(problem, centre[: len(structure.shapes) + 1])
     if np.sqrt(solved.cost / len(problem.measured)) > _SURPRISED * fit.noise.std:
         ends = [(theta, solved), *(polish(problem, guess) for guess in first_guesses(problem, 2))]
         theta, solved = min(ends, key=lambda end: end[1].cost)
@@ -90,56 +96,104 @@ def confront(run: Run, fit: Fit, seed: int = 1) -> Confronted:
     theta, solved = polish(problem, theta, colour, rounds=12)
     alone = steady_fit(Fitted(problem, theta, solved, 0.0, 0.0))
     drawn = draw_structure(alone, colour, _DRAWS, seed)
-    return _compared(fit, drawn, colour, _log_likelihood(fit, alone, colour))
+    return _compared(fit, drawn, colour)
 
 
-def _log_likelihood(fit: Fit, alone: Fitted, colour: Colour) -> FloatArray:
-    """(p,) Student-t log likelihood of fitted plants, the noise of this record's own best fit."""
-    problem = alone.problem
-    best = problem.solve(alone.theta, colour).cost
-    initial = problem.initial_columns(problem.split(alone.theta)[0])
-    free = problem.fixed_columns if initial is None else np.column_stack([problem.fixed_columns, initial])
-    target = problem.whitener(colour).apply(np.column_stack([problem.measured, free]))
-    basis, _ = np.linalg.qr(target[:, 1:])
-    costs = []
-    for plant, friction in zip(fit.plausible.plants[:_JOINT], fit.plausible.stiction, strict=False):
-        pair = (float(friction), float(friction)) if friction > 0 else (0.0, 0.0)
-        model = rough_free_run(plant, problem.runs[0], fit.operating_command, 0.0, pair)[problem.runs[0].valid]
-        away = target[:, 0] - problem.whitener(colour).apply(model)
-        away = away - basis @ (basis.T @ away)
-        costs.append(float(away @ away))
-    freedom = freedom_of(problem, colour, len(alone.theta) + len(alone.solved.coefficients))
-    size = len(problem.measured) if alone.whitened else freedom
-    return np.asarray(-0.5 * size * np.log(np.maximum(np.array(costs), best) / best))
-
-
-def _compared(fit: Fit, drawn: Drawn, colour: Colour, log_likelihood: FloatArray) -> Confronted:
-    size = np.hypot(_spread_of(fit.draws[:, -1]), _spread_of(drawn.draws[:, fit.draws.shape[1] - 1]))
-    size = float(np.copysign(size, np.median(fit.draws[:, -1])))
-    before, after = _straightened(fit.draws, size), _straightened(drawn.draws[:, : fit.draws.shape[1]], size)
-    spread = _robust_covariance(before) + _robust_covariance(after)
+def _compared(fit: Fit, drawn: Drawn, colour: Colour) -> Confronted:
+    at = len(drawn.fitted.theta)  # of the gain
+    fresh = internal_draws(drawn)[:, : fit.draws.shape[1]]
+    size = np.hypot(_spread_of(fit.draws[:, at]), _spread_of(fresh[:, at]))
+    size = float(np.copysign(size, np.median(fit.draws[:, at])))
+    before, after = _straightened(fit.draws, at, size), _straightened(fresh, at, size)
+    own = _robust_covariance(after)
+    spread = _robust_covariance(before) + own
     difference = np.median(after, axis=0) - np.median(before, axis=0)
-    distance = float(difference @ np.linalg.solve(spread, difference))
+    distance = _distance(difference, spread)
     freedom = freedom_of(drawn.fitted.problem, colour, len(difference) + 1)
     p_value = float(fisher.sf(distance / len(difference), len(difference), freedom))
+    plausible = _loaded(plausible_plants([drawn], np.ones(1), fit.operating_response, _DRAWS), drawn)
+    rows = np.unique(np.linspace(0, len(before) - 1, _JOINT).astype(int))
+    away = _distance(before[rows] - np.median(after, axis=0), own)
     return Confronted(
-        plausible=plausible_plants([drawn], np.ones(1), fit.operating_response, _DRAWS),
+        plausible=plausible,
         p_value=p_value,
-        changes=_changes(fit, drawn, difference, np.sqrt(np.diag(spread)), np.sqrt(np.diag(_robust_covariance(after)))),
+        changes=_changes(fit, fresh, difference, np.sqrt(np.diag(spread)), np.sqrt(np.diag(own))),
         noise_std=_own_residual(drawn.fitted),
-        log_likelihood=log_likelihood,
+        joint=_joint(fit, drawn, rows, plausible),
+        joint_weights=_weights(away, len(difference), freedom),
     )
 
 
-def _straightened(draws: FloatArray, size: float) -> FloatArray:
+def _loaded(plausible: Plausible, drawn: Drawn) -> Plausible:
+    """A drive whose friction could not hold the load that the record shows has its operating command moved by the rest.
+
+    What friction can hold nobody sees, and it stands in the friction already.
+    """
+    problem = drawn.fitted.problem
+    if not (problem.structure.friction and problem.drifts):
+        return plausible
+    at = len(drawn.fitted.theta)
+    draws = drawn.draws[np.arange(len(plausible.plants)) % len(drawn.draws)]
+    load = -draws[:, at + 1 + len(problem.runs)] / draws[:, at]
+    beyond = np.sign(load) * np.maximum(np.abs(load) - plausible.stiction, 0.0)
+    return replace(plausible, operating_command=plausible.operating_command + beyond)
+
+
+def _weights(away: FloatArray, count: int, freedom: float) -> FloatArray:
+    """(p,) shares of Student-t densities at these squared distances."""
+    logs = -0.5 * (freedom + count) * np.log1p(away / freedom)
+    weights = np.exp(logs - logs.max())
+    return np.asarray(weights / weights.sum())
+
+
+def _joint(fit: Fit, drawn: Drawn, rows: np.ndarray, plausible: Plausible) -> Plausible:
+    """Plants of the earlier draws, in the order of the rows, about an operating command that both sides support."""
+    ones = [np.concatenate([fit.draws[row], np.zeros(drawn.draws.shape[1])]) for row in rows]
+    at = len(drawn.fitted.theta)
+    if drawn.fitted.problem.structure.zero:
+        known = fit.draws.shape[1] > at + 1
+        ratio = fit.plant.numerator[0] / fit.plant.numerator[-1]
+        for one, row in zip(ones, rows, strict=True):
+            one[at + drawn.fitted.problem.zero_at] = fit.draws[row, at + 1] if known else ratio * fit.draws[row, at]
+    commands = _common(fit.plausible.operating_command, plausible.operating_command, len(rows))
+    return Plausible(
+        tuple(plant_of(drawn.fitted, one) for one in ones),
+        commands,
+        np.array([stiction_of(drawn.fitted, one) for one in ones]),
+    )
+
+
+def _common(before: FloatArray, after: FloatArray, count: int) -> FloatArray:
+    """(count,) operating commands, in an order that tells nothing."""
+    errors = np.array([_spread_of(before), _spread_of(after)])
+    middles = np.array([np.median(before), np.median(after)])
+    if abs(middles[1] - middles[0]) > _MOVED * float(np.hypot(*errors)):
+        middle, error = middles[1], errors[1]
+    else:
+        precision = 1.0 / np.maximum(errors, 1e-300) ** 2
+        middle = float(np.average(middles, weights=precision)) if np.all(np.isfinite(precision)) else middles[0]
+        error = float(np.min(errors)) if not np.all(np.isfinite(precision)) else 1.0 / np.sqrt(np.sum(precision))
+    scores = norm.ppf((np.random.default_rng(0).permutation(count) + 0.5) / count)
+    return np.asarray(middle + error * scores)
+
+
+def _straightened(draws: FloatArray, at: int, size: float) -> FloatArray:
     """Draws with the gain by its inverse hyperbolic sine: a logarithm where it is sure, and signed where it is not.
 
     A bare logarithm of the size would let a gain of the other sign pass for no change. `size` bears the sign of the
     fitted gain, so that a larger gain counts up.
     """
     out = draws.copy()
-    out[:, -1] = np.arcsinh(draws[:, -1] / size)
+    out[:, at] = np.arcsinh(draws[:, at] / size)
     return out
+
+
+def _distance(away: FloatArray, covariance: FloatArray) -> FloatArray:
+    """(...,) squared distances d' C^-1 d, the columns of unlike units scaled first."""
+    errors = np.sqrt(np.maximum(np.diag(covariance), 1e-300))
+    scaled = away / errors
+    correlation = covariance / np.outer(errors, errors) + 1e-9 * np.eye(len(errors))
+    return np.asarray(np.sum(scaled * np.linalg.solve(correlation, scaled.T).T, axis=-1))
 
 
 def _spread_of(gains: FloatArray) -> float:
@@ -151,17 +205,20 @@ def _spread_of(gains: FloatArray) -> float:
 def _robust_covariance(draws: FloatArray) -> FloatArray:
     """Covariance with heavy tails cut at the 1 and 99 % quantiles."""
     low, high = np.quantile(draws, [0.01, 0.99], axis=0)
-    return np.atleast_2d(np.cov(np.clip(draws, low, high).T)) + 1e-18 * np.eye(draws.shape[1])
+    return np.atleast_2d(np.cov(np.clip(draws, low, high).T))
 
 
-def _changes(fit: Fit, drawn: Drawn, difference: FloatArray, errors: FloatArray, own: FloatArray) -> tuple[Change, ...]:
+def _changes(
+    fit: Fit, fresh: FloatArray, difference: FloatArray, errors: FloatArray, own: FloatArray
+) -> tuple[Change, ...]:
     structure = next(s for s in CATALOGUE if s.name == fit.structure)
-    shapes = len(difference) - 2
+    shapes = len(structure.shapes)
     slowest = float(np.max(1.0 / np.maximum(np.abs(fit.plant.poles[fit.plant.poles != 0]), 1e-300), initial=0.0))
     scale = fit.plant.dead_time + slowest
-    ratio = float(np.median(drawn.draws[:, shapes + 1]) / np.median(fit.draws[:, -1]))
+    at = shapes + 1
+    ratio = float(np.median(fresh[:, at]) / np.median(fit.draws[:, at]))
     scores, moved, alone = (difference / errors).tolist(), difference.tolist(), own.tolist()
-    out = [Change("gain", ratio, scores[-1], moved[-1], alone[-1])]
+    out = [Change("gain", ratio, scores[at], moved[at], alone[at])]
     lag = 1.0 + float(difference[shapes]) / scale if scale > 0 else 1.0
     out.append(Change("dead time", lag, scores[shapes], moved[shapes], alone[shapes]))
     for i, shape in enumerate(structure.shapes):

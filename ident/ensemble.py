@@ -99,6 +99,14 @@ def plant_of(fitted: Fitted, draw_row: FloatArray) -> Plant:
     return Plant(top, denominator, float(max(draw_row[s], 0.0)))
 
 
+def internal_draws(drawn: Drawn) -> FloatArray:
+    """(m, s + 2) log shapes, dead time, gain; of a structure with a zero (m, s + 3), gain times zero time last."""
+    s = len(drawn.fitted.theta) - 1
+    problem = drawn.fitted.problem
+    zero = [s + 1 + problem.zero_at] if problem.structure.zero else []
+    return np.asarray(drawn.draws[:, [*range(s + 2), *zero]])
+
+
 def stiction_of(fitted: Fitted, draw_row: FloatArray) -> float:
     """Dry friction of one draw, the greater of both ways, command unit; zero where the structure has none."""
     if not fitted.problem.structure.friction:

@@ -149,8 +149,9 @@ class Fit:
     cautions : tuple of str
     drift : bool
         The noise looks like a wandering level rather than a stationary one.
-    draws : (m, s + 2) array
-        Draws of the chosen structure's internal parameters: log shapes, dead time (s), gain.
+    draws : (m, s + 2) or (m, s + 3) array
+        Draws of the chosen structure's internal parameters: log shapes, dead time (s), gain; with a zero, gain times
+        zero time too.
     between : {"held", "interpolated"}
         What the command was taken to do between samples where no run said so.
     friction : (forward, backward), command unit

@@ -9,7 +9,7 @@ from .between import Between, settle_between
 from .catalogue import CATALOGUE, Structure
 from .choose import Fitted, Progress, colour_of, evidence, fit_candidates, name_of, refit, steady_fit
 from .closed_loop import resting_response
-from .ensemble import Drawn, draw_structure, operating_commands, plant_of, plausible_plants
+from .ensemble import Drawn, draw_structure, internal_draws, operating_commands, plant_of, plausible_plants
 from .fit import finish
 from .fitted import Candidate, Fit, FittedRun, Noise, Parameter
 from .run import FloatArray, Run
@@ -140,7 +140,7 @@ def _assembled(
         explanation=_explanation(candidates, ties, between.words),
         cautions=(*_cautions(drawn[0], colour), *table_cautions(chosen)),
         drift=colour.rho > _DRIFTING or colour.wander > 0.0,
-        draws=drawn[0].draws[:, : s + 2],
+        draws=internal_draws(drawn[0]),
         between=problem.runs[0].between if problem.runs else "held",
         tables=fitted_tables(chosen, row),
         friction=(float(np.exp(row[s - 2])), float(np.exp(row[s - 1]))) if problem.structure.friction else (0.0, 0.0),

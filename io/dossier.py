@@ -104,7 +104,8 @@ def _put_fit(group: h5py.Group, fit: Fit, rig: Rig) -> None:
     _numbers(group, "operating_response", [fit.operating_response], rig.response_unit, "where the deviations start")
     group.attrs["between_samples"] = fit.between
     if fit.draws.size:
-        text = "draws of the chosen structure: logarithms of its shape parameters, dead time in s, gain; one row a draw"
+        text = "draws of the chosen structure: logarithms of its shape parameters, dead time in s, gain; "
+        text += "with a zero, gain times zero time too; one row a draw"
         _numbers(group, "draws", fit.draws, "mixed", text)
     _put_parameters(group.create_group("parameters"), fit, rig)
     _put_noise(group, fit, rig)

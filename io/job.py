@@ -9,6 +9,7 @@ from threadpoolctl import threadpool_limits
 from ..design.closing.compared import Compared
 from ..design.closing.given import compare_given
 from ..design.closing.verdict import compare
+from ..design.closing.words import Units
 from ..design.design import design_gains
 from ..design.designed import Design
 from ..design.ladder.build import build_ladder
@@ -223,6 +224,7 @@ def _compare(rig: Rig, record: Record, fit: Fit, design: Design, progress: Progr
         limits=rig.limits,
         setting=rig.setting,
         progress=progress,
+        units=Units(rig.command_unit, rig.response_unit),
     )
 
 

@@ -13,6 +13,7 @@ from ..design.closing.compared import Compared
 from ..design.closing.first_move import OpeningAsked, judge_opening
 from ..design.closing.rung import RungAsked, RungRun, judge_rung
 from ..design.closing.verdict import compare
+from ..design.closing.words import Units
 from ..ident.confront import confront
 from ..ident.errors import RecordError, RequestError
 from ..ident.trend import Trend, trends
@@ -64,7 +65,7 @@ def recheck_sheet(sheet: Path, runs: Sequence[Path], rig: Path | None = None, pr
         records = [_read(path, reader, progress) for path in runs]
         dated = sorted(((_taken(record), record) for record in records), key=lambda pair: pair[0])
         notes += _date_notes(records)
-        compared = tuple((day, _compare(record, again, progress)) for day, record in dated)
+        compared = tuple((day, _compare(record, earlier, again, progress)) for day, record in dated)
         moving = _trends([pair for pair, (_, each) in zip(dated, compared, strict=True) if _seen(each)], again)
     return Rechecked(earlier, compared, moving, _verdict(compared, moving), notes)
 
@@ -151,7 +152,8 @@ def _judge(record: Record, row: dict[str, Any], again: Again, progress: Progress
     )
 
 
-def _compare(record: Record, again: Again, progress: Progress) -> Compared:
+def _compare(record: Record, earlier: Earlier, again: Again, progress: Progress) -> Compared:
+    plant = earlier.sheet["plant"]
     return compare(
         record.run,
         again.fit,
@@ -160,6 +162,7 @@ def _compare(record: Record, again: Again, progress: Progress) -> Compared:
         limits=again.limits,
         setting=again.setting,
         progress=progress,
+        units=Units(plant["command_unit"], plant["response_unit"]),
     )
 
 

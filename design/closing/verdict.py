@@ -5,10 +5,12 @@ Size decides, not significance: a difference that no gain would notice is said a
 
 from collections.abc import Callable
 from dataclasses import dataclass
+from functools import partial
 
 import numpy as np
 from numpy.typing import NDArray
 
+from ...ident.causes import explain
 from ...ident.confront import Confronted, confront
 from ...ident.fitted import Fit, Plausible
 from ...ident.run import Run
@@ -18,12 +20,15 @@ from ..requirements import ControllerSetting, Limits, Requirements
 from .compared import Compared
 from .prediction import Prediction, predict
 from .rules import REAL, Evidence, Finding, decide
+from .run_to_take import run_to_take
+from .words import NO_UNITS, Units, with_unit
 
 # Where the loop works, in multiples of the chosen pole's distance from the origin.
 _WORKS = (0.2, 0.5, 1.0, 1.5)
-_HANDFUL = 15
-_JUDGED = 120
+_HANDFUL = 40
+_JUDGED = 400
 _COMPARED = 200
+_VISIBLE = 20.0  # times the noise: a movement that shows everything
 
 
 def compare(
@@ -35,6 +40,7 @@ def compare(
     limits: Limits,
     setting: ControllerSetting,
     progress: Callable[[str, float], None] | None = None,
+    units: Units = NO_UNITS,
 ) -> Compared:
     """Hold one fresh record against the fitted plant and the chosen gains.
 
@@ -46,6 +52,8 @@ def compare(
         Of the job.
     requirements, limits, setting
         As the gains were designed for.
+    units : Units
+        Of command and response, for the words.
 
     Returns
     -------
@@ -58,7 +66,7 @@ def compare(
     spread = float(np.std(run.response[valid]))
     error = float(np.sqrt(np.mean((run.response - prediction.predicted)[valid] ** 2)))
     inside = (run.response >= prediction.low) & (run.response <= prediction.high)
-    found = _judge(run, fit, design, prediction, requirements, limits, setting)
+    found = _judge(run, fit, design, prediction, requirements, limits, setting, units)
     return Compared(
         label=run.label,
         time=run.time,
@@ -84,15 +92,18 @@ def _judge(
     requirements: Requirements,
     limits: Limits,
     setting: ControllerSetting,
+    units: Units,
 ) -> Finding:
+    advise = partial(run_to_take, run, fit, limits, units)
     if np.ptp(run.command) == 0 and run.start_command == run.command[0]:
-        return Finding("not comparable", "the command never moves in this run: take one with steps of it", None)
+        return Finding("not comparable", f"the command never moves in this run: {advise(0.0)}", None)
     moved = float(np.ptp(prediction.predicted))
     if moved < 4 * fit.noise.std:
         return Finding(
             "not comparable",
-            f"the response should move by {moved:.3g}, hardly more than the noise ({fit.noise.std:.3g} rms): "
-            "take a run with larger steps",
+            f"the response should move by {with_unit(moved, units.response)}, hardly more than the noise "
+            f"({with_unit(fit.noise.std, units.response)} rms), and larger steps are needed: "
+            f"{advise(_VISIBLE * fit.noise.std / max(moved, 1e-300))}",
             None,
         )
     alone = confront(run, fit)
@@ -109,46 +120,38 @@ def _judge(
             setting=setting,
         ).meets_all
 
-    share = float(np.mean(meets(alone.plausible)))
+    own = float(np.mean(meets(alone.plausible)))
     gap = _gap(alone, fit, abs(design.selection.pole))
     # Gains that fail on the fitted plants already say nothing about this run.
     wanted = requirements.confidence if design.share_meeting >= requirements.confidence else 0.0
-    if share < wanted and alone.p_value >= REAL:
-        share = _joint_share(alone, meets(fit.plausible), share)
+    together = own if own >= wanted or alone.p_value < REAL else _joint_share(alone, meets(alone.joint), own)
     return decide(
         Evidence(
             fit=fit,
             alone=alone,
+            explained=explain(run, fit),
             movement=float(np.std(run.response[run.valid])),
-            missed=_missed(run, fit, prediction),
             difference=gap.difference,
             uncertainty=gap.uncertainty,
-            share=share,
+            own=own,
+            together=together,
             wanted=wanted,
+            interval=float(np.median(np.diff(run.time))),
+            units=units,
+            advise=advise,
         )
     )
 
 
-def _missed(run: Run, fit: Fit, prediction: Prediction) -> float:
-    """rms of what the free run misses, apart from a level and, for an integrating plant, a steady drift."""
-    valid = run.valid
-    away = (run.response - prediction.predicted)[valid]
-    time = run.time[valid] - run.time[0]
-    free = np.column_stack([np.ones(len(away)), time]) if fit.plant.integrators else np.ones((len(away), 1))
-    basis, _ = np.linalg.qr(free)
-    return float(np.sqrt(np.mean((away - basis @ (basis.T @ away)) ** 2)))
-
-
-def _joint_share(alone: Confronted, meets: NDArray[np.bool_], share: float) -> float:
+def _joint_share(alone: Confronted, meets: NDArray[np.bool_], own: float) -> float:
     """Share on which the gains hold of the fitted plants, each weighed by how well it explains the fresh run too.
 
     Where so few of them explain it that the weights rest on a handful, the fresh run's own share stands.
     """
-    count = min(len(meets), len(alone.log_likelihood))
-    weights = np.exp(alone.log_likelihood[:count] - alone.log_likelihood[:count].max())
+    weights = alone.joint_weights[: len(meets)]
     if np.sum(weights) ** 2 < _HANDFUL * np.sum(weights**2):
-        return share
-    return float(np.sum(weights * meets[:count]) / np.sum(weights))
+        return own
+    return float(np.sum(weights * meets) / np.sum(weights))
 
 
 @dataclass(frozen=True)

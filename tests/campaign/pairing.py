@@ -12,6 +12,7 @@ from time import process_time
 import numpy as np
 import paths  # noqa: F401  (puts the kit on the path before it is imported)
 from gainwright.design.closing.verdict import compare
+from gainwright.design.closing.words import Units
 from gainwright.design.design import design_gains
 from gainwright.design.designed import Design
 from gainwright.ident.errors import GainwrightError
@@ -200,7 +201,13 @@ def _answer(record: Record, rig: Rig, fit: Fit, design: Design) -> tuple[str, st
         return "refused", "; ".join(refusing), None
     try:
         found = compare(
-            record.run, fit, design, requirements=rig.requirements, limits=rig.limits, setting=rig.setting
+            record.run,
+            fit,
+            design,
+            requirements=rig.requirements,
+            limits=rig.limits,
+            setting=rig.setting,
+            units=Units(rig.command_unit, rig.response_unit),
         )
     except Exception:  # noqa: BLE001  (a fault is counted as one, never as a verdict)
         return "fault", traceback.format_exc()[-600:], None

@@ -1,4 +1,4 @@
-"""How often closing cries wolf and how often it misses what breaks: `python -P tests/campaign/pairs.py --rigs 30 --seed 5`.
+"""How often closing cries wolf, and how often it misses: `python -P tests/campaign/pairs.py --rigs 30 --seed 5`.
 
 A pair is a fit and one held-out run of the same true rig, as it was or after a change drawn at random. One fit serves
 several held-out runs; a rig depends on seed and index only, so that a long run can be made in pieces:
