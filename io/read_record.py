@@ -1,51 +1,24 @@
 """One run from its file to a record: channels, units, clock, window, health, and the trail back to the bytes."""
 
 import hashlib
-from dataclasses import dataclass, replace
+from dataclasses import replace
 from pathlib import Path
 
 import numpy as np
-from numpy.typing import NDArray
 
 from ..ident.errors import RecordError, RequestError
 from ..ident.health.clock import mend_clock
 from ..ident.health.copied import share_stretch
 from ..ident.health.seen import Seen
-from ..ident.run import Between, FloatArray, Run
-from . import units
+from ..ident.run import Between, Run
 from .command_worked_out import work_out_command
 from .look_at_record import looked_at
-from .readers.port import Channel, Hints, Log
+from .readers.port import Hints
 from .readers.registry import reader_of
 from .record import Finding, Record
-from .rigfile.rig import Rig, RunSpec, Signal
+from .rigfile.rig import Rig, RunSpec
+from .samples import Samples, samples_of
 from .unit_slips import unit_slips
-
-_LARGEST_SECONDS = 1e11  # the year 5138 as a stamp in s: a larger one is in a smaller unit
-
-
-@dataclass(frozen=True, eq=False)
-class _Samples:
-    """The samples of one run, all arrays (n,): time in s, signals in rig units, and command and response as logged."""
-
-    time: FloatArray
-    command: FloatArray
-    response: FloatArray
-    setpoint: FloatArray | None
-    logged_command: FloatArray  # its setpoint where the command is not logged
-    logged_response: FloatArray
-
-    def take(self, chosen: "NDArray[np.intp] | NDArray[np.bool_] | slice") -> "_Samples":
-        """The chosen ones."""
-        setpoint = None if self.setpoint is None else self.setpoint[chosen]
-        return _Samples(
-            self.time[chosen],
-            self.command[chosen],
-            self.response[chosen],
-            setpoint,
-            self.logged_command[chosen],
-            self.logged_response[chosen],
-        )
 
 
 def read_record(spec: RunSpec, rig: Rig) -> Record:
@@ -73,7 +46,7 @@ def read_record(spec: RunSpec, rig: Rig) -> Record:
     hints = Hints(rig.dialect, spec.group)
     log = reader_of(spec.file).read(spec.file, [str(signal.source) for signal in roles.values()], hints)
     findings = list(log.findings)
-    samples = _samples(spec, rig, log)
+    samples = samples_of(spec, rig, log)
     samples = _with_clock(spec, samples, findings)
     late, stated = 0.0, spec.command_before
     if "command" not in spec.signals:
@@ -116,128 +89,14 @@ def shares_samples(a: Record, b: Record) -> bool:
     return share_stretch(a.run.command, a.run.response, b.run.command, b.run.response)
 
 
-def _samples(spec: RunSpec, rig: Rig, log: Log) -> _Samples:
-    where = str(spec.file)
-    response = _reading(where, "response", spec.signals["response"], log, rig.response_unit)
-    setpoint = None
-    if "setpoint" in spec.signals:
-        setpoint = _reading(where, "setpoint", spec.signals["setpoint"], log, rig.response_unit)
-    command = np.zeros(len(response))  # until it is worked out
-    if "command" in spec.signals:
-        command = _reading(where, "command", spec.signals["command"], log, rig.command_unit)
-    time = _time(where, spec.signals["time"], log, len(response))
-    _require_one_clock(where, spec, log, time)
-    cause = "command" if "command" in spec.signals else "setpoint"
-    logged = {role: log.channels[str(spec.signals[role].source)].values for role in (cause, "response")}
-    return _Samples(time, command, response, setpoint, logged[cause], logged["response"])
-
-
-def _reading(where: str, role: str, signal: Signal, log: Log, wanted: str) -> FloatArray:
-    """(n,) readings in the rig's unit; NaN where lost."""
-    channel = log.channels[str(signal.source)]
-    if channel.stamps:
-        raise RequestError(
-            f"the {role}'s source holds dates or clock times",
-            where=where,
-            found=f'"{signal.source}"',
-            expected="a column of numbers",
-        )
-    lost = np.isin(channel.values, signal.lost_as) if signal.lost_as else np.zeros(len(channel.values), dtype=bool)
-    values = signal.scale * np.where(lost, np.nan, channel.values) + signal.offset
-    scale, offset = units.reading_conversion(_unit(where, role, signal, channel), wanted)
-    return values if (scale, offset) == (1.0, 0.0) else scale * values + offset
-
-
-def _unit(where: str, role: str, signal: Signal, channel: Channel) -> str:
-    """The unit of a reading; the rig file and the log must not contradict each other.
-
-    Raises
-    ------
-    RequestError
-    """
-    stated, logged = signal.unit, channel.unit
-    raw = signal.scale == 1.0 and signal.offset == 0.0
-    if stated is None and logged is None:
-        raise RequestError(
-            f"neither the rig file nor this log states the unit of the {role}",
-            where=where,
-            found=f'source "{signal.source}"',
-            expected=f"a unit under signals.{role} in the rig file",
-        )
-    if stated is None:
-        units.require_known(str(logged))
-        return str(logged)
-    if logged is not None and raw and units.is_known(logged) and not units.same_unit(stated, logged):
-        raise RequestError(
-            f"the rig file and this log state different units of the {role}",
-            where=where,
-            found=f'rig file "{stated}", log "{logged}" for "{signal.source}"',
-            expected="one unit",
-            advice=f"leave signals.{role}.unit out to take the log's, or give scale if the log is wrong",
-        )
-    return stated
-
-
-def _time(where: str, signal: Signal, log: Log, count: int) -> FloatArray:
-    """(n,) array, s, as logged (not from zero yet)."""
-    if signal.sample_rate is not None:
-        return np.asarray(np.arange(count) / signal.sample_rate, dtype=np.float64)
-    channel = log.channels[str(signal.source)]
-    if channel.stamps:
-        return channel.values
-    if channel.clock is not None and not str(signal.source).endswith("/time"):
-        return channel.clock
-    lost = np.isin(channel.values, signal.lost_as) if signal.lost_as else np.zeros(count, dtype=bool)
-    values = np.where(lost, np.nan, channel.values)
-    finite = values[np.isfinite(values)]
-    unit = _unit(where, "time", signal, channel)
-    factor = signal.scale * units.difference_factor(unit, "s")
-    if len(finite) and abs(finite[0]) * abs(factor) > _LARGEST_SECONDS:
-        raise RequestError(
-            "the time stamps are too large for their unit",
-            where=where,
-            found=f'{finite[0]:.6g} in "{unit}"',
-            expected="a stamp of this millennium",
-            advice='stamps near 1.7e12 are in "ms", near 1.7e15 in "us", near 1.7e18 in "ns"',
-        )
-    return (values - finite[0]) * factor if len(finite) else values
-
-
-def _require_one_clock(where: str, spec: RunSpec, log: Log, time: FloatArray) -> None:
-    """Channels that keep their own time must all keep the same.
-
-    Raises
-    ------
-    RecordError
-    """
-    if len(time) < 2:
-        return
-    interval = float(np.nanmedian(np.diff(time)))
-    for role in ("command", "response", "setpoint"):
-        if role not in spec.signals:
-            continue
-        channel = log.channels[str(spec.signals[role].source)]
-        if channel.clock is None or spec.signals["time"].source is None:
-            continue
-        own = channel.clock - channel.clock[0]
-        if np.nanmax(np.abs(own - (time - time[0]))) > 0.01 * abs(interval) + 1e-9:
-            raise RecordError(
-                f"the {role} keeps another time than the time's source",
-                where=where,
-                found=f'"{channel.name}" differs by {np.nanmax(np.abs(own - (time - time[0]))):.3g} s',
-                expected="all signals sampled at the same times",
-                advice="log all signals with one clock",
-            )
-
-
-def _with_clock(spec: RunSpec, samples: _Samples, findings: list[Finding]) -> _Samples:
+def _with_clock(spec: RunSpec, samples: Samples, findings: list[Finding]) -> Samples:
     """Samples in order, time from the first sample, those without a command left out."""
     rows = np.column_stack([samples.logged_command, samples.logged_response])
     clock = mend_clock(samples.time, np.nan_to_num(rows, nan=np.inf))
     findings += [_finding(seen) for seen in clock.seen]
     _raise_stops(spec, findings)
     mended = samples.take(clock.keep)
-    mended = _Samples(
+    mended = Samples(
         clock.time, mended.command, mended.response, mended.setpoint, mended.logged_command, mended.logged_response
     )
     lost = ~np.isfinite(mended.command)
@@ -261,7 +120,7 @@ def _with_clock(spec: RunSpec, samples: _Samples, findings: list[Finding]) -> _S
     return mended.take(~lost)
 
 
-def _windowed(spec: RunSpec, samples: _Samples) -> tuple[_Samples, float | None]:
+def _windowed(spec: RunSpec, samples: Samples) -> tuple[Samples, float | None]:
     """The samples of the half-open window, and the steady command before them where it is known."""
     start = -np.inf if spec.from_s is None else spec.from_s
     end = np.inf if spec.to_s is None else spec.to_s
@@ -273,7 +132,7 @@ def _windowed(spec: RunSpec, samples: _Samples) -> tuple[_Samples, float | None]
     return samples.take(inside), spec.command_before
 
 
-def _require_samples(spec: RunSpec, windowed: _Samples, whole: _Samples) -> None:
+def _require_samples(spec: RunSpec, windowed: Samples, whole: Samples) -> None:
     if len(windowed.time) >= 2:
         return
     if len(whole.time) < 2:
@@ -317,7 +176,7 @@ def _sha256(file: Path) -> str:
         return hashlib.file_digest(log, "sha256").hexdigest()
 
 
-def _samples_sha256(samples: _Samples) -> str:
+def _samples_sha256(samples: Samples) -> str:
     """Of the used samples as logged; time in s from the first of them, to 1 ns, so that its unit doesn't matter."""
     time = np.round(samples.time - samples.time[0], 9) + 0.0
     digest = hashlib.sha256()

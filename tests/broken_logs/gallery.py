@@ -189,7 +189,7 @@ GALLERY: dict[str, Broken] = {
     # HDF5
     "HDF5 cut in the middle": Broken(cut(hdf5(), 0.5), "can't be opened", "error"),
     "HDF5 of which only the signature is left": Broken(cut(hdf5(), 0.0005), "can't be opened", "error"),
-    "a dangling link": Broken(hdf5(replaced(soft)), "not in the log", "error"),
+    "a dangling link": Broken(hdf5(replaced(soft)), "links to something that is not in it", "error"),
     "a link to another file": Broken(hdf5(replaced(outside)), "links to another file", "error"),
     "a virtual dataset without its source": Broken(hdf5(replaced(virtual)), "put together from other files", "error"),
     "a link to itself": Broken(hdf5(replaced(loop)), "round in circles", "error"),
