@@ -60,13 +60,17 @@ def inspect_log(file: Path) -> Inspection:
         When the file can't be read.
     """
     reader, hints = reader_of(file), Hints()
-    names = [channel.name for channel in reader.channels(file, hints)]
-    channels: dict[str, Channel] = {}
+    infos = reader.channels(file, hints)
+    together: dict[int | None, list[str]] = {}  # channels of one log may differ in length: those are read apart
+    for info in infos:
+        together.setdefault(info.samples, []).append(info.name)
+    read: dict[str, Channel] = {}
     findings: dict[Finding, None] = {}
-    for name in names:  # one at a time: channels of one log may differ in length
-        log = reader.read(file, [name], hints)
-        channels[name] = log.channels[name]
+    for names in together.values():
+        log = reader.read(file, names, hints)
+        read.update(log.channels)
         findings.update(dict.fromkeys(log.findings))
+    channels = {info.name: read[info.name] for info in infos}
     rows = tuple(_row(name, channel.unit or "not stated", channel.values) for name, channel in channels.items())
     notes = tuple(_clocks(channels)) or ("no channel runs like a time: a rig file can state a sample_rate",)
     return Inspection(f"{file} ({reader.name})", rows, notes, tuple(findings))

@@ -14,6 +14,7 @@ from .answering import Answer, Refused, numbers, serve, text_of, unit_of
 MOST_OBJECTS = 20000
 MOST_COLUMNS = 256
 MOST_LINKS = 16
+_SUPERBLOCK_WITHIN = 4096  # bytes
 
 
 def main() -> None:
@@ -28,12 +29,22 @@ def _open(path: str) -> Any:
     try:
         return h5py.File(path, "r", locking=False)
     except OSError as problem:
-        with contextlib.suppress(OSError):
-            return h5py.File(path, "r", locking=False, swmr=True)
+        if _is_written_live(path):
+            with contextlib.suppress(OSError):
+                return h5py.File(path, "r", locking=False, swmr=True)
         advice = "copy the file again once it is closed"
         if "h5clear" in str(problem) or "already open" in str(problem):
             advice = "the writer did not close it: mend a copy with h5clear, never the log itself"
         raise Refused("the HDF5 file can't be opened", found=str(problem)[:300], advice=advice) from problem
+
+
+def _is_written_live(path: str) -> bool:
+    """Whether the superblock is marked by a SWMR writer: any other damaged file opened that way is read again and again
+    for a minute, in the hope that its writer ends it (HDF5 file format specification, version 3 superblock)."""
+    with open(path, "rb") as file:
+        head = file.read(_SUPERBLOCK_WITHIN)
+    places = [place for place in (0, 512, 1024, 2048) if head[place : place + 8] == b"\x89HDF\r\n\x1a\n"]
+    return any(head[place + 8] >= 3 and head[place + 11] & 5 == 5 for place in places if len(head) > place + 11)
 
 
 class _Tree:
