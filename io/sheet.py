@@ -22,6 +22,8 @@ from .parameter_unit import unit_of
 from .provenance import window_of
 from .record import Record
 from .requirement_row import requirement_row
+from .rigfile.rig import Rig
+from .sight_rows import sight_row
 from .validity import validity_row
 
 SCHEMA = "gainwright.gain-sheet/1"
@@ -247,10 +249,10 @@ def _limit(limit: LimitJudged) -> dict[str, Any]:
 
 def _closing(outcome: Outcome) -> list[dict[str, Any]]:
     held_out = [record for record in outcome.records if record.spec.use == "held-out"]
-    return [_compared(each, record) for each, record in zip(outcome.closing, held_out, strict=True)]
+    return [_compared(each, record, outcome.rig) for each, record in zip(outcome.closing, held_out, strict=True)]
 
 
-def _compared(compared: Compared, record: Record) -> dict[str, Any]:
+def _compared(compared: Compared, record: Record, rig: Rig) -> dict[str, Any]:
     return {
         "file": record.spec.shown,
         "window": window_of(record),
@@ -262,4 +264,5 @@ def _compared(compared: Compared, record: Record) -> dict[str, Any]:
         "share_meeting": None if compared.share_meeting is None else float(compared.share_meeting),
         "verdict": compared.verdict,
         "why": compared.why,
+        "seen": sight_row(compared.sight, rig.command_unit, rig.response_unit),
     }

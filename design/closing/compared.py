@@ -4,6 +4,7 @@ from dataclasses import dataclass
 from typing import Literal
 
 from ...ident.run import FloatArray
+from .sight import StepSight
 
 
 @dataclass(frozen=True, eq=False)
@@ -24,6 +25,8 @@ class Compared:
     why : str
     share_meeting : float or None
         Of the plants that this record makes plausible, those on which the gains meet everything.
+    sight : StepSight or None
+        Overshoot, rise, settling and final value of its largest step, predicted and measured.
     """
 
     label: str
@@ -39,3 +42,4 @@ class Compared:
     verdict: Literal["agrees", "disagrees", "not comparable"]
     why: str
     share_meeting: float | None = None
+    sight: StepSight | None = None

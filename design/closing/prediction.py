@@ -22,12 +22,15 @@ class Prediction:
     predicted, low, high : (n,) arrays, response unit
     level : float, response unit
         Where the free run starts from.
+    runs : (k, n) array, response unit
+        Free runs of plausible plants, each about its own operating command.
     """
 
     predicted: FloatArray
     low: FloatArray
     high: FloatArray
     level: float
+    runs: FloatArray
 
 
 def predict(run: Run, fit: Fit) -> Prediction:
@@ -45,9 +48,10 @@ def predict(run: Run, fit: Fit) -> Prediction:
         predicted = predicted + level
     if starts_unsettled(run):
         predicted = predicted + _initial_motion(run, fit, predicted)
-    spread = _spread(run, fit, level)
+    runs = _plausible_runs(run, fit, level)
+    spread = np.std(runs, axis=0) if len(runs) > 1 else np.zeros(len(run.time))
     half = _NORMAL_95 * np.sqrt(spread**2 + fit.noise.std**2)
-    return Prediction(predicted, predicted - half, predicted + half, level)
+    return Prediction(predicted, predicted - half, predicted + half, level, runs)
 
 
 def _initial_motion(run: Run, fit: Fit, predicted: FloatArray) -> FloatArray:
@@ -77,8 +81,8 @@ def _start_level(run: Run, from_zero: FloatArray) -> float:
     return float(np.mean(rest)) if len(rest) else float(above[run.valid][0])
 
 
-def _spread(run: Run, fit: Fit, level: float) -> FloatArray:
-    """(n,) standard deviation over plausible plants, each about its own operating command."""
+def _plausible_runs(run: Run, fit: Fit, level: float) -> FloatArray:
+    """(k, n) free runs of plausible plants, each about its own operating command."""
     plausible = fit.plausible.take(slice(0, _PLANTS))
     runs = [
         rough_free_run(plant, run, float(command), level, fit.friction if friction > 0 else (0.0, 0.0))
@@ -87,4 +91,4 @@ def _spread(run: Run, fit: Fit, level: float) -> FloatArray:
         )
         if plant.integrators == fit.plant.integrators
     ]
-    return np.asarray(np.std(runs, axis=0)) if len(runs) > 1 else np.zeros(len(run.time))
+    return np.array(runs).reshape(len(runs), len(run.time))

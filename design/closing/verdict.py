@@ -21,6 +21,7 @@ from .compared import Compared
 from .prediction import Prediction, predict
 from .rules import REAL, Evidence, Finding, decide
 from .run_to_take import run_to_take
+from .sight import see
 from .words import NO_UNITS, Units, with_unit
 
 # Where the loop works, in multiples of the chosen pole's distance from the origin.
@@ -81,7 +82,13 @@ def compare(
         verdict=found.verdict,
         why=found.why,
         share_meeting=found.share,
+        sight=see(run, fit, prediction.predicted, prediction.runs, _band(requirements)),
     )
+
+
+def _band(requirements: Requirements) -> float | None:
+    asked = requirements.find("settling_time")
+    return asked.band if asked else None
 
 
 def _judge(

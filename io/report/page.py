@@ -200,6 +200,7 @@ def _knowing(outcome: Outcome) -> dict[str, Any]:
         "working": None,
         "closing": tuple(zip(outcome.closing, held_out, strict=True)),
         "closing_numbers": tuple(words.agreement(each) for each in outcome.closing),
+        "closing_seen": tuple(tables.seen(each, outcome.rig) for each in outcome.closing),
         "origin": tables.origin(outcome.provenance),
         "provenance": tables.logs(outcome),
     }

@@ -5,6 +5,7 @@ from dataclasses import dataclass
 from pathlib import PurePath
 from typing import Any
 
+from ...design.closing.compared import Compared
 from ...design.designed import Design
 from ...design.locus.condition import Working
 from ...ident.fitted import Fit
@@ -12,6 +13,8 @@ from ..figures.locus import tags
 from ..figures.words import number, with_unit
 from ..outcome import Outcome
 from ..parameter_unit import unit_of
+from ..rigfile.rig import Rig
+from ..sight_rows import sight_row
 from . import words
 
 
@@ -207,3 +210,29 @@ def origin(provenance: dict[str, Any]) -> tuple[tuple[str, str], ...]:
         ("libraries", ", ".join(f"{name} {version}" for name, version in packages.items())),
     )
     return tuple(row for row in rows if row[1])
+
+
+def seen(compared: Compared, rig: Rig) -> Table | None:
+    """Overshoot, rise, settling and final value of a held-out step, predicted beside measured; None without one."""
+    step = sight_row(compared.sight, rig.command_unit, rig.response_unit)
+    if step is None:
+        return None
+    start, end = (with_unit(step[key]["value"], step[key]["unit"]) for key in ("from", "to"))
+    band = f" (band {number(100.0 * step['settling_band'])} %)"
+    rows = tuple(
+        (
+            row["name"] + (band if row["name"] == "settling time" else ""),
+            _with_interval(row["predicted"], row["predicted_interval_95"], row["unit"]),
+            _with_interval(row["measured"], row["measured_interval_95"], row["unit"]),
+        )
+        for row in step["measures"]
+    )
+    caption = f"Its largest step: the {step['moved']} goes from {start} to {end} at {number(step['at'])} s"
+    return Table(caption, ("what is seen", "predicted (95 %)", "measured (95 %)"), rows)
+
+
+def _with_interval(value: float | None, interval: list[float] | None, unit: str) -> str:
+    if value is None:
+        return "not to be seen"
+    told = with_unit(value, unit, 3)
+    return told if interval is None else f"{told} ({number(interval[0], 3)} to {number(interval[1], 3)})"
