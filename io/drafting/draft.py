@@ -4,7 +4,8 @@ import os
 from pathlib import Path
 
 from ...ident.errors import RequestError
-from ..readers.csv import SNIFFED_LINES, CsvReader
+from ..readers.csv import CsvReader
+from ..readers.csv_rows import SNIFFED_LINES
 from ..readers.csv_dialect import decode, sniff
 from ..readers.port import Hints, Reader
 from ..readers.registry import reader_of
