@@ -23,6 +23,7 @@ from .whiten import Colour
 _NORMAL_95 = 1.959964
 # A miss below this multiple of the fitted noise has nothing to explain.
 _SOMETHING = 1.1
+_RATIOS = ("natural frequency", "damping ratio", "time constants", "friction")
 _LIGHT = 0.7  # damping ratio under which a pole pair is called by its frequency
 
 
@@ -32,10 +33,12 @@ class Cause:
 
     Attributes
     ----------
-    name : {"gain", "natural frequency", "time constants", "delay", "friction", "play", "command ends", "drift"}
+    name : str
+        "gain", "natural frequency", "damping ratio", "time constants", "delay", "friction", "play", "command ends" or
+        "drift".
     size : float
-        gain: relative change; natural frequency, time constants: the same; delay: s; friction: relative change; play:
-        command unit; command ends: the reading at which it does; drift: response unit over the whole record.
+        gain, natural frequency, damping ratio, time constants, friction: relative change; delay: s; play: command unit;
+        command ends: the reading at which it does; drift: response unit over the whole record.
     error : float
         Half the 95 % interval of the size, from the curvature of the miss and the noise's colour.
     explains : float
@@ -175,10 +178,9 @@ def _searched(miss: _Miss, start: float, floor: float) -> list[Cause]:
             continue
         step = 1e-3 * (high - low)
         slope = miss.cleared(models(size + step) - models(size - step)) / (2.0 * step)
-        told = np.expm1(size) if name in ("natural frequency", "time constants", "friction") else size
-        scale = 1.0 + told if name in ("natural frequency", "time constants", "friction") else 1.0
-        half = scale * _half(miss, after, float(slope @ slope))
-        out.append(Cause(name, float(told), half, _share(start, after, floor)))
+        told = float(np.expm1(size)) if name in _RATIOS else size
+        half = (1.0 + told if name in _RATIOS else 1.0) * _half(miss, after, float(slope @ slope))
+        out.append(Cause(name, told, half, _share(start, after, floor)))
     return out
 
 
@@ -196,6 +198,8 @@ def _families(miss: _Miss) -> list[_Family]:
     if moving.size:
         name, way = ("natural frequency", 1.0) if swinging else ("time constants", -1.0)
         out.append((name, lambda size: miss.predicted(_sped(plant, float(np.exp(way * size)))), -0.7, 0.7))
+    if swinging:
+        out.append(("damping ratio", lambda size: miss.predicted(_damped(plant, float(np.exp(size)))), -1.2, 1.2))
     most = max(8.0 * interval, plant.dead_time, min(0.5 * slowest, 0.2 * float(miss.time[-1])))
     out.append((
         "delay",
@@ -232,6 +236,18 @@ def _sped(plant: Plant, factor: float) -> Plant:
     bottom = [c / factor**k for k, c in enumerate(reversed(plant.denominator))]
     kept = factor ** (-plant.integrators)
     return Plant(tuple(kept * c for c in reversed(top)), tuple(reversed(bottom)), plant.dead_time)
+
+
+def _damped(plant: Plant, factor: float) -> Plant:
+    """Its lightest pole pair with another damping ratio, at the same distance from the origin."""
+    poles = plant.poles.astype(complex)
+    lightest = min((p for p in poles if p.imag > 0.0), key=lambda p: -p.real / abs(p))
+    ratio = min(-lightest.real / abs(lightest) * factor, 0.999)
+    moved = abs(lightest) * complex(-ratio, np.sqrt(1.0 - ratio**2))
+    pair = np.isclose(poles, lightest) | np.isclose(poles, np.conj(lightest))
+    bottom = np.real(np.poly([*poles[~pair], moved, np.conj(moved)]))
+    scale = plant.denominator[-1 - plant.integrators] / bottom[len(bottom) - 1 - plant.integrators]
+    return Plant(plant.numerator, tuple(float(scale * c) for c in bottom), plant.dead_time)
 
 
 def _loose(run: Run, width: float) -> Run:

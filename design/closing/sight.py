@@ -1,7 +1,7 @@
 """What is seen of a held-out step, predicted beside measured: overshoot, rise, settling, final value.
 
 Both sides are measured by the same rules on the same stretch of the record. The predicted interval comes from the
-plausible plants; the measured one from noise like the fitted one, added to the prediction many times: what it does to
+plausible plants; the measured one from noise of the fitted colour, added to the prediction many times: what it does to
 each measure on average is taken off, and how far it scatters it is the interval.
 """
 
@@ -87,7 +87,7 @@ def see(run: Run, fit: Fit, predicted: FloatArray, runs: FloatArray, band: float
     wide = _BAND if band is None else band
     filled = _filled(run.response)
     noise = _noise(fit.noise, len(filled))
-    copies = predicted[None, :] + noise
+    copies = predicted[None, :] + noise * _size(filled, noise)
     sights = []
     many = np.vstack([predicted, filled, runs, copies])
     table = _measures(many[:, before : last + 1], first - before, run.time[before : last + 1], wide, fit)
@@ -129,6 +129,12 @@ def _noise(noise: Noise, count: int) -> FloatArray:
     coloured = lfilter([1.0, noise.c], [1.0, -noise.rho], white, axis=1)[:, 200:]
     size = np.std(coloured)
     return np.asarray(coloured * (noise.std / size if size > 0.0 else 0.0))
+
+
+def _size(values: FloatArray, noise: FloatArray) -> float:
+    """How the record's own noise compares, by the middle of its second differences: the response hardly enters."""
+    own, fitted = (float(np.median(np.abs(np.diff(v, 2)))) for v in (values, noise))
+    return own / fitted if own > 0.0 and fitted > 0.0 else 1.0
 
 
 def _measures(many: FloatArray, first: int, time: FloatArray, band: float, fit: Fit) -> dict[str, FloatArray]:

@@ -60,7 +60,7 @@ def _cause(cause: Cause, fit: Fit, units: Units, interval: float) -> str:
     size, error = cause.size, cause.error
     if cause.name == "gain" and size < -1.0:
         return "a gain of the other sign"
-    if cause.name in ("gain", "natural frequency", "time constants", "friction"):
+    if cause.name in ("gain", "natural frequency", "damping ratio", "time constants", "friction"):
         name = {"time constants": "time constants changed", "friction": "friction changed"}.get(cause.name, "")
         name = name or f"a {cause.name} changed"
         return f"{name} by {100 * size:+.3g} % (+- {100 * error:.2g} %)"
