@@ -48,7 +48,7 @@ def run(
     part = np.maximum(delay - whole * interval, 0.0)
     x, times, responses = np.zeros((order, count)), [], []
     wanted, sent = np.zeros((samples, count)), np.zeros((samples, count))
-    measured, goal = np.zeros((samples, count)), np.full(samples, float(setpoint))
+    measured, goal = np.zeros((samples, count)), np.broadcast_to(np.asarray(setpoint, float), samples)
 
     def past(rows, k):
         return rows[k] if k >= 0 else np.zeros(count)
