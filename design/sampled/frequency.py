@@ -277,13 +277,19 @@ def command_noise(spectra: Spectra, which: IndexArray, law: LawColumns, noise: N
 def noise_density(noise: Noise, interval: float, angle: FloatArray) -> FloatArray:
     """Spectral density of the noise sampled at `interval`, at angles in rad; its mean over 0..pi is the variance.
 
-    The ARMA(1, 1) process is split into white noise and an exponential correlation, whose pole is carried over to
-    the controller's interval.
+    At the interval of its record it is that of the ARMA(1, 1) process. At another one, r times as long, the covariance
+    is carried over: (1 + rho c)(rho + c)/(1 + 2 rho c + c^2) rho^(k r - 1) of the variance k samples apart. A shorter
+    one can show less colour than that where c > 0, never more than the whole variance.
     """
     rho, c, total = noise.rho, noise.c, noise.std**2
-    below = 1.0 + 2.0 * rho * c + c * c
-    coloured = total * (1.0 + rho * c) * (rho + c) / (below * rho) if rho > 0.0 and below > 0.0 else 0.0
-    coloured = float(np.clip(coloured, 0.0, total))
-    keep = max(rho, 0.0) ** (interval / noise.interval) if coloured > 0.0 else 0.0
+    below, ratio = 1.0 + 2.0 * rho * c + c * c, interval / noise.interval
+    if not below > 0.0:
+        return np.full_like(angle, total)
+    if abs(ratio - 1.0) < 1e-9:
+        z = np.exp(-1j * angle)
+        return np.asarray(total * (1.0 - rho * rho) / below * np.abs((1.0 + c * z) / (1.0 - rho * z)) ** 2)
+    coloured = total * (1.0 + rho * c) * (rho + c) / (below * rho) if rho > 0.0 else 0.0
+    coloured = coloured if ratio > 1.0 else float(np.clip(coloured, 0.0, total))
+    keep = rho**ratio if coloured else 0.0
     shape = (1.0 - keep * keep) / (1.0 - 2.0 * keep * np.cos(angle) + keep * keep)
-    return np.asarray(total - coloured + coloured * shape)
+    return np.asarray(np.maximum(total - coloured + coloured * shape, 0.0))

@@ -93,7 +93,7 @@ def test_white_noise_reaches_the_command_as_the_recursion_says():
     assert found[0] == pytest.approx(gain * sigma * np.sqrt(2 / (2 - gain * T)), rel=5e-3)
 
 
-@pytest.mark.parametrize(("rho", "c"), [(0.9, 0.0), (0.8, -0.4), (0.95, -0.8)])
+@pytest.mark.parametrize(("rho", "c"), [(0.9, 0.0), (0.8, -0.4), (0.95, -0.8), (0.7, 0.3), (-0.4, 0.2), (0.0, 0.5)])
 def test_noise_density_gives_back_the_variances_of_the_process(rho, c):
     """The mean is the variance, the cosine's the lag-one covariance (1 + rho c)(rho + c)/(1 + 2 rho c + c^2)."""
     angle = np.linspace(0, np.pi, 200_001)
@@ -101,6 +101,17 @@ def test_noise_density_gives_back_the_variances_of_the_process(rho, c):
     lag_one = 0.25 * (1 + rho * c) * (rho + c) / (1 + 2 * rho * c + c * c)
     assert np.trapezoid(density, angle) / np.pi == pytest.approx(0.25, rel=1e-6)
     assert np.trapezoid(density * np.cos(angle), angle) / np.pi == pytest.approx(lag_one, rel=1e-6)
+
+
+def test_noise_seen_at_every_second_sample_keeps_its_covariance():
+    """rho 0.7, c 0.3: k samples apart (1 + rho c)(rho + c)/(1 + 2 rho c + c^2) rho^(k - 1), taken at k = 2 and 4."""
+    rho, c, angle = 0.7, 0.3, np.linspace(0, np.pi, 200_001)
+    density = noise_density(Noise(0.01, 1.0, 0.4, rho, c), 0.02, angle)
+    lag_one = (1 + rho * c) * (rho + c) / (1 + 2 * rho * c + c * c)
+    for apart in (1, 2):
+        wanted = lag_one * rho ** (2 * apart - 1)
+        assert np.trapezoid(density * np.cos(apart * angle), angle) / np.pi == pytest.approx(wanted, rel=1e-6)
+    assert np.trapezoid(density, angle) / np.pi == pytest.approx(1.0, rel=1e-6)
 
 
 def test_slow_noise_keeps_its_correlation_time_at_another_interval():
