@@ -11,6 +11,7 @@ from . import units
 from .readers.port import Channel, Log
 from .rigfile.rig import Rig, RunSpec, Signal
 
+LARGEST = 1e100  # of a reading: squares and sums of larger ones overflow
 _LARGEST_SECONDS = 1e11  # the year 5138 as a stamp in s: a larger one is in a smaller unit
 
 
@@ -78,8 +79,16 @@ def samples_of(spec: RunSpec, rig: Rig, log: Log, begun: Begun | None = None) ->
     Raises
     ------
     RecordError, RequestError
-        When the units, the stamps or the clocks contradict each other.
+        When the units, the stamps or the clocks contradict each other, or a reading is too large to be one.
     """
+    with np.errstate(over="ignore", invalid="ignore"):  # what overflows is refused below
+        samples = _samples(spec, rig, log, begun)
+    for role in ("time", "command", "response", "setpoint"):
+        _require_bounded(spec, role, getattr(samples, role))
+    return samples
+
+
+def _samples(spec: RunSpec, rig: Rig, log: Log, begun: Begun | None) -> Samples:
     where = str(spec.file)
     response = _reading(where, "response", spec.signals["response"], log, rig.response_unit)
     setpoint = None
@@ -93,6 +102,19 @@ def samples_of(spec: RunSpec, rig: Rig, log: Log, begun: Begun | None = None) ->
     cause = "command" if "command" in spec.signals else "setpoint"
     logged = {role: log.channels[str(spec.signals[role].source)].values for role in (cause, "response")}
     return Samples(time, command, response, setpoint, logged[cause], logged["response"])
+
+
+def _require_bounded(spec: RunSpec, role: str, values: FloatArray | None) -> None:
+    if values is None or not np.any(np.abs(values) > LARGEST):
+        return
+    sample = int(np.flatnonzero(np.abs(values) > LARGEST)[0])
+    raise RecordError(
+        f"the {role} holds a number that is too large for a reading",
+        where=f"{spec.file}, sample {sample + 1}",
+        found=f"{values[sample]:.6g} after scale, offset and unit",
+        expected=f"at most {LARGEST:g}",
+        advice="if it stands for a lost sample, name it in lost_as; else look at scale and offset in the rig file",
+    )
 
 
 def _reading(where: str, role: str, signal: Signal, log: Log, wanted: str) -> FloatArray:

@@ -16,6 +16,7 @@ if TYPE_CHECKING:
     import pint
 
 MOST_POWER = 4  # of a unit inside another: s4 at most
+MOST_SIGNS = 200  # of a quantity or a unit; a longer one would only keep the parser busy
 _QUANTITY = re.compile(r"\s*([+-]?(?:\d+(?:\.\d*)?|\.\d+)(?:[eE][+-]?\d+)?)(?![\d.,])\s*(.*?)\s*", re.DOTALL)
 _TOKEN = re.compile(r"\s*(?:(\*\*|\^)|([*·/()])|(-?\d+)|([^\W\d_°%]+0?|[°%][A-Z]{0,2}|deg_[CF]))")
 
@@ -58,6 +59,8 @@ def read_quantity(text: str) -> Quantity:
     >>> read_quantity("-2.5e1 mm/s")
     Quantity(value=-25.0, unit='mm/s')
     """
+    if len(text) > MOST_SIGNS:
+        raise UnitError("too long for a number with a unit", found=f'"{text[:40]} ..."', expected='such as "20 mm"')
     match = _QUANTITY.fullmatch(tidy(text))
     if match is None:
         advice = "write the decimal point as '.'" if re.match(r"\s*[+-]?\d+,\d", text) else ""
@@ -179,6 +182,8 @@ def _rule(unit: str) -> str:
     text = tidy(unit)
     if text in NAMES:
         return _delta(NAMES[text])
+    if len(unit) > MOST_SIGNS:
+        raise UnitError("too long for a unit", found=f'"{unit[:40]} ..."', expected='such as "mm/s"')
     if not text:
         raise UnitError("no unit", expected='a unit; "1" for a pure number')
     if text in AMBIGUOUS:

@@ -81,7 +81,7 @@ def guess_roles(channels: Sequence[SeenChannel], where: str) -> Roles:
         When fewer than two channels hold a signal.
     """
     clocks = [each for each in channels if each.stamps or (each.rises and _time_score(each) > 0.0)]
-    signals = [each for each in channels if not any(each is clock for clock in clocks) and not each.counts]
+    signals = [each for each in channels if not any(each is clock for clock in clocks) and each.can_be_signal]
     if len(signals) < 2:
         raise RecordError(
             "this log doesn't hold a command and a response",

@@ -8,6 +8,7 @@ from ...ident.run import FloatArray
 from .. import units
 from ..names import unit_in_name, words_of
 from ..readers.port import Channel
+from ..samples import LARGEST
 
 
 @dataclass(frozen=True, eq=False)
@@ -58,6 +59,12 @@ class SeenChannel:
     def counts(self) -> bool:
         """Whole numbers that go up by one."""
         return self.rises and bool(np.all(np.diff(self.values) == 1.0))
+
+    @property
+    def can_be_signal(self) -> bool:
+        """Not a counter, and with readings: two numbers at least, none of them beyond any unit."""
+        good = self.values[np.isfinite(self.values)]
+        return len(good) > 1 and not self.counts and bool(np.all(np.abs(good) < LARGEST))
 
     @property
     def moves(self) -> bool:

@@ -153,8 +153,10 @@ def signal_unit(channel: SeenChannel) -> tuple[str, str]:
 
 def _ends(channel: SeenChannel) -> tuple[float, float]:
     marks = [value for value in _LOST if _is_lost_mark(channel, value)]
-    good = channel.values[np.isfinite(channel.values) & ~np.isin(channel.values, marks)]
-    return float(good.min()), float(good.max())
+    good = channel.values[np.isfinite(channel.values)]
+    kept = good[~np.isin(good, marks)]
+    chosen = kept if len(kept) else good
+    return float(chosen.min()), float(chosen.max())
 
 
 def _is_lost_mark(channel: SeenChannel, value: float) -> bool:

@@ -61,7 +61,7 @@ def decode(content: bytes, encoding: str | None = None) -> tuple[str, str]:
         Only when an encoding was named and doesn't fit.
     """
     if encoding is not None:
-        return content.decode(encoding).removeprefix("\ufeff"), encoding
+        return _decoded(content, encoding).removeprefix("\ufeff"), encoding
     if content.startswith((b"\xff\xfe", b"\xfe\xff")):
         return content.decode("utf-16", errors="replace"), "utf-16"
     head = content[:2000]
@@ -73,6 +73,15 @@ def decode(content: bytes, encoding: str | None = None) -> tuple[str, str]:
         if problem.end >= len(content) and problem.reason == "unexpected end of data":
             return content[: problem.start].decode("utf-8-sig"), "utf-8"
     return content.decode("cp1252", errors="replace"), "cp1252"
+
+
+def _decoded(content: bytes, encoding: str) -> str:
+    try:
+        return content.decode(encoding)
+    except UnicodeDecodeError:
+        raise
+    except UnicodeError as problem:  # codecs that are not of a charset don't say where
+        raise UnicodeDecodeError(encoding, content, 0, 1, str(problem)) from problem
 
 
 def split(line: str, separator: str) -> list[str]:

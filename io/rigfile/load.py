@@ -157,6 +157,14 @@ def _table(path: Path, content: bytes) -> dict[str, Any]:
             found=re.sub(r" \(at .*\)", "", str(problem)),
             expected='lines such as key = "value"',
         ) from problem
+    except (RecursionError, ValueError) as problem:  # a whole number of thousands of digits is a bare ValueError
+        deep = isinstance(problem, RecursionError)
+        raise RequestError(
+            "the rig file is nested too deep" if deep else "a number in the rig file can't be read",
+            where=str(path),
+            found="tables or lists hundreds deep" if deep else str(problem).split(";")[0],
+            expected='lines such as key = "value"',
+        ) from problem
 
 
 def _shape(path: Path, table: dict[str, Any]) -> RigFile:
@@ -193,8 +201,8 @@ def _dialect(part: Log, problems: Problems) -> LogDialect:
         problems.add("log.decimal", "separator and decimal sign are the same", f'"{separator}"', "two different signs")
     if part.encoding is not None:
         try:
-            "".encode(part.encoding)
-        except LookupError:
+            "0".encode(part.encoding)
+        except (LookupError, ValueError):  # no codec of that name, none of texts, or one that can't even write a digit
             problems.add("log.encoding", "unknown encoding", f'"{part.encoding}"', '"utf-8", "utf-16" or "cp1252"')
     return LogDialect(separator, part.decimal, part.encoding, part.header_row, part.first_row, tuple(part.not_a_number))
 

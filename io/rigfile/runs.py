@@ -27,6 +27,16 @@ def logged_roles(shape: RigFile) -> frozenset[str]:
 
 
 def _files_of(key: str, pattern: str, folder: Path, problems: Problems) -> list[Path]:
+    try:
+        return _found(key, pattern, folder, problems)
+    except (OSError, ValueError) as problem:  # too long, a zero sign, "**" inside a name, a folder that can't be listed
+        why = (problem.strerror if isinstance(problem, OSError) else None) or str(problem)
+        shown = pattern if len(pattern) < 100 else pattern[:60] + " ..."
+        problems.add(key, "this can't be the name or pattern of a file", f'"{shown}": {why}', 'such as "step_*.csv"')
+        return []
+
+
+def _found(key: str, pattern: str, folder: Path, problems: Problems) -> list[Path]:
     named = folder / pattern
     if named.is_file():
         return [named.resolve()]
