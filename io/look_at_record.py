@@ -37,7 +37,7 @@ def looked_at(
         Steady command before the window.
     """
     ranges = {
-        role: _range(spec.signals[role], wanted) if role in spec.signals else (None, None)
+        role: reading_range(spec.signals[role], wanted) if role in spec.signals else (None, None)
         for role, wanted in (("command", rig.command_unit), ("response", rig.response_unit))
     }
     looked = look_at(
@@ -68,7 +68,8 @@ def _softened(spec: RunSpec, seen: tuple[Seen, ...]) -> tuple[Seen, ...]:
     )
 
 
-def _range(signal: Signal, wanted: str) -> tuple[float | None, float | None]:
+def reading_range(signal: Signal, wanted: str) -> tuple[float | None, float | None]:
+    """Ends of a sensor's or a command's range in the wanted unit, None where they are not stated."""
     if signal.unit is None:
         return signal.lowest, signal.highest
     ends = [

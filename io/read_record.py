@@ -7,17 +7,19 @@ from pathlib import Path
 import numpy as np
 
 from ..ident.errors import RecordError, RequestError
-from ..ident.health.clock import mend_clock
 from ..ident.health.copied import share_stretch
-from ..ident.health.seen import Seen
+from ..ident.health.fingerprint import Marks, fingerprint, same_origin
 from ..ident.run import Between, Run
 from .command_worked_out import work_out_command
+from .in_order import finding_of, in_order, raise_stops
 from .look_at_record import looked_at
-from .readers.port import Hints
+from .readers.parts import is_large
+from .readers.port import Hints, Reader
 from .readers.registry import reader_of
-from .record import Finding, Record
+from .record import Record
 from .rigfile.rig import Rig, RunSpec
 from .samples import Samples, samples_of
+from .thinning import Taken, thinned
 from .unit_slips import unit_slips
 
 
@@ -44,11 +46,40 @@ def read_record(spec: RunSpec, rig: Rig) -> Record:
     """
     roles = {role: signal for role, signal in spec.signals.items() if signal.source is not None}
     hints = Hints(rig.dialect, spec.group)
-    log = reader_of(spec.file).read(spec.file, [str(signal.source) for signal in roles.values()], hints)
+    reader, sources = reader_of(spec.file), [str(signal.source) for signal in roles.values()]
+    if is_large(reader, spec.file, sources, hints):
+        taken = thinned(spec, rig, reader, sources, hints)
+    else:
+        taken = _whole(spec, rig, reader, sources, hints)
+    windowed, before, findings = taken.samples, taken.before, list(taken.findings)
+    looked = looked_at(
+        spec, rig, windowed.time, windowed.command, windowed.response, setpoint=windowed.setpoint, before=before
+    )
+    findings += [finding_of(seen) for seen in looked.seen if seen.kind not in taken.seen_already]
+    findings += unit_slips(spec, rig, windowed.time, windowed.response)
+    raise_stops(spec, findings)
+    run = Run(
+        label=spec.shown,
+        time=windowed.time - windowed.time[0],
+        command=windowed.command,
+        response=looked.response,
+        setpoint=windowed.setpoint,
+        between=taken.between or _between(spec),
+        command_before=before,
+        at_rest=before is not None and before == spec.command_before,
+        excitation=spec.excitation,
+        closed_loop=spec.loop == "closed",
+        command_late=taken.late,
+    )
+    return Record(spec, run, _sha256(spec.file), _samples_sha256(windowed), tuple(findings), taken.marks)
+
+
+def _whole(spec: RunSpec, rig: Rig, reader: Reader, sources: list[str], hints: Hints) -> Taken:
+    """Every sample of the window."""
+    log = reader.read(spec.file, sources, hints)
     findings = list(log.findings)
-    samples = samples_of(spec, rig, log)
-    samples = _with_clock(spec, samples, findings)
-    late, stated = 0.0, spec.command_before
+    samples = in_order(spec, samples_of(spec, rig, log), findings)
+    late = 0.0
     if "command" not in spec.signals:
         worked_out = work_out_command(spec, rig, samples.time, samples.setpoint, samples.response)
         samples, late = replace(samples, command=worked_out.command), worked_out.late
@@ -56,26 +87,7 @@ def read_record(spec: RunSpec, rig: Rig) -> Record:
         spec = replace(spec, command_before=worked_out.before)
     windowed, before = _windowed(spec, samples)
     _require_samples(spec, windowed, samples)
-    looked = looked_at(
-        spec, rig, windowed.time, windowed.command, windowed.response, setpoint=windowed.setpoint, before=before
-    )
-    findings += [_finding(seen) for seen in looked.seen]
-    findings += unit_slips(spec, rig, windowed.time, windowed.response)
-    _raise_stops(spec, findings)
-    run = Run(
-        label=spec.shown,
-        time=windowed.time - windowed.time[0],
-        command=windowed.command,
-        response=looked.response,
-        setpoint=windowed.setpoint,
-        between=_between(spec),
-        command_before=before,
-        at_rest=before is not None and before == stated,
-        excitation=spec.excitation,
-        closed_loop=spec.loop == "closed",
-        command_late=late,
-    )
-    return Record(spec, run, _sha256(spec.file), _samples_sha256(windowed), tuple(findings))
+    return Taken(windowed, before, tuple(findings), late=late)
 
 
 def shares_samples(a: Record, b: Record) -> bool:
@@ -86,38 +98,14 @@ def shares_samples(a: Record, b: Record) -> bool:
     """
     if a.samples_sha256 == b.samples_sha256:
         return True
+    if (a.marks is not None or b.marks is not None) and same_origin(_marks(a), _marks(b)):
+        return True
     return share_stretch(a.run.command, a.run.response, b.run.command, b.run.response)
 
 
-def _with_clock(spec: RunSpec, samples: Samples, findings: list[Finding]) -> Samples:
-    """Samples in order, time from the first sample, those without a command left out."""
-    rows = np.column_stack([samples.logged_command, samples.logged_response])
-    clock = mend_clock(samples.time, np.nan_to_num(rows, nan=np.inf))
-    findings += [_finding(seen) for seen in clock.seen]
-    _raise_stops(spec, findings)
-    mended = samples.take(clock.keep)
-    mended = Samples(
-        clock.time, mended.command, mended.response, mended.setpoint, mended.logged_command, mended.logged_response
-    )
-    lost = ~np.isfinite(mended.command)
-    if lost.any():
-        places = mended.time[lost]
-        findings.append(
-            Finding(
-                "lost commands",
-                f"{places[0]:.6g} s to {places[-1]:.6g} s",
-                f"{lost.sum()} samples",
-                "left out: the command of the sample before is taken as held",
-            )
-        )
-    if lost.mean() > 0.2:
-        raise RecordError(
-            "the command is lost in too many samples",
-            where=str(spec.file),
-            found=f"{lost.sum()} of {len(lost)} samples",
-            advice="check the command's source and lost_as",
-        )
-    return mended.take(~lost)
+def _marks(record: Record) -> Marks:
+    """Of a record that was read by blocks those of all its samples."""
+    return fingerprint(record.run.command, record.run.response) if record.marks is None else record.marks
 
 
 def _windowed(spec: RunSpec, samples: Samples) -> tuple[Samples, float | None]:
@@ -153,22 +141,6 @@ def _require_samples(spec: RunSpec, windowed: Samples, whole: Samples) -> None:
 def _between(spec: RunSpec) -> Between:
     """A sampled controller holds its command: a log taken in closed loop need not be asked."""
     return "held" if spec.loop == "closed" and spec.between_samples == "auto" else spec.between_samples
-
-
-def _finding(seen: Seen) -> Finding:
-    return Finding(seen.kind, seen.where, seen.size, seen.action, seen.refuses)
-
-
-def _raise_stops(spec: RunSpec, findings: list[Finding]) -> None:
-    stops = [finding for finding in findings if finding.refuses == "stops"]
-    if stops:
-        first = stops[0]
-        raise RecordError(
-            f"this log can't be used: {first.kind}",
-            where=str(spec.file),
-            found=f"{first.where}: {first.size}",
-            advice=first.action,
-        )
 
 
 def _sha256(file: Path) -> str:

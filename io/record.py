@@ -2,6 +2,7 @@
 
 from dataclasses import dataclass
 
+from ..ident.health.fingerprint import Marks
 from ..ident.run import Run
 from .rigfile.rig import RunSpec
 
@@ -50,6 +51,8 @@ class Record:
         Of the samples used (time, command, response as float64 in the units of the log), so that one record under two
         names is found.
     findings : tuple of Finding
+    marks : (m,) array or None
+        Of a long record that was read by blocks: the fingerprint of all its samples.
     """
 
     spec: RunSpec
@@ -57,3 +60,4 @@ class Record:
     sha256: str
     samples_sha256: str
     findings: tuple[Finding, ...]
+    marks: Marks | None = None

@@ -32,7 +32,7 @@ def share_stretch(
     other_command, other_response : (m,) arrays
         NaN where a sample is lost.
     """
-    if np.count_nonzero(np.isin(_marks(command, response), _marks(other_command, other_response))) < FEWEST:
+    if np.count_nonzero(np.isin(pair_marks(command, response), pair_marks(other_command, other_response))) < FEWEST:
         return _alike(response, other_response)
     for step in range(1, MOST_DECIMATION + 1):
         for phase in range(step):
@@ -47,8 +47,8 @@ def share_stretch(
 def _equal(command: FloatArray, response: FloatArray, other_command: FloatArray, other_response: FloatArray) -> bool:
     if min(len(response), len(other_response)) < FEWEST:
         return False
-    ours = _windows(_marks(command, response))
-    theirs = _windows(_marks(other_command, other_response))
+    ours = rolling_hash(pair_marks(command, response))
+    theirs = rolling_hash(pair_marks(other_command, other_response))
     covered = np.zeros(len(response), dtype=bool)
     for index in np.flatnonzero(np.isin(ours, theirs)):
         covered[index : index + FEWEST] = True
@@ -74,7 +74,7 @@ def _information(response: FloatArray) -> float:
     return max(0.0, min(10.0, float(-np.log(max(chance, 1e-6)) - 0.5 * np.log(6.0))))
 
 
-def _marks(command: FloatArray, response: FloatArray) -> NDArray[np.uint64]:
+def pair_marks(command: FloatArray, response: FloatArray) -> NDArray[np.uint64]:
     """(n,) one mark a pair; the last bits are left out, where a conversion of units may differ."""
     with np.errstate(over="ignore"):
         return _bits(command) * _MULTIPLIER ^ _bits(response)
@@ -88,15 +88,15 @@ def _bits(values: FloatArray) -> NDArray[np.uint64]:
         return np.asarray(mixed ^ (mixed >> np.uint64(29)), dtype=np.uint64)
 
 
-def _windows(marks: NDArray[np.uint64]) -> NDArray[np.uint64]:
-    """(n - 29,) rolling hash of 30 marks, modulo 2^64."""
+def rolling_hash(marks: NDArray[np.uint64], length: int = FEWEST) -> NDArray[np.uint64]:
+    """(n - length + 1,) hash of each `length` marks in a row, modulo 2^64."""
     count = len(marks)
     inverse = pow(_BASE, -1, 2**64)
     with np.errstate(over="ignore"):
         powers = np.cumprod(np.full(count, _BASE, dtype=np.uint64))
         back = np.cumprod(np.full(count, inverse, dtype=np.uint64))
         sums = np.concatenate([np.zeros(1, dtype=np.uint64), np.cumsum(marks * powers, dtype=np.uint64)])
-        return np.asarray((sums[FEWEST:] - sums[:-FEWEST]) * back[: count - FEWEST + 1], dtype=np.uint64)
+        return np.asarray((sums[length:] - sums[:-length]) * back[: count - length + 1], dtype=np.uint64)
 
 
 def _alike(response: FloatArray, other: FloatArray) -> bool:
