@@ -1,21 +1,21 @@
-"""What is in a log, and what is wrong with it, in lines for people."""
+"""What is in a log, and what is wrong with it: lines for people, and a value for programs."""
 
-from collections.abc import Iterator
-from dataclasses import dataclass, replace
+from dataclasses import asdict, dataclass, replace
 from pathlib import Path
-
-import numpy as np
+from typing import Any
 
 from ..ident.errors import RequestError
-from ..ident.run import FloatArray
+from .channel_summary import ChannelSum, ChannelSummary, ClockSummary, summed
 from .read_record import read_record
-from .readers.port import Channel, Hints
+from .readers.parts import in_parts
+from .readers.port import Hints
 from .readers.registry import reader_of
 from .record import Finding, Record
 from .rigfile.rig import Rig, RunSpec
 
 Row = tuple[str, str, str, str, str, str]
 HEAD: Row = ("channel", "unit", "samples", "lost", "lowest", "highest")
+NO_CLOCK = "no channel runs like a time: a rig file can state a sample_rate"
 
 
 @dataclass(frozen=True)
@@ -25,17 +25,21 @@ class Inspection:
     Attributes
     ----------
     title : str
-    rows : tuple of Row
-        One a channel: name, unit, samples, lost samples, lowest and highest value.
-    notes : tuple of str
-        Duration and sampling, where a time is known.
+    channels : tuple of ChannelSummary
+    clocks : tuple of ClockSummary
+        Of the channels that run like a time.
     findings : tuple of Finding
     """
 
     title: str
-    rows: tuple[Row, ...]
-    notes: tuple[str, ...]
+    channels: tuple[ChannelSummary, ...]
+    clocks: tuple[ClockSummary, ...]
     findings: tuple[Finding, ...]
+
+    @property
+    def rows(self) -> tuple[Row, ...]:
+        """One a channel: name, unit, samples, lost samples, lowest and highest value."""
+        return tuple(_row(channel) for channel in self.channels)
 
     @property
     def text(self) -> str:
@@ -43,12 +47,30 @@ class Inspection:
         widths = [max(len(row[column]) for row in (HEAD, *self.rows)) for column in range(len(HEAD))]
         padded = [[cell.ljust(width) for cell, width in zip(row, widths, strict=True)] for row in (HEAD, *self.rows)]
         table = ["  ".join(cells) for cells in padded]
+        notes = [_note(clock) for clock in self.clocks] or [NO_CLOCK]
         said = [f"! {finding.text}" for finding in self.findings] or ["nothing wrong was found"]
-        return "\n".join([self.title, *(f"  {line}".rstrip() for line in (*table, *self.notes, *said))])
+        return "\n".join([self.title, *(f"  {line}".rstrip() for line in (*table, *notes, *said))])
+
+    @property
+    def usable(self) -> str:
+        """The gravest of the findings: "yes", "holds" or "no"."""
+        refuses = {finding.refuses for finding in self.findings}
+        return "no" if "stops" in refuses else "holds" if "holds" in refuses else "yes"
+
+    @property
+    def value(self) -> dict[str, Any]:
+        """The same for programs; times and extremes in the unit of their channel."""
+        return {
+            "title": self.title,
+            "usable": self.usable,
+            "channels": [asdict(channel) for channel in self.channels],
+            "clocks": [asdict(clock) for clock in self.clocks],
+            "findings": [asdict(finding) for finding in self.findings],
+        }
 
 
 def inspect_log(file: Path) -> Inspection:
-    """Every channel of a log as its reader finds it, without a rig file.
+    """Every channel of a log as its reader finds it, without a rig file; a large log part by part.
 
     Parameters
     ----------
@@ -64,16 +86,20 @@ def inspect_log(file: Path) -> Inspection:
     together: dict[int | None, list[str]] = {}  # channels of one log may differ in length: those are read apart
     for info in infos:
         together.setdefault(info.samples, []).append(info.name)
-    read: dict[str, Channel] = {}
+    sums: dict[str, ChannelSum] = {}
+    clocks: dict[str, ChannelSum] = {}
     findings: dict[Finding, None] = {}
     for names in together.values():
-        log = reader.read(file, names, hints)
-        read.update(log.channels)
-        findings.update(dict.fromkeys(log.findings))
-    channels = {info.name: read[info.name] for info in infos}
-    rows = tuple(_row(name, channel.unit or "not stated", channel.values) for name, channel in channels.items())
-    notes = tuple(_clocks(channels)) or ("no channel runs like a time: a rig file can state a sample_rate",)
-    return Inspection(f"{file} ({reader.name})", rows, notes, tuple(findings))
+        for log in in_parts(reader, file, names, hints):
+            findings.update(dict.fromkeys(log.findings))
+            for name in names:
+                channel = log.channels[name]
+                sums.setdefault(name, ChannelSum(name, channel.unit)).add(channel.values)
+                if channel.clock is not None:
+                    clocks.setdefault(name, ChannelSum(f"time of {name}", "s")).add(channel.clock)
+    channels = tuple(sums[info.name].channel for info in infos)
+    rising = tuple(clock for info in infos if (clock := clocks.get(info.name, sums[info.name]).clock) is not None)
+    return Inspection(f"{file} ({reader.name})", channels, rising, tuple(findings))
 
 
 def inspect_run(file: Path, rig: Rig) -> tuple[Inspection, ...]:
@@ -108,35 +134,24 @@ def _fresh(file: Path, rig: Rig) -> RunSpec:
 
 def _of_record(record: Record, rig: Rig) -> Inspection:
     run = record.run
-    rows = [
-        _row("time", "s", run.time),
-        _row("command", rig.command_unit, run.command),
-        _row("response", rig.response_unit, run.response),
+    sums = [
+        summed("time", "s", run.time),
+        summed("command", rig.command_unit, run.command),
+        summed("response", rig.response_unit, run.response),
     ]
-    rows += [_row("setpoint", rig.response_unit, run.setpoint)] if run.setpoint is not None else []
+    sums += [summed("setpoint", rig.response_unit, run.setpoint)] if run.setpoint is not None else []
     title = f"{record.spec.shown} ({record.spec.use}, {record.spec.loop} loop)"
-    return Inspection(title, tuple(rows), tuple(_clock("time", run.time)), record.findings)
+    clock = sums[0].clock
+    channels = tuple(each.channel for each in sums)
+    return Inspection(title, channels, () if clock is None else (clock,), record.findings)
 
 
-def _row(name: str, unit: str, values: FloatArray) -> Row:
-    finite = values[np.isfinite(values)]
-    ends = (f"{finite.min():.6g}", f"{finite.max():.6g}") if finite.size else ("-", "-")
-    return (name, unit, str(values.size), str(values.size - finite.size), *ends)
+def _row(channel: ChannelSummary) -> Row:
+    ends = ["-" if end is None else f"{end:.6g}" for end in (channel.lowest, channel.highest)]
+    return (channel.name, channel.unit or "not stated", str(channel.samples), str(channel.lost), ends[0], ends[1])
 
 
-def _clocks(channels: dict[str, Channel]) -> Iterator[str]:
-    for name, channel in channels.items():
-        if channel.clock is not None:
-            yield from _clock(f"time of {name}", channel.clock)
-        else:
-            yield from _clock(name, channel.values)
-
-
-def _clock(name: str, time: FloatArray) -> Iterator[str]:
+def _note(clock: ClockSummary) -> str:
     """A line about a channel that only ever rises, as a time does."""
-    steps = np.diff(time)
-    if steps.size < 2 or not np.all(steps > 0):
-        return
-    middle = float(np.median(steps))
-    span = f"{steps.min():.6g} to {steps.max():.6g}"
-    yield f"{name}: rises by {middle:.6g} a sample ({span}), {time[-1] - time[0]:.6g} in all"
+    span = f"{clock.shortest:.6g} to {clock.longest:.6g}"
+    return f"{clock.name}: rises by {clock.step:.6g} a sample ({span}), {clock.whole:.6g} in all"
