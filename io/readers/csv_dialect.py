@@ -113,7 +113,7 @@ def sniff(lines: Sequence[str], said: LogDialect, where: str) -> CsvDialect:
     quoted = any('"' in line for line in lines)
     candidates = [
         found
-        for separator in ([said.separator] if said.separator else SEPARATORS)
+        for separator in ([said.separator] if said.separator else _worth_trying(lines))
         for decimal in ([said.decimal] if said.decimal else [".", ","])
         if (separator != decimal or quoted) and (found := _try(lines, start, separator, decimal, said)) is not None
     ]
@@ -127,6 +127,13 @@ def sniff(lines: Sequence[str], said: LogDialect, where: str) -> CsvDialect:
         )
     best = max(candidates, key=lambda found: found[0])[1]
     return replace(best, columns=_columns(lines, best, said, where))
+
+
+def _worth_trying(lines: Sequence[str]) -> list[str]:
+    """Separators that occur, and one of those that don't, which all give the same reading; any blank is one for " "."""
+    text = "\n".join(lines)
+    absent = [separator for separator in SEPARATORS if separator not in text and separator != " "]
+    return [separator for separator in SEPARATORS if separator not in absent[1:]]
 
 
 def _try(
