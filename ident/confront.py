@@ -10,6 +10,7 @@ from .catalogue import CATALOGUE
 from .choose import Fitted, colour_of, steady_fit
 from .ensemble import Drawn, draw_structure, freedom_of, internal_draws, plant_of, plausible_plants, stiction_of
 from .fitted import Fit, Plausible
+from .friction import rough_free_run
 from .polish import polish
 from .regression import Regression
 from .run import FloatArray, Run
@@ -96,7 +97,32 @@ def confront(run: Run, fit: Fit, seed: int = 1) -> Confronted:
     theta, solved = polish(problem, theta, colour, rounds=12)
     alone = steady_fit(Fitted(problem, theta, solved, 0.0, 0.0))
     drawn = draw_structure(alone, colour, _DRAWS, seed)
-    return _compared(fit, drawn, colour)
+    found = _compared(fit, drawn, colour)
+    if alone.whitened:
+        return found
+    # draws about plain least squares are too sure of what a wandering level can mimic
+    logs = _log_likelihood(found.joint, fit, alone, colour)
+    weights = np.exp(logs - logs.max())
+    return replace(found, joint_weights=weights / weights.sum())
+
+
+def _log_likelihood(plausible: Plausible, fit: Fit, alone: Fitted, colour: Colour) -> FloatArray:
+    """(p,) Student-t log likelihood of plants, level and drift free, the noise of this record's own best fit."""
+    problem = alone.problem
+    initial = problem.initial_columns(problem.split(alone.theta)[0])
+    free = problem.fixed_columns if initial is None else np.column_stack([problem.fixed_columns, initial])
+    target = problem.whitener(colour).apply(np.column_stack([problem.measured, free]))
+    basis, _ = np.linalg.qr(target[:, 1:])
+    costs = []
+    for plant, friction in zip(plausible.plants, plausible.stiction, strict=True):
+        pair = (float(friction), float(friction)) if friction > 0 else (0.0, 0.0)
+        model = rough_free_run(plant, problem.runs[0], fit.operating_command, 0.0, pair)[problem.runs[0].valid]
+        away = target[:, 0] - problem.whitener(colour).apply(model[:, None])[:, 0]
+        away = away - basis @ (basis.T @ away)
+        costs.append(float(away @ away))
+    freedom = freedom_of(problem, colour, len(alone.theta) + len(alone.solved.coefficients))
+    best = problem.solve(alone.theta, colour).cost
+    return np.asarray(-0.5 * freedom * np.log(np.maximum(np.array(costs), best) / best))
 
 
 def _compared(fit: Fit, drawn: Drawn, colour: Colour) -> Confronted:
