@@ -118,6 +118,8 @@ def fit_candidates(
     together, own_colour = _under_one_noise(sorted(_distinct(fitted), key=lambda f: f.criterion))
     together = [f for f in together if not _three_lags(f)]
     better = together[0].problem.structure.further and min(f.misfit for f in fitted) < _VISIBLY * visible
+    if weighed and together[0].criterion > recoloured[0].criterion - _UNEXPLAINED:
+        better = False  # a pole and a zero beside each other fit a few points of any table a little better
     return (together, own_colour) if better else (recoloured, colour)
 
 

@@ -23,6 +23,7 @@ from .outcome import Outcome
 from .parameter_unit import unit_of
 from .record import Record
 from .rigfile.rig import Rig
+from .table_dossier import put_fitted_table, put_table
 
 SCHEMA = "gainwright.dossier/1"
 
@@ -45,6 +46,8 @@ def dossier_bytes(outcome: Outcome) -> bytes:
         _words(file, "cautions", outcome.cautions, "what to mind before the first run")
         for place, record in enumerate(outcome.records):
             _put_record(file.create_group(f"runs/{place}"), record, outcome.rig)
+        for place, table in enumerate(outcome.tables):
+            put_table(file.create_group(f"tables/{place}"), table, outcome.rig)
         if outcome.fit is not None:
             _put_fit(file.create_group("fit"), outcome.fit, outcome.rig)
             _put_plausible(file.create_group("plausible"), outcome.fit.plausible, outcome.rig)
@@ -112,6 +115,8 @@ def _put_fit(group: h5py.Group, fit: Fit, rig: Rig) -> None:
     _put_candidates(group.create_group("candidates"), fit)
     for place, run in enumerate(fit.runs):
         _put_fitted_run(group.create_group(f"runs/{place}"), run, rig)
+    for place, table in enumerate(fit.tables):
+        put_fitted_table(group.create_group(f"tables/{place}"), table, rig)
 
 
 def _put_parameters(group: h5py.Group, fit: Fit, rig: Rig) -> None:
@@ -262,6 +267,9 @@ def _put_compared(group: h5py.Group, compared: Compared, rig: Rig) -> None:
     group.attrs["misfit"] = compared.misfit
     group.attrs["noise_floor"] = compared.noise_floor
     group.attrs["coverage_95"] = compared.coverage_95
+    if compared.table is not None:
+        put_fitted_table(group.create_group("table"), compared.table, rig)
+        return
     _traces(
         group,
         rig,

@@ -7,11 +7,13 @@ from typing import Any
 from ..ident.errors import RequestError
 from .channel_summary import ChannelSum, ChannelSummary, ClockSummary, summed
 from .read_record import read_record
+from .read_table import read_table
 from .readers.parts import in_parts
 from .readers.port import Hints
 from .readers.registry import reader_of
-from .record import Finding, Record
+from .record import Finding, Record, TableRecord
 from .rigfile.rig import Rig, RunSpec
+from .rigfile.table_runs import KIND
 
 Row = tuple[str, str, str, str, str, str]
 HEAD: Row = ("channel", "unit", "samples", "lost", "lowest", "highest")
@@ -117,7 +119,10 @@ def inspect_run(file: Path, rig: Rig) -> tuple[Inspection, ...]:
         As when the run is read in a job.
     """
     specs = [spec for spec in rig.runs if spec.file == file.resolve()] or [_fresh(file, rig)]
-    return tuple(_of_record(read_record(spec, rig), rig) for spec in specs)
+    return tuple(
+        _of_table(read_table(spec, rig), rig) if spec.excitation == KIND else _of_record(read_record(spec, rig), rig)
+        for spec in specs
+    )
 
 
 def _fresh(file: Path, rig: Rig) -> RunSpec:
@@ -128,8 +133,24 @@ def _fresh(file: Path, rig: Rig) -> RunSpec:
             found="no [[runs]]",
             expected="at least one run",
         )
-    plain = replace(rig.runs[0], from_s=None, to_s=None, command_before=None, taken=None)
-    return replace(plain, file=file.resolve(), shown=str(file), signals=rig.signals)
+    like = next((run for run in rig.runs if run.excitation != KIND), rig.runs[0])
+    plain = replace(like, from_s=None, to_s=None, command_before=None, taken=None)
+    signals = like.signals if like.excitation == KIND else rig.signals
+    return replace(plain, file=file.resolve(), shown=str(file), signals=signals)
+
+
+def _of_table(record: TableRecord, rig: Rig) -> Inspection:
+    table, gain = record.table, f"({rig.response_unit})/({rig.command_unit})"
+    columns = (
+        ("frequency", "rad/s", table.frequency),
+        ("magnitude", gain, table.magnitude),
+        ("phase", "rad", table.phase),
+        ("magnitude error", gain, table.magnitude_error),
+        ("phase error", "rad", table.phase_error),
+        ("coherence", "1", table.coherence),
+    )
+    channels = tuple(summed(name, unit, values).channel for name, unit, values in columns if values is not None)
+    return Inspection(f"{record.spec.shown} ({record.spec.use}, frequency table)", channels, (), record.findings)
 
 
 def _of_record(record: Record, rig: Rig) -> Inspection:

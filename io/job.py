@@ -8,6 +8,7 @@ from threadpoolctl import threadpool_limits
 
 from ..design.closing.compared import Compared
 from ..design.closing.given import compare_given
+from ..design.closing.table import compare_table
 from ..design.closing.verdict import compare
 from ..design.closing.words import Units
 from ..design.design import design_gains
@@ -23,10 +24,12 @@ from .outcome import Outcome
 from .progress import Progress, silent
 from .provenance import provenance_of
 from .read_record import read_record, shares_samples
-from .record import Record
+from .read_table import read_table
+from .record import Record, Source, TableRecord
 from .release import reasons_to_hold
 from .rigfile.load import load_rig
-from .rigfile.rig import Rig
+from .rigfile.rig import Rig, RunSpec
+from .rigfile.table_runs import KIND
 
 
 def process_rig(
@@ -58,14 +61,17 @@ def process_rig(
         progress("reading the rig file")
         rig = load_rig(rig_path)
         rig = rig if change is None else change(rig)
-        records = _read_all(rig, progress)
+        sources = _read_all(rig, progress)
+        records = tuple(source for source in sources if isinstance(source, Record))
+        tables = tuple(source for source in sources if isinstance(source, TableRecord))
         alone = _alone(rig, records, progress)
-        fit = _fit(rig, records, alone, progress)
+        fit = _fit(rig, records, tables, alone, progress)
         design = _design(rig, fit, progress)
         ladder = _ladder(rig, fit, design, progress)
         twins = _twins(records)
         closing = _close(rig, records, fit, design, twins, progress, alone)
-    reasons = reasons_to_hold(rig, records, design, closing, twins, ladder)
+        closing += _close_tables(rig, tables, fit, design, progress)
+    reasons = reasons_to_hold(rig, (*records, *tables), design, closing, twins, ladder)
     return Outcome(
         rig=rig,
         records=records,
@@ -74,18 +80,19 @@ def process_rig(
         closing=closing,
         status="held" if reasons else "released",
         reasons=reasons,
-        cautions=_cautions(rig, records, fit, design, closing, ladder),
-        provenance=provenance_of(rig, records),
+        cautions=_cautions(rig, (*records, *tables), fit, design, closing, ladder),
+        provenance=provenance_of(rig, (*records, *tables)),
         ladder=ladder,
+        tables=tables,
     )
 
 
-def _read_all(rig: Rig, progress: Progress) -> tuple[Record, ...]:
-    records = []
+def _read_all(rig: Rig, progress: Progress) -> tuple[Source, ...]:
+    sources: list[Source] = []
     for place, spec in enumerate(rig.runs):
         progress(f"reading {spec.shown}", place / len(rig.runs))
-        record = read_record(spec, rig)
-        for finding in record.findings:
+        source = _read(spec, rig)
+        for finding in source.findings:
             if finding.refuses == "stops":
                 raise RecordError(
                     finding.kind,
@@ -94,14 +101,24 @@ def _read_all(rig: Rig, progress: Progress) -> tuple[Record, ...]:
                     expected="a record that can be used",
                     advice=finding.action,
                 )
-        records.append(record)
-    return tuple(records)
+        sources.append(source)
+    return tuple(sources)
 
 
-def _fit(rig: Rig, records: Sequence[Record], held_out: Sequence[Fit | None], progress: Progress) -> Fit:
-    if rig.given is None:
-        return _identify(rig, records, progress)
+def _read(spec: RunSpec, rig: Rig) -> Source:
+    return read_table(spec, rig) if spec.excitation == KIND else read_record(spec, rig)
+
+
+def _fit(
+    rig: Rig,
+    records: Sequence[Record],
+    tables: Sequence[TableRecord],
+    held_out: Sequence[Fit | None],
+    progress: Progress,
+) -> Fit:
     known = next((alone for alone in held_out if alone is not None), None)
+    if rig.given is None:
+        return _identify(rig, records, tables, known, progress)
     return fit_of_given(
         rig.given,
         operating_command=_first(rig.operating_command, known.operating_command if known else None),
@@ -115,8 +132,9 @@ def _first(*values: float | None) -> float:
 
 
 def _alone(rig: Rig, records: Sequence[Record], progress: Progress) -> tuple[Fit | None, ...]:
-    """Beside a given plant each held-out record is fitted by itself: only it tells of noise and operating point."""
-    if rig.given is None:
+    """Beside a plant that no run in time gave each held-out record is fitted by itself: only it tells of noise and
+    operating point."""
+    if rig.given is None and any(record.spec.use == "fit" for record in records):
         return ()
     return tuple(_fitted_alone(rig, record, progress) for record in records if record.spec.use == "held-out")
 
@@ -129,15 +147,23 @@ def _fitted_alone(rig: Rig, record: Record, progress: Progress) -> Fit | None:
         return None  # the comparison says so
 
 
-def _identify(rig: Rig, records: Sequence[Record], progress: Progress) -> Fit:
+def _identify(
+    rig: Rig, records: Sequence[Record], tables: Sequence[TableRecord], known: Fit | None, progress: Progress
+) -> Fit:
+    """Runs and tables to fit, jointly. Tables alone take operating point and noise from `known`, a run in time."""
     fitted = [record.run for record in records if record.spec.use == "fit"]
+    command, response = rig.operating_command, rig.operating_response
+    if known is not None and (command is None or response is None):
+        command, response = known.operating_command, known.operating_response
     progress("fitting the plant")
-    return identify(
+    fit = identify(
         fitted,
-        operating_command=rig.operating_command,
-        operating_response=rig.operating_response,
+        tables=[source.table for source in tables if source.spec.use == "fit"],
+        operating_command=command,
+        operating_response=response,
         progress=progress,
     )
+    return fit if known is None else replace(fit, noise=known.noise)
 
 
 def _design(rig: Rig, fit: Fit, progress: Progress) -> Design:
@@ -147,7 +173,7 @@ def _design(rig: Rig, fit: Fit, progress: Progress) -> Design:
         fit.plausible,
         operating_command=fit.operating_command,
         operating_response=fit.operating_response,
-        noise=fit.noise if fit.noise.std > 0.0 or rig.given is None else None,
+        noise=fit.noise if fit.noise.std > 0.0 or fit.runs else None,
         requirements=rig.requirements,
         limits=rig.limits,
         setting=rig.setting,
@@ -199,7 +225,7 @@ def _close(
         progress(f"comparing with {record.spec.shown}")
         compared = (
             _compare(rig, record, fit, design, progress)
-            if rig.given is None
+            if fit.runs
             else compare_given(
                 record.run,
                 fit,
@@ -211,6 +237,23 @@ def _close(
             )
         )
         twin = next((fitted for held_out, fitted in twins if held_out is record), None)
+        closing.append(compared if twin is None else _not_fresh(compared, twin))
+    return tuple(closing)
+
+
+def _close_tables(
+    rig: Rig, tables: Sequence[TableRecord], fit: Fit, design: Design, progress: Progress
+) -> tuple[Compared, ...]:
+    closing = []
+    fitted = [source for source in tables if source.spec.use == "fit"]
+    for source in tables:
+        if source.spec.use != "held-out":
+            continue
+        progress(f"comparing with {source.spec.shown}")
+        compared = compare_table(
+            source.table, fit, design, requirements=rig.requirements, limits=rig.limits, setting=rig.setting
+        )
+        twin = next((other for other in fitted if other.samples_sha256 == source.samples_sha256), None)
         closing.append(compared if twin is None else _not_fresh(compared, twin))
     return tuple(closing)
 
@@ -228,14 +271,14 @@ def _compare(rig: Rig, record: Record, fit: Fit, design: Design, progress: Progr
     )
 
 
-def _not_fresh(compared: Compared, twin: Record) -> Compared:
+def _not_fresh(compared: Compared, twin: Source) -> Compared:
     """A record that was fitted says nothing about the fit, however well it agrees."""
     return replace(compared, verdict="not comparable", why=f"its samples were fitted as {twin.spec.shown}")
 
 
 def _cautions(
     rig: Rig,
-    records: Sequence[Record],
+    records: Sequence[Source],
     fit: Fit,
     design: Design,
     closing: Sequence[Compared],

@@ -7,7 +7,7 @@ from ..design.closing.compared import Compared
 from ..design.designed import Design
 from ..design.ladder.rung import Ladder
 from ..ident.fitted import Fit
-from .record import Record
+from .record import Record, Source, TableRecord
 from .retuned import Retuned
 from .rigfile.rig import Rig
 
@@ -29,6 +29,8 @@ class Outcome:
         None where the gains are not stable on every plausible plant.
     retuned : Retuned or None
         What an earlier sheet says beside this job.
+    tables : tuple of TableRecord
+        Frequency tables.
     """
 
     rig: Rig
@@ -42,3 +44,9 @@ class Outcome:
     provenance: dict[str, Any] = field(default_factory=dict)
     ladder: Ladder | None = None
     retuned: Retuned | None = None
+    tables: tuple[TableRecord, ...] = ()
+
+    @property
+    def sources(self) -> tuple[Source, ...]:
+        """Logs and frequency tables; `closing` has the held-out ones among them in this order."""
+        return (*self.records, *self.tables)

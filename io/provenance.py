@@ -6,19 +6,20 @@ from datetime import UTC, datetime
 from importlib.metadata import version
 from typing import Any
 
-from .record import Record
+from .record import Source
 from .rigfile.rig import Rig
 
 _PACKAGES = ("numpy", "scipy", "pandas", "lmfit", "h5py", "pydantic", "pint", "matplotlib")
 
 
-def provenance_of(rig: Rig, records: Sequence[Record]) -> dict[str, Any]:
+def provenance_of(rig: Rig, records: Sequence[Source]) -> dict[str, Any]:
     """The sheet's `provenance`: everything needed to make the same sheet again.
 
     Parameters
     ----------
     rig : Rig
-    records : sequence of Record, in the order of the rig file
+    records : sequence of Source
+        Logs, then frequency tables, each in the order of the rig file.
     """
     return {
         "gainwright": version("gainwright"),
@@ -30,12 +31,12 @@ def provenance_of(rig: Rig, records: Sequence[Record]) -> dict[str, Any]:
     }
 
 
-def window_of(record: Record) -> list[float | None]:
+def window_of(record: Source) -> list[float | None]:
     """[from, to) in s from the file's first sample; None where the window is open."""
     return [record.spec.from_s, record.spec.to_s]
 
 
-def _trail(record: Record) -> dict[str, Any]:
+def _trail(record: Source) -> dict[str, Any]:
     return {
         "file": record.spec.shown,
         "sha256": record.sha256,

@@ -2,7 +2,6 @@
 
 import hashlib
 from dataclasses import replace
-from pathlib import Path
 
 import numpy as np
 
@@ -16,8 +15,9 @@ from .look_at_record import looked_at
 from .readers.parts import is_large
 from .readers.port import Hints, Reader
 from .readers.registry import reader_of
-from .record import Record
+from .record import Record, sha256_of
 from .rigfile.rig import Rig, RunSpec
+from .rigfile.table_runs import KIND
 from .samples import Samples, samples_of
 from .thinning import Taken, thinned
 from .unit_slips import unit_slips
@@ -44,6 +44,14 @@ def read_record(spec: RunSpec, rig: Rig) -> Record:
     RequestError
         When a source isn't in the log, or a unit doesn't fit.
     """
+    if spec.excitation == KIND:
+        raise RequestError(
+            "a frequency table is no log in time",
+            where=str(spec.file),
+            found=f'excitation = "{KIND}"',
+            expected="a log of command and response over time",
+            advice="hold a fresh log against the sheet, or process the table",
+        )
     roles = {role: signal for role, signal in spec.signals.items() if signal.source is not None}
     hints = Hints(rig.dialect, spec.group)
     reader, sources = reader_of(spec.file), [str(signal.source) for signal in roles.values()]
@@ -71,7 +79,7 @@ def read_record(spec: RunSpec, rig: Rig) -> Record:
         closed_loop=spec.loop == "closed",
         command_late=taken.late,
     )
-    return Record(spec, run, _sha256(spec.file), _samples_sha256(windowed), tuple(findings), taken.marks)
+    return Record(spec, run, sha256_of(spec.file), _samples_sha256(windowed), tuple(findings), taken.marks)
 
 
 def _whole(spec: RunSpec, rig: Rig, reader: Reader, sources: list[str], hints: Hints) -> Taken:
@@ -141,11 +149,6 @@ def _require_samples(spec: RunSpec, windowed: Samples, whole: Samples) -> None:
 def _between(spec: RunSpec) -> Between:
     """A sampled controller holds its command: a log taken in closed loop need not be asked."""
     return "held" if spec.loop == "closed" and spec.between_samples == "auto" else spec.between_samples
-
-
-def _sha256(file: Path) -> str:
-    with file.open("rb") as log:
-        return hashlib.file_digest(log, "sha256").hexdigest()
 
 
 def _samples_sha256(samples: Samples) -> str:

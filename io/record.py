@@ -1,9 +1,12 @@
 """One record as read: the run and the trail back to its bytes."""
 
+import hashlib
 from dataclasses import dataclass
+from pathlib import Path
 
 from ..ident.health.fingerprint import Marks
 from ..ident.run import Run
+from ..ident.tables import Table
 from .rigfile.rig import RunSpec
 
 
@@ -61,3 +64,35 @@ class Record:
     samples_sha256: str
     findings: tuple[Finding, ...]
     marks: Marks | None = None
+
+
+@dataclass(frozen=True, eq=False)
+class TableRecord:
+    """A frequency table as read, with what is needed to find the bytes again.
+
+    Attributes
+    ----------
+    spec : RunSpec
+        Its signals are the table's columns.
+    table : Table
+    sha256 : str
+        Of the file's bytes.
+    samples_sha256 : str
+        Of the points as given.
+    findings : tuple of Finding
+    """
+
+    spec: RunSpec
+    table: Table
+    sha256: str
+    samples_sha256: str
+    findings: tuple[Finding, ...]
+
+
+Source = Record | TableRecord
+
+
+def sha256_of(file: Path) -> str:
+    """Of a file's bytes."""
+    with file.open("rb") as log:
+        return hashlib.file_digest(log, "sha256").hexdigest()

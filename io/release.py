@@ -7,7 +7,7 @@ from ..design.closing.compared import Compared
 from ..design.designed import Design, Judged, LimitJudged
 from ..design.ladder.rung import Ladder
 from ..design.requirements import RequirementName
-from .record import Record
+from .record import Record, Source
 from .rigfile.rig import Rig
 
 FEWEST_PLANTS = 1000
@@ -16,7 +16,7 @@ MARGINS: tuple[RequirementName, ...] = ("gain_margin", "phase_margin", "peak_sen
 
 def reasons_to_hold(
     rig: Rig,
-    records: Sequence[Record],
+    records: Sequence[Source],
     design: Design | None,
     closing: Sequence[Compared],
     twins: Sequence[tuple[Record, Record]] = (),
@@ -29,7 +29,7 @@ def reasons_to_hold(
     Parameters
     ----------
     rig : Rig
-    records : sequence of Record
+    records : sequence of Source
         Fitted and held-out ones.
     design : Design or None
         None: no gains were found to judge.
@@ -66,7 +66,7 @@ def _from_rig_file(rig: Rig) -> Iterator[str]:
             )
 
 
-def _from_records(records: Sequence[Record]) -> Iterator[str]:
+def _from_records(records: Sequence[Source]) -> Iterator[str]:
     for record in records:
         for finding in record.findings:
             if finding.refuses == "holds":

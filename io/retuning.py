@@ -80,11 +80,14 @@ def _like(outcome: Outcome, fit: Fit, earlier: Earlier) -> Fit:
     if fit.structure == earlier.known.structure or not family:
         return fit
     runs = [record.run for record in outcome.records if record.spec.use == "fit"]
-    if not runs:
+    tables = [source.table for source in outcome.tables if source.spec.use == "fit"]
+    if not runs and not tables:
         return fit
     rig = outcome.rig
+    point = (rig.operating_command, rig.operating_response)
+    command, response = point if runs else (fit.operating_command, fit.operating_response)
     return identify(
-        runs, operating_command=rig.operating_command, operating_response=rig.operating_response, structures=family
+        runs, tables=tables, operating_command=command, operating_response=response, structures=family
     )
 
 

@@ -20,7 +20,7 @@ from .ladder_rows import bounded, ladder_rows, law_row
 from .outcome import Outcome
 from .parameter_unit import unit_of
 from .provenance import window_of
-from .record import Record
+from .record import Source
 from .requirement_row import requirement_row
 from .rigfile.rig import Rig
 from .sight_rows import sight_row
@@ -248,11 +248,11 @@ def _limit(limit: LimitJudged) -> dict[str, Any]:
 
 
 def _closing(outcome: Outcome) -> list[dict[str, Any]]:
-    held_out = [record for record in outcome.records if record.spec.use == "held-out"]
+    held_out = [record for record in outcome.sources if record.spec.use == "held-out"]
     return [_compared(each, record, outcome.rig) for each, record in zip(outcome.closing, held_out, strict=True)]
 
 
-def _compared(compared: Compared, record: Record, rig: Rig) -> dict[str, Any]:
+def _compared(compared: Compared, record: Source, rig: Rig) -> dict[str, Any]:
     return {
         "file": record.spec.shown,
         "window": window_of(record),

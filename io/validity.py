@@ -20,7 +20,7 @@ class Validity:
     operating_command, operating_response : float or None
     test_step : float or None, response unit
     fastest : float or None, rad/s
-        Half the sample rate of the slowest log: nothing faster was seen.
+        Half the sample rate of the slowest log, or the highest frequency of a table: nothing faster was seen.
     made : str
         ISO date.
     taken : tuple of str
@@ -41,6 +41,7 @@ def validity_of(outcome: Outcome) -> Validity:
     """Read off a finished job."""
     records = [record for record in outcome.records if record.spec.use == "fit"]
     fit = outcome.fit
+    tables = [source.table for source in outcome.tables if source.spec.use == "fit"]
     steps = [float(np.median(np.diff(record.run.time))) for record in records if record.run.time.size > 1]
     return Validity(
         _span([record.run.command for record in records]),
@@ -48,7 +49,7 @@ def validity_of(outcome: Outcome) -> Validity:
         fit.operating_command if fit else None,
         fit.operating_response if fit else None,
         outcome.rig.requirements.test_step,
-        float(np.pi / max(steps)) if steps else None,
+        min([*(np.pi / step for step in steps), *(table.span[1] for table in tables)], default=None),
         str(outcome.provenance.get("created", ""))[:10],
         tuple(sorted({record.spec.taken for record in records if record.spec.taken})),
     )

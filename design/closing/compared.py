@@ -4,6 +4,7 @@ from dataclasses import dataclass
 from typing import Literal
 
 from ...ident.run import FloatArray
+from ...ident.tables import FittedTable
 from .sight import StepSight
 
 
@@ -27,6 +28,8 @@ class Compared:
         Of the plants that this record makes plausible, those on which the gains meet everything.
     sight : StepSight or None
         Overshoot, rise, settling and final value of its largest step, predicted and measured.
+    table : FittedTable or None
+        A held-out frequency table beside the fitted plant; the arrays over time are then empty.
     """
 
     label: str
@@ -43,3 +46,4 @@ class Compared:
     why: str
     share_meeting: float | None = None
     sight: StepSight | None = None
+    table: FittedTable | None = None

@@ -9,6 +9,7 @@ from ...design.compensator import open_loop
 from ...design.designed import Design
 from ...design.locus.condition import working
 from ...ident.fitted import Fit
+from ...ident.tables import FittedTable
 from ..outcome import Outcome
 from ..rigfile.rig import Rig
 from .headroom_bars import Headroom, headroom_bars
@@ -57,6 +58,7 @@ def gallery(outcome: Outcome) -> Iterator[Picture]:
     yield from [ladder] if ladder else []
     if fit is not None:
         yield from (log_picture(outcome, fit, place) for place in range(len(fit.runs)))
+        yield from (table_picture(outcome, fit, table, f"table-{place}") for place, table in enumerate(fit.tables))
     if fit is not None and design is not None:
         yield locus_picture(outcome, fit, design)
         margins = margins_picture(outcome, fit, design)
@@ -143,6 +145,15 @@ def log_picture(outcome: Outcome, fit: Fit, place: int) -> Picture:
     return Picture(f"log-{place}", f"Command, response with model, and residual of {run.label}", figure)
 
 
+def table_picture(outcome: Outcome, fit: Fit, table: FittedTable, name: str) -> Picture:
+    """A frequency table over the fitted plant."""
+    from .frequency_table import frequency_table
+
+    rig = outcome.rig
+    figure = frequency_table(table, fit.plant, gain_unit=f"{rig.response_unit}/{rig.command_unit}")
+    return Picture(name, f"Frequency table {table.label} over the fitted plant's response, with 95 % errors", figure)
+
+
 def locus_picture(outcome: Outcome, fit: Fit, design: Design) -> Picture:
     """The locus with the chosen point."""
     from .locus import locus, view_of
@@ -173,6 +184,8 @@ def held_out_picture(outcome: Outcome, place: int) -> Picture | None:
     from .held_out import held_out
 
     rig, compared = outcome.rig, outcome.closing[place]
+    if compared.table is not None and outcome.fit is not None:
+        return table_picture(outcome, outcome.fit, compared.table, f"held-out-{place}")
     if len(compared.time) < 2 or not math.isfinite(float(compared.predicted[-1])):
         return None
     figure = held_out(compared, command_unit=rig.command_unit, response_unit=rig.response_unit)

@@ -56,7 +56,8 @@ def _safe_pictures(page: dict[str, Any]) -> dict[str, Any]:
         page["ladder"] = {**page["ladder"], "picture": Markup(page["ladder"]["picture"])}
     if page.get("changed"):
         page["changed"] = {**page["changed"], "picture": Markup(page["changed"]["picture"])}
-    page["logs"] = tuple((label, Markup(svg)) for label, svg in page["logs"])
+    for kind in ("logs", "tables"):
+        page[kind] = tuple((label, Markup(svg)) for label, svg in page[kind])
     page["closing"] = tuple((compared, Markup(svg)) for compared, svg in page["closing"])
     return page
 
@@ -195,6 +196,7 @@ def _knowing(outcome: Outcome) -> dict[str, Any]:
     page: dict[str, Any] = {
         "findings": tables.findings(outcome),
         "logs": pictures.log_pictures(outcome),
+        "tables": pictures.table_pictures(outcome),
         "more_logs": _more_logs(outcome),
         "fit": outcome.fit,
         "working": None,

@@ -37,6 +37,15 @@ def log_pictures(outcome: Outcome) -> tuple[tuple[str, str], ...]:
     return tuple((fit.runs[place].label, _inline(gallery.log_picture(outcome, fit, place))) for place in shown)
 
 
+def table_pictures(outcome: Outcome) -> tuple[tuple[str, str], ...]:
+    """Label and picture of each fitted frequency table."""
+    fit = outcome.fit
+    if fit is None:
+        return ()
+    pictures = (gallery.table_picture(outcome, fit, table, f"table-{i}") for i, table in enumerate(fit.tables))
+    return tuple((table.label, _inline(picture)) for table, picture in zip(fit.tables, pictures, strict=True))
+
+
 def held_out_pictures(outcome: Outcome) -> tuple[str, ...]:
     """A picture for each held-out record, empty where it has no prediction."""
     return tuple(_inline(gallery.held_out_picture(outcome, place)) for place in range(len(outcome.closing)))

@@ -13,6 +13,7 @@ from ..figures.locus import tags
 from ..figures.words import number, with_unit
 from ..outcome import Outcome
 from ..parameter_unit import unit_of
+from ..record import Source, TableRecord
 from ..rigfile.rig import Rig
 from ..sight_rows import sight_row
 from . import words
@@ -175,7 +176,7 @@ def findings(outcome: Outcome) -> Table:
     """What was seen in the logs, one row a finding, and those without any."""
     rows: list[tuple[str, ...]] = []
     grave: list[int] = []
-    for record in outcome.records:
+    for record in outcome.sources:
         for found in record.findings:
             if found.refuses != "no":
                 grave.append(len(rows))
@@ -189,12 +190,18 @@ def logs(outcome: Outcome) -> Table:
     """The bytes and samples behind the report."""
     rows = tuple(
         (
-            record.spec.shown, record.spec.use, record.spec.loop, str(len(record.run.time)),
+            record.spec.shown, record.spec.use, record.spec.loop, _size(record),
             record.sha256, record.samples_sha256,
         )
-        for record in outcome.records
+        for record in outcome.sources
     )  # fmt: skip
     return Table("Logs", ("log", "use", "loop", "samples", "SHA-256 of the file", "SHA-256 of the samples"), rows)
+
+
+def _size(source: Source) -> str:
+    if isinstance(source, TableRecord):
+        return f"{len(source.table.frequency)} frequencies"
+    return str(len(source.run.time))
 
 
 def origin(provenance: dict[str, Any]) -> tuple[tuple[str, str], ...]:

@@ -164,6 +164,11 @@ def agreement(compared: Compared) -> str:
     numbers = (compared.misfit, compared.noise_floor, compared.coverage_95)
     if not all(math.isfinite(each) for each in numbers):
         return "No misfit can be given."
+    if compared.table is not None:
+        return (
+            f"The points lie {share(compared.misfit)} from the fitted plant's response, rms, and their own errors are "
+            f"{share(compared.noise_floor)}; {share(compared.coverage_95)} of them lie within the 95 % errors of both."
+        )
     return (
         f"Misfit {number(compared.misfit, 3)} against a noise floor of {number(compared.noise_floor, 3)} (rms error "
         f"over the spread of the response); {share(compared.coverage_95)} of the samples lie in the 95 % band."

@@ -11,9 +11,10 @@ from . import given
 from .messages import Problems, shape_problems
 from .quantities import Quantities
 from .rig import LogDialect, Rig
-from .runs import build_runs, build_signals, find_files, logged_roles, refuse_not_yet, signals_of
+from .runs import build_runs, build_signals, find_files, logged_roles, signals_of
 from .schema import Log, OperatingPoint, RigFile
 from .signal_units import rig_units
+from .table_runs import check_tables
 from .wishes import Wishes
 
 _SEPARATORS = {"comma": ",", "semicolon": ";", "tab": "\t", "space": " ", "pipe": "|"}
@@ -42,11 +43,11 @@ def load_rig(path: Path) -> Rig:
     """
     content = _bytes(path)
     shape = _shape(path, _table(path, content))
-    _refuse_not_yet(path, shape)
     folder = path.resolve().parent
     problems = Problems(str(path))
     files = find_files(shape.runs, folder, problems)
     _require_a_plant(shape, problems)
+    check_tables(shape, problems)
     sheet = given.read_sheet(shape, folder, problems)
     dialect = _dialect(shape.log, problems)
     problems.raise_any()
@@ -177,20 +178,6 @@ def _shape(path: Path, table: dict[str, Any]) -> RigFile:
         problems.extend(shape_problems(problem.errors(), RigFile))
         problems.raise_any()
         raise
-
-
-def _refuse_not_yet(path: Path, shape: RigFile) -> None:
-    for number, run in enumerate(shape.runs, 1):
-        try:
-            refuse_not_yet(number, run)
-        except RequestError as problem:
-            raise RequestError(
-                problem.what,
-                where=f"{path}: {problem.where}",
-                found=problem.found,
-                expected=problem.expected,
-                advice=problem.advice,
-            ) from problem
 
 
 def _dialect(part: Log, problems: Problems) -> LogDialect:

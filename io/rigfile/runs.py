@@ -4,13 +4,13 @@ import math
 from dataclasses import replace
 from pathlib import Path
 
-from ...ident.errors import RequestError
 from .. import units
 from .in_force import build_in_force, require_known_command
 from .messages import Problems, listed, nearest
 from .quantities import Quantities
 from .rig import RunSpec, Signal
 from .schema import RigFile, RunPart, SignalPart, Signals
+from .table_runs import is_table, table_signals
 
 ROLES = ("time", "command", "response", "setpoint")
 Window = tuple[float, float]
@@ -23,7 +23,8 @@ def find_files(runs: list[RunPart], folder: Path, problems: Problems) -> list[li
 
 def logged_roles(shape: RigFile) -> frozenset[str]:
     """Signals that at least one run has in its log."""
-    return frozenset(role for run in shape.runs for role in signals_of(shape.signals, run))
+    timed = [run for run in shape.runs if not is_table(run)]
+    return frozenset(role for run in timed for role in signals_of(shape.signals, run))
 
 
 def _files_of(key: str, pattern: str, folder: Path, problems: Problems) -> list[Path]:
@@ -162,6 +163,10 @@ def build_runs(
     windows: dict[Path, list[tuple[Window, str]]] = {}
     for number, (run, found) in enumerate(zip(runs, files, strict=True), 1):
         key = f"runs[{number}]"
+        if is_table(run):
+            columns, whole = table_signals(number, run, problems), (-math.inf, math.inf)
+            specs += [_spec(run, file, folder, columns, None, whole) for file in found]
+            continue
         window = _window(key, run, quantities, problems)
         signals = build_signals(
             f"{key}.signals" if run.signals else "signals",
@@ -233,20 +238,3 @@ def _span(window: Window) -> str:
     start = "the start" if window[0] == -math.inf else f"{window[0]:g} s"
     end = "the end" if window[1] == math.inf else f"{window[1]:g} s"
     return f"{start} to {end}"
-
-
-def refuse_not_yet(number: int, run: RunPart) -> None:
-    """Refuse the kinds of run that are not read yet.
-
-    Raises
-    ------
-    RequestError
-    """
-    if run.excitation == "frequency-table" or run.magnitude is not None:
-        raise RequestError(
-            "frequency tables are not read yet",
-            where=f"runs[{number}]",
-            found='excitation = "frequency-table"',
-            expected="a log in time",
-            advice="log the response to a step, a sweep or a random command",
-        )

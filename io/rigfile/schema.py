@@ -298,6 +298,15 @@ class PlantPart(Part):
     tolerance: Tolerance = Tolerance()
 
 
+def _without_time(content: dict[str, Any]) -> bool:
+    """Whether no run is a log in time, but a plant or frequency tables stand in."""
+    runs = content.get("runs")
+    if not runs:
+        return "plant" in content
+    kinds = [run.get("excitation") if isinstance(run, dict) else None for run in runs] if isinstance(runs, list) else []
+    return bool(kinds) and all(kind == "frequency-table" for kind in kinds)
+
+
 class RigFile(Part):
     """The whole file."""
 
@@ -314,8 +323,8 @@ class RigFile(Part):
     @model_validator(mode="before")
     @classmethod
     def _signals_of_a_given_plant(cls, content: Any) -> Any:
-        """A given plant needs no signals: the tables that are left out are empty."""
-        if not isinstance(content, dict) or "plant" not in content or content.get("runs"):
+        """A given plant and frequency tables need no signals: the tables that are left out are empty."""
+        if not isinstance(content, dict) or not _without_time(content):
             return content
         signals = content.get("signals", {})
         if not isinstance(signals, dict):

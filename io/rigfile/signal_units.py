@@ -10,6 +10,7 @@ from .messages import Problems
 from .rig import LogDialect
 from .runs import signals_of
 from .schema import RigFile, SignalPart
+from .table_runs import is_table
 
 
 def rig_units(shape: RigFile, files: list[list[Path]], dialect: LogDialect, problems: Problems) -> dict[str, str]:
@@ -70,7 +71,7 @@ def _unit_of(role: str, shape: RigFile, files: list[list[Path]], dialect: LogDia
     if stated is not None:
         return stated
     for run, found in zip(shape.runs, files, strict=True):
-        part = signals_of(shape.signals, run).get(role)
+        part = None if is_table(run) else signals_of(shape.signals, run).get(role)
         if found and part is not None and part.source is not None:
             return part.unit or _unit_in_log(found[0], part.source, Hints(dialect, run.group))
     raise RequestError("no source and no unit", expected='such as { source = "column name", unit = "mm" }')

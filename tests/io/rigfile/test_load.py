@@ -272,7 +272,8 @@ CASES: dict[str, tuple[str, str, str]] = {
         'from = "1 s"\nbefore = { command = "6 mm" }',
         r"runs\[2\].before.command: wrong kind",
     ),
-    "frequency table": ('from = "1 s"', 'excitation = "frequency-table"', r"not read yet"),
+    "a table without columns": ('from = "1 s"', 'excitation = "frequency-table"', r"runs\[2\].frequency: this"),
+    "a table's column in a log": ('from = "1 s"', 'phase = { source = "p" }', r"runs\[2\].phase: only a freq"),
     "a given plant beside fit runs": (
         "[limits]",
         "[plant]\nnumerator = [1.0]\ndenominator = [1.0, 1.0]\n[limits]",
