@@ -9,8 +9,9 @@ from ..ident.fitted import Noise, Plausible
 from ..ident.plant import Plant
 from ..ident.run import FloatArray
 from . import trajectories
+from .aside import HERE, Aside, Pending
 from .continuous import standing_in
-from .designed import Design, Judged, Selection, Trajectory
+from .designed import Design, Judged, Trajectory
 from .discretise import gains_of, law_from_gains
 from .gains import Gains
 from .horizon import first_horizon
@@ -22,17 +23,44 @@ from .search.candidates import Space
 from .search.drive import Search, again, item_slacks, search, with_nominal
 from .search.polish import Found
 from .search.structures import plan_for
-from .selection import select
+from .selection import Intervals, intervals_of_gain, select
 from .situation import Situation, situation_of
 from .slow_controller import slow_controller
-from .values import bench_of
+from .values import Bench, bench_of
 
 _CHECKED = 1000
 _DIGITS = 5
 _FINE = 12_000  # samples up to which the gain sets are found with the very law
 _REPAIRS = 2
 _MOST_POINTS = 64  # between two samples
+SETS = "the set of gains that hold"  # the stage in words
 _SHARP = 6_000  # points over the horizon between which the fitted plant's response is read for its gain sets
+
+
+@dataclass(frozen=True, eq=False)
+class Begun:
+    """Gains that are chosen and checked, while the gain sets may still be worked out.
+
+    Attributes
+    ----------
+    design : Design
+        Whole but for the intervals of its selection.
+    sets : Pending of Intervals
+    """
+
+    design: Design
+    sets: Pending[Intervals]
+
+    def finished(self) -> Design:
+        """The whole design."""
+        found = self.sets.result()
+        selection = replace(
+            self.design.selection,
+            intervals=found.together,
+            intervals_plausible=found.plausible,
+            rows=found.rows,
+        )
+        return replace(self.design, selection=selection)
 
 
 def design_gains(
@@ -76,6 +104,45 @@ def design_gains(
     RequestError
         Only structures are allowed that are not searched yet.
     """
+    begun = begin_design(
+        nominal,
+        plausible,
+        operating_command=operating_command,
+        operating_response=operating_response,
+        noise=noise,
+        requirements=requirements,
+        limits=limits,
+        setting=setting,
+        command_unit=command_unit,
+        response_unit=response_unit,
+        progress=progress,
+    )
+    (progress or _silent)(SETS, 0.9)
+    return begun.finished()
+
+
+def begin_design(
+    nominal: Plant,
+    plausible: Plausible,
+    *,
+    operating_command: float,
+    operating_response: float,
+    noise: Noise | None,
+    requirements: Requirements,
+    limits: Limits,
+    setting: ControllerSetting,
+    command_unit: str,
+    response_unit: str,
+    progress: Callable[[str, float], None] | None = None,
+    aside: Aside = HERE,
+) -> Begun:
+    """The same, with the gain sets left to `aside`: the gains are known before, and may be used meanwhile.
+
+    Parameters
+    ----------
+    aside : Aside
+        Takes a part of the search, too.
+    """
     situation = situation_of(
         operating_command=operating_command,
         operating_response=operating_response,
@@ -89,12 +156,16 @@ def design_gains(
     if unknown:
         situation = situation.without("command_noise")
     say = progress or _silent
-    found = search(nominal, plausible, situation, plan_for(nominal, situation), say)
+    found = search(nominal, plausible, situation, plan_for(nominal, situation), say, aside)
     say("checking the printed gains on plants that the search has not seen", 0.8)
+    exact, quick = _benches(found, nominal, plausible, situation)
+    gains = rounded(found.found.space, found.found.point)  # more often than not the check lets them stand
+    sets = aside.start(intervals_of_gain, gains, nominal, exact, quick)
     checked = _check_and_mend(found, nominal, plausible, situation)
-    say("the set of gains that hold", 0.9)
-    design = _report(checked, found, nominal, plausible, situation, (command_unit, response_unit))
-    return replace(design, reasons=(*unknown, *design.reasons)) if unknown else design
+    if checked.gains != gains:
+        sets = aside.start(intervals_of_gain, checked.gains, nominal, exact, quick)
+    design = _report(checked, found, nominal, plausible, situation, exact, (command_unit, response_unit))
+    return Begun(replace(design, reasons=(*unknown, *design.reasons)) if unknown else design, sets)
 
 
 def _unknown_noise(situation: Situation) -> tuple[str, ...]:
@@ -195,6 +266,7 @@ def _report(
     nominal: Plant,
     plausible: Plausible,
     situation: Situation,
+    exact: Bench,
     units: tuple[str, str],
 ) -> Design:
     verdicts = checked.verdicts
@@ -206,7 +278,7 @@ def _report(
     return Design(
         checked.gains,
         law_from_gains(checked.gains, situation.setting.update_interval, situation.clamp),
-        _selection(checked.gains, found, nominal, plausible, situation, units),
+        select(checked.gains, nominal, exact, units),
         judged,
         limits,
         verdicts.share_meeting,
@@ -241,9 +313,8 @@ def _known(value: float) -> float | None:
     return float(value) if np.isfinite(value) else None
 
 
-def _selection(
-    gains: Gains, found: Search, nominal: Plant, plausible: Plausible, situation: Situation, units: tuple[str, str]
-) -> Selection:
+def _benches(found: Search, nominal: Plant, plausible: Plausible, situation: Situation) -> tuple[Bench, Bench]:
+    """The fitted plant under the very law, and the plausible ones as the search has them; floors are not asked."""
     asked = situation.without_floors()
     horizon = first_horizon(nominal, situation)
     alone = with_nominal(nominal, plausible.take([]), situation)
@@ -251,8 +322,7 @@ def _selection(
     samples = horizon / situation.setting.update_interval
     points = int(np.clip(_SHARP / samples, 2, _MOST_POINTS)) if fine else 0
     exact = bench_of(alone, asked, horizon, stand_in=not fine, points=points)
-    quick = replace(found.bench, situation=asked)
-    return select(gains, nominal, exact, quick, units)
+    return exact, replace(found.bench, situation=asked)
 
 
 def _trajectory(checked: _Checked, nominal: Plant, plausible: Plausible, situation: Situation) -> Trajectory | None:

@@ -1,5 +1,7 @@
 """The chosen point of the locus: a closed-loop pole, and K from the magnitude condition there."""
 
+from dataclasses import dataclass
+
 import numpy as np
 
 from ..ident.plant import Plant
@@ -81,27 +83,49 @@ def _first_on_locus(gains: Gains, plant: Plant, bench: Bench) -> tuple[complex, 
     return near, point_at(gains, plant, setting, complex(upper[np.argmin(np.abs(upper - near))]))
 
 
-def select(
-    gains: Gains, plant: Plant, exact: Bench, quick: Bench, units: tuple[str, str], *, sets: bool = True
-) -> Selection:
-    """The whole selection.
+def select(gains: Gains, plant: Plant, exact: Bench, units: tuple[str, str]) -> Selection:
+    """The point of the locus; its intervals are those of `intervals_of_gain`, and empty here.
 
     Parameters
     ----------
     exact : Bench
         Plant 0 is the fitted one; run with the very law.
-    quick : Bench
-        Plausible plants for the intervals of the share.
     units : (command unit, response unit)
     """
     sampled, (pole, chosen, residual) = _first_on_locus(gains, plant, exact)
+    sampled = pole if exact.situation.setting.continuous else sampled
+    return Selection(chosen, loop_gain_unit(gains.structure, *units), pole, residual, sampled, (), (), ())
+
+
+@dataclass(frozen=True)
+class Intervals:
+    """The gains that hold, as `Selection` has them.
+
+    Attributes
+    ----------
+    together, plausible : tuple of GainInterval
+    rows : tuple of (name, intervals)
+    """
+
+    together: tuple[GainInterval, ...]
+    plausible: tuple[GainInterval, ...]
+    rows: tuple[tuple[str, tuple[GainInterval, ...]], ...]
+
+
+def intervals_of_gain(gains: Gains, plant: Plant, exact: Bench, quick: Bench) -> Intervals:
+    """Every loop gain that holds, zeros fixed; by far the dearest part of a selection.
+
+    Parameters
+    ----------
+    exact : Bench
+        As above.
+    quick : Bench
+        Plausible plants for the intervals of the share.
+    """
+    _, (_, chosen, _) = _first_on_locus(gains, plant, exact)
     columns = columns_of([gains])
     setting = exact.situation.setting
     loop = open_loop(gains, plant, setting) if setting.continuous else None
-    fitted = fitted_sets(exact, columns, chosen, loop) if sets else None
-    sampled = pole if setting.continuous else sampled
-    together: tuple[GainInterval, ...] = fitted.together if fitted else ()
-    wide = plausible_sets(quick, columns, chosen, together, 100) if fitted and together else ()
-    unit = loop_gain_unit(gains.structure, *units)
-    rows = fitted.rows if fitted else ()
-    return Selection(chosen, unit, pole, residual, sampled, together, wide, rows)
+    fitted = fitted_sets(exact, columns, chosen, loop)
+    wide = plausible_sets(quick, columns, chosen, fitted.together, 100) if fitted.together else ()
+    return Intervals(fitted.together, wide, fitted.rows)

@@ -51,6 +51,8 @@ class Stepped:
             self._step(-step)
 
     def _limited_anywhere(self) -> bool:
+        if self.bench.graded:
+            return False
         limits = self.situation.limits
         bounds = (limits.response_lowest, limits.response_highest, limits.response_rate)
         others = (limits.command_lowest, limits.command_highest, limits.command_rate)
@@ -83,7 +85,7 @@ class Stepped:
             disturbance=disturbance,
             clamps=Clamps(low - command, high - command, change),
             samples=self.bench.samples,
-            rates=_bounded(rate),
+            rates=_bounded(rate) and not self.bench.graded,
         )
 
     def _read_step(self, history: History, final: FloatArray, goal: FloatArray) -> None:
@@ -95,27 +97,29 @@ class Stepped:
             moving = moving | (held & step_metrics.wanders(history.response, final))
         spacing = bank.interval / bank.points
         settle = self.situation.requirements.find("settling_time")
-        usual = step_metrics.settling_time(history.response, final, 0.02, spacing)
+        share = history.response / final
+        away = share - 1.0
+        np.abs(away, out=away)
+        usual = step_metrics.last_entry(away, 0.02, spacing, start=1.0)
         usual = np.where(moving, np.inf, usual)
         self._keep_settled(usual)
         if settle is not None:
             band = settle.band or 0.02
-            time = usual if band == 0.02 else step_metrics.settling_time(history.response, final, band, spacing)
+            time = usual if band == 0.02 else step_metrics.last_entry(away, band, spacing, start=1.0)
             if self.bench.cautious:
-                inner = step_metrics.settling_time(history.response, final, _INNER * band, spacing)
+                inner = step_metrics.last_entry(away, _INNER * band, spacing, start=1.0)
                 time = np.maximum(time, inner / _LATER)
             self._keep("settling_time", np.where(moving, np.inf, time))
             if self.bench.graded:
-                away = np.abs(history.response / final - 1.0)
                 late = step_metrics.largest_from(away, settle.limit, spacing) / band - 1.0
                 self._grade("settling_time", np.where(moving, np.maximum(late, 1.0), late))
         if self.situation.asks(("overshoot",)):
-            self._keep("overshoot", step_metrics.overshoot(history.response, final))
+            self._keep("overshoot", np.maximum(step_metrics.peak(share) - 1.0, 0.0))
         if self.situation.asks(("rise_time",)):
-            self._keep("rise_time", step_metrics.rise_time(history.response, final, spacing))
+            self._keep("rise_time", step_metrics.rise_of_share(share, spacing))
             rise = self.situation.requirements.find("rise_time")
             if self.bench.graded and rise is not None:
-                self._grade("rise_time", step_metrics.short_of_rise(history.response / final, rise.limit, spacing))
+                self._grade("rise_time", step_metrics.short_of_rise(share, rise.limit, spacing))
         if self.situation.asks(("steady_state_error",)):
             tail = history.response[-max(history.response.shape[0] // 5, 1) :]
             wandering = np.abs(goal - tail).max(axis=0) if tail.size else np.abs(goal)
@@ -138,6 +142,8 @@ class Stepped:
         held[self.chosen] = np.maximum(held[self.chosen], np.where(np.isnan(value), np.inf, value))
 
     def _read_extremes(self, history: History, response: FloatArray, command: FloatArray) -> None:
+        if self.bench.graded:
+            return
         level = self.situation.operating_response + response
         sent = self.situation.operating_command + command
         steps = np.abs(np.diff(history.command, axis=0, prepend=0.0)).max(axis=0) / self.bench.running.interval

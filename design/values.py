@@ -41,7 +41,8 @@ class Bench:
     cautious : bool
         Settling is judged away from the cliff where one more swing just leaves the band.
     graded : bool
-        Whether settling, rise and recovery are graded too, see `Values.graded`.
+        Whether settling, rise and recovery are graded too, see `Values.graded`; then nobody asks about limits, and no
+        extremes are read.
     """
 
     plausible: Plausible

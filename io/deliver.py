@@ -7,6 +7,7 @@ from dataclasses import replace
 from pathlib import Path
 from typing import TYPE_CHECKING, Any
 
+from ..design.aside import HERE, Aside
 from ..ident.errors import RequestError
 from .outcome import Outcome
 from .progress import Progress, silent
@@ -36,6 +37,7 @@ def deliver(
     change: "Callable[[Rig], Rig] | None" = None,
     more: Callable[[Outcome], Mapping[str, bytes]] = _nothing,
     finish: Callable[[Outcome, Progress], Outcome] = _as_it_is,
+    aside: Aside = HERE,
 ) -> Outcome:
     """Process a rig file and write gain sheet, dossier and report into `folder`.
 
@@ -50,6 +52,8 @@ def deliver(
         Further files, name to content, to be written with the results.
     finish : callable
         Adds to the finished job before it is written.
+    aside : Aside
+        Takes work that can be done meanwhile.
 
     Raises
     ------
@@ -68,10 +72,10 @@ def deliver(
         progress("loading the libraries")
         from .job import process_rig  # imported late: an output folder that can't be used is said at once
 
-        outcome = process_rig(rig_path, progress) if change is None else process_rig(rig_path, progress, change)
+        outcome = process_rig(rig_path, progress, change, aside)
         outcome = _with_trail(finish(outcome, progress), folder / SUPERSEDED)
         progress("writing the results")
-        output.write({**more(outcome), **_contents(outcome, with_report)})
+        output.write({**more(outcome), **_contents(outcome, with_report, aside)})
     return outcome
 
 
@@ -89,13 +93,14 @@ def _with_trail(outcome: Outcome, earlier: Path) -> Outcome:
     return replace(outcome, provenance={**outcome.provenance, "replaces": trail})
 
 
-def _contents(outcome: Outcome, with_report: bool) -> dict[str, bytes]:
+def _contents(outcome: Outcome, with_report: bool, aside: Aside) -> dict[str, bytes]:
     from .dossier import dossier_bytes
     from .sheet import sheet_bytes, sheet_of
 
-    contents = {SHEET: sheet_bytes(sheet_of(outcome)), "dossier.h5": dossier_bytes(outcome)}
-    if with_report:
-        from .report.page import report_html
+    if not with_report:
+        return {SHEET: sheet_bytes(sheet_of(outcome)), "dossier.h5": dossier_bytes(outcome)}
+    from .report.page import page_of, report_html
 
-        contents["report.html"] = report_html(outcome).encode()
-    return contents
+    page = aside.start(page_of, outcome)
+    sheet, dossier = sheet_bytes(sheet_of(outcome)), dossier_bytes(outcome)
+    return {SHEET: sheet, "dossier.h5": dossier, "report.html": report_html(outcome, page).encode()}

@@ -151,7 +151,8 @@ class _Model:
 
 def _companion(plant: Plant, interval: float) -> _Model:
     """Controllable companion form in the time scale of the plant's own poles, so that the states are of like size."""
-    bottom = np.trim_zeros(np.asarray(plant.denominator, dtype=float), "f")
+    bottom = np.asarray(plant.denominator, dtype=float)
+    bottom = bottom[np.flatnonzero(bottom)[0] :]
     order = bottom.size - 1
     top = np.concatenate([np.zeros(order + 1), np.asarray(plant.numerator, dtype=float)])[-(order + 1) :]
     scale = _pace(bottom, interval)
@@ -168,9 +169,8 @@ def _companion(plant: Plant, interval: float) -> _Model:
 
 def _pace(bottom: FloatArray, interval: float) -> float:
     """Geometric mean of the pole sizes away from the origin, 1/s; 1/T where there is none."""
-    moving = np.trim_zeros(bottom, "b")
-    order = moving.size - 1
-    return float(abs(moving[-1] / moving[0]) ** (1.0 / order)) if order else 1.0 / interval
+    order = int(np.flatnonzero(bottom)[-1])
+    return float(abs(bottom[order] / bottom[0]) ** (1.0 / order)) if order else 1.0 / interval
 
 
 def _padded(models: list[_Model], order: int, interval: float) -> tuple[FloatArray, FloatArray, FloatArray, FloatArray]:

@@ -50,6 +50,10 @@ class Drives:
         stuck = (speed == 0.0) & (np.abs(level) <= self.friction)
         final = np.where(stuck, 0.0, level - way * self.friction)
         stops = (speed != 0.0) & (final * way < 0.0)
+        if not stops.any():
+            decay = np.exp(-length / self.lag)
+            moved = self.gain * (final * length + (speed - final) * self.lag * (1.0 - decay))
+            return final + (speed - final) * decay, moved, np.zeros_like(length)
         until = np.where(stops, self.lag * np.log1p(np.where(stops, -speed / np.where(stops, final, 1.0), 0.0)), np.inf)
         step = np.minimum(length, until)
         decay = np.exp(-step / self.lag)

@@ -149,9 +149,11 @@ class _Columns:
         sent = np.zeros((self.samples + depth, count))
         flat = sent.reshape(-1)
         place = (depth - self.lag) * count + np.arange(count)
-        state, out = np.zeros((n + 2, count)), np.empty((m + n, count))
+        matrix = self.step if slopes is None else np.concatenate([self.step, slopes])
+        state, out = np.zeros((n + 2, count)), np.empty((matrix.shape[0], count))
+        slope = out[m + n :]  # of each sub-point, where it is wanted
+        steepest = np.zeros(slope.shape)
         first, second = np.zeros(count), np.zeros(count)
-        steepest = None if slopes is None else np.zeros(count)
         before = np.zeros(count)
         y0, y1, y2 = self.law.response
         m1, m2 = self.law.memory[1:]
@@ -166,17 +168,18 @@ class _Columns:
             np.add(given, disturbance, out=sent[k + depth])
             state[n] = state[n + 1]
             flat.take(place + k * count, out=state[n + 1])
-            np.einsum("ijc,jc->ic", self.step, state, out=out)
+            np.einsum("ijc,jc->ic", matrix, state, out=out)
             self.response[k] = out[:m]
-            if slopes is not None and steepest is not None:
-                np.maximum(steepest, np.abs(np.einsum("ijc,jc->ic", slopes, state)).max(axis=0), out=steepest)
+            if slopes is not None:
+                np.abs(slope, out=slope)
+                np.maximum(steepest, slope, out=steepest)
             first = second + r1 - y1 * seen_now + g1 * given - m1 * wanted
             if not short:
                 second = r2 - y2 * seen_now + g2 * given - m2 * wanted
-            state[:n] = out[m:]
+            state[:n] = out[m : m + n]
             before = given
-            seen_now = state[n - 1].copy() if self.filtered else out[m - 1].copy()
-        return steepest
+            seen_now = state[n - 1].copy() if self.filtered else self.response[k, m - 1]
+        return None if slopes is None else np.asarray(steepest.max(axis=0))
 
     def _clamped(self, wanted: FloatArray, before: FloatArray, k: int) -> FloatArray:
         low = np.maximum(self.clamps.lowest, before - self.clamps.change)

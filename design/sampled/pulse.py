@@ -84,7 +84,12 @@ def frequency_grid(bank: Bank, size: int, slow: float = np.inf) -> FloatArray:
     Spread evenly in the logarithm, and in phase as far as the dead time turns it, and gathered round each
     lightly damped plant pole.
     """
-    columns = [_plant_grid(bank, i, size, min(low, slow)) for i, low in enumerate(slow_edge(bank))]
+    low, turn = np.minimum(slow_edge(bank), slow), bank.delay + 0.5 * bank.interval
+    tail = np.geomspace(_CREEP * low, low, _TAIL, endpoint=False)
+    even = np.geomspace(low, np.pi / bank.interval, size)
+    turned = np.arange(1, size // 2)[:, None] * (0.25 / turn)
+    usual = np.concatenate([tail, even, turned]).T
+    columns = [_plant_grid(bank, i, column) for i, column in enumerate(usual)]
     longest = max(column.size for column in columns)
     return np.array([_stretched(column, longest) for column in columns]).T
 
@@ -96,18 +101,17 @@ def slow_edge(bank: Bank) -> FloatArray:
     return np.asarray(np.minimum(0.02 * paces, 1e-3 * np.pi / bank.interval))
 
 
-def _plant_grid(bank: Bank, i: int, size: int, low: float) -> FloatArray:
+def _plant_grid(bank: Bank, i: int, usual: FloatArray) -> FloatArray:
+    """The frequencies that every plant gets, the lowest first, and those round this one's poles, in order."""
     top = np.pi / bank.interval
     poles = bank.poles[i][np.isfinite(bank.poles[i])]
-    turn = bank.delay[i] + 0.5 * bank.interval
-    tail = np.geomspace(_CREEP * low, low, _TAIL, endpoint=False)
-    parts = [tail, np.geomspace(low, top, size), np.arange(1, size // 2) * (0.25 / turn)]
+    parts = [usual]
     for pole in poles[poles.imag > 0.5 * np.abs(poles.real)]:
         width = max(abs(pole.real), 1e-7 * abs(pole))
         reach = np.arcsinh(_NEAR * pole.imag / width)
         parts.append(pole.imag + width * np.sinh(np.linspace(-reach, reach, 2 * _LINE + 1)))
     grid = np.unique(np.concatenate(parts))
-    return np.append(grid[(grid >= tail[0]) & (grid < top * (1 - 1e-9))], top)
+    return np.append(grid[(grid >= usual[0]) & (grid < top * (1 - 1e-9))], top)
 
 
 def _stretched(column: FloatArray, longest: int) -> FloatArray:

@@ -9,6 +9,7 @@ from ...ident.fitted import Plausible
 from ...ident.given import plant_sign
 from ...ident.plant import Plant
 from ...ident.run import FloatArray
+from ..aside import HERE, Aside, Pending
 from ..designed import Tried
 from ..horizon import SEARCHED, first_horizon
 from ..requirements import Requirement, StructureName
@@ -60,7 +61,9 @@ def with_nominal(nominal: Plant, plausible: Plausible, situation: Situation) -> 
     )
 
 
-def search(nominal: Plant, plausible: Plausible, situation: Situation, plan: Plan, progress: Progress) -> Search:
+def search(
+    nominal: Plant, plausible: Plausible, situation: Situation, plan: Plan, progress: Progress, aside: Aside = HERE
+) -> Search:
     """Search every structure of the plan until one has slack enough; keep the best."""
     count = min(PLANTS, len(plausible.plants))
     used = np.unique(np.linspace(0, len(plausible.plants) - 1, count).astype(int))
@@ -71,11 +74,15 @@ def search(nominal: Plant, plausible: Plausible, situation: Situation, plan: Pla
     best: Found | None = None
     tried: list[Tried] = list(plan.skipped)
     order = plan.structures + plan.last
+    ahead: dict[int, Pending[Found]] = {}
     for i, structure in enumerate(order):
         if i >= len(plan.structures) and best is not None and best.slack >= 0.0:
             break
         progress(f"searching zeros and gain of {structure}", i / len(order))
-        found = best_of(structure, nominal, _asking(bench, structure, nominal))
+        if i and i not in ahead and i + 1 < len(order):  # the simplest did not do: two are searched at a time
+            following = order[i + 1]
+            ahead[i + 1] = aside.start(best_of, following, nominal, _asking(bench, following, nominal))
+        found = ahead[i].result() if i in ahead else best_of(structure, nominal, _asking(bench, structure, nominal))
         if rough is not None:
             held = check(rough, found.space, found.point)
             found = replace(held, slack=min(found.slack, held.slack))

@@ -31,10 +31,11 @@ def process(
     from ..deliver import deliver
     from ..picture_files import write_pictures
     from ..progress import shown_progress
+    from ..second_process import second_process
 
     folder = rigfile.parent / "out" if out is None else out
-    with shown_progress() as progress:
-        outcome = deliver(rigfile, folder, with_report=not no_report, progress=progress)
+    with second_process() as aside, shown_progress() as progress:
+        outcome = deliver(rigfile, folder, with_report=not no_report, progress=progress, aside=aside)
         if pictures is not None:
             write_pictures(outcome, pictures, progress)
     if as_json:

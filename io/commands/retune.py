@@ -25,6 +25,7 @@ def retune(rigfile: Path, before: Path, out: Path | None, no_report: bool) -> in
     from ..deliver import deliver
     from ..earlier import read_earlier
     from ..progress import shown_progress
+    from ..second_process import second_process
     from .process import _print_verdict
 
     earlier = read_earlier(before)
@@ -35,8 +36,8 @@ def retune(rigfile: Path, before: Path, out: Path | None, no_report: bool) -> in
 
         return retuned(outcome, earlier, progress)
 
-    with shown_progress() as progress:
-        outcome = deliver(rigfile, folder, with_report=not no_report, progress=progress, finish=finish)
+    with second_process() as aside, shown_progress() as progress:
+        outcome = deliver(rigfile, folder, with_report=not no_report, progress=progress, finish=finish, aside=aside)
     _print_verdict(outcome)
     click.echo(f"written to {folder}")
     return 0 if outcome.status == "released" else 3

@@ -4,6 +4,7 @@ from importlib.resources import files
 from pathlib import PurePath
 from typing import Any
 
+from ...design.aside import Pending
 from ...design.compensator import open_loop
 from ...design.designed import Design
 from ...design.locus.condition import working
@@ -22,12 +23,14 @@ from .moving import moving_part
 from .paper import paper_of
 
 
-def report_html(outcome: Outcome) -> str:
+def report_html(outcome: Outcome, page: Pending[dict[str, Any]] | None = None) -> str:
     """The whole report; nothing in it is fetched from elsewhere, and names from logs are escaped.
 
     Parameters
     ----------
     outcome : Outcome
+    page : Pending or None
+        What `page_of` gives, where that is being made aside already.
 
     Returns
     -------
@@ -39,9 +42,14 @@ def report_html(outcome: Outcome) -> str:
 
     environment = Environment(autoescape=True, undefined=StrictUndefined, trim_blocks=True, lstrip_blocks=True)
     template = environment.from_string(_resource("page.html"))
-    page = _safe_pictures({**_top(outcome), **_knowing(outcome)})
     moving = moving_part(outcome)
-    return template.render(page=page, style=Markup(_style()), moving=moving)
+    rest = page_of(outcome) if page is None else page.result()
+    return template.render(page=rest, style=Markup(_style()), moving=moving)
+
+
+def page_of(outcome: Outcome) -> dict[str, Any]:
+    """Everything in the page but the moving sheet: pictures, tables and texts by name."""
+    return _safe_pictures({**_top(outcome), **_knowing(outcome)})
 
 
 _PICTURES = ("step", "ribbon", "headroom", "locus", "margins")

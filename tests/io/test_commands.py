@@ -19,7 +19,7 @@ import signal, sys, time
 import types
 signal.signal(signal.SIGINT, signal.default_int_handler)
 from gainwright.io.commands.main import main
-def process_rig(rig, progress):
+def process_rig(rig, progress, change, aside):
     progress("pretending")
     {body}
 job = types.ModuleType("gainwright.io.job")
