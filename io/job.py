@@ -2,11 +2,12 @@
 
 from collections.abc import Callable, Sequence
 from dataclasses import replace
+from functools import partial
 from pathlib import Path
 
 from threadpoolctl import threadpool_limits
 
-from ..design.aside import HERE, Aside
+from ..design.aside import HERE, Aside, Pending
 from ..design.closing.compared import Compared
 from ..design.closing.given import compare_given
 from ..design.closing.table import compare_table
@@ -73,10 +74,12 @@ def process_rig(
         alone = _alone(rig, records, progress)
         fit = _fit(rig, records, tables, alone, progress)
         begun = _design(rig, fit, progress, aside)
-        ladder = _ladder(rig, fit, begun.design, progress)
+        rungs = _ladder(rig, fit, begun.design, aside)
         twins = _twins(records)
         closing = _close(rig, records, fit, begun.design, twins, progress, alone)
         closing += _close_tables(rig, tables, fit, begun.design, progress)
+        progress("building the gain ladder")
+        ladder = rungs.result()
         progress(SETS)
         design = begun.finished()
     reasons = reasons_to_hold(rig, (*records, *tables), design, closing, twins, ladder)
@@ -192,12 +195,13 @@ def _design(rig: Rig, fit: Fit, progress: Progress, aside: Aside) -> Begun:
     )
 
 
-def _ladder(rig: Rig, fit: Fit, design: Design, progress: Progress) -> Ladder | None:
-    """The way up from an open loop; gains that are not stable everywhere get none."""
-    if not design.all_stable:
-        return None
-    progress("building the gain ladder")
-    return build_ladder(
+def _ladder(rig: Rig, fit: Fit, design: Design, aside: Aside) -> Pending[Ladder | None]:
+    """The way up from an open loop; gains that are not stable everywhere get none, nor does a controller
+    that isn't sampled: there is nothing to load."""
+    if not design.all_stable or design.continuous:
+        return HERE.start(_none)
+    work = partial(
+        build_ladder,
         design.gains,
         fit.plant,
         fit.plausible,
@@ -208,6 +212,11 @@ def _ladder(rig: Rig, fit: Fit, design: Design, progress: Progress) -> Ladder | 
         limits=rig.limits,
         setting=rig.setting,
     )
+    return aside.start(work)
+
+
+def _none() -> None:
+    """No ladder."""
 
 
 def _twins(records: Sequence[Record]) -> tuple[tuple[Record, Record], ...]:
