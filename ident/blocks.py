@@ -1,9 +1,12 @@
 """Blocks of samples: a long record read by the means of command and response over blocks of one length.
 
 The mean over a block is a linear, time-invariant filter. Command and response pass the same one, so that the plant
-between them stays what it was; only what the command does inside a block is lost. A command that is held from sample to
-sample has, as a mean over n samples, steps of one sample in place of a straight rise: half a sample of delay, put right
-by `held`.
+between them stays what it was; only what the command does inside a block is lost: it is taken as straight between the
+stamps of the blocks. Two small errors of that are put right, or they would outweigh the noise of a long record. A
+command that is held from sample to sample has, as a mean over n samples, steps of one sample in place of a straight
+rise: half a sample of delay (`held`). And a line drawn through samples of a curve lies inside it: its spectrum is
+smaller by sinc^2(f h) = 1 - (pi f h)^2/3 + ..., h the length of a block; the response is made smaller alike
+(`as_drawn`), unless the command moves at the edges of blocks only, where the line is no approximation.
 """
 
 from dataclasses import dataclass
@@ -55,6 +58,7 @@ class BlockMeans:
         self._length, self._fewest = length, LEAST_FILLED * length / interval
         self._slack = 0.01 * interval / length
         self._rest = np.empty((0, 1 + columns))
+        self._moved = self._moved_at_edges = 0.0
 
     def add(self, time: FloatArray, columns: FloatArray) -> Means:
         """The blocks that these samples complete.
@@ -70,9 +74,18 @@ class BlockMeans:
         if len(rows) == 0:
             return self._means(rows)
         number = self._number(rows[:, 0])
+        new = slice(max(0, len(self._rest) - 1), None)  # from the last sample before on
+        moves = np.abs(np.diff(rows[new, 1]))
+        self._moved += float(moves.sum())
+        self._moved_at_edges += float(moves[np.diff(number[new]) > 0.0].sum())
         begin = int(np.searchsorted(number, number[-1]))
         self._rest = rows[begin:]
         return self._means(rows[:begin])
+
+    @property
+    def share_at_edges(self) -> float:
+        """Of the movement of the first column, the share at the edges of blocks; 1 where it doesn't move."""
+        return self._moved_at_edges / self._moved if self._moved else 1.0
 
     def end(self) -> Means:
         """The last block, where it is filled enough."""
@@ -112,3 +125,23 @@ def held(command: FloatArray, samples: float) -> FloatArray:
     """
     before = np.concatenate([command[:1], command[:-1]])
     return np.asarray(command - (command - before) / (2.0 * samples))
+
+
+def as_drawn(time: FloatArray, response: FloatArray, length: float) -> FloatArray:
+    """(m,) block means of a response, smaller by what a line through the command's means misses.
+
+    A twelfth of the second difference; beside a gap or a lost block there is none.
+
+    Parameters
+    ----------
+    time : (m,) array, s
+    response : (m,) array
+        Means over blocks, NaN where lost.
+    length : float, s
+        Of a block.
+    """
+    out = response.copy()
+    even = np.abs(time[2:] - time[:-2] - 2.0 * length) < 0.5 * length
+    bend = np.where(even, np.diff(response, 2), 0.0)
+    out[1:-1] += np.where(np.isfinite(bend), bend, 0.0) / 12.0
+    return out

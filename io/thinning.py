@@ -11,7 +11,7 @@ from dataclasses import dataclass, replace
 
 import numpy as np
 
-from ..ident.blocks import BlockMeans, Means, held
+from ..ident.blocks import BlockMeans, Means, as_drawn, held
 from ..ident.errors import RecordError, RequestError
 from ..ident.health.fingerprint import Marks, fingerprint
 from ..ident.health.in_parts import SEEN_IN_PARTS, PartsLook
@@ -25,6 +25,8 @@ from .rigfile.rig import Rig, RunSpec
 from .samples import Begun, Samples, begin, samples_of
 
 MOST_BLOCKS = 1_000_000
+SLACK = 1.05  # how many samples a text log has is an estimate
+AT_EDGES = 0.9  # of the command's movement
 BLOCKS_AN_UPDATE = 2  # at least, in one interval of the controller
 
 
@@ -184,6 +186,8 @@ class _Thinner:
             command = held(command, self._factor)
         setpoint = rows.columns[:, 1] if "setpoint" in self._spec.signals else None
         response, logged = rows.columns[:, 4], (rows.columns[:, 2], rows.columns[:, 3])
+        if self._factor > 1 and self._blocks.share_at_edges < AT_EDGES:
+            response = as_drawn(rows.time, response, self._factor * self._interval)
         return Taken(
             Samples(rows.time, command, response, setpoint, *logged),
             self._before if before is None else before,
@@ -227,7 +231,7 @@ def _factor(samples: int, interval: float, update_interval: float | None) -> int
     if update_interval is None:
         return 1
     most = int(update_interval / (BLOCKS_AN_UPDATE * interval) * (1.0 + 1e-9))
-    return max(1, min(most, math.ceil(samples / MOST_BLOCKS)))
+    return max(1, min(most, math.ceil(samples / MOST_BLOCKS / SLACK)))
 
 
 class _MostMoving:
