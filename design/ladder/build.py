@@ -6,6 +6,7 @@ import numpy as np
 
 from ...ident.fitted import Noise, Plausible
 from ...ident.plant import Plant
+from ..continuous import standing_in
 from ..discretise import law_from_gains
 from ..gains import Gains
 from ..requirements import ControllerSetting, Limits, Requirements
@@ -77,6 +78,7 @@ def build_ladder(
         limits=limits,
         setting=setting,
     )
+    situation = standing_in(situation, nominal)
     noise_std = 0.0 if noise is None else noise.std
     checked = _with_fitted(nominal, plausible, _PLANTS, situation)
     shown = _with_fitted(nominal, plausible, _SHOWN, situation)

@@ -14,6 +14,7 @@ from itertools import product
 import numpy as np
 
 from ...ident.fitted import Plausible
+from ..continuous import half_held
 from ..gains import Gains
 from ..sampled.bank import Bank, build_bank
 from ..sampled.frequency import Margins, Spectra, spectra_of
@@ -69,7 +70,7 @@ def field_of(plausible: Plausible, situation: Situation) -> Field:
     setting = situation.setting
 
     def bank(interval: float) -> Bank:
-        delay = setting.computation_delay + 0.5 * (setting.update_interval - interval)
+        delay = half_held(setting, interval)
         filter_time = setting.response_filter_time
         return build_bank(plausible.plants, interval, computation_delay=delay, filter_time=filter_time, points=1)
 

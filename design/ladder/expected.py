@@ -7,6 +7,7 @@ import numpy as np
 from ...ident.fitted import Plausible
 from ...ident.run import FloatArray
 from .. import step_metrics
+from ..continuous import half_held
 from ..discretise import columns_of, law_columns
 from ..gains import Gains
 from ..horizon import first_horizon
@@ -145,7 +146,7 @@ def _bank(plausible: Plausible, situation: Situation, horizon: float) -> Bank:
     return build_bank(
         plausible.plants,
         interval,
-        computation_delay=setting.computation_delay + 0.5 * (setting.update_interval - interval),
+        computation_delay=half_held(setting, interval),
         filter_time=setting.response_filter_time,
         points=2 if not np.any(plausible.stiction > 0.0) else 1,
         stiction=plausible.stiction,

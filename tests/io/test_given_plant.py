@@ -185,6 +185,29 @@ def test_a_continuous_controller_has_no_difference_equation(tmp_path) -> None:
     jsonschema.validate(sheet, SCHEMA)
 
 
+def test_a_continuous_controller_has_a_ladder_too(tmp_path) -> None:
+    """PI on a lag with dead time: each rung's lowest gain margin is at most the fitted plant's, worked out from phase.
+
+    The plausible plants lie about 5 % around it: a gain, a dead time or a pole 15 % off costs at most 4 dB together.
+    """
+    rest = '[requirements]\ntest_step = "1"\novershoot = { at_most = "10 %" }\nsettling_time = { at_most = "6 s" }'
+    plant = 'numerator = [2.0]\ndenominator = [1.0, 1.0]\ndead_time = "0.1 s"\n'
+    outcome = outcome_of(tmp_path, plant + 'tolerance = { gain = "5 %", dead_time = "5 %", poles = "5 %" }', rest)
+    rows = sheet_of(outcome)["ladder"]
+    assert [row["rung"] for row in rows] == list(range(len(rows)))
+    assert len(rows) >= 3
+    w = np.geomspace(1.0, 40.0, 200_001)
+    for row in rows[1:]:
+        assert row["difference_equation"] is None
+        parts = row["forms"]["parallel"]
+        p, i = parts["proportional"]["value"], parts["integral"]["value"]
+        loop = (p + i / (1j * w)) * 2.0 / (1j * w + 1.0) * np.exp(-0.1j * w)
+        crossing = np.argmin(np.abs(np.unwrap(np.angle(loop)) + np.pi))
+        margin = -20.0 * np.log10(abs(loop[crossing]))
+        assert margin - 4.0 < row["lowest_gain_margin"] <= margin + 0.01
+    assert rows[-1]["forms"] == sheet_of(outcome)["candidate"]["controller"]["forms"]
+
+
 def test_the_continuous_step_is_that_of_the_loop_itself(tmp_path) -> None:
     """Overshoot and settling beside Runge-Kutta on the delay equation itself in steps of 0.5 ms: within 1e-3."""
     rest = '[requirements]\ntest_step = "1"\novershoot = { at_most = "10 %" }\nsettling_time = { at_most = "2 s" }'
