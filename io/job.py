@@ -2,16 +2,18 @@
 
 from collections.abc import Callable, Sequence
 from dataclasses import replace
+from functools import partial
 from pathlib import Path
 
 from threadpoolctl import threadpool_limits
 
+from ..design.aside import HERE, Aside, Pending
 from ..design.closing.compared import Compared
 from ..design.closing.given import compare_given
 from ..design.closing.table import compare_table
 from ..design.closing.verdict import compare
 from ..design.closing.words import Units
-from ..design.design import design_gains
+from ..design.design import SETS, Begun, begin_design
 from ..design.designed import Design
 from ..design.ladder.build import build_ladder
 from ..design.ladder.rung import Ladder
@@ -33,7 +35,10 @@ from .rigfile.table_runs import KIND
 
 
 def process_rig(
-    rig_path: Path, progress: Progress = silent, change: Callable[[Rig], Rig] | None = None
+    rig_path: Path,
+    progress: Progress = silent,
+    change: Callable[[Rig], Rig] | None = None,
+    aside: Aside = HERE,
 ) -> Outcome:
     """From a rig file to gains with a verdict: read, fit, design, close.
 
@@ -44,6 +49,8 @@ def process_rig(
         Called with each stage in words.
     change : callable or None
         Makes the rig to process from the one that the rig file states: with a fresh run, for instance.
+    aside : Aside
+        Takes work that can be done meanwhile; the outcome is the same wherever it is done.
 
     Returns
     -------
@@ -66,11 +73,15 @@ def process_rig(
         tables = tuple(source for source in sources if isinstance(source, TableRecord))
         alone = _alone(rig, records, progress)
         fit = _fit(rig, records, tables, alone, progress)
-        design = _design(rig, fit, progress)
-        ladder = _ladder(rig, fit, design, progress)
+        begun = _design(rig, fit, progress, aside)
+        rungs = _ladder(rig, fit, begun.design, aside)
         twins = _twins(records)
-        closing = _close(rig, records, fit, design, twins, progress, alone)
-        closing += _close_tables(rig, tables, fit, design, progress)
+        closing = _close(rig, records, fit, begun.design, twins, progress, alone)
+        closing += _close_tables(rig, tables, fit, begun.design, progress)
+        progress("building the gain ladder")
+        ladder = rungs.result()
+        progress(SETS)
+        design = begun.finished()
     reasons = reasons_to_hold(rig, (*records, *tables), design, closing, twins, ladder)
     return Outcome(
         rig=rig,
@@ -166,9 +177,9 @@ def _identify(
     return fit if known is None else replace(fit, noise=known.noise)
 
 
-def _design(rig: Rig, fit: Fit, progress: Progress) -> Design:
+def _design(rig: Rig, fit: Fit, progress: Progress, aside: Aside) -> Begun:
     progress("choosing gains")
-    return design_gains(
+    return begin_design(
         fit.plant,
         fit.plausible,
         operating_command=fit.operating_command,
@@ -180,15 +191,16 @@ def _design(rig: Rig, fit: Fit, progress: Progress) -> Design:
         command_unit=rig.command_unit,
         response_unit=rig.response_unit,
         progress=progress,
+        aside=aside,
     )
 
 
-def _ladder(rig: Rig, fit: Fit, design: Design, progress: Progress) -> Ladder | None:
+def _ladder(rig: Rig, fit: Fit, design: Design, aside: Aside) -> Pending[Ladder | None]:
     """The way up from an open loop; gains that are not stable everywhere get none."""
     if not design.all_stable:
-        return None
-    progress("building the gain ladder")
-    return build_ladder(
+        return HERE.start(_none)
+    work = partial(
+        build_ladder,
         design.gains,
         fit.plant,
         fit.plausible,
@@ -199,6 +211,11 @@ def _ladder(rig: Rig, fit: Fit, design: Design, progress: Progress) -> Ladder | 
         limits=rig.limits,
         setting=rig.setting,
     )
+    return aside.start(work)
+
+
+def _none() -> None:
+    """No ladder."""
 
 
 def _twins(records: Sequence[Record]) -> tuple[tuple[Record, Record], ...]:
