@@ -6,7 +6,8 @@ from dataclasses import dataclass, replace
 import numpy as np
 
 from .catalogue import CATALOGUE, RESONANCE_BEHIND_LAG, Structure
-from .noise import estimate_colour
+from .long_record import LongRecord, long_record
+from .noise import colour_seen
 from .plant import ComplexArray
 from .polish import polish
 from .projected import Solved
@@ -97,13 +98,14 @@ def fit_candidates(
     tables always), and kept only where one of them is the best: what a simpler one explains as well needs no zero.
     """
     families = _families(structures)
+    long = None if weighed else long_record(Regression(tuple(runs), structures[0], reference, fixed_command))
     usual = [family for family in families if not family[0].further] or families
     fitted: list[Fitted] = []
     for i, family in enumerate(usual):
         if not fitted or _may_matter(family[0], fitted):
             if progress:
                 progress("fitting " + " or ".join(s.name for s in family), i / (len(families) + 1))
-            fitted.append(_from_library(tuple(runs), reference, fixed_command, family, weighed))
+            fitted.append(_from_library(tuple(runs), reference, fixed_command, family, weighed, long))
     fitted = sorted(_distinct(fitted), key=lambda f: f.criterion)
     recoloured, colour = _under_one_noise(fitted)
     left = [family for family in families if family not in usual and _kin(family[0], recoloured[0])]
@@ -114,7 +116,7 @@ def fit_candidates(
     for i, family in enumerate(left):
         if progress:
             progress("fitting " + " or ".join(s.name for s in family), (len(usual) + i) / (len(families) + 1))
-        fitted.append(_from_library(tuple(runs), reference, fixed_command, family, weighed))
+        fitted.append(_from_library(tuple(runs), reference, fixed_command, family, weighed, long))
     together, own_colour = _under_one_noise(sorted(_distinct(fitted), key=lambda f: f.criterion))
     together = [f for f in together if not _three_lags(f)]
     better = together[0].problem.structure.further and min(f.misfit for f in fitted) < _VISIBLY * visible
@@ -189,14 +191,13 @@ def _moving_poles(fitted: Fitted) -> ComplexArray:
     return np.asarray(poles[poles.real < 0])
 
 
-def colour_of(fitted: Fitted) -> Colour:
-    """Noise colour from one candidate's residual; tables alone know none."""
+def colour_of(fitted: Fitted, near: Colour | None = None) -> Colour:
+    """Noise colour from one candidate's residual; tables alone know none. `near`: one that can't be far from it."""
     problem = fitted.problem
     if not problem.runs:
         return WHITE
     coefficients = problem.solve(fitted.theta, Colour()).coefficients
-    model, columns = problem.full_columns(fitted.theta, coefficients)
-    return estimate_colour(columns, problem.measured - model, problem.stretches, problem.waves)
+    return colour_seen(problem.seen_about(fitted.theta, coefficients), near)
 
 
 def refit(fitted: Fitted, colour: Colour) -> Fitted:
@@ -232,11 +233,10 @@ def steady_fit(fitted: Fitted) -> Fitted:
 
 def _cost_with_gain(problem: Regression, fitted: Fitted) -> float:
     """Plain sum of squares of a whitened estimate with its own gain; levels, drift and initial states free."""
-    shape, dead_time = problem.split(fitted.theta)
-    initial = problem.initial_columns(shape)
-    free = problem.fixed_columns if initial is None else np.column_stack([problem.fixed_columns, initial])
-    away = problem.measured - fitted.solved.coefficients[0] * problem.unit_response(shape, dead_time)
-    basis, _ = np.linalg.qr(free)
+    columns = problem.at(fitted.theta).columns_under(WHITE)
+    away = problem.target_under(WHITE) - fitted.solved.coefficients[0] * columns[:, 0]
+    bound = [0, problem.zero_at] if problem.structure.zero else [0]
+    basis, _ = np.linalg.qr(np.delete(columns, bound, axis=1))
     away = away - basis @ (basis.T @ away)
     return float(away @ away)
 
@@ -271,9 +271,13 @@ def _from_library(
     fixed_command: bool,
     family: Sequence[Structure],
     weighed: tuple[Weighed, ...],
+    long: LongRecord | None,
 ) -> Fitted:
     ends = []
     for structure in family:
+        if long is not None:
+            ends.append(long.fit(structure))
+            continue
         problem = Regression(runs, structure, reference, fixed_command)
         if weighed:
             problem = TableRegression(runs, structure, reference, fixed_command, weighed)
@@ -293,7 +297,6 @@ def _weighed(problem: Regression, theta: FloatArray, solved: Solved) -> Fitted:
     n = len(problem.measured)
     unknowns = len(theta) + len(solved.coefficients)
     criterion = n * float(np.log(max(solved.cost, 1e-300) / n)) + unknowns * float(np.log(n))
-    model = problem.columns(theta) @ solved.coefficients
     spread = problem.movement
-    rms = float(np.sqrt(np.mean((problem.measured - model) ** 2)))
+    rms = problem.rms(theta, solved.coefficients)
     return Fitted(problem, theta, solved, rms / spread if spread > 0 else np.inf, criterion)

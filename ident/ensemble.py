@@ -14,7 +14,7 @@ from .regression import Regression
 from .rein import rein_in
 from .resample import resampled
 from .run import FloatArray
-from .sandwich import draw_normal, sandwich_covariance
+from .sandwich import draw_normal
 from .whiten import WHITE, Colour
 
 # Below this Student's t has tails that no rig has: a thousand draws would hold plants from another world.
@@ -57,14 +57,13 @@ def draw_structure(fitted: Fitted, colour: Colour, count: int, seed: int) -> Dra
 def freedom_of(problem: Regression, colour: Colour, unknowns: int) -> float:
     """Degrees of freedom that the noise's size is known with; a wandering level is known from its few waves only."""
     free = effective_samples(len(problem.measured), colour) - unknowns
-    most = 2.0 * problem.waves.shape[1] if colour.wander > 0.0 else np.inf
+    most = 2.0 * problem.wave_count if colour.wander > 0.0 else np.inf
     return float(max(min(free, most), _LEAST_FREEDOM))
 
 
 def _about_least_squares(fitted: Fitted, colour: Colour, freedom: float, count: int, seed: int) -> FloatArray:
     problem = fitted.problem
-    model, columns = problem.full_columns(fitted.theta, fitted.solved.coefficients)
-    covariance = sandwich_covariance(columns, problem.measured - model, problem.stretches, colour, problem.waves)
+    covariance = problem.least_squares_covariance(fitted.theta, fitted.solved.coefficients, colour)
     centre = np.concatenate([fitted.theta, fitted.solved.coefficients])
     draws = draw_normal(centre, covariance, freedom, count, seed)
     return _within_sample(fitted, draws) if problem.jumps else draws

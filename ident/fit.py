@@ -28,8 +28,7 @@ def finish(
     theta, coefficients, cost
         The better of the start and lmfit's end; cost is the whitened sum of squares.
     """
-    whitener = problem.whitener(colour)
-    target = whitener.apply(problem.measured)
+    target = problem.target_under(colour)
     sizes = np.where(coefficients == 0, 1.0, np.abs(coefficients))
     dt = problem.interval
     low, high = bounds_of(problem)
@@ -46,8 +45,7 @@ def finish(
 
     def residual(trial: lmfit.Parameters) -> FloatArray:
         point, linear = vectors(np.array([p.value for p in trial.values()]))
-        model = problem.columns(point) @ linear
-        out = target - whitener.apply(model)
+        out = target - problem.at(point).columns_under(colour) @ linear
         return np.nan_to_num(out, nan=1e150, posinf=1e150, neginf=-1e150)
 
     def slopes(trial: lmfit.Parameters) -> FloatArray:
@@ -56,9 +54,9 @@ def finish(
         point, linear = vectors(values)
         here = problem.at(point)
         inside = (values[: len(theta) - 1] > low[:-1]) & (values[: len(theta) - 1] < high[:-1])
-        of_theta = here.slopes(linear) * np.concatenate([inside, [dt]])
-        whole = -whitener.apply(np.column_stack([of_theta, here.columns * sizes]))
-        return np.nan_to_num(whole[:, [p.vary for p in trial.values()]], nan=0.0, posinf=0.0, neginf=0.0)
+        of_theta = here.slopes_under(linear, colour) * np.concatenate([inside, [dt]])
+        whole = -np.column_stack([of_theta, here.columns_under(colour) * sizes])
+        return np.asarray(np.nan_to_num(whole[:, [p.vary for p in trial.values()]], nan=0.0, posinf=0.0, neginf=0.0))
 
     start = residual(parameters)
     before = float(start @ start)

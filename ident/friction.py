@@ -6,6 +6,7 @@ Between changes of a held command each phase (moving one way, slowing to rest, s
 response is exact and costs a few phases a change, not a step a sample.
 """
 
+from collections.abc import Sequence
 from dataclasses import dataclass
 
 import numpy as np
@@ -52,12 +53,31 @@ def friction_response(
     [0.0, 0.0, 2.0, 4.0]
     """
     times, levels = _changes(grid, start, dead_time + grid.late)
-    phases = _phases(times, levels, float(grid.time[-1]), time_constant, friction)
-    at = np.searchsorted(phases.start, grid.time, side="right") - 1
-    begin, speed = np.array(phases.start)[at], np.array(phases.speed)[at]
-    final, place = np.array(phases.final)[at], np.array(phases.place)[at]
-    passed = grid.time - begin
-    return np.asarray(place + _moved(speed, final, passed, time_constant))
+    start_of, speed, final, place = friction_phases(times, levels, float(grid.time[-1]), time_constant, friction)
+    at = np.searchsorted(start_of, grid.time, side="right") - 1
+    passed = grid.time - start_of[at]
+    return np.asarray(place[at] + _moved(speed[at], final[at], passed, time_constant))
+
+
+def friction_phases(
+    times: Sequence[float] | FloatArray,
+    levels: Sequence[float] | FloatArray,
+    end: float,
+    time_constant: float,
+    friction: tuple[float, float],
+) -> tuple[FloatArray, FloatArray, FloatArray, FloatArray]:
+    """When each phase begins, (m,), s; speed there, the speed it tends to, and the place, all of unit gain.
+
+    Parameters
+    ----------
+    times, levels : (k,) sequences, s and command unit
+        When each level of the command arrives, the first at zero; from the operating command.
+    end : float, s
+    time_constant : float, s
+    friction : (forward, backward), command unit
+    """
+    phases = _phases([float(t) for t in times], [float(v) for v in levels], end, time_constant, friction)
+    return np.array(phases.start), np.array(phases.speed), np.array(phases.final), np.array(phases.place)
 
 
 def _moved(speed: FloatArray, final: FloatArray, passed: FloatArray, time_constant: float) -> FloatArray:

@@ -96,7 +96,7 @@ def _finished(best: Fitted, colour: Colour) -> tuple[Fitted, Colour]:
     theta = finish(kept.problem, kept.theta, kept.solved.coefficients, working)[0]
     solved = kept.problem.solve(theta, working)
     ended = replace(kept, theta=theta, solved=solved) if solved.cost <= kept.solved.cost else kept
-    colour = colour_of(ended)
+    colour = colour_of(ended, colour)
     return (refit(ended, colour) if ended.whitened else ended), colour
 
 
@@ -189,17 +189,17 @@ def _noise(chosen: Fitted, colour: Colour) -> Noise:
         return Noise(1.0, 0.0, 0.0)
     n = len(problem.measured)
     unknowns = len(chosen.theta) + len(chosen.solved.coefficients)
-    model, _ = problem.full_columns(chosen.theta, problem.solve(chosen.theta, WHITE).coefficients)
-    residual = problem.measured - model
-    white = float(np.sqrt(np.sum(problem.whitener(colour).apply(residual) ** 2) / max(n - unknowns, 1)))
-    std = float(np.sqrt(np.mean(residual**2) * n / max(n - unknowns, 1)))
+    plain = problem.solve(chosen.theta, WHITE)
+    left = problem.target_under(colour) - problem.at(chosen.theta).columns_under(colour) @ plain.coefficients
+    white = float(np.sqrt(np.sum(left**2) / max(n - unknowns, 1)))
+    std = float(np.sqrt(plain.cost / max(n - unknowns, 1)))
     return Noise(problem.interval, std, white, colour.rho, colour.c)
 
 
 def _fitted_runs(chosen: Fitted, row: FloatArray) -> tuple[FittedRun, ...]:
     problem = chosen.problem
     s = len(chosen.theta) - 1
-    model, _ = problem.full_columns(chosen.theta, row[s + 1 :])
+    model = problem.model(chosen.theta, row[s + 1 :])
     out = []
     for i, (run, part) in enumerate(zip(problem.runs, problem.parts, strict=True)):
         whole = np.full(len(run.time), np.nan)

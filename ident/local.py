@@ -10,6 +10,7 @@ from .catalogue.structure import Polynomials
 from .modes import Modes, modes_of
 from .run import FloatArray
 from .slopes import ModeSlopes, Moving, log_shape_neighbours, mode_slopes
+from .whiten import Colour
 
 if TYPE_CHECKING:
     from .regression import Regression
@@ -71,6 +72,19 @@ class Local:
             # between two samples the dead time does nothing that the linear part could not
             out[:, -1] = 0.0
         return out
+
+    def moving_under(self, colour: Colour) -> FloatArray:
+        """(n', 1 + k) moving columns whitened."""
+        return self.problem.whitener(colour).apply(self.moving)
+
+    def columns_under(self, colour: Colour) -> FloatArray:
+        """(n', q) columns whitened, in their order."""
+        moving, fixed = self.moving_under(colour), self.problem.fixed_under(colour)
+        return np.column_stack([moving[:, :1], fixed, moving[:, 1:]])
+
+    def slopes_under(self, coefficients: FloatArray, colour: Colour, *, rough: bool = False) -> FloatArray:
+        """(n', s + 1) slopes whitened."""
+        return self.problem.whitener(colour).apply(self.slopes(coefficients, rough=rough))
 
     def _add_initial(self, out: FloatArray, coefficients: FloatArray, ways: ModeSlopes) -> None:
         problem, at = self.problem, 0

@@ -1,8 +1,8 @@
 """The noise's colour, estimated by restricted maximum likelihood beside the model's own columns."""
 
 from collections.abc import Callable
-from dataclasses import replace
-from typing import Any
+from dataclasses import dataclass, replace
+from typing import Any, Protocol
 
 import numpy as np
 from scipy.linalg import lapack
@@ -10,7 +10,7 @@ from scipy.optimize import minimize
 
 from .run import FloatArray
 from .wander import Whitener
-from .whiten import Colour, log_determinant, whiten
+from .whiten import WHITE, Colour, log_determinant, whiten
 
 _RHO_MOST = 0.9995
 _FIRST_RHO = (0.0, 0.4, 0.7, 0.85, 0.93, 0.97, 0.99)
@@ -45,19 +45,73 @@ def estimate_colour(
     ----------
     Harville, D. A., J. Am. Stat. Assoc. 72 (1977) 320-338: restricted likelihood (from memory).
     """
+    return colour_seen(sampled(columns, residual, stretches, waves))
+
+
+class Seen(Protocol):
+    """What an estimate of the noise looks at."""
+
+    @property
+    def stretches(self) -> list[slice]:
+        """Consecutive samples."""
+
+    @property
+    def count(self) -> int:
+        """How many samples there are."""
+
+    def white(self, colour: Colour) -> FloatArray:
+        """(n', q + 1) whitened columns, well scaled, the residual last."""
+
+    def white_waves(self, colour: Colour) -> FloatArray | None:
+        """(n', k) whitened slow waves; None where no level wanders."""
+
+
+@dataclass(frozen=True, eq=False)
+class _Sampled:
+    both: FloatArray
+    stretches: list[slice]
+    waves: FloatArray | None
+
+    @property
+    def count(self) -> int:
+        return len(self.both)
+
+    def white(self, colour: Colour) -> FloatArray:
+        return whiten(self.both, self.stretches, colour)
+
+    def white_waves(self, colour: Colour) -> FloatArray | None:
+        return None if self.waves is None else whiten(self.waves, self.stretches, colour)
+
+
+def sampled(columns: FloatArray, residual: FloatArray, stretches: list[slice], waves: FloatArray | None = None) -> Seen:
+    """Every sample, as `estimate_colour` has it."""
     scaled = columns / np.maximum(np.sqrt(np.einsum("ij,ij->j", columns, columns)), 1e-300)
-    both = np.column_stack([scaled, residual])
+    return _Sampled(np.column_stack([scaled, residual]), stretches, waves)
+
+
+def colour_seen(seen: Seen, start: Colour | None = None) -> Colour:
+    """`estimate_colour` of what is seen; from a colour near the answer where one is known."""
 
     def loss(point: FloatArray) -> float:
-        return restricted_loss(both, stretches, _colour(point))
+        return _plain_loss(seen, _colour(point))
 
     firsts = [np.array([np.arctanh(rho), share]) for rho in _FIRST_RHO for share in (_FIRST_SHARE if rho else (0.0,))]
+    if start is not None:
+        firsts = [np.array([np.arctanh(start.rho), -start.c / start.rho if start.rho else 0.0])]
     values = [loss(point) for point in firsts]
     best = firsts[int(np.argmin(values))]
     point, least = _lowest(loss, best, np.array([0.12, 0.1]), most=90)
-    if waves is None:
+    if seen.white_waves(WHITE) is None:
         return _colour(point)
-    return _with_wander(both, stretches, waves, point, least, [firsts[i] for i in np.argsort(values)[:4]])
+    return _with_wander(seen, point, least, [firsts[i] for i in np.argsort(values)[:4]])
+
+
+def _plain_loss(seen: Seen, colour: Colour) -> float:
+    white = seen.white(colour)
+    diagonal = _diagonal(white.T @ white)
+    if diagonal is None:
+        diagonal = np.abs(np.diag(np.linalg.qr(white, mode="r")))
+    return _loss(diagonal, seen.count, log_determinant(seen.stretches, colour))
 
 
 def _lowest(
@@ -70,18 +124,11 @@ def _lowest(
     return np.asarray(found.x), float(found.fun)
 
 
-def _with_wander(
-    both: FloatArray,
-    stretches: list[slice],
-    waves: FloatArray,
-    plain: FloatArray,
-    plain_loss: float,
-    others: list[FloatArray],
-) -> Colour:
+def _with_wander(seen: Seen, plain: FloatArray, plain_loss: float, others: list[FloatArray]) -> Colour:
     """The colour with a wandering level beside it, if that is enough more likely than the one without."""
 
     def loss(point: FloatArray) -> float:
-        return best_wander(both, stretches, waves, _colour(point))[0]
+        return best_wander(seen, _colour(point))[0]
 
     firsts = [plain, *others]
     values = [loss(point) for point in firsts]
@@ -91,10 +138,10 @@ def _with_wander(
     if least >= plain_loss - _WORTH:
         return _colour(plain)
     fast = _colour(point)
-    return replace(fast, wander=best_wander(both, stretches, waves, fast)[1])
+    return replace(fast, wander=best_wander(seen, fast)[1])
 
 
-def best_wander(both: FloatArray, stretches: list[slice], waves: FloatArray, fast: Colour) -> tuple[float, float]:
+def best_wander(seen: Seen, fast: Colour) -> tuple[float, float]:
     """Least restricted loss over the size of a wandering level beside this fast noise, and that size.
 
     One whitening serves all sizes: what the waves take from the inner products of the columns depends on their size
@@ -105,17 +152,19 @@ def best_wander(both: FloatArray, stretches: list[slice], waves: FloatArray, fas
     loss, wander
         As `restricted_loss` has it at `replace(fast, wander=wander)`.
     """
-    white = whiten(np.column_stack([both, waves]), stretches, fast)
+    both, waves = seen.white(fast), seen.white_waves(fast)
+    assert waves is not None
     m = both.shape[1]
+    white = np.column_stack([both, waves])
     gram = white.T @ white
     own, vectors = np.linalg.eigh(gram[m:, m:])
     shared = gram[:m, m:] @ vectors
     wander = np.exp(2 * _SIZES) * fast.variance_ratio
     stiff = own + 1.0 / wander[:, None]
     left = gram[:m, :m] - (shared / stiff[:, None, :]) @ shared.T
-    plain = log_determinant(stretches, fast)
+    plain = log_determinant(seen.stretches, fast)
     determinants = np.sum(np.log(stiff), axis=1) + len(own) * np.log(wander) + plain
-    losses = _losses(left, len(both), determinants)
+    losses = _losses(left, seen.count, determinants)
     at = int(np.argmin(losses))
     return float(losses[at]), float(wander[at])
 

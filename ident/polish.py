@@ -60,8 +60,7 @@ def polish(
     damping = 1e-3
     reach = np.array([1.5] * (len(theta) - 1) + [high[-1]])
     for _ in range(rounds):
-        slopes = here.slopes(best.solved.coefficients, rough=True)[:, free]
-        slope = best.cleared(problem.whitener(colour).apply(slopes))
+        slope = best.cleared(here.slopes_under(best.solved.coefficients, colour, rough=True)[:, free])
         normal, pull = slope.T @ slope, slope.T @ best.solved.residual
         size = np.diag(normal).copy()
         size[size == 0] = 1.0

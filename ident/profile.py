@@ -9,7 +9,8 @@ from dataclasses import dataclass
 import numpy as np
 
 from .polish import bounds_of, polish
-from .regression import Regression, root_of_covariance
+from .projected import root_of_covariance
+from .regression import Regression
 from .run import FloatArray
 from .whiten import Colour
 
@@ -133,9 +134,9 @@ def _with_conditionals(
     bounds = _bounds_as_rows(problem, variance)
     for theta in thetas:
         solved = problem.solve(theta, colour)
-        _, columns = problem.full_columns(theta, solved.coefficients)
-        others = np.delete(columns, len(theta) - 1, axis=1)
-        white = problem.whitener(colour).apply(others)
+        here = problem.at(theta)
+        slopes = here.slopes_under(solved.coefficients, colour)[:, :-1]
+        white = np.column_stack([slopes, here.columns_under(colour)])
         wide = np.pad(bounds, ((0, 0), (0, len(solved.coefficients))))
         factor, log_volume = root_of_covariance(np.vstack([white, wide]))
         centres.append(np.concatenate([theta[:-1], solved.coefficients]))

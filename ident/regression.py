@@ -4,13 +4,16 @@ from dataclasses import dataclass
 from functools import cached_property
 
 import numpy as np
+from scipy.signal import lfilter
 
 from .catalogue import Structure
 from .friction import friction_response
 from .local import Local
 from .modes import Modes, modes_of
+from .noise import Seen, sampled
 from .projected import Projected, Solved, projected, root_of_covariance
 from .run import FloatArray, Run
+from .sandwich import sandwich_covariance
 from .simulate import Grid, at_rest, grid_of, response
 from .wander import Whitener, slow_waves
 from .whiten import Colour, stretches_of
@@ -165,6 +168,11 @@ class Regression:
         return bias * at_rest(self.structure.integrators, self.grids[i].time) if bias else 0.0
 
     @property
+    def condensed(self) -> bool:
+        """Whether few rows stand for the samples."""
+        return False
+
+    @property
     def exact_slopes(self) -> bool:
         """Whether every run is sampled evenly and every mode is of first order."""
         even = all(grid.interval is not None for grid in self.grids)
@@ -172,13 +180,27 @@ class Regression:
 
     def zero_response(self, i: int, shape: tuple[float, ...], dead_time: float) -> FloatArray:
         """Response of run i to the slope of its command: what a zero adds, per gain and second of zero time."""
+        return response(self.slope_modes(shape), self.grids[i], dead_time)
+
+    def slope_modes(self, shape: tuple[float, ...]) -> Modes:
+        """Modes of s times the unit-gain structure."""
         numerator, denominator = self.structure.polynomials(shape)
-        return response(modes_of((*numerator, 0.0), denominator), self.grids[i], dead_time)
+        return modes_of((*numerator, 0.0), denominator)
 
     @property
     def zero_at(self) -> int:
         """Where gain times zero time stands among the coefficients of a structure with a zero."""
-        return 1 + int(self.fixed_columns.shape[1])
+        return 1 + self.fixed_count
+
+    @property
+    def fixed_count(self) -> int:
+        """How many columns no shape changes."""
+        return int(self.fixed_columns.shape[1])
+
+    @property
+    def wave_count(self) -> int:
+        """How many slow waves there are."""
+        return int(self.waves.shape[1])
 
     def moving_columns(self, shape: tuple[float, ...], dead_time: float) -> FloatArray:
         """(n, 1 + k) columns that change with the shapes: unit response, a zero's part, initial states."""
@@ -235,9 +257,15 @@ class Regression:
 
     def solve_at(self, here: Local, colour: Colour) -> Projected:
         """The same from columns already made, with what `Projected.cleared` needs."""
-        target, fixed = self._whitened(colour)
-        white = self.whitener(colour).apply(here.moving)
-        return projected(np.column_stack([white[:, :1], fixed, white[:, 1:]]), target)
+        return projected(here.columns_under(colour), self.target_under(colour))
+
+    def target_under(self, colour: Colour) -> FloatArray:
+        """(n',) measured response whitened."""
+        return self._whitened(colour)[0]
+
+    def fixed_under(self, colour: Colour) -> FloatArray:
+        """(n', r) fixed columns whitened."""
+        return self._whitened(colour)[1]
 
     def at(self, theta: FloatArray) -> Local:
         """Columns and slopes about theta."""
@@ -245,9 +273,8 @@ class Regression:
 
     def conditional(self, theta: FloatArray, colour: Colour) -> tuple[Solved, FloatArray, float]:
         """`solve`, A with A A' = (X' X)^-1 of the whitened columns, and the log of A's volume."""
-        white = self.whitener(colour).apply(self.columns(theta))
-        solved = projected(white, self._whitened(colour)[0]).solved
-        return solved, *root_of_covariance(white)
+        found = self.solve_at(self.at(theta), colour)
+        return found.solved, *root_of_covariance(found.matrix)
 
     def split(self, theta: FloatArray) -> tuple[tuple[float, ...], float]:
         """Shape values and dead time of theta."""
@@ -273,11 +300,46 @@ class Regression:
         columns = here.columns
         return columns @ coefficients, np.column_stack([here.slopes(coefficients), columns])
 
+    def seen_about(self, theta: FloatArray, coefficients: FloatArray) -> Seen:
+        """What an estimate of the noise looks at."""
+        model, columns = self.full_columns(theta, coefficients)
+        return sampled(columns, self.measured - model, self.stretches, self.waves)
+
+    def model(self, theta: FloatArray, coefficients: FloatArray) -> FloatArray:
+        """(n,) unwhitened model."""
+        return self.at(theta).columns @ coefficients
+
+    def least_squares_covariance(self, theta: FloatArray, coefficients: FloatArray, colour: Colour) -> FloatArray:
+        """(s + 1 + q,) squared: of plain least squares under this noise."""
+        model, columns = self.full_columns(theta, coefficients)
+        return sandwich_covariance(columns, self.measured - model, self.stretches, colour, self.waves)
+
+    def further_directions(self, theta: FloatArray, colour: Colour, times: FloatArray) -> FloatArray | None:
+        """(n', k) whitened: the bare command, and it and the model behind lags of these times, s; see `unexplained`."""
+        shape, dead_time = self.split(theta)
+        blocks = []
+        for i, run in enumerate(self.runs):
+            whole = self.whole_response(i, shape, dead_time)
+            bare = [response(modes_of((1.0,), (float(time), 1.0)), self.grids[i], 0.0) for time in times]
+            behind = [_lagged(whole, self.interval, time) for time in times]
+            blocks.append(np.column_stack([self.grids[i].moved, *bare, *behind])[run.valid])
+        return self.whitener(colour).apply(np.concatenate(blocks))
+
+    def rms(self, theta: FloatArray, coefficients: FloatArray) -> float:
+        """Root mean square of measured - model, response unit."""
+        return float(np.sqrt(np.mean((self.measured - self.model(theta, coefficients)) ** 2)))
+
     def steps(self, theta: FloatArray) -> list[FloatArray]:
         """Difference steps, one vector a parameter of theta."""
         sizes = np.full(len(theta), 1e-4)
         sizes[-1] = min(0.02 * self.interval, max(theta[-1], 1e-3 * self.interval))
         return [np.where(np.arange(len(theta)) == i, size, 0.0) for i, size in enumerate(sizes)]
+
+
+def _lagged(whole: FloatArray, interval: float, time: float) -> FloatArray:
+    """Behind one more lag; sampled roughly, for it only serves as a direction."""
+    decay = np.exp(-interval / time)
+    return np.asarray(lfilter([1 - decay], [1.0, -decay], whole - whole[0]))
 
 
 def starts_unsettled(run: Run) -> bool:

@@ -33,23 +33,65 @@ def sandwich_covariance(
     ----------
     White, H., Econometrica 48 (1980) 817-838, in the form for a known colour (from memory).
     """
-    scale = np.sqrt(np.einsum("ij,ij->j", columns, columns))
-    scale[scale == 0] = 1.0
-    unit = columns / scale
-    spread = np.empty_like(unit)
+    spread = np.empty_like(columns)
     for part in stretches:
         gamma = autocovariance(colour, part.stop - part.start)
-        spread[part] = matmul_toeplitz(gamma, unit[part])
+        spread[part] = matmul_toeplitz(gamma, columns[part])
+    gram, squares = columns.T @ columns, float(residual @ residual)
+    if waves is None:
+        return sandwiched(gram, columns.T @ spread, None, 0.0, squares, len(residual), colour)
+    power = float(np.mean(np.einsum("ij,ij->i", waves, waves)))
+    return sandwiched(gram, columns.T @ spread, waves.T @ columns, power, squares, len(residual), colour)
+
+
+def sandwiched(
+    gram: FloatArray,
+    meat: FloatArray,
+    along_waves: FloatArray | None,
+    wave_power: float,
+    squares: float,
+    n: int,
+    colour: Colour,
+) -> FloatArray:
+    """`sandwich_covariance` from sums over the samples.
+
+    Parameters
+    ----------
+    gram, meat : (q, q) arrays
+        X' X, and X' V X with V the covariance of the fast noise in units of w's variance.
+    along_waves : (k, q) array or None
+        The slow waves' products with the columns.
+    wave_power : float
+        Mean square of a sample of all waves together.
+    squares : float
+        Sum of squares of the residual of n samples.
+    """
+    scale = np.sqrt(np.diag(gram))
+    scale[scale == 0] = 1.0
     ratio = colour.variance_ratio
-    if waves is not None and colour.wander > 0.0:
-        spread += colour.wander * waves @ (waves.T @ unit)
-        ratio += colour.wander * float(np.mean(np.einsum("ij,ij->i", waves, waves)))
-    sizes, vectors = np.linalg.eigh(unit.T @ unit)
+    if along_waves is not None and colour.wander > 0.0:
+        meat = meat + colour.wander * along_waves.T @ along_waves
+        ratio += colour.wander * wave_power
+    sizes, vectors = np.linalg.eigh(gram / np.outer(scale, scale))
     bread = (vectors / np.maximum(sizes, 1e-12 * sizes[-1])) @ vectors.T
-    meat = unit.T @ spread
-    taken = float(np.trace(bread @ meat))
-    size = float(residual @ residual) / max(len(residual) * ratio - taken, 0.05 * len(residual))
-    return np.asarray(size * bread @ meat @ bread / np.outer(scale, scale))
+    inner = meat / np.outer(scale, scale)
+    taken = float(np.trace(bread @ inner))
+    size = squares / max(n * ratio - taken, 0.05 * n)
+    return np.asarray(size * bread @ inner @ bread / np.outer(scale, scale))
+
+
+def grouped_autocovariance(colour: Colour, size: int, count: int) -> FloatArray:
+    """(count,) covariances of sums over `size` samples with sums 0, 1, ... groups later, in units of w's variance.
+
+    With gamma(l) = gamma(1) rho^(l - 1): size gamma(0) + 2 sum_l (size - l) gamma(l), and
+    gamma(1) rho^((m - 1) size) S^2 with S = 1 + rho + ... + rho^(size - 1).
+    """
+    lags = np.arange(1, size)
+    first = (1 + colour.rho * colour.c) * (colour.rho + colour.c) / (1 - colour.rho**2)
+    own = size * colour.variance_ratio + 2 * float(np.sum((size - lags) * first * np.power(colour.rho, lags - 1)))
+    total = float(np.sum(np.power(colour.rho, np.arange(size))))
+    tail = first * total**2 * np.power(colour.rho, size * np.arange(max(count - 1, 0)))
+    return np.concatenate([[own], tail])[:count]
 
 
 def draw_normal(centre: FloatArray, covariance: FloatArray, freedom: float, count: int, seed: int) -> FloatArray:

@@ -1,13 +1,9 @@
 """Whether a fitted model leaves something of what the command does in its residual, whatever the noise's colour."""
 
 import numpy as np
-from scipy.signal import lfilter
 
-from .catalogue.lag import polynomials
-from .modes import modes_of
 from .regression import Regression
 from .run import FloatArray
-from .simulate import response
 from .whiten import Colour
 
 # How many lags of different time serve as directions, each behind the model and behind the bare command.
@@ -24,6 +20,11 @@ def unexplained(problem: Regression, theta: FloatArray, coefficients: FloatArray
     coefficients : (q,) array
     colour : Colour
 
+    Returns
+    -------
+    float
+        Infinite where the structure has no such directions in closed form.
+
     Notes
     -----
     The directions are the model's response behind one more lag, which is what a missing pole or zero adds to first
@@ -36,9 +37,13 @@ def unexplained(problem: Regression, theta: FloatArray, coefficients: FloatArray
     ----------
     The score test: Rao, C. R., Proc. Camb. Phil. Soc. 44 (1948) 50-57 (from memory).
     """
-    model, own = problem.full_columns(theta, coefficients)
-    extra = _directions(problem, theta)
-    white = problem.whitener(colour).apply(np.column_stack([own, extra, problem.measured - model]))
+    here = problem.at(theta)
+    columns = here.columns_under(colour)
+    own = np.column_stack([here.slopes_under(coefficients, colour), columns])
+    extra = problem.further_directions(theta, colour, np.geomspace(problem.interval, 0.5 * problem.duration, _LAGS))
+    if extra is None:
+        return np.inf
+    white = np.column_stack([own, extra, problem.target_under(colour) - columns @ coefficients])
     scale = np.sqrt(np.einsum("ij,ij->j", white, white))
     scale[scale == 0] = 1.0
     k = own.shape[1]
@@ -51,22 +56,4 @@ def unexplained(problem: Regression, theta: FloatArray, coefficients: FloatArray
     along = residual @ directions
     gains = np.where(sizes > 1e-9, along**2 / np.maximum(sizes, 1e-9), 0.0)
     total, best = float(residual @ residual), float(np.max(gains, initial=0.0))
-    return len(white) * float(np.log(total / max(total - best, 1e-12 * total))) if total > 0 else 0.0
-
-
-def _directions(problem: Regression, theta: FloatArray) -> FloatArray:
-    shape, dead_time = problem.split(theta)
-    times = np.geomspace(problem.interval, 0.5 * problem.duration, _LAGS)
-    blocks = []
-    for i, run in enumerate(problem.runs):
-        whole = problem.whole_response(i, shape, dead_time)
-        bare = [response(modes_of(*polynomials((time,))), problem.grids[i], 0.0) for time in times]
-        behind = [_lagged(whole, problem.interval, time) for time in times]
-        blocks.append(np.column_stack([problem.grids[i].moved, *bare, *behind])[run.valid])
-    return np.concatenate(blocks)
-
-
-def _lagged(whole: FloatArray, interval: float, time: float) -> FloatArray:
-    """Behind one more lag; sampled roughly, for it only serves as a direction."""
-    decay = np.exp(-interval / time)
-    return np.asarray(lfilter([1 - decay], [1.0, -decay], whole - whole[0]))
+    return len(problem.measured) * float(np.log(total / max(total - best, 1e-12 * total))) if total > 0 else 0.0

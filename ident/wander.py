@@ -58,11 +58,14 @@ class Whitener:
         The inner products of the result are those under the inverse covariance of noise and waves together: the waves
         are projected out with their prior as so many further rows.
         """
-        white = whiten(columns, self.stretches, self.colour)
+        return self.cleared(whiten(columns, self.stretches, self.colour))
+
+    def cleared(self, white: FloatArray) -> FloatArray:
+        """The same from columns that the fast noise's whitening has passed."""
         if self.colour.wander <= 0.0:
             return white
         basis, _ = self._basis
-        longer = np.concatenate([white, np.zeros((self.waves.shape[1], *white.shape[1:]))])
+        longer = np.concatenate([white, np.zeros((basis.shape[1], *white.shape[1:]))])
         return np.asarray(longer - basis @ (basis.T @ longer))
 
     @cached_property
@@ -72,12 +75,16 @@ class Whitener:
         if self.colour.wander <= 0.0:
             return plain
         _, sizes = self._basis
-        return float(plain + 2 * np.sum(np.log(sizes)) + self.waves.shape[1] * np.log(self.colour.wander))
+        return float(plain + 2 * np.sum(np.log(sizes)) + len(sizes) * np.log(self.colour.wander))
+
+    @cached_property
+    def _white_waves(self) -> FloatArray:
+        return whiten(self.waves, self.stretches, self.colour)
 
     @cached_property
     def _basis(self) -> tuple[FloatArray, FloatArray]:
-        k = self.waves.shape[1]
+        k = self._white_waves.shape[1]
         prior = np.eye(k) / np.sqrt(self.colour.wander)
-        stacked = np.concatenate([whiten(self.waves, self.stretches, self.colour), prior])
+        stacked = np.concatenate([self._white_waves, prior])
         basis, triangle = np.linalg.qr(stacked)
         return basis, np.abs(np.diag(triangle))
