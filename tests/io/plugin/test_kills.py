@@ -125,8 +125,8 @@ def test_a_watch_survives_a_few_kills(tmp_path: Path) -> None:
 
 
 def test_a_batch_survives_a_few_kills(tmp_path: Path) -> None:
-    """Six moments."""
-    batch_through_kills(tmp_path, 36, 6, 2)
+    """Fifty jobs, six moments."""
+    batch_through_kills(tmp_path, 50, 6, 2)
 
 
 @pytest.mark.kills
@@ -143,3 +143,10 @@ def test_a_watch_survives_a_hundred_kills(tmp_path: Path, seed: int) -> None:
 def test_a_batch_survives_a_hundred_kills(tmp_path: Path, seed: int) -> None:
     """Five times twenty moments."""
     batch_through_kills(tmp_path, 200, 20, 20 + seed)
+
+
+@pytest.mark.kills
+@pytest.mark.timeout(3600)
+def test_a_thousand_jobs_lose_nothing(tmp_path: Path) -> None:
+    """Twenty moments, of the program and of its workers."""
+    batch_through_kills(tmp_path, 1000, 20, 30)
