@@ -8,6 +8,7 @@ from .judge import PlantVerdicts
 from .requirements import Requirement
 from .sampled.bank import build_bank
 from .situation import Situation
+from .slack import meets, requirement_slack
 
 _WORDS = {
     "overshoot": "overshoot",
@@ -117,6 +118,7 @@ def reasons_of(
         )
         found += _failing(verdicts, judged)
         found += _conflict(slacks)
+        found += _would_do(verdicts, situation)
     return found
 
 
@@ -145,3 +147,26 @@ def _conflict(slacks: dict[str, float]) -> list[str]:
     if len(tight) < 2:
         return []
     return [f"{tight[0]} and {tight[1]} pull against each other: to ease one of them would free the other"]
+
+
+def _would_do(verdicts: PlantVerdicts, situation: Situation) -> list[str]:
+    """By how much bounds would have to give for these gains to hold on the asked share of the plants, all together."""
+    count = verdicts.stable.size
+    slacks = np.array(
+        [requirement_slack(item, verdicts.values.get(item.name, np.full(count, np.nan))) for item in verdicts.items]
+    )
+    if not slacks.size or not verdicts.stable.all():
+        return []
+    needed = int(np.ceil(count * situation.requirements.confidence - 1e-9))
+    kept = np.argsort(-slacks.min(axis=0), kind="stable")[:needed]
+    parts = []
+    for item in verdicts.items:
+        values = verdicts.values.get(item.name, np.full(count, np.inf))[kept]
+        reached = float(values.max() if item.sense == "at_most" else values.min())
+        if not np.isfinite(reached):
+            return []
+        if not meets(item, np.array([reached]))[0]:
+            sense = "at most" if item.sense == "at_most" else "at least"
+            outward = reached * (1.005 if (item.sense == "at_most") == (reached > 0.0) else 0.995)
+            parts.append(f"{words(item.name)} {sense} {shown(item, outward)} in place of {shown(item, item.limit)}")
+    return [f"what would have to give for the best gains found: {'; '.join(parts)}"] if parts else []
