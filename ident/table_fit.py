@@ -15,6 +15,10 @@ from .tables import FittedTable, Table
 _FEWEST = 6
 # Scatter of the points over their stated errors that is worth a word.
 _TOO_SMALL, _TOO_LARGE = 1.5, 0.5
+_ALONE = (
+    "the plant comes from frequency tables alone: they show neither friction, play and bounds of the actuator nor the "
+    "noise in time, and hold for the amplitude at which they were taken"
+)
 
 
 def require_tables(
@@ -131,11 +135,11 @@ def fitted_tables(chosen: Fitted, row: FloatArray) -> tuple[FittedTable, ...]:
 
 
 def table_cautions(chosen: Fitted) -> tuple[str, ...]:
-    """Tables whose points scatter otherwise than their stated errors say."""
+    """What tables alone don't show, and those whose points scatter otherwise than their stated errors say."""
     problem = chosen.problem
     if not isinstance(problem, TableRegression):
         return ()
-    said = []
+    said = [] if problem.runs else [_ALONE]
     for w, part in zip(problem.weighed, problem.row_parts, strict=True):
         times = _size(chosen, part) / w.unit
         if w.table.sized and not _TOO_LARGE < times < _TOO_SMALL:

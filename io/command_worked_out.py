@@ -131,7 +131,8 @@ def _phase(goal: FloatArray, every: int) -> int:
 
 def _said(command: FloatArray, rig: Rig) -> Finding:
     span = f"{command.min():.4g} to {command.max():.4g} {rig.command_unit}"
-    return Finding("command not logged", "whole record", span, "worked out from the gains in force; log it if you can")
+    action = "worked out from the gains in force, and the plant's gain is as right as those are: log it if you can"
+    return Finding("command not logged", "whole record", span, action)
 
 
 def _beyond(command: FloatArray, rig: Rig) -> list[Finding]:

@@ -5,16 +5,17 @@ import pytest
 from gainwright.ident.catalogue import LAG
 from gainwright.ident.identify import identify
 from gainwright.ident.run import Run
+from gainwright.ident.spectra import spectra
 from scipy.signal import lfilter
 
 INTERVAL, GAIN, LAG_TIME = 0.1, 2.0, 1.0
 
 
-def closed_loop_log(seed, count=3000, colour=0.8):
-    """A lag under PI control, the setpoint stepping between two levels, AR(1) noise of 0.2 fed back; exact."""
+def closed_loop_log(seed, count=3000, colour=0.8, size=0.2):
+    """A lag under PI control, the setpoint stepping between two levels, AR(1) noise of this size fed back; exact."""
     rng = np.random.default_rng(seed)
     setpoint = np.repeat(rng.choice([-1.0, 1.0], count // 40), 40)
-    noise = lfilter([1.0], [1.0, -colour], rng.standard_normal(count)) * 0.2 * np.sqrt(1 - colour**2)
+    noise = lfilter([1.0], [1.0, -colour], rng.standard_normal(count)) * size * np.sqrt(1 - colour**2)
     decay = np.exp(-INTERVAL / LAG_TIME)
     state = integral = 0.0
     command, response = np.zeros(count), np.zeros(count)
@@ -26,6 +27,23 @@ def closed_loop_log(seed, count=3000, colour=0.8):
         state = decay * state + GAIN * (1 - decay) * command[k]
     time = INTERVAL * np.arange(count)
     return Run(f"loop {seed}", time, command, response, setpoint, between="held", command_before=0.0, closed_loop=True)
+
+
+def test_the_fit_is_right_where_dividing_spectra_is_off_by_forty_per_cent():
+    """Noise of a quarter of the setpoint's steps: Syu/Suu is off by more than 40 % (median up to 7 rad/s).
+
+    The mean gain of four fits is right to 1 %; a fit's spread is 0.6 % here, that of the mean 0.3 %.
+    """
+    away, gains = [], []
+    for seed in range(4):
+        run = closed_loop_log(seed, colour=0.0, size=0.25)
+        found = spectra(run.command - run.command.mean(), run.response - run.response.mean(), INTERVAL, 512)
+        band = (found.frequency > 0) & (found.frequency < 7.0)
+        true = GAIN / (LAG_TIME * 1j * found.frequency[band] + 1.0)
+        away.append(np.median(np.abs(found.response[band] / true - 1.0)))
+        gains.append(identify([run], structures=[LAG]).plant.static_gain)
+    assert np.mean(away) > 0.4
+    assert np.mean(gains) == pytest.approx(GAIN, rel=0.01)
 
 
 def test_a_plant_in_closed_loop_is_fitted_without_the_bias_of_feedback():

@@ -132,6 +132,13 @@ def test_a_table_alone_needs_an_operating_point():
         identify((), tables=[measured(lag, NARROW, 1)])
 
 
+def test_what_tables_alone_do_not_show_is_said():
+    """Friction, bounds and noise are not in them; beside a run in time nothing is said."""
+    fit, _ = found(measured(lag, NARROW, 2))
+    assert any("neither friction, play" in caution for caution in fit.cautions)
+    assert fit.noise.std == 0.0
+
+
 def test_points_that_scatter_more_than_their_errors_say_are_cautioned_about():
     """Errors stated at a fifth of what they are: the intervals go by the points, and it is said."""
     table = measured(lag, NARROW, 2)

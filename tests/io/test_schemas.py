@@ -84,6 +84,32 @@ def test_dates_windows_and_not_limited_fit_the_schema() -> None:
     jsonschema.validate(as_json(TAKEN), rig_file_schema())
 
 
+TABLES = """
+[rig]
+name = "x"
+[operating_point]
+command = "3 V"
+response = "50 mm"
+[signals]
+command = { unit = "V" }
+response = { unit = "mm" }
+[[runs]]
+file = "a.csv"
+use = "fit"
+excitation = "frequency-table"
+frequency = { source = "f", unit = "Hz" }
+magnitude = { source = "size", unit = "dB" }
+[controller]
+update_interval = "5 ms"
+"""
+
+
+def test_tables_alone_and_a_log_without_its_command_fit_the_schema() -> None:
+    """A rig file of frequency tables names no time; `command = false` says that a log has none."""
+    jsonschema.validate(as_json(TABLES), rig_file_schema())
+    jsonschema.validate(as_json(TAKEN.replace("setpoint = false", "command = false")), rig_file_schema())
+
+
 @pytest.mark.parametrize(
     ("good", "bad"),
     [
