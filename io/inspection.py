@@ -11,6 +11,7 @@ from .read_table import read_table
 from .readers.parts import in_parts
 from .readers.port import Hints
 from .readers.registry import reader_of
+from .readers.still_there import still_there
 from .record import Finding, Record, TableRecord
 from .rigfile.rig import Rig, RunSpec
 from .rigfile.table_runs import KIND
@@ -83,6 +84,11 @@ def inspect_log(file: Path) -> Inspection:
     RecordError
         When the file can't be read.
     """
+    with still_there(file):
+        return _inspected(file)
+
+
+def _inspected(file: Path) -> Inspection:
     reader, hints = reader_of(file), Hints()
     infos = reader.channels(file, hints)
     together: dict[int | None, list[str]] = {}  # channels of one log may differ in length: those are read apart

@@ -15,6 +15,7 @@ from .look_at_record import looked_at
 from .readers.parts import is_large
 from .readers.port import Hints, Reader
 from .readers.registry import reader_of
+from .readers.still_there import still_there
 from .record import Record, sha256_of
 from .rigfile.rig import Rig, RunSpec
 from .rigfile.table_runs import KIND
@@ -44,6 +45,11 @@ def read_record(spec: RunSpec, rig: Rig) -> Record:
     RequestError
         When a source isn't in the log, or a unit doesn't fit.
     """
+    with still_there(spec.file):
+        return _read(spec, rig)
+
+
+def _read(spec: RunSpec, rig: Rig) -> Record:
     if spec.excitation == KIND:
         raise RequestError(
             "a frequency table is no log in time",

@@ -13,6 +13,7 @@ from ..ident.tables import Table, usable_points
 from . import units
 from .readers.port import Channel, Hints
 from .readers.registry import reader_of
+from .readers.still_there import still_there
 from .record import Finding, TableRecord, sha256_of
 from .rigfile.rig import Rig, RunSpec, Signal
 from .rigfile.table_runs import KIND, TABLE_ROLES
@@ -41,6 +42,11 @@ def read_table(spec: RunSpec, rig: Rig) -> TableRecord:
     RequestError
         A column isn't there, or its unit doesn't fit.
     """
+    with still_there(spec.file):
+        return _read(spec, rig)
+
+
+def _read(spec: RunSpec, rig: Rig) -> TableRecord:
     hints = Hints(rig.dialect, spec.group)
     log = reader_of(spec.file).read(spec.file, [str(signal.source) for signal in spec.signals.values()], hints)
     raw = {role: _column(spec, role, log.channels[str(signal.source)]) for role, signal in spec.signals.items()}

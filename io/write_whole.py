@@ -1,5 +1,6 @@
 """Results that are either whole or absent: an output folder that one job at a time may change."""
 
+import contextlib
 import errno
 import json
 import os
@@ -136,8 +137,7 @@ def _take_lock(folder: Path, patience_s: float) -> int:
     while True:
         handle = os.open(path, os.O_RDWR | os.O_CREAT, 0o644)
         if _lock_now(handle) and _is_current(handle, path):
-            os.ftruncate(handle, 0)
-            os.write(handle, json.dumps({"pid": os.getpid(), "host": socket.gethostname()}).encode())
+            _sign(handle)
             return handle
         os.close(handle)
         if time.monotonic() >= end:
@@ -149,6 +149,13 @@ def _take_lock(folder: Path, patience_s: float) -> int:
                 advice="wait for that job to end, or name another folder with --out",
             )
         time.sleep(_POLL_S)
+
+
+def _sign(handle: int) -> None:
+    """Say in the lock who holds it; where there is no room for that, the lock holds all the same."""
+    with contextlib.suppress(OSError):
+        os.ftruncate(handle, 0)
+        os.write(handle, json.dumps({"pid": os.getpid(), "host": socket.gethostname()}).encode())
 
 
 def _lock_now(handle: int) -> bool:

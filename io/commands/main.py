@@ -1,10 +1,13 @@
 """The command `gainwright`: finds the sub-command, and turns each way of ending into its exit code."""
 
+import errno
 import importlib
 import os
+import signal
 import sys
 from collections.abc import Sequence
 from types import TracebackType
+from typing import Any
 
 import click
 
@@ -30,6 +33,20 @@ class LazyGroup(click.Group):
         command = getattr(importlib.import_module(f"..{cmd_name}", __name__), cmd_name)
         assert isinstance(command, click.Command)
         return command
+
+    def invoke(self, ctx: click.Context) -> Any:
+        """Run the sub-command, and see its output out: a reader that is gone and a full disk are no faults of ours."""
+        try:
+            code = super().invoke(ctx)
+            sys.stdout.flush()
+        except OSError as problem:
+            if problem.errno not in (errno.EPIPE, errno.ENOSPC, errno.EDQUOT):
+                raise
+            _drop_output()
+            if problem.errno == errno.EPIPE:
+                raise click.Abort from problem
+            raise _full(problem) from problem
+        return code
 
 
 @click.group(cls=LazyGroup, context_settings={"help_option_names": ["-h", "--help"]})
@@ -58,9 +75,11 @@ def main(arguments: Sequence[str] | None = None) -> int:
     """
     for name in _THREADS:  # before numpy is imported: small matrices, and several jobs may share the machine
         os.environ.setdefault(name, "1")
+    if arguments is None:  # a process of its own: to be told to end is an interrupt, which leaves nothing half-done
+        signal.signal(signal.SIGTERM, signal.default_int_handler)
     try:
         code = gainwright.main(args=arguments, prog_name="gainwright", standalone_mode=False)
-    except click.Abort:
+    except (click.Abort, KeyboardInterrupt):
         print("interrupted", file=sys.stderr)
         return INTERRUPTED
     except click.ClickException as error:
@@ -78,6 +97,26 @@ def main(arguments: Sequence[str] | None = None) -> int:
 def _tell(error: GainwrightError, code: int) -> int:
     print(error.text, file=sys.stderr)
     return code
+
+
+def _drop_output() -> None:
+    """What still waits to be written goes nowhere, or the interpreter would stumble over it at its end."""
+    try:
+        nowhere = os.open(os.devnull, os.O_WRONLY)
+        os.dup2(nowhere, sys.stdout.fileno())
+        os.close(nowhere)
+    except (OSError, ValueError, AttributeError):
+        return  # no stream of the system's own
+
+
+def _full(problem: OSError) -> RequestError:
+    return RequestError(
+        "something can't be written",
+        where=str(problem.filename or "the output"),
+        found=problem.strerror or str(problem),
+        expected="room for what is written",
+        advice="free some, or send the output elsewhere",
+    )
 
 
 def _one_line(kind: type[BaseException], fault: BaseException, trace: TracebackType | None) -> None:

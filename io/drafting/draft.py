@@ -1,18 +1,23 @@
 """From an unknown log to the text of a rig file worth editing."""
 
+import contextlib
 import os
 from pathlib import Path
 
 from ...ident.errors import RequestError
 from ..readers.csv import CsvReader
-from ..readers.csv_rows import SNIFFED_LINES
 from ..readers.csv_dialect import decode, sniff
+from ..readers.csv_rows import SNIFFED_LINES
+from ..readers.parts import in_parts
 from ..readers.port import Hints, Reader
 from ..readers.registry import reader_of
+from ..readers.still_there import still_there
 from ..rigfile.rig import LogDialect
 from .roles import guess_roles
 from .seen_channel import SeenChannel, seen_channel
 from .text import Drafted, draft_text
+
+_DECODED_BYTES = 64 << 20
 
 
 def draft_rig(run: Path, rig_file: Path) -> str:
@@ -30,6 +35,11 @@ def draft_rig(run: Path, rig_file: Path) -> str:
     RecordError
         When the log can't be read, or holds no two signals.
     """
+    with still_there(run):
+        return _drafted(run, rig_file)
+
+
+def _drafted(run: Path, rig_file: Path) -> str:
     reader = reader_of(run)
     channels = read_channels(run, reader)
     shown = os.path.relpath(run.resolve(), rig_file.resolve().parent).replace(os.sep, "/")
@@ -46,11 +56,13 @@ def write_draft(text: str, rig_file: Path) -> None:
     RequestError
         When something stands there, or the folder can't be written to.
     """
+    part = rig_file.with_name(f".{rig_file.name}.{os.getpid()}.part")
     try:
-        with rig_file.open("x", encoding="utf-8", newline="\n") as stream:
+        with part.open("w", encoding="utf-8", newline="\n") as stream:
             stream.write(text)
             stream.flush()
             os.fsync(stream.fileno())
+        _put_in_place(part, rig_file)
     except FileExistsError as cause:
         raise RequestError(
             "a draft never overwrites",
@@ -66,10 +78,29 @@ def write_draft(text: str, rig_file: Path) -> None:
             found=cause.strerror or str(cause),
             advice="name another place with --out",
         ) from cause
+    finally:
+        _remove(part)
+
+
+def _put_in_place(part: Path, final: Path) -> None:
+    """Give a whole file its name, where nothing has that name."""
+    try:
+        os.link(part, final)
+    except FileExistsError:
+        raise
+    except OSError as problem:  # a share without hard links
+        if final.exists():
+            raise FileExistsError from problem
+        os.replace(part, final)
+
+
+def _remove(part: Path) -> None:
+    with contextlib.suppress(OSError):
+        part.unlink(missing_ok=True)
 
 
 def read_channels(run: Path, reader: Reader) -> list[SeenChannel]:
-    """Every channel of a log; those of one length are read in one go.
+    """Every channel of a log, of a large one its first part; those of one length are read in one go.
 
     Raises
     ------
@@ -81,13 +112,15 @@ def read_channels(run: Path, reader: Reader) -> list[SeenChannel]:
     seen: dict[str, SeenChannel] = {}
     for length in dict.fromkeys(info.samples for info in infos):
         names = [info.name for info in infos if info.samples == length]
-        for name, channel in reader.read(run, names, hints).channels.items():
+        log = next(in_parts(reader, run, names, hints))
+        for name, channel in log.channels.items():
             seen[name] = seen_channel(channel)
     return [seen[info.name] for info in infos]
 
 
 def _dialect(run: Path) -> LogDialect:
-    text, encoding = decode(run.read_bytes())
+    with run.open("rb") as log:
+        text, encoding = decode(log.read(_DECODED_BYTES))
     lines = text.replace("\r\n", "\n").replace("\r", "\n").split("\n")[:SNIFFED_LINES]
     found = sniff(lines, LogDialect(), str(run))
     return LogDialect(found.separator, found.decimal, encoding)

@@ -70,13 +70,7 @@ class Journal:
             self._base.execute(_TABLE)
         except (OSError, sqlite3.Error) as cause:
             self._close()
-            raise RequestError(
-                "the journal can't be kept here",
-                where=str(self.path),
-                found=str(cause),
-                expected="a folder on a local disk that this user may write to",
-                advice="name another folder with --out",
-            ) from cause
+            raise self._refusal(cause) from cause
         return self
 
     def __exit__(
@@ -131,7 +125,19 @@ class Journal:
 
     def _run(self, words: str, values: tuple[object, ...] = ()) -> list[tuple[Any, ...]]:
         assert self._base is not None, "enter the journal first"
-        return self._base.execute(words, values).fetchall()
+        try:
+            return self._base.execute(words, values).fetchall()
+        except sqlite3.Error as cause:  # a full disk, a folder that went away
+            raise self._refusal(cause) from cause
+
+    def _refusal(self, cause: Exception) -> RequestError:
+        return RequestError(
+            "the journal can't be kept here",
+            where=str(self.path),
+            found=str(cause),
+            expected="a folder on a local disk that this user may write to, with free space",
+            advice="name another folder with --out, or free the space; what is done stays done",
+        )
 
     def _close(self) -> None:
         if self._base is not None:
