@@ -11,6 +11,7 @@ from time import monotonic
 from ...ident.errors import RecordError
 from ..readers.port import Hints
 from ..readers.registry import reader_of, readers
+from ..readers.through_child import MissingLibrary
 
 UNFINISHED_SUFFIXES = (".part", ".partial", ".tmp", ".temp", ".crdownload", ".filepart", ".swp", ".lock", "~")
 PATIENCE = 10.0  # times the quiet time: a file that never looks finished is taken as it is
@@ -139,6 +140,8 @@ def state_of(file: Path) -> State | None:
 def looks_finished(file: Path) -> bool:
     """Whether a quiet file has an end: a line end in text, an open that succeeds in any other format.
 
+    A file whose library is not installed is taken as finished, so that its job says which extra is missing.
+
     Parameters
     ----------
     file : Path
@@ -148,6 +151,8 @@ def looks_finished(file: Path) -> bool:
         if ".csv" in reader.suffixes:
             return _tail(file).rstrip(b"\x00\x1a").endswith((b"\n", b"\r"))
         return bool(reader.channels(file, Hints()))
+    except MissingLibrary:
+        return True
     except (RecordError, OSError):
         return False
 

@@ -1,5 +1,6 @@
 """Logs that are too large to be read at once, in small: the limits are lowered, the logs are a few 10,000 samples."""
 
+import re
 from collections.abc import Callable
 from pathlib import Path
 
@@ -8,6 +9,7 @@ import numpy as np
 import pytest
 from gainwright.ident.errors import RecordError, RequestError
 from gainwright.io import thinning
+from gainwright.io.drafting.draft import draft_rig
 from gainwright.io.read_record import read_record, shares_samples
 from gainwright.io.readers import parts
 from gainwright.io.record import Record
@@ -166,6 +168,15 @@ def test_a_window_is_cut_out_before_the_blocks_are_made(tmp_path: Path) -> None:
     assert record.run.command_before == columns["u"][9_999]
     with pytest.raises(RequestError, match="the window holds no samples"):
         read(tmp_path, columns, more='from = "50 s"')
+
+
+def test_a_rig_file_is_drafted_from_the_first_part(tmp_path: Path) -> None:
+    """What a signal is shows there; roles are guessed as in a log that is read whole."""
+    for write, name in ((written_hdf5, "run.h5"), (written_csv, "run.csv")):
+        write(tmp_path / name, made())
+        draft = draft_rig(tmp_path / name, tmp_path / "rig.toml")
+        assert re.search(r'^command\s+= \{ source = "/?u"', draft, re.MULTILINE)
+        assert re.search(r'^response\s+= \{ source = "/?y"', draft, re.MULTILINE)
 
 
 def test_a_cut_out_of_a_large_log_is_known_wherever_it_begins(tmp_path: Path) -> None:

@@ -9,6 +9,7 @@ import numpy as np
 import pytest
 from gainwright.ident.errors import RecordError, RequestError
 from gainwright.io.inspection import inspect_log
+from gainwright.io.plugin.folder import looks_finished
 from gainwright.io.readers import registry
 from gainwright.io.readers.mdf import MdfReader
 from gainwright.io.readers.parquet import ParquetReader
@@ -206,6 +207,7 @@ def test_a_missing_library_is_one_error_that_names_the_extra(
     assert isinstance(found, reader)
     with pytest.raises(RecordError, match=rf"needs the library[\s\S]*gainwright\[{extra}\]"):
         found.read(path, ["pos"], Hints())
+    assert looks_finished(path)  # so that a watched folder says it rather than waiting for ever
 
 
 @pytest.mark.parametrize("name", ["MDF 4", "universal text", "Parquet"])
