@@ -18,6 +18,7 @@ from ..further_forms import further_forms_as_printed, missing_forms
 from ..outcome import Outcome
 from . import pictures, tables, words
 from .changed import changed_of
+from .crossings import crossings
 from .ladder import ladder_of
 from .moving import moving_part
 from .paper import paper_of
@@ -253,9 +254,12 @@ def _located(outcome: Outcome, fit: Fit, design: Design) -> dict[str, Any]:
         "locus": pictures.locus_picture(outcome, fit, design),
         "margins": pictures.margins_picture(outcome, fit, design),
         "tried": tables.tried(design),
+        "crossings": crossings(loop, selection.pole, selection.loop_gain_unit),
         "angle": (
             f"The angle condition holds at {tables.point(selection.pole)} 1/s within "
             f"{number(abs(selection.angle_residual_deg), 2)} deg, so the magnitude condition may be used there. "
-            f"The exact pole of the sampled loop stands at {tables.point(selection.sampled_pole)} 1/s."
+            f"The exact pole of the sampled loop, ln z/T, stands at {tables.point(selection.sampled_pole)} 1/s, "
+            f"{number(100.0 * abs(selection.sampled_pole - selection.pole) / abs(selection.pole), 2)} % from it; above "
+            "5 % it is a caution."
         ),
     }

@@ -234,3 +234,14 @@ def test_the_law_is_written_out_with_its_memory():
         "       + 0.5 v[k-1]",
         "u[k] = v[k] limited by the clamp",
     ]
+
+
+def test_continuous_and_sampled_pole_stand_side_by_side_with_their_distance(make_outcome):
+    """Both in 1/s, and how far apart in per cent; what else lies on the same lines is folded below."""
+    outcome = make_outcome()
+    selection = outcome.design.selection
+    text = Reader(report_html(outcome)).text
+    apart = 100.0 * abs(selection.sampled_pole - selection.pole) / abs(selection.pole)
+    assert "The exact pole of the sampled loop, ln z/T, stands at" in text
+    assert f"{apart:.2g} % from it" in text
+    assert "Everything the locus offers on the same lines" in text
