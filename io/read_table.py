@@ -17,6 +17,7 @@ from .readers.still_there import still_there
 from .record import Finding, TableRecord, sha256_of
 from .rigfile.rig import Rig, RunSpec, Signal
 from .rigfile.table_runs import KIND, TABLE_ROLES
+from .samples import LARGEST
 
 _FEWEST = 6
 # A point less sure than this (relative, a standard error) is no small error in every direction any more.
@@ -42,7 +43,7 @@ def read_table(spec: RunSpec, rig: Rig) -> TableRecord:
     RequestError
         A column isn't there, or its unit doesn't fit.
     """
-    with still_there(spec.file):
+    with still_there(spec.file), np.errstate(over="ignore", invalid="ignore"):  # what overflows is refused
         return _read(spec, rig)
 
 
@@ -87,8 +88,8 @@ def _table(spec: RunSpec, rig: Rig, columns: dict[str, FloatArray], channels: di
         magnitude = 10.0 ** (columns["magnitude"] / 20.0)
     else:
         magnitude = columns["magnitude"] * _factor(spec, "magnitude", unit["magnitude"], gain)
-    _require(spec, "frequency", frequency, frequency > 0.0, "above zero")
-    _require(spec, "magnitude", magnitude, (magnitude > 0.0) & np.isfinite(magnitude), "above zero, or in dB")
+    _require(spec, "frequency", frequency, (frequency > 0.0) & (frequency < LARGEST), "above zero")
+    _require(spec, "magnitude", magnitude, (magnitude > 0.0) & (magnitude < LARGEST), "above zero, or in dB")
     phase, of_phase = (
         columns[role] * _factor(spec, role, unit[role], "rad") if role in columns else None
         for role in ("phase", "phase_error")

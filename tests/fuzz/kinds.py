@@ -8,6 +8,7 @@ from pathlib import Path
 
 import hdf5_inputs
 import rig_inputs
+import table_inputs
 import text_inputs
 from forked import ask_forked
 from gainwright.io.readers import through_child
@@ -75,7 +76,7 @@ def _inspected(log: Path, content: bytes, rig: Path) -> Iterator[Verdict]:
         yield verdict
         if verdict.code in GOOD:
             yield _loads(drafted, log)
-    yield _unchanged(log, content)
+    yield from _unchanged(log, content)
 
 
 def _loads(drafted: Path, log: Path) -> Verdict:
@@ -83,9 +84,9 @@ def _loads(drafted: Path, log: Path) -> Verdict:
     return judge(["inspect", str(log), "--rig", str(drafted)], log.parent.name)
 
 
-def _unchanged(log: Path, content: bytes) -> Verdict:
-    changed = log.read_bytes() != content
-    return Verdict(0, Fault("the log was changed", log.name) if changed else None)
+def _unchanged(log: Path, content: bytes) -> Iterator[Verdict]:
+    if log.read_bytes() != content:
+        yield Verdict(1, Fault("the log was changed", log.name))
 
 
 def _rig_beside(folder: Path, log: str, *sources: str) -> Path:
@@ -117,8 +118,19 @@ def _run_rig(folder: Path, content: bytes) -> Iterator[Verdict]:
     yield judge(["inspect", str(log), "--rig", str(rig)], folder.name)
 
 
+def _run_table(folder: Path, content: bytes) -> Iterator[Verdict]:
+    log, turn = folder / "table.csv", zlib.crc32(content)
+    log.write_bytes(content)
+    rig = folder / f"as_table_{turn % len(table_inputs.RIGS)}.toml"
+    if not rig.exists():
+        rig.write_text(table_inputs.RIGS[turn % len(table_inputs.RIGS)])
+    yield judge(["inspect", str(log), "--rig", str(rig)], log.name)
+    yield from _unchanged(log, content)
+
+
 KINDS = {
     "csv": Kind(text_inputs.sound, text_inputs.spoil, text_inputs.wide_or_long, _run_text),
     "rigfile": Kind(rig_inputs.sound, rig_inputs.spoil, rig_inputs.deep_or_long, _run_rig),
+    "table": Kind(table_inputs.sound, table_inputs.spoil, text_inputs.wide_or_long, _run_table),
     "hdf5": Kind(hdf5_inputs.sound, hdf5_inputs.spoil, hdf5_inputs.sound, _run_hdf5, guided=False),
 }

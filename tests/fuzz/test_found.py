@@ -79,6 +79,16 @@ def test_readings_beyond_any_unit_are_refused(tmp_path: Path, key: str, value: s
     only_refused(tmp_path, rig_inputs.SOUND.replace(old, f"{key} = {value}").encode(), 4)
 
 
+def test_a_table_whose_magnitudes_overflow_is_refused(tmp_path: Path) -> None:
+    """4e4 dB is no number any more, and came with a warning of numpy."""
+    content = b"f,gain,phase,coherence\n" + b"".join(
+        b"%d,%d,-10,0.9\n" % (k, 10 + 40000 * (k == 5)) for k in range(1, 12)
+    )
+    for turn in range(4):  # the rig file goes by the content
+        verdicts = list(KINDS["table"].run(tmp_path, content + b"%d,10,-10,0.9\n" % (20 + turn)))
+        assert [verdict.fault for verdict in verdicts] == [None]
+
+
 def test_a_draft_passes_over_columns_without_numbers(tmp_path: Path) -> None:
     """A log of many empty columns took one for the command, and its extremes don't exist."""
     log = tmp_path / "log.csv"

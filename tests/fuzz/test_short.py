@@ -9,7 +9,7 @@ from hypothesis import strategies as st
 from judged import Verdict
 from kinds import KINDS
 
-COUNTS = {"csv": 700, "rigfile": 1800, "hdf5": 60}
+COUNTS = {"csv": 700, "rigfile": 1500, "table": 700, "hdf5": 60}
 
 
 def faults(verdicts: list[Verdict]) -> list[str]:
