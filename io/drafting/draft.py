@@ -15,6 +15,7 @@ from ..readers.still_there import still_there
 from ..rigfile.rig import LogDialect
 from .roles import guess_roles
 from .seen_channel import SeenChannel, seen_channel
+from .tables import guess_table, table_text
 from .text import Drafted, draft_text
 
 _DECODED_BYTES = 64 << 20
@@ -45,6 +46,9 @@ def _drafted(run: Path, rig_file: Path) -> str:
     shown = os.path.relpath(run.resolve(), rig_file.resolve().parent).replace(os.sep, "/")
     dialect = _dialect(run) if isinstance(reader, CsvReader) else None
     name = run.resolve().stem.replace("_", " ")
+    table = guess_table(channels)
+    if table is not None:
+        return table_text(Drafted(shown, name, reader.name, dialect, None), table)
     return draft_text(Drafted(shown, name, reader.name, dialect, guess_roles(channels, str(run))))
 
 

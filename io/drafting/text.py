@@ -32,14 +32,15 @@ class Drafted:
         What the log was read as.
     dialect : LogDialect or None
         Of a text log.
-    roles : Roles
+    roles : Roles or None
+        None: the log is a frequency table.
     """
 
     run: str
     name: str
     reader: str
     dialect: LogDialect | None
-    roles: Roles
+    roles: Roles | None
 
 
 def draft_text(drafted: Drafted) -> str:
@@ -49,7 +50,10 @@ def draft_text(drafted: Drafted) -> str:
     ----------
     drafted : Drafted
     """
-    return "\n".join([*_head(drafted), *_signals(drafted.roles), *_runs(drafted), *_wishes(drafted.roles)]) + "\n"
+    roles = drafted.roles
+    if roles is None:
+        raise ValueError("a frequency table is drafted by `table_text`")
+    return "\n".join([*head(drafted), *_signals(roles), *_runs(drafted), *_wishes(roles)]) + "\n"
 
 
 def text(value: str) -> str:
@@ -63,12 +67,14 @@ def text(value: str) -> str:
     return json.dumps(value, ensure_ascii=False).replace("\x7f", "\\u007f")
 
 
-def _comment(value: str) -> str:
+def comment(value: str) -> str:
+    """A comment line of TOML, signs that do not print left out."""
     return "# " + "".join(sign if sign.isprintable() else " " for sign in value)
 
 
-def _head(drafted: Drafted) -> Iterator[str]:
-    yield _comment(f"Drafted from {drafted.run}, read as {drafted.reader}. Every `guessed = true` holds the job:")
+def head(drafted: Drafted) -> Iterator[str]:
+    """What the file was drafted from, the rig's name, and the dialect of a text log."""
+    yield comment(f"Drafted from {drafted.run}, read as {drafted.reader}. Every `guessed = true` holds the job:")
     yield "# look at the line, put it right, and remove the mark."
     yield ""
     yield "[rig]"
@@ -94,7 +100,7 @@ def _signals(roles: Roles) -> Iterator[str]:
         if role is not None:
             yield from _signal_line(name, role)
     if roles.others:
-        yield _comment("not used: " + ", ".join(each.name for each in roles.others[:20]))
+        yield comment("not used: " + ", ".join(each.name for each in roles.others[:20]))
 
 
 def _time_line(role: Role | None) -> Iterator[str]:
@@ -103,7 +109,7 @@ def _time_line(role: Role | None) -> Iterator[str]:
         yield 'time = { sample_rate = "1 kHz", guessed = true }'
         return
     unit, why = time_unit(role.channel)
-    yield _comment(f"{role.why}; unit: {why}")
+    yield comment(f"{role.why}; unit: {why}")
     stated = "" if role.channel.stamps else f", unit = {text(unit)}"
     yield f"time = {{ source = {text(role.channel.name)}{stated}, {_MARK} }}"
 
@@ -130,7 +136,7 @@ def _signal_line(name: str, role: Role) -> Iterator[str]:
     channel = role.channel
     unit, why = signal_unit(channel)
     low, high = _ends(channel)
-    yield _comment(f"{role.why}; unit: {why}; {low:.6g} to {high:.6g} in this log")
+    yield comment(f"{role.why}; unit: {why}; {low:.6g} to {high:.6g} in this log")
     lost = [value for value in _LOST if _is_lost_mark(channel, value)]
     more = f", lost_as = [{', '.join(f'{value!r}' for value in lost)}]" if lost else ""
     yield f"{name} = {{ source = {text(channel.name)}, unit = {text(unit)}{more}, {_MARK} }}"
