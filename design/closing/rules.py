@@ -31,6 +31,8 @@ _SURE = 5.0
 _FORETOLD = 1.3
 # Gains that hold on less than this share of the plants that are left more likely fail than hold.
 _LIKELY = 0.5
+# A drift that takes away this share of the miss, as nothing else does, is the level's doing, not the plant's.
+_DRIFTED = 0.9
 
 
 @dataclass(frozen=True)
@@ -111,7 +113,17 @@ class Evidence:
 
 def decide(evidence: Evidence) -> Finding:
     """Put every question in turn."""
-    questions = (_unexplained, _moved_by_somebody, _another_plant, _blind, _at_odds, _fails, _undecided, _agrees)
+    questions = (
+        _drifted,
+        _unexplained,
+        _moved_by_somebody,
+        _another_plant,
+        _blind,
+        _at_odds,
+        _fails,
+        _undecided,
+        _agrees,
+    )
     for question in questions:
         answer = question(evidence)
         if answer:
@@ -120,6 +132,16 @@ def decide(evidence: Evidence) -> Finding:
 
 
 Answer = tuple[Verdict, str] | None
+
+
+def _drifted(evidence: Evidence) -> Answer:
+    explaining = [cause.name for cause in evidence.explained.causes if cause.explains >= _DRIFTED]
+    if explaining != ["drift"] or evidence.explained.missed <= _FORETOLD * evidence.fit.noise.std:
+        return None
+    return "not comparable", (
+        f"the response drifts by itself ({evidence.shown}), and that can pass for another plant: wait until "
+        f"it stands still, then {evidence.advise(0.0)}"
+    )
 
 
 def _unexplained(evidence: Evidence) -> Answer:

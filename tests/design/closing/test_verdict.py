@@ -1,5 +1,6 @@
 """Held-out records against fit and gains: every verdict, each for its own reason."""
 
+import re
 from dataclasses import replace
 
 import numpy as np
@@ -9,7 +10,8 @@ from gainwright.design.closing.prediction import predict
 from gainwright.design.closing.verdict import compare
 from gainwright.design.design import design_gains
 from gainwright.design.requirements import ControllerSetting, Limits, Requirement, Requirements
-from gainwright.ident.catalogue import INTEGRATOR, LAG
+from gainwright.ident.catalogue import INTEGRATOR, LAG, TWO_LAGS_WITH_ZERO
+from gainwright.ident.confront import confront
 from gainwright.ident.identify import identify
 from gainwright.ident.run import Run
 
@@ -149,3 +151,79 @@ def test_an_integrating_plant_is_predicted_from_where_the_record_starts():
     run = log(0.8, 0.3, 41, step=step, level=50.0, drift=-0.16)
     truth = 50.0 - 0.16 * TIME + step_sums.response(step, 0.8, 0.3, TIME, run.command, 0.0)
     assert np.max(np.abs(predict(run, fit).predicted - truth)) < 0.03 * np.ptp(truth) + 2 * NOISE
+
+
+def test_a_drift_is_no_other_plant(job):
+    """The response creeps by 2 mm over the run: not comparable, and the why says what to wait for."""
+    found = verdict(job, log(2.0, 0.3, 27, drift=0.1))
+    assert found.verdict == "not comparable", found.why
+    assert "drift of +" in found.why
+    assert "stands still" in found.why
+
+
+def test_a_run_too_small_is_told_the_run_to_take(job):
+    """Amplitude inside the limits of 5 either way, how long, and rest before and after."""
+    tiny = verdict(job, log(2.0, 0.3, 28, profile=((3.0, 0.05), (11.0, 0.0))))
+    assert tiny.verdict == "not comparable"
+    size = float(re.search(r"steps either way of ([\d.]+) from", tiny.why).group(1))
+    assert 0.05 < size <= 5.0
+    assert "at rest for" in tiny.why
+
+
+@pytest.mark.parametrize("samples", [1, 2])
+def test_a_delay_is_named_in_samples_of_the_log(job, samples):
+    """0.1 s a sample: whatever the gains make of it, the engineer knows what to look for."""
+    found = verdict(job, log(2.0, 0.3 + 0.1 * samples, 29, noise=0.01))
+    assert found.verdict != "agrees"
+    assert f"{samples} sample{'s' if samples > 1 else ''} of this log" in found.why
+
+
+def test_another_load_breaks_a_law_without_integral():
+    """P on an integrating level, its load moved by 0.2 V: an error of 0.2/P at rest, seen by nothing but the drift."""
+    step = step_sums.integrator()
+    fit = identify([log(0.8, 0.3, 50, profile=FIT, step=step)], structures=[INTEGRATOR])
+    asked = {
+        **ASKED,
+        "requirements": Requirements((Requirement("steady_state_error", 0.05, "at_most"),), test_step=1.0),
+        "setting": ControllerSetting(0.1, 0.0, ("P",)),
+    }
+    design = design_gains(
+        fit.plant,
+        fit.plausible,
+        operating_command=fit.operating_command,
+        operating_response=fit.operating_response,
+        noise=fit.noise,
+        command_unit="V",
+        response_unit="mm",
+        **asked,
+    )
+    assert design.share_meeting >= 0.95, design.reasons
+    assert 0.2 / abs(design.gains.proportional) > 0.05
+    same = compare(log(0.8, 0.3, 51, step=step), fit, design, **asked)
+    assert same.verdict == "agrees", same.why
+    moved = compare(log(0.8, 0.3, 52, step=step, drift=-0.16), fit, design, **asked)
+    assert moved.verdict == "disagrees", moved.why
+    assert "another load" in moved.why
+
+
+def test_two_lags_with_a_zero_are_compared_with_their_zero():
+    """Zero time 0.3 s becomes 1.2 s, lags and gain as before: certain, and not agreed to; unchanged, no change is seen.
+
+    Truth: K (Tz s + 1)/((T1 s + 1)(T2 s + 1)) is the two lags and Tz times their slope, both closed forms.
+    """
+
+    def with_zero(zero):
+        slow, fast = 2.0, 0.5
+
+        def step(t):
+            slope = (np.exp(-t / slow) - np.exp(-t / fast)) / (slow - fast)
+            return step_sums.two_lags(slow, fast)(t) + zero * slope
+
+        return step
+
+    fit = identify([log(2.0, 0.3, 60, profile=FIT, step=with_zero(0.3), noise=0.01)], structures=[TWO_LAGS_WITH_ZERO])
+    assert fit.draws.shape[1] == len(TWO_LAGS_WITH_ZERO.shapes) + 3
+    same = confront(log(2.0, 0.3, 61, step=with_zero(0.3), noise=0.01), fit)
+    other = confront(log(2.0, 0.3, 62, step=with_zero(1.2), noise=0.01), fit)
+    assert same.p_value > 0.005
+    assert other.p_value < 0.005
