@@ -14,7 +14,7 @@ from .continuous import standing_in
 from .designed import Design, Judged, Trajectory
 from .discretise import gains_of, law_from_gains
 from .gains import Gains
-from .horizon import first_horizon
+from .horizon import SEARCHED, first_horizon
 from .judge import PlantVerdicts, judged_on
 from .limits import judged_limits, limit_cautions
 from .reasons import impossible, reasons_of
@@ -314,15 +314,22 @@ def _known(value: float) -> float | None:
 
 
 def _benches(found: Search, nominal: Plant, plausible: Plausible, situation: Situation) -> tuple[Bench, Bench]:
-    """The fitted plant under the very law, and the plausible ones as the search has them; floors are not asked."""
+    """The fitted plant under the very law, and the plausible ones as the search has them; floors are not asked.
+
+    Friction holds both: the fitted plant has the median of it.
+    """
     asked = situation.without_floors()
     horizon = first_horizon(nominal, situation)
-    alone = with_nominal(nominal, plausible.take([]), situation)
+    alone = with_nominal(nominal, plausible, situation).take([0])
     fine = horizon <= _FINE * situation.setting.update_interval
     samples = horizon / situation.setting.update_interval
-    points = int(np.clip(_SHARP / samples, 2, _MOST_POINTS)) if fine else 0
+    smooth = not np.any(plausible.stiction > 0.0)
+    points = int(np.clip(_SHARP / samples, 2, _MOST_POINTS)) if fine and smooth else 0
     exact = bench_of(alone, asked, horizon, stand_in=not fine, points=points)
-    return exact, replace(found.bench, situation=asked)
+    if smooth:
+        return exact, replace(found.bench, situation=asked)
+    some, searched = found.bench.plausible, first_horizon(nominal, situation, SEARCHED)
+    return exact, replace(bench_of(some, asked, searched, stand_in=True, grid=90), cautious=True)
 
 
 def _trajectory(checked: _Checked, nominal: Plant, plausible: Plausible, situation: Situation) -> Trajectory | None:

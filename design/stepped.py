@@ -97,7 +97,8 @@ class Stepped:
             moving = moving | (held & step_metrics.wanders(history.response, final))
         spacing = bank.interval / bank.points
         settle = self.situation.requirements.find("settling_time")
-        share = history.response / final
+        with np.errstate(invalid="ignore"):  # a plant that friction never lets go: nothing over nothing
+            share = history.response / final
         away = share - 1.0
         np.abs(away, out=away)
         usual = step_metrics.last_entry(away, 0.02, spacing, start=1.0)

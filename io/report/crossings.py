@@ -20,7 +20,8 @@ def crossings(loop: OpenLoop, chosen: complex, unit: str) -> Table | None:
         lines = offered(loop, chosen)
     except LocusError:
         return None
-    rows, own = [], []
+    rows: list[tuple[str, ...]] = []
+    own: list[int] = []
     for line in lines:
         for each in line.points:
             same = is_same(each, chosen)

@@ -55,11 +55,6 @@ def _guides(sweep: GainSweep) -> dict[str, str]:
         f" The band is run with an update interval of {words.every(sweep.band_interval)} and the same total delay, to "
         "keep the sheet small."
     )  # fmt: skip
-    held = (
-        " The filled rows leave dry friction out; beads, bars and the pictures below count it."
-        if sweep.fitted.running.drives is not None
-        else ""
-    )
     return {
         "ribbon_guide": (
             "How to use it: drag the handle, or click on the ribbon; with the keyboard the arrows move by one gain, "
@@ -67,7 +62,7 @@ def _guides(sweep: GainSweep) -> dict[str, str]:
             "chosen K. Rows are filled where a requirement holds. On each row the bead shows the slack of the fitted "
             "plant: the bound is the upright line, room is to its right; the bar behind it holds 95 % of "
             f"{sweep.plants} plausible plants (at the chosen K: of all that the gains were checked on), and the figure "
-            f"is the worse of its end and the bead. A hollow bead misses its bound.{held}"
+            f"is the worse of its end and the bead. A hollow bead misses its bound."
         ),
         "locus_guide": (
             "How to read it: filled diamonds are the closed-loop poles of the fitted plant at this K, dotted ones "
