@@ -13,6 +13,9 @@ class Pending(Protocol[Given]):
     def result(self) -> Given:
         """Wait for the work, or do it here; a fault of the work is raised."""
 
+    def busy(self) -> bool:
+        """Whether the work is being done aside at this moment: who asks for its result now has to wait."""
+
 
 class Aside(Protocol):
     """Where work can be handed to.
@@ -37,6 +40,10 @@ class Later(Generic[Result]):
         if self._done is None:
             self._done = (self._work(*self._given),)
         return self._done[0]
+
+    def busy(self) -> bool:
+        """Never."""
+        return False
 
 
 class Here:

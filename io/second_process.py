@@ -39,6 +39,10 @@ class _Task(Generic[Result]):
             self._answer = (self.work(*self.given),)
         return self._answer[0]
 
+    def busy(self) -> bool:
+        """Whether the other process has begun and not ended it."""
+        return not self._settled.is_set() and not self._owner.holds(self)
+
 
 class SecondProcess:
     """The process and the pipes to it.
@@ -73,6 +77,11 @@ class SecondProcess:
                 self._waiting.append(task)
                 self._change.notify()
         return task
+
+    def holds(self, task: _Task[Any]) -> bool:
+        """Whether the task is still waiting."""
+        with self._change:
+            return task in self._waiting
 
     def take_back(self, task: _Task[Any]) -> bool:
         """Whether the task was still waiting; it is not sent any more then."""

@@ -32,34 +32,44 @@ class Drives:
         """The drives of some columns."""
         return Drives(self.gain[chosen], self.lag[chosen], self.friction[chosen], self.delay[chosen])
 
-    def advance(self, speed: FloatArray, level: FloatArray, length: FloatArray) -> tuple[FloatArray, FloatArray]:
+    def decay(self, length: FloatArray) -> FloatArray:
+        """What `length` seconds leave of a speed that nothing drives, a share."""
+        return np.asarray(np.exp(-length / self.lag))
+
+    def advance(
+        self, speed: FloatArray, level: FloatArray, length: FloatArray, decay: FloatArray | None = None
+    ) -> tuple[FloatArray, FloatArray]:
         """Speed after `length` seconds under a constant command, and how far the response moved.
 
-        A drive that comes to rest within the stretch stays or turns in what is left of it.
+        A drive that comes to rest within the stretch stays or turns in what is left of it. `decay` is that of the
+        whole length, for those who walk it often.
         """
-        speed, moved, left = self._phase(speed, level, length)
+        speed, moved, left = self._phase(speed, level, length, self.decay(length) if decay is None else decay)
         if np.any(left > 0.0):
-            speed, more, _ = self._phase(speed, level, left)
+            speed, more, _ = self._phase(speed, level, left, self.decay(left))
             moved = moved + more
         return speed, moved
 
     def _phase(
-        self, speed: FloatArray, level: FloatArray, length: FloatArray
+        self, speed: FloatArray, level: FloatArray, length: FloatArray, decay: FloatArray
     ) -> tuple[FloatArray, FloatArray, FloatArray]:
-        way = np.where(speed != 0.0, np.sign(speed), np.sign(level))
-        stuck = (speed == 0.0) & (np.abs(level) <= self.friction)
+        moving = speed != 0.0
+        way = np.sign(np.where(moving, speed, level))
+        stuck = ~moving & (np.abs(level) <= self.friction)
         final = np.where(stuck, 0.0, level - way * self.friction)
-        stops = (speed != 0.0) & (final * way < 0.0)
+        stops = moving & (final * way < 0.0)
         if not stops.any():
-            decay = np.exp(-length / self.lag)
-            moved = self.gain * (final * length + (speed - final) * self.lag * (1.0 - decay))
-            return final + (speed - final) * decay, moved, np.zeros_like(length)
+            return *self._walked(speed, final, length, decay), np.zeros_like(length)
         until = np.where(stops, self.lag * np.log1p(np.where(stops, -speed / np.where(stops, final, 1.0), 0.0)), np.inf)
         step = np.minimum(length, until)
-        decay = np.exp(-step / self.lag)
-        moved = self.gain * (final * step + (speed - final) * self.lag * (1.0 - decay))
-        after = np.where(until <= length, 0.0, final + (speed - final) * decay)
-        return after, moved, length - step
+        after, moved = self._walked(speed, final, step, self.decay(step))
+        return np.where(until <= length, 0.0, after), moved, length - step
+
+    def _walked(
+        self, speed: FloatArray, final: FloatArray, length: FloatArray, decay: FloatArray
+    ) -> tuple[FloatArray, FloatArray]:
+        moved = self.gain * (final * length + (speed - final) * self.lag * (1.0 - decay))
+        return final + (speed - final) * decay, moved
 
 
 def drives_of(plants: Sequence[Plant], friction: FloatArray, delay: FloatArray) -> Drives | None:

@@ -55,6 +55,9 @@ class _Rough:
         self.old_share = np.clip(part[None, :] - begins, 0.0, self.stride)
         self.any_old = np.any(self.old_share > 0.0, axis=1)
         self.any_new = np.any(self.old_share < self.stride, axis=1)
+        self.old_decay = drives.decay(self.old_share)
+        self.new_share = self.stride - self.old_share
+        self.new_decay = drives.decay(self.new_share)
         self.smooth = np.exp(-self.stride / filter_time) if filter_time > 0.0 else 0.0
 
     def run(self, setpoint: FloatArray, disturbance: FloatArray, samples: int) -> History:
@@ -80,13 +83,12 @@ class _Rough:
             second = goal[2] - law.response[2] * seen + ahead[1] * given - law.memory[2] * wanted
             new, old = sent[k + depth - self.lag, columns], sent[k + depth - self.lag - 1, columns]
             for j in range(self.points):
-                share = self.old_share[j]
                 after = place
                 if self.any_old[j]:
-                    speed, moved = self.drives.advance(speed, old, share)
+                    speed, moved = self.drives.advance(speed, old, self.old_share[j], self.old_decay[j])
                     after = after + moved
                 if self.any_new[j]:
-                    speed, moved = self.drives.advance(speed, new, self.stride - share)
+                    speed, moved = self.drives.advance(speed, new, self.new_share[j], self.new_decay[j])
                     after = after + moved
                 seen, place = self._seen(seen, place, after)
                 response[k, j] = place

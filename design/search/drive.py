@@ -74,15 +74,12 @@ def search(
     best: Found | None = None
     tried: list[Tried] = list(plan.skipped)
     order = plan.structures + plan.last
-    ahead: dict[int, Pending[Found]] = {}
+    both = _Both(order, nominal, bench, aside)
     for i, structure in enumerate(order):
         if i >= len(plan.structures) and best is not None and best.slack >= 0.0:
             break
         progress(f"searching zeros and gain of {structure}", i / len(order))
-        if i and i not in ahead and i + 1 < len(order):  # the simplest did not do: two are searched at a time
-            following = order[i + 1]
-            ahead[i + 1] = aside.start(best_of, following, nominal, _asking(bench, following, nominal))
-        found = ahead[i].result() if i in ahead else best_of(structure, nominal, _asking(bench, structure, nominal))
+        found = both.best(i)
         if rough is not None:
             held = check(rough, found.space, found.point)
             found = replace(held, slack=min(found.slack, held.slack))
@@ -94,6 +91,31 @@ def search(
     if best is None:
         raise AssertionError("a plan holds at least one structure")
     return Search(best, tuple(tried), bench, used)
+
+
+class _Both:
+    """The best of one structure after another; while one is searched here, the next may be searched aside."""
+
+    def __init__(self, order: tuple[StructureName, ...], nominal: Plant, bench: Bench, aside: Aside) -> None:
+        self._order, self._nominal, self._bench, self._aside = order, nominal, bench, aside
+        self._ahead: dict[int, Pending[Found]] = {}
+        self._here: dict[int, Found] = {}
+
+    def best(self, i: int) -> Found:
+        """The best of the i-th structure; they are asked for in order."""
+        if i in self._ahead:
+            if self._ahead[i].busy() and i + 1 < len(self._order):
+                self._here[i + 1] = best_of(*self._task(i + 1))  # rather than wait
+            return self._ahead[i].result()
+        if i not in self._here:
+            if i + 1 < len(self._order):
+                self._ahead[i + 1] = self._aside.start(best_of, *self._task(i + 1))
+            self._here[i] = best_of(*self._task(i))
+        return self._here[i]
+
+    def _task(self, i: int) -> tuple[StructureName, Plant, Bench]:
+        structure = self._order[i]
+        return structure, self._nominal, _asking(self._bench, structure, self._nominal)
 
 
 def best_of(structure: StructureName, nominal: Plant, bench: Bench) -> Found:

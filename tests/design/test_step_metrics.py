@@ -7,7 +7,7 @@ from gainwright.design.gains import Gains
 from gainwright.design.sampled.around import run_around
 from gainwright.design.sampled.bank import build_bank
 from gainwright.design.sampled.loop import Clamps
-from gainwright.design.step_metrics import last_entry, overshoot, rise_time, settling_time, still_moving
+from gainwright.design.step_metrics import first_highest, last_entry, overshoot, rise_time, settling_time, still_moving
 from gainwright.ident.plant import Plant
 
 ZETA = np.array([0.1, 0.2, 0.3, 0.4, 0.5, 0.6, 0.7, 0.8, 0.9])
@@ -112,3 +112,18 @@ def test_overshoot_of_a_relative_degree_one_loop_does_not_hang_on_where_it_is_lo
         history = run_around(bank, np.zeros(1, int), law, setpoint=np.ones(1), disturbance=np.zeros(1),
                              clamps=Clamps(np.full(1, -np.inf), np.full(1, np.inf), np.inf), samples=60)  # fmt: skip
         assert overshoot(history.response, np.ones(1))[0] == pytest.approx(0.85808028, abs=2e-5)
+
+
+@pytest.mark.parametrize("rows", [1, 127, 128, 130, 1000, 1024])
+@pytest.mark.parametrize("kind", ["numbers", "ties", "bools", "holes"])
+def test_the_first_highest_row_is_that_of_numpy(rows, kind):
+    """numpy.argmax along the rows, the independent computation: ties go to the first, NaN counts as highest."""
+    rng = np.random.default_rng(rows)
+    table = rng.normal(size=(rows, 37))
+    if kind == "ties":
+        table = np.round(2.0 * table)
+    elif kind == "bools":
+        table = table > 2.5
+    elif kind == "holes":
+        table[rng.random(table.shape) < 0.01] = np.nan
+    assert np.array_equal(first_highest(table), table.argmax(axis=0))

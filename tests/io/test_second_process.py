@@ -10,6 +10,10 @@ import time
 import numpy as np
 import pytest
 from gainwright.design.aside import HERE
+from gainwright.design.design import begin_design
+from gainwright.design.requirements import ControllerSetting, Limits, Requirement, Requirements
+from gainwright.ident.fitted import Plausible
+from gainwright.ident.plant import Plant
 from gainwright.io import second_process as room
 from gainwright.io.second_process import SecondProcess, second_process
 
@@ -121,3 +125,30 @@ def test_a_machine_with_one_core_gets_none(cores: int, monkeypatch) -> None:
     monkeypatch.setattr(room, "_cores", lambda: cores)
     with second_process() as aside:
         assert (aside is HERE) == (cores == 1)
+
+
+def test_a_design_is_the_same_to_the_last_bit_with_and_without_it(second: SecondProcess) -> None:
+    """An offset that P can't avoid: several structures are searched, and here two at a time."""
+    rng = np.random.default_rng(5)
+    scatter = np.exp(0.05 * rng.standard_normal((60, 3)))
+    plants = tuple(Plant((2.0 * g,), (0.5 * t, 1.0), 0.1 * d) for g, t, d in scatter)
+    asked = (
+        Requirement("settling_time", 1.2, "at_most", "s", band=0.02),
+        Requirement("overshoot", 0.1, "at_most", "%", 100.0),
+        Requirement("steady_state_error", 0.01, "at_most", "%", 100.0),
+    )
+
+    def designed(aside):
+        return begin_design(
+            Plant((2.0,), (0.5, 1.0), 0.1), Plausible(plants, np.zeros(60), np.zeros(60)),
+            operating_command=0.0, operating_response=0.0, noise=None, requirements=Requirements(asked, 2.0),
+            limits=Limits(-10.0, 10.0, np.inf, -40.0, 40.0, np.inf), setting=ControllerSetting(0.02, 0.002),
+            command_unit="V", response_unit="mm", aside=aside,
+        ).finished()  # fmt: skip
+
+    there(second, os.getpid)
+    both, alone = designed(second), designed(HERE)
+    assert len(alone.tried) > 2
+    assert both.gains == alone.gains
+    assert both.selection == alone.selection
+    assert both.tried == alone.tried
