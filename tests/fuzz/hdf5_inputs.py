@@ -38,7 +38,7 @@ def sound(dice: random.Random) -> bytes:
     ) as file:
         for _ in range(dice.choice((1, 2, 3, 3, 6))):
             with contextlib.suppress(
-                ValueError, TypeError, OSError, RuntimeError
+                ValueError, TypeError, OSError, RuntimeError, LookupError
             ):  # such a thing can't be made; the next one
                 dice.choice(_PARTS)(file if dice.random() < 0.7 else file.require_group("g/h"), dice)
     return content.getvalue()
