@@ -15,6 +15,7 @@ from .designed import Design, Judged, Trajectory
 from .discretise import gains_of, law_from_gains
 from .gains import Gains
 from .horizon import SEARCHED, first_horizon
+from .hunting import hunting
 from .judge import PlantVerdicts, judged_on
 from .limits import judged_limits, limit_cautions
 from .reasons import impossible, reasons_of
@@ -275,6 +276,9 @@ def _report(
     reasons = reasons_of(verdicts, judged, limits, checked.slacks, situation)
     hopeless = impossible(nominal, situation, units) if reasons else []
     clamped = verdicts.clamped > 0.0
+    hunts = hunting(checked.gains, nominal, plausible, situation)
+    if hunts is not None and reasons:
+        reasons = [hunts.reason(units, bool(checked.gains.integral)), *reasons]
     return Design(
         checked.gains,
         law_from_gains(checked.gains, situation.setting.update_interval, situation.clamp),
@@ -290,7 +294,10 @@ def _report(
         _trajectory(checked, nominal, plausible, situation),
         found.tried,
         tuple(hopeless + reasons),
-        _cautions(verdicts, nominal, plausible, checked.gains, situation),
+        (
+            *_cautions(verdicts, nominal, plausible, checked.gains, situation),
+            *([] if hunts is None or reasons else [hunts.caution(units, bool(checked.gains.integral))]),
+        ),
         continuous=situation.setting.continuous,
     )
 

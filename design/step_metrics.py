@@ -183,6 +183,11 @@ def first_reach(share: FloatArray, level: float, spacing: float) -> FloatArray:
     return np.where(reached[index, columns], spacing * (index + np.clip(part, 0.0, 1.0)), np.inf)
 
 
+def late(response: FloatArray, share: float) -> FloatArray:
+    """The last share of the (q, c) record, one row at least."""
+    return response[-max(int(response.shape[0] * share), 1) :]
+
+
 def wanders(response: FloatArray, final: FloatArray) -> NDArray[np.bool_]:
     """(c,) whether the last tenth of the record still moves by more than half a per cent of the step."""
     tail = response[-max(response.shape[0] // 10, 2) :]

@@ -9,7 +9,7 @@ from numpy.typing import NDArray
 from ..ident.run import FloatArray
 from . import step_metrics
 from .discretise import LawColumns
-from .sampled.around import held_by_friction, run_around
+from .sampled.around import held_by_friction, held_by_valve, run_around
 from .sampled.bank import IndexArray
 from .sampled.loop import Clamps, History
 from .situation import DISTURBED, STEP
@@ -95,6 +95,10 @@ class Stepped:
         if held.any():
             final = np.where(held, history.response[-1], final)
             moving = moving | (held & step_metrics.wanders(history.response, final))
+        stuck = held_by_valve(bank, self.which)
+        if stuck.any():  # it may hunt for ever: the middle of the last tenth is as steady as it gets
+            middle = step_metrics.late(history.response, 0.1).mean(axis=0)
+            final = np.where(stuck & (np.abs(middle) > 0.1 * np.abs(goal)), middle, final)
         spacing = bank.interval / bank.points
         settle = self.situation.requirements.find("settling_time")
         with np.errstate(invalid="ignore"):  # a plant that friction never lets go: nothing over nothing
@@ -103,13 +107,15 @@ class Stepped:
         np.abs(away, out=away)
         usual = step_metrics.last_entry(away, 0.02, spacing, start=1.0)
         usual = np.where(moving, np.inf, usual)
-        self._keep_settled(usual)
+        whole = spacing * history.response.shape[0]
+        self._keep_settled(np.where(stuck, np.minimum(usual, whole / 5.0), usual))
         if settle is not None:
             band = settle.band or 0.02
             time = usual if band == 0.02 else step_metrics.last_entry(away, band, spacing, start=1.0)
             if self.bench.cautious:
                 inner = step_metrics.last_entry(away, _INNER * band, spacing, start=1.0)
                 time = np.maximum(time, inner / _LATER)
+            time = np.where(stuck & (time > 0.8 * whole), np.inf, time)
             self._keep("settling_time", np.where(moving, np.inf, time))
             if self.bench.graded:
                 late = step_metrics.largest_from(away, settle.limit, spacing) / band - 1.0
@@ -124,7 +130,7 @@ class Stepped:
         if self.situation.asks(("steady_state_error",)):
             tail = history.response[-max(history.response.shape[0] // 5, 1) :]
             wandering = np.abs(goal - tail).max(axis=0) if tail.size else np.abs(goal)
-            remaining = np.where(np.isfinite(usual), np.abs(goal - final), wandering)
+            remaining = np.where(np.isfinite(usual) & ~stuck, np.abs(goal - final), wandering)
             stiction = stiction_error(bank, self.which, self.law, self.bench.plausible.stiction[self.which])
             anywhere = np.abs(goal - smooth_final) + stiction
             self._keep("steady_state_error", np.where(held, np.maximum(remaining, anywhere), remaining + stiction))

@@ -30,18 +30,20 @@ def trajectory(gains: Gains, nominal: Plant, plausible: Plausible, situation: Si
     setting = situation.setting
     count = len(plausible.plants)
     some = plausible.take(np.linspace(0, count - 1, min(count, _BAND)).astype(int).tolist())
+    led = some.led_by(nominal, situation.operating_command)
     bank = build_bank(
-        (nominal, *some.plants),
+        led.plants,
         setting.update_interval,
         computation_delay=half_held(setting, setting.update_interval),
         filter_time=setting.response_filter_time,
         points=1,
-        stiction=np.concatenate([[np.median(some.stiction)], some.stiction]),
+        stiction=led.stiction,
+        valves=led.valves,
         predict=setting.continuous,
     )
     which = np.arange(bank.lag.size)
     law = law_columns(columns_of([gains]), bank.interval).take(np.zeros(which.size, dtype=int))
-    offset = np.concatenate([[0.0], situation.operating_command - some.operating_command])
+    offset = situation.operating_command - led.operating_command
     rest = rest_at(bank, which, law, np.full(which.size, situation.start), offset)
     clamp = situation.clamp
     low = (-np.inf if clamp.lowest is None else clamp.lowest) - rest.command

@@ -112,7 +112,7 @@ def bench_of(
         longest = max(min(longest, _ROTATION / _swing(exact)), setting.update_interval)
         running = _bank(plausible, situation, min(horizon / _STAND_IN, longest), points or 4)
     if smooth:
-        running = replace(running, drives=None)
+        running = replace(running, drives=None, valves=None)
     samples = int(min(np.ceil(horizon / running.interval) + 1, most))
     coarse = _coarse(plausible, situation, exact)
     slow = 0.2 / horizon if setting.continuous else np.inf
@@ -129,6 +129,7 @@ def _bank(plausible: Plausible, situation: Situation, interval: float, points: i
         filter_time=setting.response_filter_time,
         points=points,
         stiction=plausible.stiction,
+        valves=plausible.valves,
         predict=setting.continuous,
     )
 

@@ -5,6 +5,7 @@ from dataclasses import dataclass, field
 import numpy as np
 
 from .plant import Plant
+from .play import Sticking, Valve
 from .run import Between, FloatArray
 from .tables import FittedTable
 
@@ -62,16 +63,43 @@ class Plausible:
         The command that holds the operating response, one a plant.
     stiction : (p,) array, command unit
         Change of command that friction swallows before the response moves; 0 where none was found.
+    valves : (p, 3) array or None, command unit
+        Of a valve that sticks before each plant: the band within which the command moves nothing, how far short of
+        the command it rests, and how far above it the command stands at rest. None where none was found.
     """
 
     plants: tuple[Plant, ...]
     operating_command: FloatArray
     stiction: FloatArray
+    valves: FloatArray | None = None
 
     def take(self, chosen: FloatArray | list[int] | slice) -> "Plausible":
         """The chosen ones, by index."""
         index = np.arange(len(self.plants))[chosen]
-        return Plausible(tuple(self.plants[i] for i in index), self.operating_command[index], self.stiction[index])
+        valves = None if self.valves is None else self.valves[index]
+        return Plausible(
+            tuple(self.plants[i] for i in index), self.operating_command[index], self.stiction[index], valves
+        )
+
+    def led_by(self, plant: Plant, operating_command: float) -> "Plausible":
+        """The same behind one plant more, which takes the median friction and the median valve, at rest amid its band.
+
+        Parameters
+        ----------
+        plant : Plant
+        operating_command : float, command unit
+        """
+        stiction = float(np.median(self.stiction)) if self.stiction.size else 0.0
+        valves = self.valves
+        if valves is not None:
+            middle = np.median(valves, axis=0) * [1.0, 1.0, 0.0] if len(valves) else np.zeros(3)
+            valves = np.vstack([middle, valves])
+        return Plausible(
+            (plant, *self.plants),
+            np.concatenate([[operating_command], self.operating_command]),
+            np.concatenate([[stiction], self.stiction]),
+            valves,
+        )
 
 
 @dataclass(frozen=True)
@@ -159,6 +187,8 @@ class Fit:
     tables : tuple of FittedTable
         Frequency tables among what was fitted. With tables alone `runs` is empty and the noise in time is not known:
         its standard deviation is zero.
+    sticking : Sticking or None
+        A valve that sticks before the plant, and what is open about it; None where the records show none.
     """
 
     structure: str
@@ -181,3 +211,9 @@ class Fit:
     between: Between = "held"
     friction: tuple[float, float] = (0.0, 0.0)
     tables: tuple[FittedTable, ...] = ()
+    sticking: Sticking | None = None
+
+    @property
+    def valve(self) -> Valve:
+        """The valve before the plant; one that follows where none was found."""
+        return Valve() if self.sticking is None else self.sticking.valve

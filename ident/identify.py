@@ -5,6 +5,7 @@ from dataclasses import replace
 
 import numpy as np
 
+from .behind_valve import Choice, behind_valve
 from .between import Between, settle_between
 from .catalogue import CATALOGUE, Structure
 from .choose import Fitted, Progress, colour_of, evidence, fit_candidates, name_of, refit, steady_fit
@@ -12,6 +13,7 @@ from .closed_loop import resting_response
 from .ensemble import Drawn, draw_structure, internal_draws, operating_commands, plant_of, plausible_plants
 from .fit import finish
 from .fitted import Candidate, Fit, FittedRun, Noise, Parameter
+from .play import Sticking
 from .run import FloatArray, Run
 from .table_fit import fitted_tables, require_tables, structures_for, table_cautions, weigh
 from .tables import Table
@@ -77,16 +79,32 @@ def identify(
     operating_response = resting_response(runs) if operating_response is None and runs else operating_response
     fixed = operating_command is not None
     weighed = weigh(tables, runs, reference, fixed, structures) if tables else ()
-    fitted, colour = fit_candidates(runs, reference, fixed, structures, progress, weighed)
-    weights = evidence(fitted)
-    chosen, colour = _finished(fitted[0], colour)
-    fitted = [chosen, *(f if chosen.whitened else steady_fit(f) for f in fitted[1:])]
+
+    def choose(through: Sequence[Run], further: bool) -> Choice:
+        allowed = structures if further else [s for s in structures if not s.further]
+        fitted, colour = fit_candidates(through, reference, fixed, allowed, progress, weighed)
+        chosen, own = _finished(fitted[0], colour)
+        return Choice([chosen, *fitted[1:]], evidence(fitted), own)
+
+    choice, sticking = choose(runs, True), None
+    if not tables:
+        choice, sticking = behind_valve(runs, choice, choose)
+    fitted, weights, colour = choice.fitted, choice.weights, choice.colour
+    fitted = [fitted[0], *(f if fitted[0].whitened else steady_fit(f) for f in fitted[1:])]
     if progress:
         progress("drawing plausible plants", 0.8)
     kept = [i for i in range(len(fitted)) if i == 0 or weights[i] >= _TIED]
     drawn = [draw_structure(fitted[i], colour, _DRAWS if i == 0 else _TIED_DRAWS, seed) for i in kept]
     drawn = [replace(d, draws=between.spread(d.draws, len(d.fitted.theta) - 1)) for d in drawn]
-    return _assembled(fitted, weights, drawn, weights[kept], colour, operating_response, between)
+    found = _assembled(fitted, weights, drawn, weights[kept], colour, operating_response, between)
+    return found if sticking is None else _with_valve(found, sticking, runs, seed)
+
+
+def _with_valve(fit: Fit, sticking: Sticking, runs: Sequence[Run], seed: int) -> Fit:
+    """The fit with the valve in front of each plausible plant, and the commands as they were logged."""
+    logged = tuple(replace(each, command=run.command) for each, run in zip(fit.runs, runs, strict=True))
+    valves = sticking.draws(len(fit.plausible.plants), seed)
+    return replace(fit, runs=logged, plausible=replace(fit.plausible, valves=valves), sticking=sticking)
 
 
 def _finished(best: Fitted, colour: Colour) -> tuple[Fitted, Colour]:

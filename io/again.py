@@ -160,7 +160,8 @@ def _plausible(group: h5py.Group) -> Plausible:
         Plant(_trimmed(top), _trimmed(bottom), float(delay))
         for top, bottom, delay in zip(tops, bottoms, delays, strict=True)
     )
-    return Plausible(plants, group["operating_command"][()], group["stiction"][()])
+    valves = group["valves"][()] if "valves" in group else None
+    return Plausible(plants, group["operating_command"][()], group["stiction"][()], valves)
 
 
 def _trimmed(row: FloatArray) -> tuple[float, ...]:

@@ -4,6 +4,8 @@ import math
 from collections.abc import Iterator
 from dataclasses import fields
 
+import numpy as np
+
 from ..design.designed import Design, LimitJudged, Selection
 from ..design.requirements import Limits
 from ..ident.fitted import Fit
@@ -62,6 +64,8 @@ def derived_cautions(rig: Rig, design: Design | None, fit: Fit | None = None) ->
         found += noise_caution(rig, design, fit)
         found += sampling_caution(design.selection)
         found += stiction_caution(rig, design, fit)
+    if fit is not None:
+        found += sticking_caution(rig, fit)
     return tuple(found)
 
 
@@ -198,6 +202,22 @@ def sampling_caution(selection: Selection) -> Iterator[str]:
             "away from the chosen point of the locus. Every requirement was judged on the sampled law; a shorter "
             "update interval would bring the two together."
         )
+
+
+def sticking_caution(rig: Rig, fit: Fit) -> Iterator[str]:
+    """The records show an actuator that sticks: how far short it rests, and what is open about its band."""
+    if fit.sticking is None or fit.plausible.valves is None:
+        return
+    unit, ordered = rig.command_unit, np.sort(fit.plausible.valves[:, :2], axis=0)
+    place = ordered.shape[0] - 1
+    low, middle, high = (ordered[round(share * place)] for share in (0.025, 0.5, 0.975))
+    told = " and that is all that its moves show of the band" if np.ptp(fit.sticking.weights) < 0.01 else ""
+    yield (
+        f"The actuator sticks: it comes to rest about {with_unit(middle[1], unit, 2)} short of the command (95 %: "
+        f"{number(low[1], 2)} to {with_unit(high[1], unit, 2)}){told}. A move within {with_unit(middle[0], unit, 2)} "
+        f"of where it stands (95 %: {number(low[0], 2)} to {with_unit(high[0], unit, 2)}) moves nothing. The release "
+        "check simulates it."
+    )
 
 
 def stiction_caution(rig: Rig, design: Design, fit: Fit | None) -> Iterator[str]:

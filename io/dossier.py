@@ -170,6 +170,9 @@ def _put_plausible(group: h5py.Group, plausible: Plausible, rig: Rig) -> None:
     text = "command that holds the operating response, one a plant"
     _numbers(group, "operating_command", plausible.operating_command, rig.command_unit, text)
     _numbers(group, "stiction", plausible.stiction, rig.command_unit, "change of command that friction swallows")
+    if plausible.valves is not None:
+        text = "valve that sticks: band, how far short of the command it rests, how far above it the command is at rest"
+        _numbers(group, "valves", plausible.valves, rig.command_unit, text)
 
 
 def _rows(coefficients: Sequence[tuple[float, ...]]) -> NDArray[np.float64]:

@@ -166,7 +166,19 @@ def _plant(outcome: Outcome) -> dict[str, Any] | None:
         "misfit": float(fit.misfit),
         "noise": _noise(fit),
         "between_samples": fit.between,
+        "sticking": _sticking(fit, rig.command_unit),
     }
+
+
+def _sticking(fit: Fit, unit: str) -> dict[str, Any] | None:
+    """A valve that sticks: within the band the command moves nothing; after a move it rests short of the command."""
+    if fit.sticking is None or fit.plausible.valves is None:
+        return None
+    rows = {}
+    for place, name in enumerate(("band", "short")):
+        low, middle, high = np.quantile(fit.plausible.valves[:, place], [0.025, 0.5, 0.975])
+        rows[name] = {"value": float(middle), "unit": unit, "interval_95": [float(low), float(high)]}
+    return rows
 
 
 def _noise(fit: Fit) -> dict[str, Any]:

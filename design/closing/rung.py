@@ -129,12 +129,7 @@ def judge_rung(
 def _with_fitted(nominal: Plant, plausible: Plausible, command: float) -> Plausible:
     count = len(plausible.plants)
     some = plausible.take(np.unique(np.linspace(0, count - 1, min(count, _PLANTS)).astype(int)).tolist())
-    stiction = float(np.median(plausible.stiction)) if count else 0.0
-    return Plausible(
-        (nominal, *some.plants),
-        np.concatenate([[command], some.operating_command]),
-        np.concatenate([[stiction], some.stiction]),
-    )
+    return some.led_by(nominal, command)
 
 
 def _simulated(
@@ -158,6 +153,7 @@ def _simulated(
         filter_time=setting.response_filter_time,
         points=1,
         stiction=plausible.stiction,
+        valves=plausible.valves,
     )
     count = len(plausible.plants)
     columns = columns_of_law(law).take(np.zeros(count, dtype=int))

@@ -62,6 +62,7 @@ def compare(
     """
     if progress:
         progress(f"comparing with {run.label}", 0.0)
+    logged, run = run, fit.valve.through(run)
     prediction = predict(run, fit)
     valid = run.valid
     spread = float(np.std(run.response[valid]))
@@ -71,7 +72,7 @@ def compare(
     return Compared(
         label=run.label,
         time=run.time,
-        command=run.command,
+        command=logged.command,
         response=run.response,
         predicted=prediction.predicted,
         low=prediction.low,

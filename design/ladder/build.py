@@ -105,12 +105,7 @@ def _with_fitted(nominal: Plant, plausible: Plausible, count: int, situation: Si
     """The fitted plant, which takes the median friction, in front of plants spread evenly over the draws."""
     every = np.linspace(0, len(plausible.plants) - 1, min(count, len(plausible.plants))).astype(int)
     some = plausible.take(np.unique(every).tolist())
-    stiction = float(np.median(plausible.stiction)) if plausible.stiction.size else 0.0
-    return Plausible(
-        (nominal, *some.plants),
-        np.concatenate([[situation.operating_command], some.operating_command]),
-        np.concatenate([[stiction], some.stiction]),
-    )
+    return some.led_by(nominal, situation.operating_command)
 
 
 def _refusal(everyone: Field, gains: Gains) -> str:

@@ -150,6 +150,7 @@ def _bank(plausible: Plausible, situation: Situation, horizon: float) -> Bank:
         filter_time=setting.response_filter_time,
         points=2 if not np.any(plausible.stiction > 0.0) else 1,
         stiction=plausible.stiction,
+        valves=plausible.valves,
     )
 
 

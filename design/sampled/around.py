@@ -16,6 +16,13 @@ def held_by_friction(bank: Bank, which: IndexArray) -> np.ndarray:
     return np.asarray(bank.drives.friction[which] > 0.0)
 
 
+def held_by_valve(bank: Bank, which: IndexArray) -> np.ndarray:
+    """(c,) bool: whether a valve that sticks stands before the plant of each column."""
+    if bank.valves is None:
+        return np.zeros(which.size, dtype=bool)
+    return np.asarray(bank.valves[0, which] > 0.0)
+
+
 def run_around(
     bank: Bank,
     which: IndexArray,

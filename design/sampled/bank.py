@@ -56,6 +56,8 @@ class Bank:
         Of the response filter; 0 without.
     drives : Drives or None
         The same plants as drives with friction, where friction holds any.
+    valves : (3, p) array or None, command unit
+        Of a valve that sticks before each plant, see `Plausible.valves`.
     """
 
     interval: float
@@ -76,6 +78,7 @@ class Bank:
     poles: ComplexArray
     filter_time: float = 0.0
     drives: Drives | None = None
+    valves: FloatArray | None = None
 
 
 def build_bank(
@@ -86,6 +89,7 @@ def build_bank(
     filter_time: float = 0.0,
     points: int = 4,
     stiction: FloatArray | None = None,
+    valves: FloatArray | None = None,
     predict: bool = False,
 ) -> Bank:
     """Discretise the plants exactly.
@@ -102,6 +106,8 @@ def build_bank(
         Sub-points per sample.
     stiction : (p,) array, command unit, optional
         Dry friction of each plant.
+    valves : (p, 3) array, command unit, optional
+        Of a valve that sticks before each plant.
     predict : bool
         Where the total delay is negative, let the controller see the response that much ahead, under the old command.
 
@@ -125,7 +131,8 @@ def build_bank(
     )
     drives = None if stiction is None else drives_of(plants, stiction, delay)
     seen = _ahead(a, b, smooth.seen, np.maximum(-total, 0.0)) if predict and np.any(total < 0.0) else smooth.seen
-    return replace(smooth, filter_time=filter_time, drives=drives, seen=seen)
+    sticking = None if valves is None else valves.T
+    return replace(smooth, filter_time=filter_time, drives=drives, seen=seen, valves=sticking)
 
 
 def _ahead(a: FloatArray, b: FloatArray, seen: FloatArray, time: FloatArray) -> FloatArray:

@@ -6,7 +6,7 @@ from ...ident.run import FloatArray
 from ..discretise import LawColumns
 from .around import held_by_friction
 from .bank import Bank, IndexArray
-from .loop import Clamps
+from .loop import Clamps, followed
 
 
 def follow(bank: Bank, law: LawColumns, setpoint: FloatArray, clamps: Clamps) -> tuple[FloatArray, FloatArray]:
@@ -48,6 +48,8 @@ class _Follower:
         self.drives = bank.drives.take(chosen) if held and bank.drives is not None else None
         part = np.maximum(bank.delay[chosen] - self.lag * bank.interval, 0.0)
         self.old_share = np.minimum(part, bank.interval)
+        self.valves = None if bank.valves is None else bank.valves[:, chosen]
+        self.stem = np.zeros(chosen.size)
 
     def run(self, setpoint: FloatArray) -> tuple[FloatArray, FloatArray]:
         count, samples = self.lag.size, setpoint.size
@@ -63,12 +65,19 @@ class _Follower:
             low = np.maximum(self.clamps.lowest, before - self.clamps.change)
             high = np.minimum(self.clamps.highest, before + self.clamps.change)
             before = np.minimum(np.maximum(wanted, low), high)
-            responses[k], commands[k], sent[k + depth] = seen, before, before
+            responses[k], commands[k], sent[k + depth] = seen, before, self._through(before)
             first = second + goal[1] - law.response[1] * seen + ahead[0] * before - law.memory[1] * wanted
             second = goal[2] - law.response[2] * seen + ahead[1] * before - law.memory[2] * wanted
             new, old = sent[k + depth - self.lag, columns], sent[k + depth - self.lag - 1, columns]
             seen = self._held(old, new) if self.held else self._smooth(old, new)
         return responses, commands
+
+    def _through(self, given: FloatArray) -> FloatArray:
+        if self.valves is None:
+            return given
+        band, short, above = self.valves
+        self.stem = followed(self.stem, given + above, band, short)
+        return self.stem
 
     def _smooth(self, old: FloatArray, new: FloatArray) -> FloatArray:
         out = np.einsum("ijc,jc->ic", self.step, np.vstack([self.state, old, new]))

@@ -125,6 +125,12 @@ def _run(
     return History(response, run.command, run.limited, rate)
 
 
+def followed(stem: FloatArray, command: FloatArray, band: FloatArray, short: FloatArray) -> FloatArray:
+    """(c,) where valves that stood at `stem` stand under a new command, see `ident.play`."""
+    gap = command - stem
+    return np.where(np.abs(gap) > band, command - np.copysign(short, gap), stem)
+
+
 class _Columns:
     """The working arrays of one simulation; the law runs in transposed form with two stored sums."""
 
@@ -135,6 +141,8 @@ class _Columns:
         self.points, self.states, self.samples = bank.points, bank.states, samples
         self.step = np.ascontiguousarray(bank.step[:, :, which])
         self.filtered = bank.filtered
+        self.valves = None if bank.valves is None else bank.valves[:, which]
+        self.stem = np.zeros(count)
         self.lag = bank.lag[which]
         self.law, self.clamps, self.free = law, clamps, clamps.free
         self.goal = law.setpoint * setpoint
@@ -165,7 +173,7 @@ class _Columns:
             wanted = first + r0 - y0 * seen_now
             given = wanted if self.free else self._clamped(wanted, before, k)
             self.command[k] = given
-            np.add(given, disturbance, out=sent[k + depth])
+            np.add(given if self.valves is None else self._through(given), disturbance, out=sent[k + depth])
             state[n] = state[n + 1]
             flat.take(place + k * count, out=state[n + 1])
             np.einsum("ijc,jc->ic", matrix, state, out=out)
@@ -180,6 +188,13 @@ class _Columns:
             before = given
             seen_now = state[n - 1].copy() if self.filtered else self.response[k, m - 1]
         return None if slopes is None else np.asarray(steepest.max(axis=0))
+
+    def _through(self, given: FloatArray) -> FloatArray:
+        """Where the valves stand: each stays until the command is its band away, then comes to rest short of it."""
+        assert self.valves is not None
+        band, short, above = self.valves
+        self.stem = followed(self.stem, given + above, band, short)
+        return self.stem
 
     def _clamped(self, wanted: FloatArray, before: FloatArray, k: int) -> FloatArray:
         low = np.maximum(self.clamps.lowest, before - self.clamps.change)

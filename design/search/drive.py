@@ -52,13 +52,8 @@ class Search:
 
 
 def with_nominal(nominal: Plant, plausible: Plausible, situation: Situation) -> Plausible:
-    """The fitted plant in front; it takes the median friction."""
-    stiction = float(np.median(plausible.stiction)) if plausible.stiction.size else 0.0
-    return Plausible(
-        (nominal, *plausible.plants),
-        np.concatenate([[situation.operating_command], plausible.operating_command]),
-        np.concatenate([[stiction], plausible.stiction]),
-    )
+    """The fitted plant in front; it takes the median friction and valve."""
+    return plausible.led_by(nominal, situation.operating_command)
 
 
 def search(
@@ -70,8 +65,10 @@ def search(
     some = with_nominal(nominal, plausible.take(used.tolist()), situation)
     horizon = first_horizon(nominal, situation, SEARCHED)
     bench = replace(bench_of(some, situation, horizon, stand_in=True, smooth=True, grid=90), cautious=True)
-    rough = bench_of(some, situation, horizon, stand_in=True, grid=90) if np.any(some.stiction > 0.0) else None
+    rough = _rough(some, situation, horizon, nominal)
     best: Found | None = None
+    smoothest: Found | None = None
+    most = -np.inf
     tried: list[Tried] = list(plan.skipped)
     order = plan.structures + plan.last
     both = _Both(order, nominal, bench, aside)
@@ -81,8 +78,13 @@ def search(
         progress(f"searching zeros and gain of {structure}", i / len(order))
         found = both.best(i)
         if rough is not None:
+            smooth = found.slack
             held = check(rough, found.space, found.point)
-            found = replace(held, slack=min(found.slack, held.slack))
+            if some.valves is not None and smooth > most:
+                smoothest, most = held, smooth
+            if some.valves is not None and smooth >= 0.0 and held.slack < ENOUGH:
+                held = max(held, best_of(structure, nominal, rough), key=lambda one: one.slack)
+            found = replace(held, slack=min(smooth, held.slack))
         tried.append(tried_row(structure, found, bench))
         if best is None or found.slack > (best.slack + _BETTER if best.slack >= 0.0 else best.slack):
             best = found
@@ -90,6 +92,8 @@ def search(
             break
     if best is None:
         raise AssertionError("a plan holds at least one structure")
+    if best.slack < 0.0 and smoothest is not None:
+        best = smoothest  # none holds: those gains are shown that would, if nothing stuck
     return Search(best, tuple(tried), bench, used)
 
 
@@ -181,3 +185,11 @@ def binding(scores: Scores, bench: Bench) -> str:
     if scores.limits[0].min() <= -10.0:
         return "stability"
     return min(slacks, key=lambda name: slacks[name]) if slacks else "stability"
+
+
+def _rough(some: Plausible, situation: Situation, horizon: float, nominal: Plant) -> Bench | None:
+    """The plants with what sticks, where anything does; a valve can set out hunting late and is watched for longer."""
+    if some.valves is not None:
+        horizon = first_horizon(nominal, situation)
+        return replace(bench_of(some, situation, horizon, stand_in=True, grid=90), cautious=True)
+    return bench_of(some, situation, horizon, stand_in=True, grid=90) if np.any(some.stiction > 0.0) else None

@@ -51,6 +51,8 @@ def extremes(bench: Bench) -> IndexArray:
     bank = bench.exact
     middle = bench.spectra.plant[7 + bench.spectra.frequency.shape[0] // 3]
     features = [np.log(np.abs(bank.static_gain)), bank.delay, np.log(np.abs(middle)), np.angle(middle)]
+    if bank.valves is not None:
+        features.append(bank.valves[0])
     table = np.array([_standardised(f) for f in features + _pole_features(bench)]).T
     _, _, directions = np.linalg.svd(table, full_matrices=False)
     along = table @ directions[:3].T
