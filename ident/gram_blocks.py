@@ -22,10 +22,10 @@ from .run import FloatArray
 
 # Shortest block; a block grows with the time since the last event at most by this share of it.
 _SHORTEST = 8
-_SHARE = 0.25
+_SHARE = 0.3
 _DEGREES = 4
 # A block spans at most this many rad of a ringing that is still alive, and at most this share of the record.
-_TURN = 0.6
+_TURN = 0.8
 _PART = 1.0 / 64.0
 # Blocks up to this length are gathered together.
 _TOGETHER = 512
@@ -140,7 +140,7 @@ class _Caps:
 
     def longest(self, since: int) -> float:
         """Longest block so many samples behind an event."""
-        alive = [_TURN / turn for turn, fade in self.ringing if turn > 0 and fade * since < 20.0]
+        alive = [_TURN / turn for turn, fade in self.ringing if turn > 0 and fade * since < 16.0]
         return min(_SHARE * since, self.most, *alive) if alive else min(_SHARE * since, self.most)
 
 

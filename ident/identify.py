@@ -220,8 +220,10 @@ def _fitted_runs(chosen: Fitted, row: FloatArray) -> tuple[FittedRun, ...]:
     model = problem.model(chosen.theta, row[s + 1 :])
     out = []
     for i, (run, part) in enumerate(zip(problem.runs, problem.parts, strict=True)):
-        whole = np.full(len(run.time), np.nan)
-        whole[run.valid] = model[part]
+        whole = model[part]
+        if len(whole) < len(run.time):
+            whole = np.full(len(run.time), np.nan)
+            whole[run.valid] = model[part]
         out.append(FittedRun(run.label, run.time, run.command, run.response, whole, float(row[s + 2 + i])))
     return tuple(out)
 

@@ -20,6 +20,8 @@ _SCOUT = 9
 _ROUNDS = 4
 # Standard errors of the dead time that are kept sample by sample.
 _REACH = 12.0
+# Samples that a dead time is followed over at most without laying out the blocks anew.
+_FARTHEST = 500.0
 # Rad, or time constants, that a mode may turn or pass in one sample of the view that finds it.
 _SLOW = 0.1
 
@@ -61,15 +63,18 @@ class LongRecord:
         problem = Regression(view, structure, self.base.reference, self.base.fixed_command)
         ends = [polish(problem, guess, rounds=_SCOUT) for guess in first_guesses(problem)]
         theta, solved = min(ends, key=lambda end: end[1].cost)
-        return theta, max(2.0 * problem.interval, _REACH * dead_time_error(problem, theta, solved))
+        # a structure that fits badly has no sure dead time: what is beyond the reach it finds step by step
+        least, most = 2.0 * problem.interval, _FARTHEST * self.base.interval
+        return theta, max(least, min(_REACH * dead_time_error(problem, theta, solved), most))
 
     def _settled(self, whole: Regression, theta: FloatArray, reach: float) -> tuple[Regression, FloatArray, Solved]:
         for _ in range(_ROUNDS):
-            problem = condensed(whole, theta, min(reach, 0.1 * whole.duration), self.shared)
+            problem = condensed(whole, theta, reach, self.shared)
             theta, solved = polish(problem, theta)
             if not hasattr(problem, "near"):
                 break
-            closer = max(4.0 * whole.interval, _REACH * dead_time_error(problem, theta, solved))
+            error = dead_time_error(problem, theta, solved)
+            closer = min(max(4.0, _REACH * error / whole.interval), _FARTHEST) * whole.interval
             if problem.near(theta) and closer > 0.5 * reach:
                 break
             reach = closer

@@ -20,6 +20,7 @@ from .whiten import Colour, stretches_of
 
 # Share of the record's whole movement that a stretch of rest may wander, smoothed, and still be rest.
 _STIR = 0.1
+_NO_WAVES = np.zeros((0, 0))
 
 
 @dataclass(frozen=True, eq=False)
@@ -49,7 +50,8 @@ class Regression:
     @cached_property
     def measured(self) -> FloatArray:
         """(n,) valid responses of all runs, response unit."""
-        return np.concatenate([run.response[run.valid] for run in self.runs])
+        parts = [run.response if run.valid.all() else run.response[run.valid] for run in self.runs]
+        return parts[0] if len(parts) == 1 else np.concatenate(parts)
 
     @property
     def movement(self) -> float:
@@ -80,6 +82,9 @@ class Regression:
     @cached_property
     def interval(self) -> float:
         """Typical sample interval, s."""
+        even = [grid.interval for grid in self.grids if grid.interval is not None]
+        if len(even) == len(self.grids) == 1:
+            return even[0]
         return float(np.median(np.concatenate([np.diff(grid.time) for grid in self.grids])))
 
     @cached_property
@@ -244,7 +249,7 @@ class Regression:
         kept = self._whiteners
         if colour not in kept:
             kept.clear()
-            kept[colour] = Whitener(self.stretches, colour, self.waves)
+            kept[colour] = Whitener(self.stretches, colour, self.waves if colour.wander > 0.0 else _NO_WAVES)
         return kept[colour]
 
     @cached_property
@@ -357,5 +362,8 @@ def starts_unsettled(run: Run) -> bool:
     if len(rest) == 0:
         return True
     width = max(len(rest) // 6, 1)
-    smooth = np.convolve(rest, np.ones(width) / width, mode="valid")
-    return bool(len(smooth) > 0 and np.ptp(smooth) > _STIR * np.nanmax(np.abs(run.response - np.nanmedian(rest))))
+    sums = np.concatenate([[0.0], np.cumsum(rest - rest[0])])
+    smooth = (sums[width:] - sums[:-width]) / width
+    middle = np.median(rest)
+    farthest = max(np.nanmax(run.response) - middle, middle - np.nanmin(run.response))
+    return bool(len(smooth) > 0 and np.ptp(smooth) > _STIR * farthest)

@@ -1,6 +1,7 @@
 """One record of a rig as a value: time, command, response and what is known about them."""
 
 from dataclasses import dataclass
+from functools import cached_property
 from typing import Literal
 
 import numpy as np
@@ -51,7 +52,7 @@ class Run:
     at_rest: bool = False
     command_late: float = 0.0
 
-    @property
+    @cached_property
     def valid(self) -> NDArray[np.bool_]:
         """(n,) mask of the samples whose response was not lost."""
         return np.isfinite(self.response)

@@ -35,6 +35,8 @@ WHITE = Colour()
 
 def stretches_of(valid: NDArray[np.bool_]) -> list[slice]:
     """Runs of consecutive valid samples, numbered among the valid ones only."""
+    if valid.all():
+        return [slice(0, len(valid))] if len(valid) else []
     edges = np.flatnonzero(np.diff(np.concatenate([[0], valid.astype(int), [0]])))
     lengths = edges[1::2] - edges[::2]
     ends = np.cumsum(lengths)
