@@ -36,7 +36,7 @@ def seconds_of(texts: Sequence[str], where: str, first_line: int) -> FloatArray:
     array([0., 1.])
     """
     if _ISO.match(texts[0].strip()):
-        return _iso(texts, where)
+        return _iso(texts, where, first_line)
     dates: list[str] = []
     seconds = np.empty(len(texts))
     for index, text in enumerate(texts):
@@ -109,7 +109,7 @@ def _over_midnight(seconds: FloatArray) -> FloatArray:
     return seconds + DAY * np.concatenate([[0.0], np.cumsum(np.diff(seconds) < -DAY / 2)])
 
 
-def _iso(texts: Sequence[str], where: str) -> FloatArray:
+def _iso(texts: Sequence[str], where: str, first_line: int) -> FloatArray:
     import pandas as pd
 
     plain = [re.sub(r"(\d),(\d)", r"\1.\2", text.strip()) for text in texts]
@@ -122,4 +122,13 @@ def _iso(texts: Sequence[str], where: str) -> FloatArray:
             found=str(problem).split(". ")[0],
             expected="ISO 8601, such as 2026-11-03T12:34:56.789",
         ) from problem
+    lost = np.flatnonzero(np.isnat(stamps))
+    if len(lost):
+        raise RecordError(
+            "a stamp is missing",
+            where=f"{where}, about line {first_line + int(lost[0])}",
+            found=f'"{texts[int(lost[0])]}", {len(lost)} of {len(texts)}',
+            expected="ISO 8601, such as 2026-11-03T12:34:56.789",
+            advice="cut such lines out of a copy, or let the logger stamp every row",
+        )
     return np.asarray((stamps - stamps[0]).astype("int64") / 1e9, dtype=np.float64)

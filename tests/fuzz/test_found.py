@@ -89,6 +89,17 @@ def test_a_table_whose_magnitudes_overflow_is_refused(tmp_path: Path) -> None:
         assert [verdict.fault for verdict in verdicts] == [None]
 
 
+@pytest.mark.parametrize("lost", ["", "NaT"])
+def test_a_missing_date_is_refused(tmp_path: Path, lost: str) -> None:
+    """It was read as -9.2e9 s, the smallest number of the library's own stamps, and nothing was said."""
+    log = tmp_path / "log.csv"
+    stamps = [f"2026-11-03T12:00:{k:02d}" if k != 5 else lost for k in range(12)]
+    log.write_text("time,u\n" + "".join(f"{stamp},{k}\n" for k, stamp in enumerate(stamps)))
+    with pytest.raises(RecordError, match="a stamp is missing") as caught:
+        inspect_log(log)
+    assert "line 7" in caught.value.where
+
+
 def test_a_draft_passes_over_columns_without_numbers(tmp_path: Path) -> None:
     """A log of many empty columns took one for the command, and its extremes don't exist."""
     log = tmp_path / "log.csv"
