@@ -213,9 +213,9 @@ def _held(
         )
     size = np.abs(hold_factor(x))
     # |h'| <= max(1, exp(-Re x))/2 on the disc, as h(x) = integral of exp(-x u) over u in (0, 1)
-    change = 0.5 * np.maximum(1.0, np.exp(-(x.real - r))) * r
-    with np.errstate(divide="ignore"):
-        lowest, highest = np.log(np.maximum(size - change, 0.0)), np.log(size + change)
+    with np.errstate(divide="ignore", over="ignore", invalid="ignore"):  # far to the left a large box has no bound
+        change = 0.5 * np.maximum(1.0, np.exp(-(x.real - r))) * r
+        lowest, highest = np.log(np.fmax(size - change, 0.0)), np.log(size + change)
     return (
         lowest,
         highest,
