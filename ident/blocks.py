@@ -102,10 +102,10 @@ class BlockMeans:
         counts = np.diff(np.append(starts, len(rows)))
         finite = np.isfinite(rows)
         filled = np.add.reduceat(finite.astype(np.float64), starts, axis=0)
+        first = np.where(finite[starts], rows[starts], 0.0)  # what stands still is then exactly its mean
+        apart = np.where(finite, rows - np.repeat(first, counts, axis=0), 0.0)
         with np.errstate(invalid="ignore", divide="ignore"):
-            means = np.add.reduceat(np.where(finite, rows, 0.0), starts, axis=0) / filled
-        lowest = np.fmin.reduceat(rows, starts, axis=0)
-        means = np.where(lowest == np.fmax.reduceat(rows, starts, axis=0), lowest, means)  # exact where it stands
+            means = first + np.add.reduceat(apart, starts, axis=0) / filled
         means = np.where(filled < LEAST_FILLED * counts[:, None], np.nan, means)
         enough = counts >= self._fewest
         return Means(means[enough, 0], means[enough, 1:])

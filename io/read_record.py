@@ -12,7 +12,7 @@ from ..ident.run import Between, Run
 from .command_worked_out import work_out_command
 from .in_order import finding_of, in_order, raise_stops
 from .look_at_record import looked_at
-from .readers.parts import is_large
+from .readers.parts import large
 from .readers.port import Hints, Reader
 from .readers.registry import reader_of
 from .readers.still_there import still_there
@@ -61,10 +61,11 @@ def _read(spec: RunSpec, rig: Rig) -> Record:
     roles = {role: signal for role, signal in spec.signals.items() if signal.source is not None}
     hints = Hints(rig.dialect, spec.group)
     reader, sources = reader_of(spec.file), [str(signal.source) for signal in roles.values()]
-    if is_large(reader, spec.file, sources, hints):
-        taken = thinned(spec, rig, reader, sources, hints)
-    else:
+    asked = large(reader, spec.file, sources, hints)
+    if asked is None:
         taken = _whole(spec, rig, reader, sources, hints)
+    else:
+        taken = thinned(spec, rig, reader, sources, hints, asked)
     windowed, before, findings = taken.samples, taken.before, list(taken.findings)
     looked = looked_at(
         spec, rig, windowed.time, windowed.command, windowed.response, setpoint=windowed.setpoint, before=before

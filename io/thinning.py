@@ -60,7 +60,7 @@ class Taken:
     seen_already: frozenset[str] = frozenset()
 
 
-def thinned(spec: RunSpec, rig: Rig, reader: Reader, sources: Sequence[str], hints: Hints) -> Taken:
+def thinned(spec: RunSpec, rig: Rig, reader: Reader, sources: Sequence[str], hints: Hints, asked: int) -> Taken:
     """Read a large log in bounded memory.
 
     Parameters
@@ -71,6 +71,8 @@ def thinned(spec: RunSpec, rig: Rig, reader: Reader, sources: Sequence[str], hin
     reader : ChunkedReader
     sources : sequence of str
     hints : Hints
+    asked : int
+        About how many samples it has.
 
     Raises
     ------
@@ -86,7 +88,6 @@ def thinned(spec: RunSpec, rig: Rig, reader: Reader, sources: Sequence[str], hin
             expected="the logged command",
             advice="log the command, or write a part of the log out as a log of its own",
         )
-    asked = reader.rows(spec.file, sources, hints)
     parts = _Parts(spec, rig)
     thinner: _Thinner | None = None
     for log in reader.chunks(spec.file, sources, hints, PART):

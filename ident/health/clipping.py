@@ -68,6 +68,8 @@ def see_clipping(time: FloatArray, command: FloatArray, response: FloatArray, un
         return ()
     time, command, response = time[good], command[good], response[good]
     high, low = response == response.max(), response == response.min()
+    if not any(np.any(at[2:] & at[1:-1] & at[:-2]) for at in (high, low)):
+        return ()  # no stretch that could tell: spares the rest on a long record
     noisy = noisy_at_rest(command, response, high | low)
     surely = noisy and surely_noisy(command, response, high | low)
     found: list[Seen] = []

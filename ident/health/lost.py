@@ -103,8 +103,11 @@ def _spikes(response: FloatArray) -> BoolArray:
     if count < 2 * REACH + 1:
         return mask
     windows = np.lib.stride_tricks.sliding_window_view(response, 2 * REACH + 1)
-    level = max(noise_level(response), quantum(response))
+    noise = noise_level(response)
     step = np.fmax(np.abs(windows[:, REACH] - windows[:, REACH - 1]), np.abs(windows[:, REACH] - windows[:, REACH + 1]))
+    if not np.any(step > SPIKE_DEVIATIONS * noise):
+        return mask
+    level = max(noise, quantum(response))
     suspects = np.flatnonzero(step > SPIKE_DEVIATIONS * level)
     neighbours = np.delete(windows[suspects], REACH, axis=1)
     whole = np.isfinite(neighbours).sum(axis=1) >= REACH

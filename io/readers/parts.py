@@ -10,8 +10,8 @@ PART = 1_000_000  # samples at a time beyond it
 _LEAST_BYTES = 1  # a sample at least, however well it was packed
 
 
-def is_large(reader: Reader, file: Path, sources: Sequence[str], hints: Hints) -> bool:
-    """Whether a log has more samples than are read at once, and its reader can read it in parts.
+def large(reader: Reader, file: Path, sources: Sequence[str], hints: Hints) -> int | None:
+    """About how many samples a log has that is too large to be read at once; None where it is not, or has to be.
 
     Raises
     ------
@@ -19,8 +19,9 @@ def is_large(reader: Reader, file: Path, sources: Sequence[str], hints: Hints) -
         As when it is read.
     """
     if not isinstance(reader, ChunkedReader) or file.stat().st_size < _LEAST_BYTES * LARGEST_WHOLE:
-        return False
-    return reader.rows(file, sources, hints) > LARGEST_WHOLE
+        return None
+    rows = reader.rows(file, sources, hints)
+    return rows if rows > LARGEST_WHOLE else None
 
 
 def in_parts(reader: Reader, file: Path, sources: Sequence[str], hints: Hints) -> Iterator[Log]:
@@ -31,7 +32,7 @@ def in_parts(reader: Reader, file: Path, sources: Sequence[str], hints: Hints) -
     RecordError, RequestError
         As when it is read.
     """
-    if isinstance(reader, ChunkedReader) and is_large(reader, file, sources, hints):
+    if isinstance(reader, ChunkedReader) and large(reader, file, sources, hints) is not None:
         yield from reader.chunks(file, sources, hints, PART)
     else:
         yield reader.read(file, sources, hints)

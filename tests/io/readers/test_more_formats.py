@@ -176,16 +176,15 @@ def test_a_cut_or_damaged_file_ends_in_one_error(name: str, tmp_path: Path) -> N
     with pytest.raises(RecordError):
         reader.read(path, sources, Hints())
     generator = np.random.default_rng(5)
-    for _ in range(2):
-        broken = bytearray(content)
-        for place in generator.integers(8, len(content), size=6):
-            broken[place] = generator.integers(256)
-        path.write_bytes(bytes(broken))
-        try:
-            log = reader.read(path, sources, Hints())
-        except (RecordError, RequestError):
-            continue
-        assert set(log.channels) == set(sources)
+    broken = bytearray(content)
+    for place in generator.integers(8, len(content), size=6):
+        broken[place] = generator.integers(256)
+    path.write_bytes(bytes(broken))
+    try:
+        log = reader.read(path, sources, Hints())
+    except (RecordError, RequestError):
+        return
+    assert set(log.channels) == set(sources)
 
 
 @pytest.mark.parametrize(
