@@ -101,6 +101,6 @@ def _contents(outcome: Outcome, with_report: bool, aside: Aside) -> dict[str, by
         return {SHEET: sheet_bytes(sheet_of(outcome)), "dossier.h5": dossier_bytes(outcome)}
     from .report.page import page_of, report_html
 
-    page = aside.start(page_of, outcome)
-    sheet, dossier = sheet_bytes(sheet_of(outcome)), dossier_bytes(outcome)
-    return {SHEET: sheet, "dossier.h5": dossier, "report.html": report_html(outcome, page).encode()}
+    page, dossier = aside.start(page_of, outcome), aside.start(dossier_bytes, outcome)
+    sheet, report = sheet_bytes(sheet_of(outcome)), report_html(outcome, page).encode()
+    return {SHEET: sheet, "dossier.h5": dossier.result(), "report.html": report}
