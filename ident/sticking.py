@@ -31,6 +31,7 @@ _LONGEST = 60_000
 # Half widths of a play that are weighed first, from and to these shares of the command's whole movement.
 _REACH = (0.001, 0.25)
 _COARSE, _FINE = 24, 11
+_BELIEVED = 0.1
 
 
 def find_sticking(fitted: Fitted) -> Sticking | None:
@@ -54,10 +55,10 @@ def find_sticking(fitted: Fitted) -> Sticking | None:
         estimate_colour(columns, look.residual, look.problem.stretches, look.problem.waves)
         for columns in (look.base, np.column_stack([look.base, column]))
     )
-    sureness, colour = look.gain(column, colours)
+    sureness, first, colour = look.gain(column, colours)
     if sureness < _SURE:
         return None
-    return look.sized(colour, sureness)
+    return look.sized(colour, sureness, first)
 
 
 def sized_behind(sticking: Sticking, through: Fitted, runs: Sequence[Run], colour: Colour) -> Sticking:
@@ -73,7 +74,7 @@ def sized_behind(sticking: Sticking, through: Fitted, runs: Sequence[Run], colou
     look = _Look.at(through, runs)
     if look is None:
         return sticking
-    return look.sized(colour, sticking.sureness)
+    return look.sized(colour, sticking.sureness, sticking.valve.short)
 
 
 def likelihood_loss(fitted: Fitted, colour: Colour) -> float:
@@ -134,13 +135,13 @@ class _Look:
         rest = band if short is None else short
         return self.response_to([_through(run, band, rest) - run.command for run in self.problem.runs])
 
-    def gain(self, column: FloatArray, colours: Sequence[Colour]) -> tuple[float, Colour]:
-        """Rise of twice the log likelihood by a column that may only add, and the colour it is best under."""
+    def gain(self, column: FloatArray, colours: Sequence[Colour]) -> tuple[float, float, Colour]:
+        """Rise of twice the log likelihood by a column that may only add, its coefficient and the best colour."""
         without = min(self._loss(self.base, colour)[0] for colour in colours)
         ends = [self._loss(np.column_stack([column, self.base]), colour) for colour in colours]
         best = int(np.argmin([end[0] for end in ends]))
         loss, coefficient = ends[best]
-        return without - loss if coefficient > 0.0 else 0.0, colours[best]
+        return without - loss if coefficient > 0.0 else 0.0, coefficient, colours[best]
 
     def _loss(
         self, columns: FloatArray, colour: Colour, prior: FloatArray | None = None, target: FloatArray | None = None
@@ -161,9 +162,9 @@ class _Look:
     def _whitener(self, colour: Colour) -> Whitener:
         return Whitener(self.problem.stretches, colour, self.problem.waves)
 
-    def sized(self, colour: Colour, sureness: float) -> Sticking:
+    def sized(self, colour: Colour, sureness: float, first: float) -> Sticking:
         """The valve's numbers by the exact response, where it rested before each record left open within the band."""
-        short, error = self._profiled(colour)
+        short, error = self._profiled(colour, first)
         edges = np.linspace(LEAST_SHARE, 1.0, _SHARES + 1)
         shares = 0.5 * (edges[1:] + edges[:-1])
         play = [_through(run, short, short) for run in self.problem.runs]
@@ -183,9 +184,14 @@ class _Look:
         valve = Valve(short, short) if plain else Valve(float(shorts[best] / shares[best]), float(shorts[best]))
         return Sticking(valve, error, shorts, shares, weights / weights.sum(), sureness)
 
-    def _profiled(self, colour: Colour) -> tuple[float, float]:
-        """Half width of the best play and its standard error, from the likelihood along it."""
-        grid = self.span * np.geomspace(*_REACH, _COARSE)
+    def _profiled(self, colour: Colour, first: float) -> tuple[float, float]:
+        """Half width of the best play and its standard error, from the likelihood along it.
+
+        It is looked for about the first-order one, where that is small enough to be believed.
+        """
+        believed = first < _BELIEVED * self.span
+        ends = (0.25 * first, 3.0 * first) if believed else (_REACH[0] * self.span, _REACH[1] * self.span)
+        grid = np.geomspace(*ends, _COARSE)
         for _ in range(4):
             losses = np.array([self._exact_loss(each, each, colour) for each in grid])
             place = int(np.argmin(losses))

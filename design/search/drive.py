@@ -73,7 +73,7 @@ def search(
     order = plan.structures + plan.last
     both = _Both(order, nominal, bench, aside)
     for i, structure in enumerate(order):
-        if i >= len(plan.structures) and best is not None and best.slack >= 0.0:
+        if i >= len(plan.structures) and best is not None and max(best.slack, most) >= 0.0:
             break
         progress(f"searching zeros and gain of {structure}", i / len(order))
         found = both.best(i)
