@@ -216,7 +216,7 @@ def test_a_rig_file_that_is_wrong_is_a_request_error_and_leaves_no_sheet(tmp_pat
 
 def test_a_fault_of_the_program_is_never_turned_into_a_held_sheet(tmp_path: Path, monkeypatch) -> None:
     """Division by zero inside a stage goes through, and nothing is written."""
-    monkeypatch.setattr("gainwright.io.job.design_gains", lambda *_, **__: 1 / 0)
+    monkeypatch.setattr("gainwright.io.job.begin_design", lambda *_, **__: 1 / 0)
     with pytest.raises(ZeroDivisionError):
         deliver(rig(tmp_path), tmp_path / "out")
     assert not (tmp_path / "out").exists()
