@@ -97,9 +97,10 @@ def _verdict(fit: Fit, alone: Fit, design: Design, share: float, wanted: float) 
             "works: take a longer one with larger steps"
         )
         return {"verdict": "not comparable", "why": why}
-    seen = f"at the speed at which the loop works its response differs from the given plant's by {100 * away:.0f} %"
+    named, left = ("fitted", "the tables leave open") if fit.tables else ("given", "the tolerance allows")
+    seen = f"at the speed at which the loop works its response differs from the {named} plant's by {100 * away:.0f} %"
     if away > allowed + _ANOTHER_PLANT:
-        return {"verdict": "disagrees", "why": f"{seen}, the tolerance allows {100 * allowed:.0f} %"}
+        return {"verdict": "disagrees", "why": f"{seen}, {left} {100 * allowed:.0f} %"}
     meets = f"the gains meet everything on {100 * share:.0f} % of the plants that this run makes plausible"
     return {"verdict": "agrees" if share >= wanted else "disagrees", "why": f"{meets}; {seen}"}
 

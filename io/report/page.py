@@ -237,12 +237,19 @@ def _fitted(outcome: Outcome, fit: Fit) -> dict[str, Any]:
         "ties": ties if fit.ties else "",
         "parameters": tables.parameters(fit, rig.command_unit, rig.response_unit),
         "candidates": tables.candidates(fit),
-        "noise": (
-            f"Misfit {number(fit.misfit, 3)} (rms residual over the spread of the response). Measurement noise: "
-            f"{with_unit(noise.std, rig.response_unit, 3)} standard deviation"
-            + (", a wandering level rather than a stationary one." if fit.drift else ".")
-        ),
+        "noise": _noise(fit, rig.response_unit),
     }
+
+
+def _noise(fit: Fit, unit: str) -> str:
+    """Misfit and noise; a plant that no log in time gave has none that is known."""
+    over = "the spread of the response" if fit.runs or not fit.tables else "the size of the points"
+    misfit = f"Misfit {number(fit.misfit, 3)} (rms residual over {over})."
+    if fit.noise.std <= 0.0:
+        unknown = "The noise of the response is not known: no log in time tells it."
+        return f"{misfit} {unknown}" if fit.tables else unknown
+    wander = ", a wandering level rather than a stationary one." if fit.drift else "."
+    return f"{misfit} Measurement noise: {with_unit(fit.noise.std, unit, 3)} standard deviation{wander}"
 
 
 def _located(outcome: Outcome, fit: Fit, design: Design) -> dict[str, Any]:

@@ -120,6 +120,7 @@ def test_gains_come_from_one_table_and_are_confirmed_by_another(tmp_path: Path) 
     page = (tmp_path / "out" / "report.html").read_text("utf-8")
     assert "measured response of the rig at single frequencies" in page
     assert "24 frequencies" in page
+    assert "noise of the response is not known: no log in time tells it" in page
 
 
 def test_a_held_out_table_of_another_plant_disagrees(tmp_path: Path) -> None:
@@ -141,6 +142,7 @@ def test_a_table_is_confirmed_by_a_run_in_time_that_tells_the_operating_point(tm
     assert outcome.fit.operating_response == pytest.approx(50.0, abs=0.05)
     assert outcome.fit.noise.std == pytest.approx(0.03, rel=0.15)
     assert [compared.verdict for compared in outcome.closing] == ["agrees"]
+    assert "from the fitted plant's" in outcome.closing[0].why
 
 
 def test_a_table_that_does_not_reach_the_loop_confirms_nothing(tmp_path: Path) -> None:
