@@ -228,7 +228,7 @@ def _more_logs(outcome: Outcome) -> str:
 
 
 def _fitted(outcome: Outcome, fit: Fit) -> dict[str, Any]:
-    rig, noise = outcome.rig, fit.noise
+    rig = outcome.rig
     ties = (
         f"The records can't tell it from: {words.listed(fit.ties)}. Plants of those structures are among the plausible "
         "ones."
