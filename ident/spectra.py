@@ -6,10 +6,14 @@ Parameters are never fitted to these: segments leak and bias what a fit in the t
 from dataclasses import dataclass
 
 import numpy as np
-from scipy.signal import csd, get_window, welch
+from numpy.lib.stride_tricks import sliding_window_view
+from scipy.signal import get_window
 
 from .plant import ComplexArray
 from .run import FloatArray
+
+# Samples of one signal that are transformed at once.
+_AT_ONCE = 65_536
 
 
 @dataclass(frozen=True, eq=False)
@@ -48,16 +52,25 @@ def spectra(command: FloatArray, response: FloatArray, interval: float, segment:
     Bendat and Piersol, Random Data, chapter on single-input/output relationships (from memory). Welch, P. D., IEEE
     Trans. Audio Electroacoustics 15 (1967) 70-73: overlapped segments.
     """
-    rate, half = 1.0 / interval, segment // 2
-    hertz, of_command = welch(command, rate, "hann", segment, half)
-    _, of_response = welch(response, rate, "hann", segment, half)
-    _, across = csd(command, response, rate, "hann", segment, half)
+    step = segment - segment // 2
+    window = get_window("hann", segment)
+    pair = [sliding_window_view(np.asarray(x, dtype=float), segment)[::step] for x in (command, response)]
+    of_command, of_response = np.zeros(segment // 2 + 1), np.zeros(segment // 2 + 1)
+    across = np.zeros(segment // 2 + 1, dtype=np.complex128)
+    together = max(_AT_ONCE // segment, 1)
+    for first in range(0, len(pair[0]), together):
+        parts = [x[first : first + together] for x in pair]
+        u, y = (np.fft.rfft((part - part.mean(axis=1, keepdims=True)) * window) for part in parts)
+        of_command += np.sum(u.real**2 + u.imag**2, axis=0)
+        of_response += np.sum(y.real**2 + y.imag**2, axis=0)
+        across += np.sum(np.conj(u) * y, axis=0)
     power = of_command * of_response
     seen = np.where(power > 0, np.abs(across) ** 2 / np.where(power > 0, power, 1.0), 0.0)
     quiet = of_command <= 0
     ratio = np.where(quiet, 0.0, across / np.where(quiet, 1.0, of_command))
-    count = 1 + (len(command) - segment) // (segment - segment // 2)
-    return Spectra(2 * np.pi * hertz, ratio, np.minimum(seen, 1.0), count / variance_ratio("hann", count))
+    count = len(pair[0])
+    averages = count / variance_ratio("hann", count)
+    return Spectra(2 * np.pi * np.fft.rfftfreq(segment, interval), ratio, np.minimum(seen, 1.0), averages)
 
 
 def variance_ratio(window: str, segments: int, overlap: float = 0.5) -> float:
