@@ -70,7 +70,8 @@ def spectra(command: FloatArray, response: FloatArray, interval: float, segment:
     ratio = np.where(quiet, 0.0, across / np.where(quiet, 1.0, of_command))
     count = len(pair[0])
     averages = count / variance_ratio("hann", count)
-    return Spectra(2 * np.pi * np.fft.rfftfreq(segment, interval), ratio, np.minimum(seen, 1.0), averages)
+    frequency = np.asarray(2 * np.pi * np.fft.rfftfreq(segment, interval), dtype=float)
+    return Spectra(frequency, ratio, np.minimum(seen, 1.0), averages)
 
 
 def variance_ratio(window: str, segments: int, overlap: float = 0.5) -> float:

@@ -17,6 +17,7 @@ STAGES = {
     "drawing plausible": "fitting",
     "choosing": "choosing gains",
     "building": "gain ladder",
+    "the ": "gain sets",
 }
 
 
