@@ -85,7 +85,7 @@ def read_earlier(path: Path) -> Earlier:
             float(point["response"]["value"]),
             sheet["status"] == "released",
         )
-    except (KeyError, TypeError, ValueError, IndexError) as cause:
+    except (LookupError, TypeError, ValueError, AttributeError, ArithmeticError) as cause:
         found = f"{type(cause).__name__}: {cause}"
         raise _refused(path, "the sheet lacks something that a gain sheet has", found, "an unchanged sheet") from cause
 
@@ -159,7 +159,7 @@ def _bytes(path: Path) -> bytes:
 def _sheet(path: Path, content: bytes) -> dict[str, Any]:
     try:
         sheet = json.loads(content)
-    except ValueError as cause:
+    except (ValueError, RecursionError) as cause:
         raise _refused(path, "this is no gain sheet", f"no JSON: {cause}", "a gains.json of an earlier job") from cause
     schema = sheet.get("schema") if isinstance(sheet, dict) else None
     if schema != SCHEMA:

@@ -31,7 +31,7 @@ def _sheet(path: Path) -> dict[str, Any]:
         raise RequestError(
             "no such gain sheet", found=f'"{path}"', expected="a gains.json of an earlier job"
         ) from problem
-    except ValueError as problem:
+    except (ValueError, RecursionError) as problem:
         raise RequestError("this is no gain sheet", found=f'"{path}": {problem}', expected="JSON") from problem
     sheet: dict[str, Any] = content if isinstance(content, dict) else {}
     plant = sheet.get("plant")
@@ -127,10 +127,15 @@ def _from_sheet(
         above = [float(c) * per for c in found["numerator"]]
         below, dead_time = [float(c) for c in found["denominator"]], float(found["dead_time"])
         friction = _friction(found)
-    except (TypeError, ValueError) as problem:
-        problems.add(f"{_KEY}.sheet", "the sheet's plant is damaged", str(problem), "finite numbers")
+    except (TypeError, ValueError, LookupError, AttributeError, OverflowError) as problem:
+        found_there = f"{type(problem).__name__}: {problem}"
+        problems.add(f"{_KEY}.sheet", "the sheet's plant is damaged", found_there, "finite numbers")
         return None
-    if not all(math.isfinite(c) for c in (*above, *below, dead_time)) or dead_time < 0.0:
+    if math.isnan(per):
+        return None  # noted already
+    if not all(math.isfinite(c) for c in (*above, *below, dead_time, friction)) or dead_time < 0.0:
+        found_there = f"numerator {above}, denominator {below}, dead time {dead_time:g} s"
+        problems.add(f"{_KEY}.sheet", "the sheet's plant is damaged", found_there, "finite numbers, no time below zero")
         return None
     plant = _checked(above, below, dead_time, problems)
     if plant is None:
@@ -148,11 +153,12 @@ def _friction(found: dict[str, Any]) -> float:
 
 def operating_point(sheet: dict[str, Any] | None, signal_units: dict[str, str]) -> dict[str, float]:
     """Command and response of the sheet's operating point, in the units of the signals; empty without a sheet."""
-    point = (sheet or {}).get("operating_point") or {}
+    point = (sheet or {}).get("operating_point")
     found = {}
     for role in ("command", "response"):
-        part = point.get(role)
-        if isinstance(part, dict) and isinstance(part.get("value"), int | float):
+        part = point.get(role) if isinstance(point, dict) else None
+        value = part.get("value") if isinstance(part, dict) else None
+        if isinstance(part, dict) and isinstance(value, int | float) and abs(value) < 1e300:
             unit = str(part.get("unit") or signal_units[role])
-            found[role] = units.convert_reading(float(part["value"]), unit, signal_units[role])
+            found[role] = units.convert_reading(float(value), unit, signal_units[role])
     return found

@@ -35,9 +35,8 @@ def _by_chance(name: str, inputs: int, seed: int, folder: Path, deep: Path) -> N
 
     kind, dice, tally = KINDS[name], random.Random(seed), Tally(folder / "kept")
     bound_memory()
-    made = kind.fresh(dice)
-    for number in range(inputs):
-        made = kind.spoil(made, dice) if number % 10 and made else kind.fresh(dice)
+    for _ in range(inputs):
+        made = kind.sound(dice) if dice.random() < 0.3 else kind.fresh(dice)
         tally.add(made, kind.run(deep, made))
         if tally.inputs % EVERY == 0:
             tally.write(folder / "tally.json")
