@@ -104,7 +104,7 @@ def make(base: Path) -> None:
     for name in ("paddle", "paddle_heavier", "oven", "mirror", "mirror_loose"):
         (base / name).mkdir(parents=True, exist_ok=True)
     paddle(base / "paddle")
-    paddle(base / "paddle_heavier", plate=1.6, series=4)
+    paddle(base / "paddle_heavier", plate=2.0, series=4)
     oven(base / "oven")
     mirror(base / "mirror", 1.0)
     mirror(base / "mirror_loose", 0.94**2)

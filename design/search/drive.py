@@ -65,7 +65,7 @@ def search(
     some = with_nominal(nominal, plausible.take(used.tolist()), situation)
     horizon = first_horizon(nominal, situation, SEARCHED)
     bench = replace(bench_of(some, situation, horizon, stand_in=True, smooth=True, grid=90), cautious=True)
-    rough = _rough(some, situation, horizon, nominal)
+    rough = _rough(some, situation, nominal)
     best: Found | None = None
     smoothest: Found | None = None
     most = -np.inf
@@ -187,9 +187,9 @@ def binding(scores: Scores, bench: Bench) -> str:
     return min(slacks, key=lambda name: slacks[name]) if slacks else "stability"
 
 
-def _rough(some: Plausible, situation: Situation, horizon: float, nominal: Plant) -> Bench | None:
-    """The plants with what sticks, where anything does; a valve can set out hunting late and is watched for longer."""
-    if some.valves is not None:
-        horizon = first_horizon(nominal, situation)
-        return replace(bench_of(some, situation, horizon, stand_in=True, grid=90), cautious=True)
-    return bench_of(some, situation, horizon, stand_in=True, grid=90) if np.any(some.stiction > 0.0) else None
+def _rough(some: Plausible, situation: Situation, nominal: Plant) -> Bench | None:
+    """The plants with what sticks, where anything does; hunting can set out late, so they are watched for longer."""
+    if some.valves is None and not np.any(some.stiction > 0.0):
+        return None
+    bench = bench_of(some, situation, first_horizon(nominal, situation), stand_in=True, grid=90)
+    return replace(bench, cautious=some.valves is not None)
