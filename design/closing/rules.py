@@ -193,7 +193,7 @@ def _at_odds(evidence: Evidence) -> Answer:
 
 
 def _fails(evidence: Evidence) -> Answer:
-    if evidence.share >= min(_LIKELY, evidence.wanted):
+    if evidence.share >= min(_LIKELY, evidence.wanted) or (evidence.real and _foretold(evidence)):
         return None
     per_cent = f"{100 * evidence.share:.0f} % only"
     if evidence.real:
@@ -205,6 +205,13 @@ def _fails(evidence: Evidence) -> Answer:
         f"no change of the plant is certain (p = {evidence.alone.p_value:.2g}; {evidence.shown}), but the gains meet "
         f"everything on {per_cent} of the plants that the fitted runs and this one make plausible together"
     )
+
+
+def _foretold(evidence: Evidence) -> bool:
+    """Whether the fitted plant foretells the run, its level too; of a drive that friction holds no level is known."""
+    level = level_text(evidence.explained, evidence.fit, evidence.units, evidence.movement)
+    still = not level or max(evidence.fit.friction) > 0.0
+    return still and evidence.explained.missed <= _FORETOLD * evidence.fit.noise.std
 
 
 def _undecided(evidence: Evidence) -> Answer:
