@@ -69,14 +69,17 @@ def test_the_readme_test_command_calls_pytest_with_the_extra_that_brings_it(set_
 
 
 def test_the_readme_rig_file_is_one(readme: str, tmp_path: Path) -> None:
-    """The example is accepted once the logs that it names exist."""
-    (example,) = blocks(readme, "toml")
-    (tmp_path / "rig.toml").write_text(example, "utf-8")
-    for name in ("step_up.csv", "monday.csv"):
+    """The example is accepted once the logs that it names exist, and so it is with the frequency table beside them."""
+    example, table = blocks(readme, "toml")
+    for name in ("step_up.csv", "monday.csv", "analyser.csv"):
         (tmp_path / name).write_text("t,drive,flow\n0,0,1\n0.1,1,1\n0.2,1,2\n", "utf-8")
+    (tmp_path / "rig.toml").write_text(example, "utf-8")
     rig = load_rig(tmp_path / "rig.toml")
     assert [run.use for run in rig.runs] == ["fit", "held-out"]
     assert rig.requirements.test_step == 5.0
+    (tmp_path / "rig.toml").write_text(f"{example}\n{table}", "utf-8")
+    both = load_rig(tmp_path / "rig.toml")
+    assert [run.excitation for run in both.runs] == ["step", "auto", "frequency-table"]
 
 
 @pytest.mark.parametrize("name", ["README.md", "DEVELOPERS.md"])
