@@ -14,7 +14,8 @@ Measure = Callable[[FloatArray], FloatArray]  # (g,) factors to (rows, g): at mo
 _POINTS = 80  # in each stable span
 _DECADES = 1e4  # how far below its upper end, or the chosen gain, a span is scanned
 _CLOSE = 1.0  # a turning point whose measure is this near to 0 is looked at closely
-_BESIDE = 0.35  # a measure this near to 0 at both neighbours may pass it twice between them
+_BESIDE = 0.35  # a measure this near to 0 may pass it twice before the next point
+_TURNS, _WIDE = 2, 1.04  # how often points are added there, and between neighbours how far apart
 _ZOOMS = 3
 _INSIDE = 5  # points between two neighbours in a closer look
 _CUTS = 8
@@ -51,9 +52,10 @@ def scanned_sets(
     for span in stable:
         grid = _grid(span, reach)
         table = measure(grid)
-        fresh = _beside_bounds(grid, table[list(swinging)])
-        if fresh.size:
-            grid, table = _merged(grid, table, fresh, measure(fresh))
+        for _ in range(_TURNS):
+            fresh = _beside_bounds(grid, table[list(swinging)])
+            if fresh.size:
+                grid, table = _merged(grid, table, fresh, measure(fresh))
         for _ in range(_ZOOMS):
             fresh = _near_misses(grid, table)
             if not fresh.size:
@@ -74,10 +76,13 @@ def _grid(span: Span, reach: float) -> FloatArray:
 
 
 def _beside_bounds(grid: FloatArray, table: FloatArray) -> FloatArray:
-    """A point between any neighbours at which a row is near its bound: it may pass it and come back in one step."""
+    """A point beside each at which a row is near its bound: it may pass it and come back in one step.
+
+    Beside a bound the neighbour may be far from it, as at the end of a stable span.
+    """
     with np.errstate(invalid="ignore"):
-        near = (np.abs(table[:, 1:]) < _BESIDE) & (np.abs(table[:, :-1]) < _BESIDE)
-    places = np.flatnonzero(near.any(axis=0))
+        near = np.abs(table) < _BESIDE
+    places = np.flatnonzero((near[:, 1:] | near[:, :-1]).any(axis=0) & (grid[1:] > _WIDE * grid[:-1]))
     return np.asarray(0.5 * (grid[places] + grid[places + 1]))
 
 
