@@ -81,7 +81,8 @@ def identify(
     weighed = weigh(tables, runs, reference, fixed, structures) if tables else ()
 
     def choose(through: Sequence[Run], further: bool) -> Choice:
-        allowed = structures if further else [s for s in structures if not s.further]
+        usual = [s for s in structures if not s.further]
+        allowed = structures if further or not usual else usual
         fitted, colour = fit_candidates(through, reference, fixed, allowed, progress, weighed)
         chosen, own = _finished(fitted[0], colour)
         return Choice([chosen, *fitted[1:]], evidence(fitted), own)
