@@ -35,6 +35,8 @@ def seconds_of(texts: Sequence[str], where: str, first_line: int) -> FloatArray:
     >>> seconds_of(["23:59:59.5", "00:00:00.5"], "a log", 1)
     array([0., 1.])
     """
+    if len(texts) == 0:
+        return np.empty(0)
     if _ISO.match(texts[0].strip()):
         return _iso(texts, where, first_line)
     dates: list[str] = []

@@ -128,7 +128,9 @@ def _unpack(
     clock = None
     if clocked:
         clock, place = _take(body, place, clocked)
-        clock = clock * _seconds(part["clock_unit"])
+        with np.errstate(over="ignore"):
+            clock = clock * _seconds(part["clock_unit"])
+        clock = np.where(np.isfinite(clock), clock, np.nan)
     if stamps is not None:
         return Channel(source, stamps, "s", stamps=True), place
     return Channel(source, np.where(np.isfinite(values), values, np.nan), part["unit"], clock), place

@@ -100,6 +100,35 @@ def test_a_missing_date_is_refused(tmp_path: Path, lost: str) -> None:
     assert "line 7" in caught.value.where
 
 
+def test_a_table_of_stamps_without_rows_is_refused(tmp_path: Path) -> None:
+    """An HDF5 table with a field of texts and no row was an IndexError."""
+    log = tmp_path / "log.h5"
+    with h5py.File(log, "w") as file:
+        file.create_dataset("table", data=np.zeros(0, [("t", "S8"), ("u", "f8")]))
+    with pytest.raises(RecordError, match="empty"):
+        inspect_log(log)
+
+
+def test_a_clock_that_is_not_finite_comes_without_a_warning(tmp_path: Path) -> None:
+    """The own clock of an NXlog held infinities, and their differences warned."""
+    log = tmp_path / "log.h5"
+    with h5py.File(log, "w") as file:
+        file["log/value"] = np.arange(20.0)
+        file["log/time"] = np.full(20, np.inf)
+        file["log"].attrs["NX_class"] = "NXlog"
+    verdicts = [judge(["inspect", str(log)], log.name)]
+    assert [verdict.fault for verdict in verdicts] == [None]
+
+
+def test_a_time_with_a_single_stamp_comes_without_a_warning(tmp_path: Path) -> None:
+    """The median step of no steps at all warned."""
+    log = tmp_path / "log.csv"
+    assert list(KINDS["csv"].run(tmp_path, b""))  # writes the rig file beside
+    log.write_text("t,u,y\n1,2,3\n?,2,3\n?,2,4\n")
+    verdict = judge(["inspect", str(log), "--rig", str(tmp_path / "as.toml")], log.name)
+    assert (verdict.code, verdict.fault) == (4, None)
+
+
 def test_a_draft_passes_over_columns_without_numbers(tmp_path: Path) -> None:
     """A log of many empty columns took one for the command, and its extremes don't exist."""
     log = tmp_path / "log.csv"
