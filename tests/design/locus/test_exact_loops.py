@@ -205,12 +205,14 @@ def integrated(loop: OpenLoop, start: complex, low: float, high: float) -> compl
     zeros, poles = np.roots(loop.numerator), np.roots(loop.denominator)
 
     def slope(_: float, y: np.ndarray) -> list[float]:
-        s = complex(y[0], y[1])
+        s = complex(y[0], y[1])  # a trial step may end far away
         share = np.sum(1.0 / (s - zeros)) - np.sum(1.0 / (s - poles)) - loop.dead_time
         if loop.hold is not None:
-            share += loop.hold / (np.exp(s * loop.hold) - 1.0) - 1.0 / s
+            x = s * loop.hold
+            share += -0.5 * loop.hold if abs(x) < 1e-6 else loop.hold / (np.exp(x) - 1.0) - 1.0 / s
         moved = -1.0 / share
         return [moved.real, moved.imag]
 
-    found = solve_ivp(slope, (math.log(low), math.log(high)), [start.real, start.imag], rtol=1e-9, atol=1e-12)
+    with np.errstate(all="ignore"):
+        found = solve_ivp(slope, (math.log(low), math.log(high)), [start.real, start.imag], rtol=1e-9, atol=1e-12)
     return complex(found.y[0, -1], found.y[1, -1])
