@@ -5,6 +5,7 @@ from dataclasses import dataclass
 import numpy as np
 
 from ..ident.run import FloatArray
+from .samples import LARGEST
 
 
 @dataclass(frozen=True)
@@ -91,8 +92,9 @@ class ChannelSum:
 
     def _follow(self, values: FloatArray) -> None:
         begun = self._ends
-        steps = np.diff(values) if begun is None else np.diff(values, prepend=begun[1])
-        self._rises = bool(np.all(steps > 0))
+        with np.errstate(over="ignore", invalid="ignore"):
+            steps = np.diff(values) if begun is None else np.diff(values, prepend=begun[1])
+        self._rises = bool(np.all((steps > 0) & (steps < LARGEST)))  # what rises by more is no time
         self._ends = (float(values[0]) if begun is None else begun[0], float(values[-1]))
         if self._rises and steps.size:
             self._medians.append(float(np.median(steps)))

@@ -120,6 +120,13 @@ def test_a_clock_that_is_not_finite_comes_without_a_warning(tmp_path: Path) -> N
     assert [verdict.fault for verdict in verdicts] == [None]
 
 
+def test_a_column_that_rises_beyond_any_time_comes_without_a_warning(tmp_path: Path) -> None:
+    """The mean of two steps of 1e308 overflowed."""
+    log = tmp_path / "log.csv"
+    log.write_text("t,u\n-1e308,1\n0,2\n1e308,3\n")
+    assert judge(["inspect", str(log)], log.name).fault is None
+
+
 def test_a_time_with_a_single_stamp_comes_without_a_warning(tmp_path: Path) -> None:
     """The median step of no steps at all warned."""
     log = tmp_path / "log.csv"
