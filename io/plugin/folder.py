@@ -11,7 +11,7 @@ from time import monotonic
 from ...ident.errors import RecordError
 from ..readers.port import Hints
 from ..readers.registry import reader_of, readers
-from ..readers.through_child import MissingLibrary
+from ..readers.through_child import MissingLibraryError
 
 UNFINISHED_SUFFIXES = (".part", ".partial", ".tmp", ".temp", ".crdownload", ".filepart", ".swp", ".lock", "~")
 PATIENCE = 10.0  # times the quiet time: a file that never looks finished is taken as it is
@@ -151,7 +151,7 @@ def looks_finished(file: Path) -> bool:
         if ".csv" in reader.suffixes:
             return _tail(file).rstrip(b"\x00\x1a").endswith((b"\n", b"\r"))
         return bool(reader.channels(file, Hints()))
-    except MissingLibrary:
+    except MissingLibraryError:
         return True
     except (RecordError, OSError):
         return False

@@ -16,7 +16,7 @@ from .port import Channel, ChannelInfo, Hints, Log, find_channel, missing_source
 from .stamps import Stamps, seconds_of
 
 
-class MissingLibrary(RecordError):
+class MissingLibraryError(RecordError):
     """The log may be sound, and its reader is here, but not the library that parses it."""
 
 
@@ -60,7 +60,7 @@ class ChildReader:
 
     def _request(self, file: Path, sources: list[str] | None, hints: Hints) -> dict[str, Any]:
         if self.library is not None and importlib.util.find_spec(self.library) is None:
-            raise MissingLibrary(
+            raise MissingLibraryError(
                 f"this log needs the library {self.library}, which is not installed",
                 where=str(file),
                 found=self.name,

@@ -155,7 +155,7 @@ function runLoop(data, law, rest, step, push) {
   return { response, command, limited, steepest: rig.steepest() };
 }
 
-// Largest value from zero on, refined by a parabola through its neighbours.
+// Largest value from zero on, refined by a parabola through its neighbours, or where two curves meet in a corner.
 function peakOf(values, scale) {
   let top = 0;
   for (let i = 1; i < values.length; i += 1) if (values[i] * scale > values[top] * scale) top = i;
@@ -163,7 +163,33 @@ function peakOf(values, scale) {
   const [left, here, right] = [-1, 0, 1].map((i) => values[middle + i] * scale);
   const bend = left - 2 * here + right;
   const lift = middle === top && bend < 0 ? -((right - left) ** 2) / (8 * bend) : 0;
-  return Math.max(values[top] * scale + lift, 0);
+  const most = Math.max(values[top] * scale, 0);
+  let highest = Math.max(values[top] * scale + lift, 0);
+  for (const before of [top, top - 1]) {
+    const height = cornerAfter(values, scale, before);
+    if (height !== null) highest = Math.max(height, most);
+  }
+  return highest;
+}
+
+// Height at which the curves on both sides of the gap after row `before` meet in a corner within it, or null.
+// Each side goes on as a parabola through its three nearest rows; a corner breaks the slope far more than they bend.
+function cornerAfter(values, scale, before) {
+  if (before < 2 || before > values.length - 4) return null;
+  const [a, b, c, d, e, f] = [-2, -1, 0, 1, 2, 3].map((i) => values[before + i] * scale);
+  const [left, right, leftBend, rightBend] = [c - b, e - d, c - 2 * b + a, f - 2 * e + d];
+  let [at, low, high, rise, descent, fall] = [0.5, 0, 0, 0, 0, 0];
+  for (let round = 0; round < 3; round += 1) {
+    low = c + at * left + 0.5 * at * (at + 1) * leftBend;
+    high = d + (at - 1) * right + 0.5 * (at - 1) * (at - 2) * rightBend;
+    rise = left + (at + 0.5) * leftBend;
+    descent = right + (at - 1.5) * rightBend;
+    fall = rise - descent;
+    at = Math.min(Math.max(at + (high - low) / (fall > 0 ? fall : 1), -0.05), 1.05);
+  }
+  const sharp = fall > 3 * (Math.abs(leftBend) + Math.abs(rightBend));
+  const inside = at > -0.02 && at < 1.02 && rise > 0 && descent < 0;
+  return sharp && inside && Math.abs(high - low) < 1e-6 * Math.abs(c) ? low : null;
 }
 
 // Time of the last crossing into the band; distance(i) stands at (i + 1) spacing, `start` at time 0.

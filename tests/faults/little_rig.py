@@ -8,7 +8,14 @@ from pathlib import Path
 
 import numpy as np
 
-PROGRAM = [sys.executable, "-P", "-c", "import sys; from gainwright.io.commands.main import main; sys.exit(main())"]
+# A shell that starts the tests in the background hands its children an ignored Control-C: the program takes it back.
+CALL = """
+import signal, sys
+signal.signal(signal.SIGINT, signal.default_int_handler)
+from gainwright.io.commands.main import main
+sys.exit(main())
+"""
+PROGRAM = [sys.executable, "-P", "-c", CALL]
 RIG = """
 [rig]
 name = "invented"

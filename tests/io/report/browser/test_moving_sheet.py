@@ -183,7 +183,10 @@ def test_keys_move_the_ribbon_and_a_screen_reader_is_told(opened, released, made
     chosen, last = data_of(released)["chosen"], len(data_of(released)["gains"]) - 1
     assert page.ribbon.aria_role == "slider"
     assert page.ribbon.accessible_name == "Moving gain sheet: what another K would do"
-    page.driver.switch_to.active_element.send_keys(Keys.TAB)
+    for _ in range(3):  # what is folded above it, such as the further forms of the gains, can be reached first
+        page.driver.switch_to.active_element.send_keys(Keys.TAB)
+        if page.driver.switch_to.active_element == page.ribbon:
+            break
     assert page.driver.switch_to.active_element == page.ribbon
     for key, wanted in (
         (Keys.ARROW_RIGHT, chosen + 1), (Keys.ARROW_LEFT, chosen), (Keys.PAGE_UP, chosen + 10),
