@@ -99,8 +99,9 @@ def _contents(outcome: Outcome, with_report: bool, aside: Aside) -> dict[str, by
 
     if not with_report:
         return {SHEET: sheet_bytes(sheet_of(outcome)), "dossier.h5": dossier_bytes(outcome)}
-    from .report.page import page_of, report_html
+    from .report.page import PARTS, report_html
 
-    page, dossier = aside.start(page_of, outcome), aside.start(dossier_bytes, outcome)
-    sheet, report = sheet_bytes(sheet_of(outcome)), report_html(outcome, page).encode()
-    return {SHEET: sheet, "dossier.h5": dossier.result(), "report.html": report}
+    parts = [aside.start(work, outcome) for work in PARTS]
+    sheet, dossier = sheet_bytes(sheet_of(outcome)), dossier_bytes(outcome)
+    report = report_html(outcome, parts).encode()
+    return {SHEET: sheet, "dossier.h5": dossier, "report.html": report}

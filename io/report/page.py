@@ -1,5 +1,6 @@
 """The report of an outcome as one self-contained HTML page."""
 
+from collections.abc import Callable, Sequence
 from importlib.resources import files
 from pathlib import PurePath
 from typing import Any
@@ -23,15 +24,17 @@ from .ladder import ladder_of
 from .moving import moving_part
 from .paper import paper_of
 
+Part = dict[str, Any]
 
-def report_html(outcome: Outcome, page: Pending[dict[str, Any]] | None = None) -> str:
+
+def report_html(outcome: Outcome, parts: Sequence[Pending[Part]] = ()) -> str:
     """The whole report; nothing in it is fetched from elsewhere, and names from logs are escaped.
 
     Parameters
     ----------
     outcome : Outcome
-    page : Pending or None
-        What `page_of` gives, where that is being made aside already.
+    parts : sequence of Pending
+        What each of `PARTS` gives, in their order, where they are being made aside already.
 
     Returns
     -------
@@ -44,30 +47,36 @@ def report_html(outcome: Outcome, page: Pending[dict[str, Any]] | None = None) -
     environment = Environment(autoescape=True, undefined=StrictUndefined, trim_blocks=True, lstrip_blocks=True)
     template = environment.from_string(_resource("page.html"))
     moving = moving_part(outcome)
-    rest = page_of(outcome) if page is None else page.result()
+    made = [part.result() for part in reversed(parts)]  # the last one may not have been begun: it is made here then
+    rest = {key: value for part in made or [work(outcome) for work in PARTS] for key, value in part.items()}
     return template.render(page=rest, style=Markup(_style()), moving=moving)
 
 
-def page_of(outcome: Outcome) -> dict[str, Any]:
-    """Everything in the page but the moving sheet: pictures, tables and texts by name."""
-    return _safe_pictures({**_top(outcome), **_knowing(outcome)})
+def answer_of(outcome: Outcome) -> Part:
+    """The upper part of the page by name, but the moving sheet: may I, what, what then."""
+    return _safe_pictures(_top(outcome))
 
 
+def evidence_of(outcome: Outcome) -> Part:
+    """The lower part of the page by name: how we know."""
+    return _safe_pictures(_knowing(outcome))
+
+
+PARTS: tuple[Callable[[Outcome], Part], ...] = (answer_of, evidence_of)
 _PICTURES = ("step", "ribbon", "headroom", "locus", "margins")
 
 
-def _safe_pictures(page: dict[str, Any]) -> dict[str, Any]:
+def _safe_pictures(page: Part) -> Part:
     """Mark the pictures, whose texts are escaped already, as markup."""
     from markupsafe import Markup
 
     page.update({name: Markup(page[name]) for name in _PICTURES if name in page})
-    if page.get("ladder"):
-        page["ladder"] = {**page["ladder"], "picture": Markup(page["ladder"]["picture"])}
-    if page.get("changed"):
-        page["changed"] = {**page["changed"], "picture": Markup(page["changed"]["picture"])}
-    for kind in ("logs", "tables"):
-        page[kind] = tuple((label, Markup(svg)) for label, svg in page[kind])
-    page["closing"] = tuple((compared, Markup(svg)) for compared, svg in page["closing"])
+    for kind in ("ladder", "changed"):
+        if page.get(kind):
+            page[kind] = {**page[kind], "picture": Markup(page[kind]["picture"])}
+    for kind in ("logs", "tables", "closing"):
+        if kind in page:
+            page[kind] = tuple((about, Markup(svg)) for about, svg in page[kind])
     return page
 
 
