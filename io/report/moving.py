@@ -46,11 +46,15 @@ def moving_part(outcome: Outcome) -> dict[str, Any] | None:
         "source": Markup(script_source(text)),
         "stepped": bool(sweep.time.size),
         "limited": bool(data["limits"]),
-        **_guides(sweep),
+        **_guides(sweep, sticks=outcome.fit.sticking is not None),
     }
 
 
-def _guides(sweep: GainSweep) -> dict[str, str]:
+def _guides(sweep: GainSweep, *, sticks: bool) -> dict[str, str]:
+    without = (
+        " The actuator that sticks is left out of this sheet: what hunts on the rig may look calm here. The "
+        "predicted step above and the check of the chosen K count it."
+    ) if sticks else ""  # fmt: skip
     longer = "" if _as_shipped(sweep) else (
         f" The band is run with an update interval of {words.every(sweep.band_interval)} and the same total delay, to "
         "keep the sheet small."
@@ -62,7 +66,7 @@ def _guides(sweep: GainSweep) -> dict[str, str]:
             "chosen K. Rows are filled where a requirement holds. On each row the bead shows the slack of the fitted "
             "plant: the bound is the upright line, room is to its right; the bar behind it holds 95 % of "
             f"{sweep.plants} plausible plants (at the chosen K: of all that the gains were checked on), and the figure "
-            f"is the worse of its end and the bead. A hollow bead misses its bound."
+            f"is the worse of its end and the bead. A hollow bead misses its bound.{without}"
         ),
         "locus_guide": (
             "How to read it: filled diamonds are the closed-loop poles of the fitted plant at this K, dotted ones "

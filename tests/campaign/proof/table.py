@@ -15,7 +15,7 @@ def wilson(hits: int, of: int, z: float = 1.959964) -> tuple[float, float]:
     share = hits / of
     middle = share + z * z / (2 * of)
     half = z * sqrt(share * (1 - share) / of + z * z / (4 * of * of))
-    return (middle - half) / (1 + z * z / of), (middle + half) / (1 + z * z / of)
+    return max((middle - half) / (1 + z * z / of), 0.0), min((middle + half) / (1 + z * z / of), 1.0)
 
 
 def share(hits: int, of: int) -> str:

@@ -6,8 +6,10 @@ import re
 from dataclasses import replace
 from html.parser import HTMLParser
 
+import numpy as np
 import pytest
 from gainwright.ident.law import Law
+from gainwright.ident.play import Sticking, Valve
 from gainwright.io.report.page import law_text, report_html
 
 OWN_SCRIPTS = [{"type": "application/json", "id": "moving-data"}, {}]
@@ -245,3 +247,12 @@ def test_continuous_and_sampled_pole_stand_side_by_side_with_their_distance(make
     assert "The exact pole of the sampled loop, ln z/T, stands at" in text
     assert f"{apart:.2g} % from it" in text
     assert "Everything the locus offers on the same lines" in text
+
+
+def test_the_moving_sheet_says_that_it_leaves_a_sticking_actuator_out(made):
+    """Only where one was found: the page runs the plant without it."""
+    words = "left out of this sheet: what hunts on the rig may look calm here"
+    assert words not in Reader(report_html(made)).text
+    one = np.ones(1)
+    sticking = Sticking(Valve(0.2, 0.1), 0.02, 0.1 * one, 0.5 * one, one, 40.0)
+    assert words in Reader(report_html(replace(made, fit=replace(made.fit, sticking=sticking)))).text
