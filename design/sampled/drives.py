@@ -50,6 +50,26 @@ class Drives:
             moved = moved + more
         return speed, moved
 
+    def walked(self, speed: FloatArray, level: FloatArray, times: FloatArray) -> tuple[FloatArray, FloatArray]:
+        """(n, c) speeds, and how far the response moved, after each of `times` (n, c) under a constant command.
+
+        The level does not change, so that a drive comes to rest once at most; it stays or turns from there.
+        """
+        moving = speed != 0.0
+        way = np.sign(np.where(moving, speed, level))
+        beyond = np.abs(level) > self.friction
+        final = np.where(moving | beyond, level - way * self.friction, 0.0)
+        stops = moving & (final * way < 0.0)
+        if not stops.any():
+            return self._walked(speed, final, times, self.decay(times))
+        until = np.where(stops, self.lag * np.log1p(np.where(stops, -speed / np.where(stops, final, 1.0), 0.0)), np.inf)
+        first = np.minimum(times, until)
+        after, moved = self._walked(speed, final, first, self.decay(first))
+        rest = times - first
+        turned = np.where(beyond, level - np.sign(level) * self.friction, 0.0)
+        later, more = self._walked(np.zeros_like(speed), turned, rest, self.decay(rest))
+        return np.where(times >= until, later, after), moved + more
+
     def _phase(
         self, speed: FloatArray, level: FloatArray, length: FloatArray, decay: FloatArray
     ) -> tuple[FloatArray, FloatArray, FloatArray]:
