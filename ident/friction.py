@@ -6,6 +6,7 @@ Between changes of a held command each phase (moving one way, slowing to rest, s
 response is exact and costs a few phases a change, not a step a sample.
 """
 
+import math
 from collections.abc import Sequence
 from dataclasses import dataclass
 
@@ -87,9 +88,7 @@ def _moved(speed: FloatArray, final: FloatArray, passed: FloatArray, time_consta
 def _changes(grid: Grid, start: float, dead_time: float) -> tuple[list[float], list[float]]:
     """Instants at which a new level arrives, from time zero on, and the levels."""
     changed = np.flatnonzero(np.diff(grid.moved, prepend=0.0) != 0.0)
-    times = [0.0, *(grid.time[changed] + dead_time)]
-    levels = [start, *(start + grid.moved[changed])]
-    return [float(t) for t in times], [float(v) for v in levels]
+    return [0.0, *(grid.time[changed] + dead_time).tolist()], [start, *(start + grid.moved[changed]).tolist()]
 
 
 def _phases(
@@ -103,15 +102,15 @@ def _phases(
         for _ in range(3):
             length = finish - now
             stuck = speed == 0.0 and -backward <= level <= forward
-            way = np.sign(speed) if speed else np.sign(level)
-            final = 0.0 if stuck else float(level - forward if way > 0 else level + backward)
+            way = math.copysign(1.0, speed if speed else level)
+            final = 0.0 if stuck else (level - forward if way > 0.0 else level + backward)
             phases.add(now, speed, final, place)
             if stuck:
                 break
-            stops = speed != 0.0 and final * way < 0
-            until_rest = time_constant * float(np.log1p(-speed / final)) if stops else np.inf
+            stops = speed != 0.0 and final * way < 0.0
+            until_rest = time_constant * math.log1p(-speed / final) if stops else math.inf
             step = min(length, until_rest)
-            decay = float(np.exp(-step / time_constant))
+            decay = math.exp(-step / time_constant)
             place += final * step + (speed - final) * time_constant * (1 - decay)
             speed = 0.0 if until_rest <= length else final + (speed - final) * decay
             now += step

@@ -163,7 +163,7 @@ def _ramp_weights(smooth: float, points: int) -> FloatArray:
 
     `smooth` is what a sub-step leaves of the filter's state.
     """
-    rate = -np.log(smooth)
+    rate = -float(np.log(smooth))
     before, after = (1.0 - smooth) / rate - smooth, 1.0 - (1.0 - smooth) / rate
     left = smooth ** np.arange(points - 1.0, -1.0, -1.0)
     return np.concatenate([before * left, [0.0]]) + np.concatenate([[0.0], after * left])
