@@ -166,4 +166,4 @@ def _ramp_weights(smooth: float, points: int) -> FloatArray:
     rate = -float(np.log(smooth))
     before, after = (1.0 - smooth) / rate - smooth, 1.0 - (1.0 - smooth) / rate
     left = smooth ** np.arange(points - 1.0, -1.0, -1.0)
-    return np.concatenate([before * left, [0.0]]) + np.concatenate([[0.0], after * left])
+    return np.asarray(np.append(before * left, 0.0) + np.append(0.0, after * left))
