@@ -95,6 +95,10 @@ class Stepped:
         if held.any():
             final = np.where(held, history.response[-1], final)
             moving = moving | (held & step_metrics.wanders(history.response, final))
+        if bank.curves is not None:  # without integral action it comes to rest where the curve lets it
+            short = (bank.curves[0, self.which] != 0.0) & (np.abs(goal - final) > 1e-6 * np.abs(goal))
+            final = np.where(short, history.response[-1], final)
+            moving = moving | (short & step_metrics.wanders(history.response, final))
         stuck = held_by_valve(bank, self.which)
         if stuck.any():  # it may hunt for ever: the middle of the last tenth is as steady as it gets
             middle = step_metrics.late(history.response, 0.1).mean(axis=0)

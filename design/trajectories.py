@@ -39,6 +39,7 @@ def trajectory(gains: Gains, nominal: Plant, plausible: Plausible, situation: Si
         points=1,
         stiction=led.stiction,
         valves=led.valves,
+        curves=led.curves,
         predict=setting.continuous,
     )
     which = np.arange(bank.lag.size)

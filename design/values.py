@@ -130,6 +130,7 @@ def _bank(plausible: Plausible, situation: Situation, interval: float, points: i
         points=points,
         stiction=plausible.stiction,
         valves=plausible.valves,
+        curves=plausible.curves,
         predict=setting.continuous,
     )
 

@@ -122,7 +122,10 @@ def fit_candidates(
     better = together[0].problem.structure.further and min(f.misfit for f in fitted) < _VISIBLY * visible
     if weighed and together[0].criterion > recoloured[0].criterion - _UNEXPLAINED:
         better = False  # a pole and a zero beside each other fit a few points of any table a little better
-    return (together, own_colour) if better else (recoloured, colour)
+    if better or colour.wander == 0.0:
+        return (together, own_colour) if better else (recoloured, colour)
+    beside = [refit(f, colour) for f in fitted if f.problem.structure.further]
+    return [*recoloured, *sorted(_distinct(beside), key=lambda f: f.criterion)], colour
 
 
 def _under_one_noise(fitted: list[Fitted]) -> tuple[list[Fitted], Colour]:
@@ -206,6 +209,13 @@ def refit(fitted: Fitted, colour: Colour) -> Fitted:
     return _weighed(fitted.problem, theta, solved)
 
 
+def under_white_noise(fitted: Fitted, runs: Sequence[Run]) -> Fitted:
+    """The same structure by plain least squares for the same records with other commands, from where it stands."""
+    own = fitted.problem
+    problem = Regression(tuple(runs), own.structure, own.reference, own.fixed_command)
+    return _weighed(problem, *polish(problem, fitted.theta, WHITE, rounds=12))
+
+
 def steady_fit(fitted: Fitted) -> Fitted:
     """Plain least squares instead, where the whitened estimate pays for its efficiency with a worse fit.
 
@@ -241,11 +251,32 @@ def _cost_with_gain(problem: Regression, fitted: Fitted) -> float:
     return float(away @ away)
 
 
-def evidence(fitted: Sequence[Fitted]) -> FloatArray:
-    """(m,) shares of the evidence, exp(-criterion/2) normalised."""
+def evidence(fitted: Sequence[Fitted], colour: Colour) -> FloatArray:
+    """(m,) shares of the evidence, exp(-criterion/2) normalised; the best comes first.
+
+    Beside a better structure a further parameter pays the price that rises with the record (Schwarz), but only what it
+    gains by chance (Akaike) where the record is no judge of it: dry friction that does not show is still there when
+    the gains run, and where the level wanders what the plant does slowly may have passed for the wandering.
+    """
+    fewest = min(_unknowns(f) for f in fitted)
+    price = float(np.log(len(fitted[0].problem.measured))) - 2.0
+
+    def relief(one: Fitted) -> float:
+        if colour.wander > 0.0:
+            return (_unknowns(one) - fewest) * price
+        held = sum(shape.kind == "command" for shape in one.problem.structure.shapes)
+        return held * price
+
     criteria = np.array([f.criterion for f in fitted])
-    weight = np.exp(-0.5 * (criteria - criteria.min()))
+    eased = criteria - np.array([relief(f) for f in fitted])
+    if colour.wander == 0.0:
+        eased[0] = criteria[0]
+    weight = np.exp(-0.5 * (eased - eased.min()))
     return np.asarray(weight / weight.sum())
+
+
+def _unknowns(fitted: Fitted) -> int:
+    return len(fitted.theta) + len(fitted.solved.coefficients)
 
 
 def _families(structures: Sequence[Structure]) -> list[list[Structure]]:

@@ -1,12 +1,13 @@
 """What a fit hands on: the plant, its parameters with intervals, the noise, and the plausible plants."""
 
-from dataclasses import dataclass, field
+from dataclasses import dataclass, field, replace
 
 import numpy as np
 
+from .bend import Bend
 from .plant import Plant
 from .play import Sticking, Valve
-from .run import Between, FloatArray
+from .run import Between, FloatArray, Run
 from .tables import FittedTable
 
 
@@ -66,19 +67,45 @@ class Plausible:
     valves : (p, 3) array or None, command unit
         Of a valve that sticks before each plant: the band within which the command moves nothing, how far short of
         the command it rests, and how far above it the command stands at rest. None where none was found.
+    curves : (p, 2) array or None
+        Of a gain that differs along the command: the bend b, per command unit, about the operating command, and the
+        gain of the plant over that at the operating command, 1. A large move u drives the plant by (u + b u^2) / gain.
+        None where the gain is the same all along.
     """
 
     plants: tuple[Plant, ...]
     operating_command: FloatArray
     stiction: FloatArray
     valves: FloatArray | None = None
+    curves: FloatArray | None = None
+
+    def locally(self, slopes: FloatArray, bends: FloatArray) -> "Plausible":
+        """The same plants about other commands, behind curves that bring them back to their gain at the operating one.
+
+        Parameters
+        ----------
+        slopes : (p,) array
+            Gain there over that at the operating command.
+        bends : (p,) array, per command unit
+        """
+        return replace(self._times(slopes), curves=np.column_stack([bends, slopes]))
+
+    @property
+    def straight(self) -> "Plausible":
+        """The same plants at their gain at the operating command."""
+        return self if self.curves is None else replace(self._times(1.0 / self.curves[:, 1]), curves=None)
+
+    def _times(self, factors: FloatArray) -> "Plausible":
+        each = zip(self.plants, factors.tolist(), strict=True)
+        return replace(self, plants=tuple(replace(p, numerator=tuple(k * c for c in p.numerator)) for p, k in each))
 
     def take(self, chosen: FloatArray | list[int] | slice) -> "Plausible":
         """The chosen ones, by index."""
         index = np.arange(len(self.plants))[chosen]
         valves = None if self.valves is None else self.valves[index]
+        curves = None if self.curves is None else self.curves[index]
         return Plausible(
-            tuple(self.plants[i] for i in index), self.operating_command[index], self.stiction[index], valves
+            tuple(self.plants[i] for i in index), self.operating_command[index], self.stiction[index], valves, curves
         )
 
     def led_by(self, plant: Plant, operating_command: float) -> "Plausible":
@@ -94,11 +121,13 @@ class Plausible:
         if valves is not None:
             middle = np.median(valves, axis=0) * [1.0, 1.0, 0.0] if len(valves) else np.zeros(3)
             valves = np.vstack([middle, valves])
+        curves = None if self.curves is None else np.vstack([[0.0, 1.0], self.curves])
         return Plausible(
             (plant, *self.plants),
             np.concatenate([[operating_command], self.operating_command]),
             np.concatenate([[stiction], self.stiction]),
             valves,
+            curves,
         )
 
 
@@ -189,6 +218,9 @@ class Fit:
         its standard deviation is zero.
     sticking : Sticking or None
         A valve that sticks before the plant, and what is open about it; None where the records show none.
+    bend : Bend or None
+        How the gain differs along the command; None where the records show no difference. Then the plant is that about
+        the operating command.
     """
 
     structure: str
@@ -212,6 +244,11 @@ class Fit:
     friction: tuple[float, float] = (0.0, 0.0)
     tables: tuple[FittedTable, ...] = ()
     sticking: Sticking | None = None
+    bend: Bend | None = None
+
+    def through(self, run: Run) -> Run:
+        """The run with the command that drives the plant, behind bend and valve."""
+        return self.valve.through(run if self.bend is None else self.bend.through(run))
 
     @property
     def valve(self) -> Valve:

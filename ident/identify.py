@@ -11,9 +11,9 @@ from .catalogue import CATALOGUE, Structure
 from .choose import Fitted, Progress, colour_of, evidence, fit_candidates, name_of, refit, steady_fit
 from .closed_loop import resting_response
 from .ensemble import Drawn, draw_structure, internal_draws, operating_commands, plant_of, plausible_plants
+from .find_bend import find_bend
 from .fit import finish
 from .fitted import Candidate, Fit, FittedRun, Noise, Parameter
-from .play import Sticking
 from .run import FloatArray, Run
 from .table_fit import fitted_tables, require_tables, structures_for, table_cautions, weigh
 from .tables import Table
@@ -85,11 +85,16 @@ def identify(
         allowed = structures if further or not usual else usual
         fitted, colour = fit_candidates(through, reference, fixed, allowed, progress, weighed)
         chosen, own = _finished(fitted[0], colour)
-        return Choice([chosen, *fitted[1:]], evidence(fitted), own)
+        return Choice([chosen, *fitted[1:]], evidence(fitted, colour), own)
 
-    choice, sticking = choose(runs, True), None
+    choice, sticking, bend = choose(runs, True), None, None
+    driving = runs
     if not tables:
-        choice, sticking = behind_valve(runs, choice, choose)
+        bend = find_bend(choice.fitted[0], choice.colour)
+        if bend is not None:
+            driving = tuple(bend.through(run) for run in runs)
+            choice = choose(driving, True)
+        choice, sticking = behind_valve(driving, choice, choose)
     fitted, weights, colour = choice.fitted, choice.weights, choice.colour
     fitted = [fitted[0], *(f if fitted[0].whitened else steady_fit(f) for f in fitted[1:])]
     if progress:
@@ -98,14 +103,13 @@ def identify(
     drawn = [draw_structure(fitted[i], colour, _DRAWS if i == 0 else _TIED_DRAWS, seed) for i in kept]
     drawn = [replace(d, draws=between.spread(d.draws, len(d.fitted.theta) - 1)) for d in drawn]
     found = _assembled(fitted, weights, drawn, weights[kept], colour, operating_response, between)
-    return found if sticking is None else _with_valve(found, sticking, runs, seed)
-
-
-def _with_valve(fit: Fit, sticking: Sticking, runs: Sequence[Run], seed: int) -> Fit:
-    """The fit with the valve in front of each plausible plant, and the commands as they were logged."""
-    logged = tuple(replace(each, command=run.command) for each, run in zip(fit.runs, runs, strict=True))
-    valves = sticking.draws(len(fit.plausible.plants), seed)
-    return replace(fit, runs=logged, plausible=replace(fit.plausible, valves=valves), sticking=sticking)
+    if bend is not None or sticking is not None:  # the commands as they were logged
+        logged = tuple(replace(each, command=run.command) for each, run in zip(found.runs, runs, strict=True))
+        found = replace(found, runs=logged, bend=bend)
+    if sticking is None:
+        return found
+    valves = sticking.draws(len(found.plausible.plants), seed)  # in front of each plausible plant
+    return replace(found, plausible=replace(found.plausible, valves=valves), sticking=sticking)
 
 
 def _finished(best: Fitted, colour: Colour) -> tuple[Fitted, Colour]:

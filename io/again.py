@@ -8,7 +8,9 @@ import h5py
 import numpy as np
 
 from ..design.designed import Design, Selection
+from ..design.local_gain import with_local_gains
 from ..design.requirements import ControllerSetting, Limits, Requirements
+from ..ident.bend import Bend
 from ..ident.catalogue import CATALOGUE, Structure
 from ..ident.errors import RequestError
 from ..ident.fitted import Fit, Noise, Parameter, Plausible
@@ -68,6 +70,8 @@ def job_again(earlier: Earlier) -> Again:
     kept = _from_dossier(earlier)
     plausible, draws = kept if kept is not None else _drawn(earlier, structure)
     fit = _fit(earlier, plausible, draws)
+    if kept is None:
+        fit = with_local_gains(fit, requirements)
     return Again(fit, _design(earlier), requirements, limits, setting, kept is not None)
 
 
@@ -93,7 +97,15 @@ def _fit(earlier: Earlier, plausible: Plausible, draws: FloatArray) -> Fit:
         draws=draws,
         between=plant["between_samples"],
         friction=(float(values.get("friction forward", 0.0)), float(values.get("friction backward", 0.0))),
+        bend=_bend(plant.get("curve")),
     )
+
+
+def _bend(row: dict[str, Any] | None) -> Bend | None:
+    if row is None:
+        return None
+    bend, reach = row["bend"], row["reach"]["value"]
+    return Bend(float(row["reference"]["value"]), float(bend["value"]), float(bend["std_error"]), float(reach), 0.0)
 
 
 def _parameter(name: str, row: dict[str, Any]) -> Parameter:
@@ -161,7 +173,8 @@ def _plausible(group: h5py.Group) -> Plausible:
         for top, bottom, delay in zip(tops, bottoms, delays, strict=True)
     )
     valves = group["valves"][()] if "valves" in group else None
-    return Plausible(plants, group["operating_command"][()], group["stiction"][()], valves)
+    curves = group["curves"][()] if "curves" in group else None
+    return Plausible(plants, group["operating_command"][()], group["stiction"][()], valves, curves)
 
 
 def _trimmed(row: FloatArray) -> tuple[float, ...]:

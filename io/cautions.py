@@ -8,6 +8,7 @@ import numpy as np
 
 from ..design.designed import Design, LimitJudged, Selection
 from ..design.requirements import Limits
+from ..ident.bend import slope_at
 from ..ident.fitted import Fit
 from .figures.words import number, with_unit
 from .rigfile.rig import Rig
@@ -66,6 +67,7 @@ def derived_cautions(rig: Rig, design: Design | None, fit: Fit | None = None) ->
         found += stiction_caution(rig, design, fit)
     if fit is not None:
         found += sticking_caution(rig, fit)
+        found += curve_caution(rig, fit)
     return tuple(found)
 
 
@@ -202,6 +204,22 @@ def sampling_caution(selection: Selection) -> Iterator[str]:
             "away from the chosen point of the locus. Every requirement was judged on the sampled law; a shorter "
             "update interval would bring the two together."
         )
+
+
+def curve_caution(rig: Rig, fit: Fit) -> Iterator[str]:
+    """The gain of the plant differs along the command."""
+    bend = fit.bend
+    if bend is None:
+        return
+    ends = np.array([bend.reference - bend.reach, bend.reference + bend.reach])
+    low, high = 100.0 * (slope_at(np.full(2, bend.bend), ends - bend.reference) - 1.0)
+    yield (
+        f"The gain differs along the command (the bend is known to {number(100.0 * bend.error / abs(bend.bend), 2)} %, "
+        f"one standard error): against that at {with_unit(bend.reference, rig.command_unit)} it is {low:+.1f} % at "
+        f"{with_unit(ends[0], rig.command_unit)} and {high:+.1f} % at {with_unit(ends[1], rig.command_unit)}. The "
+        "plausible plants have every gain on the way of the test step, and large moves run through the curve; about "
+        "another operating point the same gains are another loop."
+    )
 
 
 def sticking_caution(rig: Rig, fit: Fit) -> Iterator[str]:

@@ -173,6 +173,9 @@ def _put_plausible(group: h5py.Group, plausible: Plausible, rig: Rig) -> None:
     if plausible.valves is not None:
         text = "valve that sticks: band, how far short of the command it rests, how far above it the command is at rest"
         _numbers(group, "valves", plausible.valves, rig.command_unit, text)
+    if plausible.curves is not None:
+        text = "gain that differs along the command: bend about the operating one, and the plant's gain over that there"
+        _numbers(group, "curves", plausible.curves, f"1/({rig.command_unit}), 1", text)
 
 
 def _rows(coefficients: Sequence[tuple[float, ...]]) -> NDArray[np.float64]:

@@ -17,6 +17,7 @@ from ..design.design import SETS, Begun, begin_design
 from ..design.designed import Design
 from ..design.ladder.build import build_ladder
 from ..design.ladder.rung import Ladder
+from ..design.local_gain import with_local_gains
 from ..ident.errors import RecordError
 from ..ident.fitted import Fit
 from ..ident.given import fit_of_given
@@ -174,7 +175,7 @@ def _identify(
         operating_response=response,
         progress=progress,
     )
-    return fit if known is None else replace(fit, noise=known.noise)
+    return with_local_gains(fit if known is None else replace(fit, noise=known.noise), rig.requirements)
 
 
 def _design(rig: Rig, fit: Fit, progress: Progress, aside: Aside) -> Begun:

@@ -167,6 +167,19 @@ def _plant(outcome: Outcome) -> dict[str, Any] | None:
         "noise": _noise(fit),
         "between_samples": fit.between,
         "sticking": _sticking(fit, rig.command_unit),
+        "curve": _curve(fit, rig.command_unit),
+    }
+
+
+def _curve(fit: Fit, unit: str) -> dict[str, Any] | None:
+    """A gain that differs along the command u: u + bend (u - reference)^2 drives the plant."""
+    if fit.bend is None:
+        return None
+    bend = {"value": float(fit.bend.bend), "unit": f"1/({unit})", "std_error": float(fit.bend.error)}
+    return {
+        "reference": {"value": float(fit.bend.reference), "unit": unit},
+        "bend": bend,
+        "reach": {"value": float(fit.bend.reach), "unit": unit},
     }
 
 

@@ -83,7 +83,7 @@ def _start_level(run: Run, from_zero: FloatArray) -> float:
 
 def _plausible_runs(run: Run, fit: Fit, level: float) -> FloatArray:
     """(k, n) free runs of plausible plants, each about its own operating command."""
-    plausible = fit.plausible.take(slice(0, _PLANTS))
+    plausible = fit.plausible.straight.take(slice(0, _PLANTS))
     runs = [
         rough_free_run(plant, run, float(command), level, fit.friction if friction > 0 else (0.0, 0.0))
         for plant, command, friction in zip(

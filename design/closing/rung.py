@@ -154,6 +154,7 @@ def _simulated(
         points=1,
         stiction=plausible.stiction,
         valves=plausible.valves,
+        curves=plausible.curves,
     )
     count = len(plausible.plants)
     columns = columns_of_law(law).take(np.zeros(count, dtype=int))

@@ -16,6 +16,7 @@ from ...ident.fitted import Fit, Plausible
 from ...ident.run import Run
 from ..designed import Design
 from ..judge import judge_plants
+from ..local_gain import at_local_gains
 from ..requirements import ControllerSetting, Limits, Requirements
 from .compared import Compared
 from .prediction import Prediction, predict
@@ -62,7 +63,7 @@ def compare(
     """
     if progress:
         progress(f"comparing with {run.label}", 0.0)
-    logged, run = run, fit.valve.through(run)
+    logged, run = run, fit.through(run)
     prediction = predict(run, fit)
     valid = run.valid
     spread = float(np.std(run.response[valid]))
@@ -119,7 +120,7 @@ def _judge(
     def meets(plausible: Plausible) -> NDArray[np.bool_]:
         return judge_plants(
             design.gains,
-            plausible.take(slice(0, _JUDGED)),
+            at_local_gains(plausible.take(slice(0, _JUDGED)), fit, requirements),
             operating_command=fit.operating_command,
             operating_response=fit.operating_response,
             noise=fit.noise,

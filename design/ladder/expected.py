@@ -151,6 +151,7 @@ def _bank(plausible: Plausible, situation: Situation, horizon: float) -> Bank:
         points=2 if not np.any(plausible.stiction > 0.0) else 1,
         stiction=plausible.stiction,
         valves=plausible.valves,
+        curves=plausible.curves,
     )
 
 

@@ -58,6 +58,8 @@ class Bank:
         The same plants as drives with friction, where friction holds any.
     valves : (3, p) array or None, command unit
         Of a valve that sticks before each plant, see `Plausible.valves`.
+    curves : (2, p) array or None
+        Of a gain that differs along the command, see `Plausible.curves`.
     """
 
     interval: float
@@ -79,6 +81,7 @@ class Bank:
     filter_time: float = 0.0
     drives: Drives | None = None
     valves: FloatArray | None = None
+    curves: FloatArray | None = None
 
 
 def build_bank(
@@ -90,6 +93,7 @@ def build_bank(
     points: int = 4,
     stiction: FloatArray | None = None,
     valves: FloatArray | None = None,
+    curves: FloatArray | None = None,
     predict: bool = False,
 ) -> Bank:
     """Discretise the plants exactly.
@@ -108,6 +112,8 @@ def build_bank(
         Dry friction of each plant.
     valves : (p, 3) array, command unit, optional
         Of a valve that sticks before each plant.
+    curves : (p, 2) array, optional
+        Of a gain that differs along the command.
     predict : bool
         Where the total delay is negative, let the controller see the response that much ahead, under the old command.
 
@@ -131,8 +137,8 @@ def build_bank(
     )
     drives = None if stiction is None else drives_of(plants, stiction, delay)
     seen = _ahead(a, b, smooth.seen, np.maximum(-total, 0.0)) if predict and np.any(total < 0.0) else smooth.seen
-    sticking = None if valves is None else valves.T
-    return replace(smooth, filter_time=filter_time, drives=drives, seen=seen, valves=sticking)
+    sticking, bends = None if valves is None else valves.T, None if curves is None else curves.T
+    return replace(smooth, filter_time=filter_time, drives=drives, seen=seen, valves=sticking, curves=bends)
 
 
 def _ahead(a: FloatArray, b: FloatArray, seen: FloatArray, time: FloatArray) -> FloatArray:

@@ -2,6 +2,7 @@
 
 import numpy as np
 
+from ...ident.bend import curved
 from ...ident.run import FloatArray
 from ..discretise import LawColumns
 from .around import held_by_friction
@@ -49,6 +50,7 @@ class _Follower:
         part = np.maximum(bank.delay[chosen] - self.lag * bank.interval, 0.0)
         self.old_share = np.minimum(part, bank.interval)
         self.valves = None if bank.valves is None else bank.valves[:, chosen]
+        self.curves = None if bank.curves is None else bank.curves[:, chosen]
         self.stem = np.zeros(chosen.size)
 
     def run(self, setpoint: FloatArray) -> tuple[FloatArray, FloatArray]:
@@ -73,6 +75,8 @@ class _Follower:
         return responses, commands
 
     def _through(self, given: FloatArray) -> FloatArray:
+        if self.curves is not None:
+            given = curved(self.curves[0], given) / self.curves[1]
         if self.valves is None:
             return given
         band, short, above = self.valves

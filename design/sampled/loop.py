@@ -5,6 +5,7 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
+from ...ident.bend import curved
 from ...ident.run import FloatArray
 from ..discretise import LawColumns
 from .bank import Bank, IndexArray
@@ -142,6 +143,8 @@ class _Columns:
         self.step = np.ascontiguousarray(bank.step[:, :, which])
         self.filtered = bank.filtered
         self.valves = None if bank.valves is None else bank.valves[:, which]
+        self.curves = None if bank.curves is None else bank.curves[:, which]
+        self.straight = self.valves is None and self.curves is None
         self.stem = np.zeros(count)
         self.lag = bank.lag[which]
         self.law, self.clamps, self.free = law, clamps, clamps.free
@@ -173,7 +176,7 @@ class _Columns:
             wanted = first + r0 - y0 * seen_now
             given = wanted if self.free else self._clamped(wanted, before, k)
             self.command[k] = given
-            np.add(given if self.valves is None else self._through(given), disturbance, out=sent[k + depth])
+            np.add(given if self.straight else self._through(given), disturbance, out=sent[k + depth])
             state[n] = state[n + 1]
             flat.take(place + k * count, out=state[n + 1])
             np.einsum("ijc,jc->ic", matrix, state, out=out)
@@ -190,8 +193,12 @@ class _Columns:
         return None if slopes is None else np.asarray(steepest.max(axis=0))
 
     def _through(self, given: FloatArray) -> FloatArray:
-        """Where the valves stand: each stays until the command is its band away, then comes to rest short of it."""
-        assert self.valves is not None
+        """What drives the plants: behind their curves, and where the valves stand. Each stays until the command is its
+        band away, then comes to rest short of it."""
+        if self.curves is not None:
+            given = curved(self.curves[0], given) / self.curves[1]
+        if self.valves is None:
+            return given
         band, short, above = self.valves
         self.stem = followed(self.stem, given + above, band, short)
         return self.stem
