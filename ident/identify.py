@@ -10,6 +10,7 @@ from .between import Between, settle_between
 from .catalogue import CATALOGUE, Structure
 from .choose import Fitted, Progress, colour_of, evidence, fit_candidates, name_of, refit, steady_fit
 from .closed_loop import resting_response
+from .ends import interval_ends
 from .ensemble import Drawn, draw_structure, internal_draws, operating_commands, plant_of, plausible_plants
 from .find_bend import find_bend
 from .fit import finish
@@ -190,8 +191,8 @@ def _parameters(drawn: Drawn, row: FloatArray) -> tuple[tuple[Parameter, ...], F
     best = natural(row[None, :])[0]
     labels = [("gain", ("gain", "gain/s", "gain/s^2")[structure.integrators]), ("dead time", "s")]
     labels += [(n.name, n.unit) for n in named.parameters]
-    low = np.minimum(np.quantile(draws, 0.025, axis=0), best)
-    high = np.maximum(np.quantile(draws, 0.975, axis=0), best)
+    least = np.array([drawn.fitted.problem.soonest if name == "dead time" else -np.inf for name, _ in labels])
+    low, high = np.array([interval_ends(*each) for each in zip(draws.T, best, least, strict=True)]).T
     covariance = np.atleast_2d(np.cov(draws.T))
     errors = np.sqrt(np.diag(covariance))
     parameters = tuple(
@@ -265,8 +266,8 @@ def _cautions(drawn: Drawn, colour: Colour) -> tuple[str, ...]:
     out = []
     s = len(drawn.fitted.theta) - 1
     dead_time = drawn.draws[:, s]
-    if np.quantile(dead_time, 0.025) <= 1e-3 * drawn.fitted.problem.interval:
-        most = np.quantile(dead_time, 0.975)
+    low, most = interval_ends(dead_time, float(drawn.fitted.theta[s]), drawn.fitted.problem.soonest)
+    if low <= 1e-3 * drawn.fitted.problem.interval:
         out.append(f"the records leave open whether there is a dead time at all (95 %: up to {most:.3g} s)")
     if colour.rho > _DRIFTING or colour.wander > 0.0:
         out.append("the response wanders slowly by itself (drift): levels and gain are less certain than they look")

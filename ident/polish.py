@@ -38,7 +38,8 @@ def polish(
     """Walk down from theta; the cost never rises.
 
     The dead time of a response that jumps stays where it is: no sample tells where between two samples the jump was.
-    The slopes are those of the model at the best linear part, cleared of the columns.
+    What stands at a bound and would go beyond it stays there while the others move: a joint step, clipped, would end
+    beside the bottom. The slopes are those of the model at the best linear part, cleared of the columns.
 
     Returns
     -------
@@ -48,20 +49,25 @@ def polish(
     References
     ----------
     Kaufman, L., BIT 15 (1975) 49-57: variable projection without the slopes of the projection (from memory).
+    Bertsekas, D. P., SIAM J. Control Optim. 20 (1982) 221-246: steps under simple bounds (from memory).
     """
     low, high = bounds_of(problem)
     theta = np.clip(theta, low, high)
-    free = np.ones(len(theta), dtype=bool)
-    free[-1] = not (hold_dead_time or problem.jumps)
+    moving = np.arange(len(theta) - int(hold_dead_time or problem.jumps))
     here = problem.at(theta)
     best = problem.solve_at(here, colour)
-    if not free.any():
-        return theta, best.solved
     damping = 1e-3
     reach = np.array([1.5] * (len(theta) - 1) + [high[-1]])
     for _ in range(rounds):
-        slope = best.cleared(here.slopes_under(best.solved.coefficients, colour, rough=True)[:, free])
-        normal, pull = slope.T @ slope, slope.T @ best.solved.residual
+        if not len(moving):
+            break
+        slope = best.cleared(here.slopes_under(best.solved.coefficients, colour, rough=True)[:, moving])
+        pull = slope.T @ best.solved.residual
+        inside = np.where(pull < 0, theta[moving] > low[moving], theta[moving] < high[moving])
+        if not inside.any():
+            break
+        free, slope, pull = moving[inside], slope[:, inside], pull[inside]
+        normal = slope.T @ slope
         size = np.diag(normal).copy()
         size[size == 0] = 1.0
         improved = False

@@ -5,6 +5,7 @@ from collections.abc import Sequence
 
 import numpy as np
 from numpy.typing import NDArray
+from scipy.ndimage import minimum_filter
 
 from .catalogue import Shape
 from .regression import Regression
@@ -13,30 +14,53 @@ from .run import FloatArray
 _ROWS = 800
 
 
-def first_guesses(problem: Regression, count: int = 3) -> list[FloatArray]:
-    """The best `count` different thetas (log shapes, dead time) of the library, best first.
+def first_guesses(problem: Regression, count: int = 4) -> list[FloatArray]:
+    """`count` different thetas (log shapes, dead time) of the library, the best first.
 
     For each shape the response without dead time is shifted by whole samples; gain, levels and drift are then in closed
-    form, so one projection scores every dead time.
+    form, so one projection scores every dead time. What is lower than all around it in shapes and dead time goes first:
+    each such place may be a valley of its own, and the next best ones may all lie in that of the best.
     """
-    rows, basis, target = _thinned(problem)
+    thinned = _thinned(problem)
+    rows, basis, target = thinned
     shifts = _shifts(problem)
     later = _later(rows, shifts)
-    scored: list[tuple[float, FloatArray]] = []
-    for values in _library(problem):
-        costs = _costs(problem, values, later, basis, target)
-        at = int(np.argmin(costs))
-        if problem.jumps:
-            # a jump is at one sample or at the next: the grid of dead times must not miss it
-            near = np.arange(shifts[max(at - 1, 0)], shifts[min(at + 1, len(shifts) - 1)] + 1)
-            costs = _costs(problem, values, _later(rows, near), basis, target)
-            at = int(np.argmin(costs))
-            dead_time = max(near[at] - 0.5, 0.0) * problem.interval
-        else:
-            dead_time = shifts[at] * problem.interval
-        scored.append((float(costs[at]), np.array([*np.log(values), dead_time])))
-    scored.sort(key=lambda pair: pair[0])
-    return different([theta for _, theta in scored], problem, count)
+    axes = [_axis(shape, problem) for shape in problem.structure.shapes]
+    library = list(itertools.product(*axes))
+    costs = np.array([_costs(problem, values, later, basis, target) for values in library])
+    if problem.jumps:
+        scored = [_jump(problem, values, thinned, shifts, row) for values, row in zip(library, costs, strict=True)]
+        scored.sort(key=lambda pair: pair[0])
+        return different([theta for _, theta in scored], problem, count)
+    lattice = costs.reshape(*[len(axis) for axis in axes], len(shifts))
+    valleys = lattice <= minimum_filter(lattice, size=3, mode="nearest")
+    bottoms = np.argwhere(valleys.reshape(costs.shape))
+    lowest = np.column_stack([np.arange(len(library)), np.argmin(costs, axis=1)])
+    places = [*_in_order(bottoms, costs), *_in_order(lowest, costs)]
+    guesses = [np.array([*np.log(library[i]), shifts[at] * problem.interval]) for i, at in places]
+    return different(guesses, problem, count)
+
+
+def _in_order(places: NDArray[np.int64], costs: FloatArray) -> NDArray[np.int64]:
+    """Places, (m, 2), the least cost first."""
+    return np.asarray(places[np.argsort(costs[places[:, 0], places[:, 1]])])
+
+
+def _jump(
+    problem: Regression,
+    values: tuple[float, ...],
+    thinned: tuple[list[NDArray[np.int64]], FloatArray, FloatArray],
+    shifts: NDArray[np.int64],
+    costs: FloatArray,
+) -> tuple[float, FloatArray]:
+    """Cost and theta of a shape that jumps: at one sample or at the next, which the grid of dead times may miss."""
+    rows, basis, target = thinned
+    at = int(np.argmin(costs))
+    near = np.arange(shifts[max(at - 1, 0)], shifts[min(at + 1, len(shifts) - 1)] + 1)
+    closer = _costs(problem, values, _later(rows, near), basis, target)
+    at = int(np.argmin(closer))
+    dead_time = max(near[at] - 0.5, 0.0) * problem.interval
+    return float(closer[at]), np.array([*np.log(values), dead_time])
 
 
 def different(thetas: list[FloatArray], problem: Regression, count: int) -> list[FloatArray]:
@@ -78,17 +102,12 @@ def _shifts(problem: Regression) -> NDArray[np.int64]:
     return np.unique(np.round(share * 0.4 * longest).astype(int))
 
 
-def _library(problem: Regression) -> list[tuple[float, ...]]:
-    axes = [_axis(shape, problem) for shape in problem.structure.shapes]
-    return list(itertools.product(*axes))
-
-
 def _axis(shape: Shape, problem: Regression) -> FloatArray:
     if shape.kind == "time":
         return np.geomspace(0.3 * problem.interval, 3 * problem.duration, shape.steps)
     if shape.kind == "frequency":
         spread = np.geomspace(1.0 / problem.duration, 1.5 / problem.interval, shape.steps)
-        return np.concatenate([spread, _peaks(problem)])
+        return np.sort(np.concatenate([spread, _peaks(problem)]))
     if shape.kind == "command":
         return problem.span * np.geomspace(0.01, 0.5, shape.steps)
     return np.geomspace(shape.low, shape.high, shape.steps)

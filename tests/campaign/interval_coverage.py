@@ -4,6 +4,10 @@ Each replicate is a log summed from closed-form step responses plus noise of its
 alone. Beside each coverage stands the median width, as a ratio to that of the oracle: the Cramer-Rao width of somebody
 who knows the structure, the noise's law and size, and fits gain, dead time, shape and level. An interval that covers
 because it is wide shows there.
+
+Two lags that a noisy record shows as a well damped resonance are printed as one, and have no time constants to hold
+against the truth's. So time constants are counted where they are printed, and for every record of two lags the natural
+frequency and the damping ratio of the same draws are held against those that the truth has in that form.
 """
 
 import argparse
@@ -40,6 +44,7 @@ SHAPES: dict[str, Callable[..., Callable]] = {
     "integrator": step_sums.integrator,
     "integrator with lag": step_sums.integrator_with_lag,
 }
+SECOND_ORDER = ("natural frequency", "damping ratio")
 COLOURS = {"white": 0.0, "AR 0.5": 0.5, "AR 0.8": 0.8, "AR 0.95": 0.95}
 PROFILES = {
     1: ((10.0, 1.0),),
@@ -75,8 +80,18 @@ def clean(cell: Cell, truth: np.ndarray) -> tuple[np.ndarray, np.ndarray, np.nda
     return time, command, LEVEL + step_sums.response(step, truth[0], truth[1], time, command, 0.0)
 
 
+def second_order(slow: float, fast: float) -> np.ndarray:
+    """Natural frequency, rad/s, and damping ratio of two lags, s: 1/sqrt(T1 T2) and (T1 + T2)/(2 sqrt(T1 T2))."""
+    return np.array([1.0, 0.5 * (slow + fast)]) / np.sqrt(slow * fast)
+
+
+def in_both_forms(cell: Cell, truth: np.ndarray) -> np.ndarray:
+    """The truth, of two lags followed by its natural frequency and damping ratio."""
+    return np.append(truth, second_order(*truth[2:])) if cell.structure == "two lags" else truth
+
+
 def oracle_widths(cell: Cell, truth: np.ndarray, std: float) -> np.ndarray:
-    """(k,) widths of 95 % intervals from the Cramer-Rao bound under the true noise, level unknown too."""
+    """Widths of 95 % intervals from the Cramer-Rao bound under the true noise, level unknown too, in both forms."""
 
     def whitened(columns: np.ndarray) -> np.ndarray:
         rho = COLOURS[cell.colour]
@@ -84,17 +99,20 @@ def oracle_widths(cell: Cell, truth: np.ndarray, std: float) -> np.ndarray:
         out[1:] = (columns[1:] - rho * columns[:-1]) / np.sqrt(1 - rho * rho)
         return out
 
-    columns = [np.ones(SAMPLES)]
+    columns, forms = [np.ones(SAMPLES)], []
     for i, value in enumerate(truth):
         moved = 1e-4 * max(abs(value), 1e-3) * np.eye(len(truth))[i]
         columns.append((clean(cell, truth + moved)[2] - clean(cell, truth - moved)[2]) / (2 * moved[i]))
-    slopes = whitened(np.column_stack(columns))
-    return 2 * 1.95996 * np.sqrt(np.diag(std**2 * np.linalg.inv(slopes.T @ slopes)))[1:]
+        forms.append((in_both_forms(cell, truth + moved) - in_both_forms(cell, truth - moved)) / (2 * moved[i]))
+    slopes, into = whitened(np.column_stack(columns)), np.column_stack(forms)
+    covariance = std**2 * np.linalg.inv(slopes.T @ slopes)[1:, 1:]
+    return 2 * 1.95996 * np.sqrt(np.diag(into @ covariance @ into.T))
 
 
-def replicate(cell: Cell, seed: int) -> tuple[list[bool], list[float], float]:
+def replicate(cell: Cell, seed: int) -> tuple[dict[str, bool], dict[str, float], float]:
     """Whether each interval held its truth, its width over the oracle's, and the CPU seconds of the fit."""
     from gainwright.ident.catalogue import CATALOGUE
+    from gainwright.ident.ends import interval_ends
     from gainwright.ident.identify import identify
     from gainwright.ident.run import Run
 
@@ -107,30 +125,38 @@ def replicate(cell: Cell, seed: int) -> tuple[list[bool], list[float], float]:
     begin = clock.process_time()
     fit = identify([run], structures=[s for s in CATALOGUE if s.name == cell.structure])
     spent = clock.process_time() - begin
-    found = {p.name: p for p in fit.parameters}
-    ends = [found.get(name, fit.parameters[2 + i]) for i, name in enumerate(names)]
-    ends = [found["gain"], found["dead time"], *ends]
-    held = [bool(p.low <= value <= p.high) for p, value in zip(ends, truth, strict=True)]
-    ratio = [(p.high - p.low) / width for p, width in zip(ends, oracle_widths(cell, truth, std), strict=True)]
+    ends = {p.name: (p.low, p.high) for p in fit.parameters}
+    names = ("gain", "dead time", *names)
+    if cell.structure == "two lags":
+        names = (*names, *SECOND_ORDER)
+        square, slope, _ = fit.plant.denominator
+        fitted = (1.0 / np.sqrt(square), 0.5 * slope / np.sqrt(square))
+        draws = np.exp(fit.draws[:, :2]).T
+        ends |= {name: interval_ends(*each) for name, *each in zip(SECOND_ORDER, draws, fitted, strict=True)}
+    truth_of = dict(zip(names, in_both_forms(cell, truth), strict=True))
+    width_of = dict(zip(names, oracle_widths(cell, truth, std), strict=True))
+    held = {name: bool(ends[name][0] <= truth_of[name] <= ends[name][1]) for name in names if name in ends}
+    ratio = {name: (ends[name][1] - ends[name][0]) / width_of[name] for name in held}
     return held, ratio, spent
 
 
 def measure(task: tuple[Cell, int, int]) -> dict:
-    """One cell: counts and median widths of each parameter."""
+    """One cell: counts and median widths of each parameter, of the records that print it."""
     cell, replicates, seed = task
     outcomes = [replicate(cell, seed + i) for i in range(replicates)]
-    held = np.array([held for held, _, _ in outcomes])
-    width = np.median(np.array([ratio for _, ratio, _ in outcomes]), axis=0)
-    names = ("gain", "dead time", *STRUCTURES[cell.structure][2])
+    held, asked, width = {}, {}, {}
+    for name in dict.fromkeys(name for counts, _, _ in outcomes for name in counts):
+        held[name] = sum(counts[name] for counts, _, _ in outcomes if name in counts)
+        asked[name] = sum(name in counts for counts, _, _ in outcomes)
+        width[name] = float(np.median([ratio[name] for _, ratio, _ in outcomes if name in ratio]))
     spent = float(np.median([spent for _, _, spent in outcomes]))
-    return {**asdict(cell), "replicates": replicates, "held": dict(zip(names, held.sum(axis=0).tolist(), strict=True)),
-            "width": dict(zip(names, width.tolist(), strict=True)), "cpu": spent}  # fmt: skip
+    return {**asdict(cell), "replicates": replicates, "held": held, "asked": asked, "width": width, "cpu": spent}
 
 
 def line(row: dict) -> str:
     """One cell as a line of the table."""
     shares = "  ".join(
-        f"{name} {100 * count / row['replicates']:.1f} % (x {row['width'][name]:.2f})"
+        f"{name} {100 * count / row['asked'][name]:.1f} % of {row['asked'][name]} (x {row['width'][name]:.2f})"
         for name, count in row["held"].items()
     )
     return f"{row['structure']:20} {row['colour']:8} {row['decibels']:4.0f} dB {row['steps']} steps  {shares}"
@@ -143,7 +169,7 @@ def pooled(rows: list[dict], key: str) -> list[str]:
         chosen = [row for row in rows if row[key] == value]
         for name in dict.fromkeys(name for row in chosen for name in row["held"]):
             count = sum(row["held"][name] for row in chosen if name in row["held"])
-            total = sum(row["replicates"] for row in chosen if name in row["held"])
+            total = sum(row["asked"].get(name, 0) for row in chosen)
             share = 100 * count / total
             error = 100 * np.sqrt(max(count * (total - count), 1) / total**3)
             widths = np.median([row["width"][name] for row in chosen if name in row["held"]])
