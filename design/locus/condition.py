@@ -131,24 +131,6 @@ def point_on_locus(loop: OpenLoop, loop_gain: float, near: complex) -> complex:
     return s
 
 
-def nearest_point_on_locus(loop: OpenLoop, wished: complex) -> LocusPoint:
-    """The point of the locus nearest to a wished one, with its gain.
-
-    It is the foot of a perpendicular from the wish: angle(-G_L(s)) = 0 and Re[(G_L'/G_L)(s - wished)] = 0, sought from
-    the wish and from points around it; the nearest foot found is returned.
-
-    Raises
-    ------
-    LocusError
-        No foot was found.
-    """
-    wished = complex(wished)
-    feet = [foot for start in _starts(loop, wished) if (foot := _foot(loop, wished, start)) is not None]
-    if not feet:
-        raise LocusError("no point of the locus was found near the wish", where="locus", found=f"{wished:.6g} 1/s")
-    return locus_point(loop, min(feet, key=lambda s: abs(s - wished)))
-
-
 def working(loop: OpenLoop, s: complex) -> Working:
     """The vector lengths and factors of |G_L(s)| = 1/K, for a report."""
     s = complex(s)
@@ -202,25 +184,3 @@ def _settled(loop: OpenLoop, loop_gain: float, s: complex) -> complex | None:
 def _rounding(loop: OpenLoop, s: complex) -> float:
     """The residual that a pole rounded to double precision may have."""
     return _ON_LOCUS + 1e-13 * abs(s) * abs(complex(loop.log_derivative(s)))
-
-
-def _starts(loop: OpenLoop, wished: complex) -> list[complex]:
-    scale = max(abs(wished), 1e-9)
-    ring = [wished + scale * r * np.exp(2j * np.pi * k / 8) for r in (0.05, 0.3) for k in range(8)]
-    return [wished, *(complex(s) for s in ring)]
-
-
-def _foot(loop: OpenLoop, wished: complex, s: complex) -> complex | None:
-    scale = abs(wished) + abs(s)
-    for _ in range(_ITERATIONS):
-        with np.errstate(all="ignore"):
-            slope = complex(loop.log_derivative(s))
-            turn = float(np.angle(-complex(loop.at(s))))
-        if slope == 0.0 or not math.isfinite(abs(slope)) or not math.isfinite(turn):
-            return None
-        step = (-1j * turn - (slope * (s - wished)).real) / slope
-        step *= min(1.0, 0.5 * scale / abs(step)) if step else 1.0
-        s += step
-        if abs(step) <= 1e-14 * scale:
-            break
-    return s if abs(angle_residual_deg(loop, s)) < 1e-6 else None

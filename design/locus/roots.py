@@ -5,6 +5,8 @@ the angle of 180 deg is impossible, solved where Newton's method is certain to h
 """
 
 import math
+from functools import partial
+from itertools import takewhile
 
 import numpy as np
 
@@ -15,6 +17,7 @@ from .loop import ComplexArray, FloatArray, OpenLoop, hold_factor
 _LEVELS = 60
 _MOST_BOXES = 400_000
 _SMALLEST = 1e-9  # half diagonal of a box, as a share of its distance, at which what is left is a multiple root
+_MANY = 2e5  # height of the region times the longest delay: about two pi for each pair of roots
 _TURN = 2.0 * np.pi
 
 
@@ -27,7 +30,8 @@ def closed_loop_roots(loop: OpenLoop, loop_gain: float, right_of: float | None =
     loop_gain : float
         Positive.
     right_of : float or None, 1/s
-        None: all of them without delay, and right of `default_left` with it.
+        None: all of them without delay, and right of `default_left` with it; farther to the right where some 100,000
+        lie right of that.
 
     Returns
     -------
@@ -49,7 +53,7 @@ def closed_loop_roots(loop: OpenLoop, loop_gain: float, right_of: float | None =
     if loop.rational:
         roots = _polynomial_roots(loop, loop_gain)
         return _ordered(roots if right_of is None else roots[roots.real > right_of])
-    left = default_left(loop) if right_of is None else right_of
+    left = _usual_left(loop, loop_gain) if right_of is None else right_of
     zeros, poles, cancelled = unpaired(loop.zeros, loop.poles)
     upper = _isolated(loop, loop_gain, left, zeros, poles)
     upper = upper[(upper.real > left) & (upper.imag >= 0.0)]
@@ -61,6 +65,14 @@ def default_left(loop: OpenLoop) -> float:
     longest = loop.dead_time + (loop.hold or 0.0)
     farthest = max((-float(root.real) for root in (*loop.poles, *loop.zeros)), default=0.0)
     return -min(max(3.0 / longest, 1.2 * farthest), 30.0 / longest)
+
+
+def _usual_left(loop: OpenLoop, loop_gain: float) -> float:
+    """`default_left`, moved to the right while more roots lie right of it than anyone reads."""
+    left, longest = default_left(loop), loop.dead_time + (loop.hold or 0.0)
+    while farthest_root(loop, loop_gain, left) * longest > _MANY and left < -3.0 / longest:
+        left *= 0.8
+    return left
 
 
 def _polynomial_roots(loop: OpenLoop, loop_gain: float) -> ComplexArray:
@@ -259,14 +271,36 @@ def _multiple(loop: OpenLoop, loop_gain: float, centre: ComplexArray) -> Complex
         inside = loop.poles[np.abs(loop.poles - cluster) < 1e-5 * abs(cluster)]
         if inside.size:
             middle = complex(inside[np.argmin(np.abs(inside - middle))])
-        found += [middle] * (round(float(turns)) + inside.size)
+        count = round(float(turns)) + inside.size
+        found += [_beside_pole(loop, loop_gain, middle)] if count == inside.size == 1 else [middle] * count
     return np.array(found, complex)
 
 
+def _beside_pole(loop: OpenLoop, loop_gain: float, pole: complex) -> complex:
+    """The root that a tiny K G_L leaves beside a simple pole: Newton's method on D + K N exp(-s L), its slope D'."""
+    s, slope = pole, complex(np.polyval(np.polyder(np.asarray(loop.denominator)), pole))
+    for _ in range(3):
+        rest = loop_gain * np.polyval(loop.numerator, s) * np.exp(-s * loop.dead_time)
+        rest *= 1.0 if loop.hold is None else complex(hold_factor(np.asarray(s * loop.hold)))
+        step = complex(np.polyval(loop.denominator, s) + rest) / slope
+        if not abs(step) < 1e-5 * abs(s):
+            return pole
+        s -= step
+    return s.real + 0j if pole.imag == 0.0 else s
+
+
 def _distinct(roots: ComplexArray) -> ComplexArray:
-    """Each certified root once: neighbouring boxes find the same one to rounding."""
+    """Each certified root once: neighbouring boxes find the same one to rounding.
+
+    By rising imaginary part only the last ones kept can be the same; a region may hold tens of thousands.
+    """
     kept: list[complex] = []
-    for root in roots[np.argsort(roots.imag)]:
-        if not any(abs(root - other) <= 1e-11 * abs(root) for other in kept):
-            kept.append(complex(root))
+    for root in roots[np.argsort(roots.imag)].tolist():
+        near = 1e-11 * abs(root)
+        if not any(abs(root - other) <= near for other in takewhile(partial(_beside, root, near), reversed(kept))):
+            kept.append(root)
     return np.array(kept, complex)
+
+
+def _beside(root: complex, near: float, other: complex) -> bool:
+    return root.imag - other.imag <= near

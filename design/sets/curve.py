@@ -121,12 +121,13 @@ def _refined(at: Callable[[FloatArray], ComplexArray], mesh: FloatArray) -> Floa
 
 
 def _critical(at: Callable[[FloatArray], ComplexArray], mesh: FloatArray, value: ComplexArray) -> FloatArray:
-    """Factors at which F passes through the negative real axis."""
+    """Factors at which F passes through the negative real axis; where it vanishes, as under an integral at half the
+    sample rate, none does."""
     turn = np.angle(-value)
     near = np.abs(turn) < 0.5 * np.pi
     place = np.flatnonzero((turn[1:] * turn[:-1] < 0.0) & near[1:] & near[:-1])
     w = roots_between(lambda x: np.angle(-at(x)), mesh[place], mesh[place + 1])
-    exact = np.flatnonzero((turn == 0.0) & np.isfinite(value))
+    exact = np.flatnonzero((turn == 0.0) & np.isfinite(value) & (value != 0.0))
     return 1.0 / np.abs(at(np.concatenate([w, mesh[exact]])))
 
 

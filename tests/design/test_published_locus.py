@@ -9,9 +9,10 @@ import math
 
 import numpy as np
 import pytest
-from gainwright.design.locus.condition import angle_residual_deg, loop_gain_at, nearest_point_on_locus
+from gainwright.design.locus.condition import angle_residual_deg, loop_gain_at
 from gainwright.design.locus.crossings import axis_crossings, ray_crossings
 from gainwright.design.locus.loop import OpenLoop
+from gainwright.design.locus.nearest import nearest_point_on_locus
 from gainwright.design.locus.roots import closed_loop_roots
 from gainwright.design.locus.special_points import arrivals, asymptotes, breakaway_points, departures, saddle_points
 from gainwright.design.locus.wish import (

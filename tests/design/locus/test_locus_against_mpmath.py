@@ -9,12 +9,12 @@ from gainwright.design.locus.condition import (
     LocusError,
     angle_residual_deg,
     loop_gain_at,
-    nearest_point_on_locus,
     point_on_locus,
     working,
 )
 from gainwright.design.locus.crossings import axis_crossings, circle_crossings, line_crossings, ray_crossings
 from gainwright.design.locus.loop import OpenLoop, open_loop
+from gainwright.design.locus.nearest import nearest_point_on_locus
 from gainwright.design.locus.roots import closed_loop_roots
 from gainwright.design.locus.special_points import breakaway_points, departures
 from gainwright.ident.errors import RequestError
