@@ -10,6 +10,7 @@ from ..ident.fitted import Fit
 from .record import Record, Source, TableRecord
 from .retuned import Retuned
 from .rigfile.rig import Rig
+from .wish import Answer
 
 
 @dataclass(frozen=True, eq=False)
@@ -31,6 +32,8 @@ class Outcome:
         What an earlier sheet says beside this job.
     tables : tuple of TableRecord
         Frequency tables.
+    wishes : tuple of Answer
+        Closed-loop poles that were wished for, with what the locus says.
     """
 
     rig: Rig
@@ -45,6 +48,7 @@ class Outcome:
     ladder: Ladder | None = None
     retuned: Retuned | None = None
     tables: tuple[TableRecord, ...] = ()
+    wishes: tuple[Answer, ...] = ()
 
     @property
     def sources(self) -> tuple[Source, ...]:

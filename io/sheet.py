@@ -25,6 +25,7 @@ from .requirement_row import requirement_row
 from .rigfile.rig import Rig
 from .sight_rows import sight_row
 from .validity import validity_row
+from .wish_rows import wish_rows
 
 SCHEMA = "gainwright.gain-sheet/1"
 NO_LADDER = "no gain ladder was made: the first run on the rig starts at the responsible person's own discretion"
@@ -77,6 +78,7 @@ def sheet_of(outcome: Outcome) -> dict[str, Any]:
         "closing": _closing(outcome),
         "asked": asked_of(outcome.rig),
         "validity": validity_row(outcome),
+        "wishes": wish_rows(outcome),
         "provenance": outcome.provenance,
     }
     if not released:

@@ -11,6 +11,7 @@ from .forms_as_printed import forms_as_printed
 from .outcome import Outcome
 from .report import words
 from .report.changed import verdict
+from .report.wishes import wish_sentence
 from .retuned import Retuned
 
 _CODES = {"good": "1;36", "bad": "1;31", "strong": "1", "quiet": "2"}
@@ -43,6 +44,7 @@ def verdict_text(outcome: Outcome, width: int = 100, *, colour: bool) -> str:
         parts += ["", *_requirements(outcome.design, paint)]
         parts += ["", *_limits(outcome, outcome.design, paint)]
     parts += ["", *_held_out(outcome, width)]
+    parts += ["", *_wishes(outcome, width)] if outcome.wishes else []
     parts += ["", *_cautions(outcome, width)]
     return "\n".join(parts)
 
@@ -176,6 +178,12 @@ def _held_out(outcome: Outcome, width: int) -> Iterator[str]:
     for compared in outcome.closing:
         text = f"Held-out {one_line(compared.label)} {compared.verdict}: {one_line(compared.why)}"
         yield from textwrap.wrap(text, width, subsequent_indent="  ")
+
+
+def _wishes(outcome: Outcome, width: int) -> Iterator[str]:
+    unit = outcome.design.selection.loop_gain_unit if outcome.design else ""
+    for answer in outcome.wishes:
+        yield from textwrap.wrap(wish_sentence(answer, unit), width, subsequent_indent="  ")
 
 
 def _cautions(outcome: Outcome, width: int) -> Iterator[str]:

@@ -11,6 +11,7 @@ import click
 
 if TYPE_CHECKING:
     from ..outcome import Outcome
+    from ..progress import Progress
 
 
 @click.command(short_help="The whole job: gain sheet, dossier and report.")
@@ -18,10 +19,21 @@ if TYPE_CHECKING:
 @click.option("--out", type=click.Path(path_type=Path), help="Output folder [default: out/ beside the rig file].")
 @click.option("--no-report", is_flag=True, help="Leave out report.html.")
 @click.option("--pictures", type=click.Path(path_type=Path), help="Also write each picture as SVG and PNG to a folder.")
+@click.option(
+    "--wish", "wishes", multiple=True, metavar="POLE",
+    help='Ask for a closed-loop pole: "-3+4j" (1/s), "damping 0.6, frequency 5 rad/s" or "overshoot 10 %, peak 0.5 s". '
+    "May be given again.",
+)  # fmt: skip
 @click.option("--json", "as_json", is_flag=True, help="Print the gain sheet instead of the verdict, for programs.")
 @click.option("-v", "--verbose", is_flag=True, help="Show the working too: vector lengths, controllers tried.")
 def process(
-    rigfile: Path, out: Path | None, no_report: bool, pictures: Path | None, as_json: bool, verbose: bool
+    rigfile: Path,
+    out: Path | None,
+    no_report: bool,
+    pictures: Path | None,
+    wishes: tuple[str, ...],
+    as_json: bool,
+    verbose: bool,
 ) -> int:
     """Read the logs that RIGFILE names, fit the plant, choose gains, compare them with the held-out run.
 
@@ -32,10 +44,18 @@ def process(
     from ..picture_files import write_pictures
     from ..progress import shown_progress
     from ..second_process import second_process
+    from ..wish import read_wish
 
+    asked = [read_wish(text) for text in wishes]
     folder = rigfile.parent / "out" if out is None else out
+
+    def finish(outcome: "Outcome", progress: "Progress") -> "Outcome":
+        from ..wishing import with_wishes
+
+        return with_wishes(outcome, asked) if asked else outcome
+
     with second_process() as aside, shown_progress() as progress:
-        outcome = deliver(rigfile, folder, with_report=not no_report, progress=progress, aside=aside)
+        outcome = deliver(rigfile, folder, with_report=not no_report, progress=progress, aside=aside, finish=finish)
         if pictures is not None:
             write_pictures(outcome, pictures, progress)
     if as_json:

@@ -23,6 +23,7 @@ from .crossings import crossings
 from .ladder import ladder_of
 from .moving import moving_part
 from .paper import paper_of
+from .wishes import wish_workings, wishes_table
 
 Part = dict[str, Any]
 
@@ -270,6 +271,8 @@ def _located(outcome: Outcome, fit: Fit, design: Design) -> dict[str, Any]:
         "locus": pictures.locus_picture(outcome, fit, design),
         "margins": pictures.margins_picture(outcome, fit, design),
         "tried": tables.tried(design),
+        "wishes": wishes_table(outcome),
+        "wish_workings": wish_workings(outcome),
         "crossings": crossings(loop, selection.pole, selection.loop_gain_unit),
         "angle": (
             f"The angle condition holds at {tables.point(selection.pole)} 1/s within "
