@@ -77,7 +77,7 @@ def bent(run: Run, reference: float, bend: float) -> Run:
 
     Examples
     --------
-    >>> run = Run(np.arange(3.0), np.array([0.0, 1.0, 2.0]), np.zeros(3))
+    >>> run = Run("run", np.arange(3.0), np.array([0.0, 1.0, 2.0]), np.zeros(3))
     >>> bent(run, 0.0, 0.1).command.tolist()
     [0.0, 1.1, 2.4]
     """

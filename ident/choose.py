@@ -13,6 +13,7 @@ from .polish import polish
 from .projected import Solved
 from .regression import Regression
 from .run import FloatArray, Run
+from .second_mode import second_modes
 from .start import first_guesses
 from .table_guesses import table_guesses
 from .table_regression import TableRegression, Weighed
@@ -37,6 +38,9 @@ _UNEXPLAINED = 6.0
 # structure must lower the visible misfit by this factor (common practice, no source).
 _SLIGHT = 0.01
 _VISIBLY = 0.97
+
+# The same for a mode beside a resonance, the best of some hundred tries.
+_ANOTHER_MODE = 14.0
 
 # Steps down from each first guess before only the lowest goes on.
 _SCOUT = 9
@@ -108,12 +112,15 @@ def fit_candidates(
             fitted.append(_from_library(tuple(runs), reference, fixed_command, family, weighed, long))
     fitted = sorted(_distinct(fitted), key=lambda f: f.criterion)
     recoloured, colour = _under_one_noise(fitted)
-    left = [family for family in families if family not in usual and _kin(family[0], recoloured[0])]
+    further = [family for family in families if family not in usual and _kin(family[0], recoloured[0])]
+    left = [family for family in further if not family[0].beside]
     visible = min(f.misfit for f in fitted)
     explained = not weighed and (visible < _SLIGHT or _left_by(recoloured[0], colour) < _UNEXPLAINED)
-    if not left or explained:
+    grown = [] if weighed or visible < _SLIGHT else _with_a_mode_more(recoloured[0], colour, structures)
+    if (not left or explained) and not grown:
         return recoloured, colour
-    for i, family in enumerate(left):
+    fitted += grown
+    for i, family in enumerate([] if explained else left):
         if progress:
             progress("fitting " + " or ".join(s.name for s in family), (len(usual) + i) / (len(families) + 1))
         fitted.append(_from_library(tuple(runs), reference, fixed_command, family, weighed, long))
@@ -126,6 +133,26 @@ def fit_candidates(
         return (together, own_colour) if better else (recoloured, colour)
     beside = [refit(f, colour) for f in fitted if f.problem.structure.further]
     return [*recoloured, *sorted(_distinct(beside), key=lambda f: f.criterion)], colour
+
+
+def _with_a_mode_more(best: Fitted, colour: Colour, structures: Sequence[Structure]) -> list[Fitted]:
+    """The structures that add a mode to the best one, from where its residual asks for it."""
+    problem = best.problem
+    grown = [s for s in structures if s.beside == best.name]
+    if not grown or problem.condensed:
+        return []
+    ends = []
+    for mode in second_modes(problem, best.theta, best.solved.coefficients, colour):
+        if mode.gained < _ANOTHER_MODE:
+            continue
+        added = np.log([mode.frequency, mode.damping, min(abs(mode.share), 0.9)])
+        added[0] -= best.theta[0]
+        structure = grown[0] if mode.share > 0.0 else grown[-1]
+        theta = np.concatenate([best.theta[:2], added, best.theta[2:]])
+        larger = replace(problem, structure=structure)
+        theta, _ = polish(larger, theta, colour)
+        ends.append(_weighed(larger, *polish(larger, theta)))
+    return sorted(ends, key=lambda f: f.criterion)[:1]
 
 
 def _under_one_noise(fitted: list[Fitted]) -> tuple[list[Fitted], Colour]:

@@ -42,7 +42,7 @@ def plant_of_parameters(names: tuple[str, ...], values: FloatArray, like: Plant)
     """The plant that named parameters describe.
 
     gain times (Tz s + 1) over the product of s (for each integrator of `like`), (T s + 1) for each time constant and
-    s^2/wn^2 + 2 z s/wn + 1.
+    s^2/wn^2 + 2 z s/wn + 1; two modes with a share of the second stand side by side, opposed where they are in `like`.
 
     Parameters
     ----------
@@ -62,12 +62,26 @@ def plant_of_parameters(names: tuple[str, ...], values: FloatArray, like: Plant)
     for name, value in known.items():
         if name.startswith("time constant"):
             below = np.polymul(below, [value, 1.0])
-    if "natural frequency" in known:
-        frequency, ratio = known["natural frequency"], known["damping ratio"]
-        below = np.polymul(below, [1.0 / frequency**2, 2.0 * ratio / frequency, 1.0])
+    modes = [_mode(known, tail) for tail in ("", " 1", " 2") if f"natural frequency{tail}" in known]
+    for mode in modes:
+        below = np.polymul(below, mode)
     below = np.concatenate([below, np.zeros(like.integrators)])
     above = known["gain"] * np.array([known["zero time"], 1.0] if "zero time" in known else [1.0])
+    if "share of mode 2" in known:
+        share = known["share of mode 2"]
+        share = -share if _opposed(like, *modes) else share
+        above = known["gain"] * (modes[1] + share * modes[0]) / (1.0 + share)
     return Plant(tuple(float(a) for a in above), tuple(float(b) for b in below), max(known["dead time"], 0.0))
+
+
+def _mode(known: Mapping[str, float], tail: str) -> FloatArray:
+    frequency, ratio = known[f"natural frequency{tail}"], known[f"damping ratio{tail}"]
+    return np.array([1.0 / frequency**2, 2.0 * ratio / frequency, 1.0])
+
+
+def _opposed(like: Plant, first: FloatArray, second: FloatArray) -> bool:
+    """Whether the second mode of two moves against the first: in phase, the numerator is a mean of the two modes."""
+    return not min(first[0], second[0]) <= like.numerator[0] / like.numerator[-1] <= max(first[0], second[0])
 
 
 def by_logarithm(known: Mapping[str, tuple[float, float]]) -> dict[str, bool]:

@@ -14,6 +14,7 @@ from .resonance_with_zero import RESONANCE_WITH_ZERO
 from .structure import Named, Shape, Structure
 from .two_lags import TWO_LAGS
 from .two_lags_with_zero import TWO_LAGS_WITH_ZERO
+from .two_resonances import TWO_OPPOSED_RESONANCES, TWO_RESONANCES
 
 CATALOGUE: tuple[Structure, ...] = (
     GAIN,
@@ -27,6 +28,8 @@ CATALOGUE: tuple[Structure, ...] = (
     TWO_LAGS_WITH_ZERO,
     RESONANCE_WITH_ZERO,
     RESONANCE_BEHIND_LAG,
+    TWO_RESONANCES,
+    TWO_OPPOSED_RESONANCES,
     DOUBLE_INTEGRATOR,
     DOUBLE_INTEGRATOR_WITH_LAG,
 )
@@ -46,6 +49,8 @@ __all__ = [
     "RESONANCE_WITH_ZERO",
     "TWO_LAGS",
     "TWO_LAGS_WITH_ZERO",
+    "TWO_OPPOSED_RESONANCES",
+    "TWO_RESONANCES",
     "Named",
     "Shape",
     "Structure",

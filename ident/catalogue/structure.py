@@ -62,6 +62,8 @@ class Structure:
         the response linearly, as K does, and is solved for with it.
     further : bool
         Fitted only where the others leave something of what the command does unexplained.
+    beside : str
+        Name of the structure from whose fit it starts, a mode being added to it; empty: it has its own first guesses.
     """
 
     name: str
@@ -74,6 +76,7 @@ class Structure:
     friction: bool = False
     zero: bool = False
     further: bool = False
+    beside: str = ""
 
     @property
     def parameters(self) -> tuple[Named, ...]:
