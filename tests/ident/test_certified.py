@@ -1,7 +1,7 @@
 """The fit engine against certified answers: exponential problems of the Statistical Reference Datasets of NIST/ITL.
 
 A rise b1 (1 - exp(-b2 x)) is the unit step of a lag; a sum of decays is how a plant with as many lags goes to rest.
-Where a problem knows a level to be zero that the fit leaves free, thousands of zeros pin it; that leaves 1e-5 or the stated tolerance.
+Where a problem knows a level to be zero that the fit leaves free, thousands of zeros pin it: 1e-5 or what a test says.
 """
 
 import numpy as np
