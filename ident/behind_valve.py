@@ -51,7 +51,7 @@ def behind_valve(runs: Sequence[Run], plain: Choice, again: Again) -> tuple[Choi
         if sticking is None:
             continue
         through = again([sticking.valve.through(run) for run in runs], True)
-        if is_better(through.fitted[0], through.colour, plain.fitted[0], plain.colour):
+        if is_better(through.fitted[0], plain.fitted[0]):
             break
     else:
         return plain, None

@@ -10,13 +10,14 @@ from dataclasses import dataclass, replace
 import numpy as np
 
 from .choose import Fitted
-from .noise import estimate_colour
+from .noise import colour_seen, estimate_colour, sampled
 from .play import LEAST_SHARE, Sticking, Valve, through_valve
 from .projected import projected
 from .regression import Regression
 from .run import FloatArray, Run
 from .simulate import response
 from .table_regression import TableRegression
+from .valve_size import ValveSize, valve_sizes
 from .wander import Whitener
 from .whiten import WHITE, Colour
 
@@ -32,6 +33,8 @@ _LONGEST = 60_000
 _REACH = (0.001, 0.25)
 _COARSE, _FINE = 24, 11
 _BELIEVED = 0.1
+# A gain that bends with the command: quadratic and cubic.
+_BENDS = 2
 
 
 def find_sticking(fitted: Fitted) -> Sticking | None:
@@ -77,18 +80,36 @@ def sized_behind(sticking: Sticking, through: Fitted, runs: Sequence[Run], colou
     return look.sized(colour, sticking.sureness, sticking.valve.short)
 
 
-def likelihood_loss(fitted: Fitted, colour: Colour) -> float:
-    """-2 log likelihood up to a constant, and what the parameters cost (Bayesian information criterion)."""
-    problem = fitted.problem
-    cost = problem.solve(fitted.theta, colour).cost
-    n, unknowns = len(problem.measured), len(fitted.theta) + len(fitted.solved.coefficients)
-    return float(n * np.log(max(cost, 1e-300)) + problem.whitener(colour).log_determinant + unknowns * np.log(n))
+def likelihood_loss(fitted: Fitted) -> float:
+    """-2 log likelihood up to a constant, and what the parameters cost (Bayesian information criterion).
+
+    Under the noise that suits the plant best, with a gain that bends with the command or without, whichever is likelier
+    by more than the bends cost.
+    """
+    look = _Look.at(fitted)
+    if look is None:
+        return np.inf
+    n = len(look.residual)
+    unknowns = len(fitted.theta) + len(fitted.solved.coefficients)
+    losses: list[float] = []
+    near: Colour | None = None
+    for bends in (0, _BENDS):
+        columns = look.base[:, : look.base.shape[1] - _BENDS + bends]
+        near = colour = colour_seen(sampled(columns, look.residual, look.problem.stretches, look.problem.waves), near)
+        whitener = look.whitener(colour)
+        white = whitener.apply(np.column_stack([columns, look.residual]))
+        cost = max(projected(white[:, :-1], white[:, -1]).solved.cost, 1e-300)
+        losses.append(n * float(np.log(cost)) + whitener.log_determinant + (unknowns + bends) * float(np.log(n)))
+    return min(losses)
 
 
-def is_better(through: Fitted, colour: Colour, plain: Fitted, plain_colour: Colour) -> bool:
-    """Whether the plant behind a valve explains the records so much better that the valve is taken as there."""
-    gained = likelihood_loss(plain, plain_colour) - likelihood_loss(through, colour)
-    return bool(gained - np.log(len(plain.problem.measured)) > _SURE)
+def is_better(through: Fitted, plain: Fitted) -> bool:
+    """Whether the plant behind a valve explains the records so much better that the valve is taken as there.
+
+    It must bring what was asked of it to first order, and at least its price as one more parameter.
+    """
+    gained = likelihood_loss(plain) - likelihood_loss(through)
+    return bool(gained > max(_SURE, float(np.log(len(plain.problem.measured)))))
 
 
 @dataclass(frozen=True, eq=False)
@@ -117,7 +138,8 @@ class _Look:
         model, columns = problem.full_columns(fitted.theta, coefficients)
         span = float(max(np.ptp(np.append(run.command, run.start_command)) for run in runs))
         bare = cls(problem, fitted.theta, gain, columns, problem.measured - model, span)
-        bent = [bare.response_to([_bent(run, problem.reference, span, power) for run in runs]) for power in (2, 3)]
+        powers = range(2, 2 + _BENDS)
+        bent = [bare.response_to([_bent(run, problem.reference, span, power) for run in runs]) for power in powers]
         return replace(bare, base=np.column_stack([columns, *bent]))
 
     def response_to(self, moves: Sequence[FloatArray]) -> FloatArray:
@@ -143,14 +165,10 @@ class _Look:
         loss, coefficient = ends[best]
         return without - loss if coefficient > 0.0 else 0.0, coefficient, colours[best]
 
-    def _loss(
-        self, columns: FloatArray, colour: Colour, prior: FloatArray | None = None, target: FloatArray | None = None
-    ) -> tuple[float, float]:
+    def _loss(self, columns: FloatArray, colour: Colour) -> tuple[float, float]:
         """-2 log likelihood up to a constant, and the coefficient of the first column."""
-        whitener = self._whitener(colour)
-        white = whitener.apply(np.column_stack([columns, self.residual if target is None else target]))
-        if prior is not None:
-            white = np.vstack([white, np.column_stack([prior, np.zeros(len(prior))])])
+        whitener = self.whitener(colour)
+        white = whitener.apply(np.column_stack([columns, self.residual]))
         solved = projected(white[:, 1:-1], white[:, -1])
         clear = solved.cleared(white[:, :1])[:, 0]
         power = max(float(clear @ clear), 1e-300)
@@ -159,22 +177,26 @@ class _Look:
         n = len(self.residual)
         return n * float(np.log(cost)) + whitener.log_determinant, along / power
 
-    def _whitener(self, colour: Colour) -> Whitener:
+    def whitener(self, colour: Colour) -> Whitener:
+        """Under which the noise of this colour is white."""
         return Whitener(self.problem.stretches, colour, self.problem.waves)
 
     def sized(self, colour: Colour, sureness: float, first: float) -> Sticking:
         """The valve's numbers by the exact response, where it rested before each record left open within the band."""
-        short, error = self._profiled(colour, first)
+        sizes = self._sizes(colour)
+        profiles = [self._profiled(size, first) for size in sizes]
+        chosen = int(np.argmin([profile[2] for profile in profiles]))
+        size, (short, error, _) = sizes[chosen], profiles[chosen]
         edges = np.linspace(LEAST_SHARE, 1.0, _SHARES + 1)
         shares = 0.5 * (edges[1:] + edges[:-1])
         play = [_through(run, short, short) for run in self.problem.runs]
         losses, shorts = np.zeros(_SHARES), np.full(_SHARES, short)
-        at_play = self._exact_loss(short, short, colour)
+        at_play = size.loss(short, short)
         for i, share in enumerate(shares):
             held = [_through(run, short / share, short) for run in self.problem.runs]
             if not all(np.array_equal(a, b) for a, b in zip(play, held, strict=True)):
                 tries = short * np.linspace(0.4, 1.1, 8)
-                values = [self._exact_loss(each / share, each, colour) for each in tries]
+                values = [size.loss(each / share, each) for each in tries]
                 shorts[i] = tries[int(np.argmin(values))]
                 losses[i] = min(values) - at_play
         # a plant that is not quite the fitted one weighs as much here: only what matters beside the whole rise counts
@@ -184,17 +206,24 @@ class _Look:
         valve = Valve(short, short) if plain else Valve(float(shorts[best] / shares[best]), float(shorts[best]))
         return Sticking(valve, error, shorts, shares, weights / weights.sum(), sureness)
 
-    def _profiled(self, colour: Colour, first: float) -> tuple[float, float]:
-        """Half width of the best play and its standard error, from the likelihood along it.
+    def _sizes(self, colour: Colour) -> list[ValveSize]:
+        offsets = np.column_stack([self._offset(i) for i in range(len(self.problem.runs))])
+        own, bends = self.base[:, :-_BENDS], self.base[:, -_BENDS:]
+        return valve_sizes(self.whitener(colour), self.held_back, self.residual, own, bends, offsets)
+
+    def _profiled(self, size: ValveSize, first: float) -> tuple[float, float, float]:
+        """Half width of the best play, its standard error and the least loss, from the likelihood along it.
 
         It is looked for about the first-order one, where that is small enough to be believed.
         """
         believed = first < _BELIEVED * self.span
         ends = (0.25 * first, 3.0 * first) if believed else (_REACH[0] * self.span, _REACH[1] * self.span)
         grid = np.geomspace(*ends, _COARSE)
+        least = np.inf
         for _ in range(4):
-            losses = np.array([self._exact_loss(each, each, colour) for each in grid])
+            losses = np.array([size.loss(each, each) for each in grid])
             place = int(np.argmin(losses))
+            least = min(least, float(losses[place]))
             near = losses < losses[place] + 9.0
             if near.sum() > _FINE // 2:
                 break
@@ -203,17 +232,7 @@ class _Look:
         weights = np.exp(-0.5 * (losses - losses.min())) * np.gradient(grid)
         weights /= weights.sum()
         middle = float(weights @ grid)
-        return middle, float(np.sqrt(weights @ (grid - middle) ** 2))
-
-    def _exact_loss(self, band: float, short: float, colour: Colour) -> float:
-        """-2 log likelihood with the valve at this size."""
-        away = self.residual - self.held_back(band, short)
-        offsets = [self._offset(i) for i in range(len(self.problem.runs))]
-        columns = np.column_stack([*offsets, self.base])
-        noise = float(np.sqrt(np.mean(self._whitener(colour).apply(self.residual) ** 2)))
-        prior = np.zeros((len(offsets), columns.shape[1]))
-        prior[:, : len(offsets)] = np.eye(len(offsets)) * noise * np.sqrt(3.0) / band
-        return self._loss(columns, colour, prior, away)[0]
+        return middle, float(np.sqrt(weights @ (grid - middle) ** 2)), least
 
     def _offset(self, i: int) -> FloatArray:
         """(n,) effect, per command, of a valve that did not stand where the command did before run i."""

@@ -85,6 +85,15 @@ def test_after_clean_steps_the_place_of_rest_is_sharp_and_the_band_is_left_open(
     assert np.ptp(fit.sticking.weights) < 1e-9
 
 
+@pytest.mark.parametrize("seed", [1, 2])
+def test_noise_that_could_be_taken_for_drift_does_not_hide_the_valve_or_its_size(seed):
+    """One step up, down and back, noise with memory: 0.12 V is found, within three standard errors of under 0.03 V."""
+    fit = identify([record(levels((0.0, 4.0, -4.0, 0.0)), stick=0.25, slide=0.12, noise=0.08, memory=0.85, seed=seed)])
+    assert fit.sticking is not None
+    assert fit.sticking.short_error < 0.03
+    assert abs(fit.sticking.valve.short - 0.12) < 3.0 * fit.sticking.short_error
+
+
 def test_moves_that_got_through_bound_the_band():
     """Steps of 0.25 V to and fro all got through a valve that rests 0.05 V short: a band of 0.25 V is ruled out."""
     small = np.concatenate([np.zeros(120), levels([2.0, 1.75, 2.0, 1.75, 2.0, 0.0, -2.0, -1.75, -2.0, 0.0], 6.0)])
