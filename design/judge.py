@@ -85,6 +85,7 @@ def judge_plants(
     limits: Limits,
     setting: ControllerSetting,
     law: Law | None = None,
+    watched: float | None = None,
 ) -> PlantVerdicts:
     """Judge fixed gains on plausible plants.
 
@@ -92,6 +93,8 @@ def judge_plants(
     ----------
     law : Law, optional
         A difference equation to use as it stands; default: the one made from the gains. Its clamp is that of `limits`.
+    watched : float, s, optional
+        Watch each step for so long, whatever settles later; default: as long as the plants need.
 
     Returns
     -------
@@ -106,7 +109,11 @@ def judge_plants(
         limits=limits,
         setting=setting,
     )
-    return judged_on(gains, plausible, standing_in(situation, plausible.plants[0]), law=law)
+    situation = standing_in(situation, plausible.plants[0])
+    if watched is None:
+        return judged_on(gains, plausible, situation, law=law)
+    bench, values = _evaluated(gains, plausible, situation, watched, law)
+    return _verdicts(values, situation, bench.samples * bench.running.interval)
 
 
 def judged_on(

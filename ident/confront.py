@@ -3,8 +3,10 @@
 from dataclasses import dataclass, replace
 
 import numpy as np
+from scipy.special import nctdtrinc
 from scipy.stats import f as fisher
 from scipy.stats import norm
+from scipy.stats import t as student
 
 from .catalogue import CATALOGUE
 from .choose import Fitted, colour_of, steady_fit
@@ -67,6 +69,12 @@ class Confronted:
         has moved, about the record's own.
     joint_weights : (p,) array
         How well each of them explains this record too; they sum to one.
+    spread : (q, q) array
+        Of the parameters' differences: log shapes, dead time in s, gain (see `_straightened`), and a zero's.
+    gain_scale : float
+        Of the straightened gain.
+    freedom : float
+        That the noise is known with.
     """
 
     plausible: Plausible
@@ -75,6 +83,27 @@ class Confronted:
     noise_std: float
     joint: Plausible
     joint_weights: FloatArray
+    spread: FloatArray
+    gain_scale: float
+    freedom: float
+
+    def visible(self, before: FloatArray, after: FloatArray, level: float = 0.05, power: float = 0.95) -> float:
+        """How large a change is beside the smallest one in its direction that these records show.
+
+        A one-sided t test for a change in this very direction, the rest unchanged. Above one: it would have been seen.
+
+        Parameters
+        ----------
+        before, after : (q,) arrays
+            Internal parameters, as in `Fit.draws`.
+        level, power : float
+            Chance of a false alarm; chance of seeing it.
+        """
+        at = _gain_place(self.changes)
+        ends = _straightened(np.array([before, after]), at, self.gain_scale)
+        size = float(np.sqrt(_distance(ends[1] - ends[0], self.spread)))
+        least = nctdtrinc(self.freedom, 1.0 - power, student.isf(level, self.freedom))
+        return size / float(least)
 
 
 def confront(run: Run, fit: Fit, seed: int = 1) -> Confronted:
@@ -147,6 +176,9 @@ def _compared(fit: Fit, drawn: Drawn, colour: Colour) -> Confronted:
         noise_std=_own_residual(drawn.fitted),
         joint=_joint(fit, drawn, rows, plausible),
         joint_weights=_weights(away, len(difference), freedom),
+        spread=spread,
+        gain_scale=size,
+        freedom=freedom,
     )
 
 
@@ -201,6 +233,11 @@ def _common(before: FloatArray, after: FloatArray, count: int) -> FloatArray:
         error = float(np.min(errors)) if not np.all(np.isfinite(precision)) else 1.0 / np.sqrt(np.sum(precision))
     scores = norm.ppf((np.random.default_rng(0).permutation(count) + 0.5) / count)
     return np.asarray(middle + error * scores)
+
+
+def _gain_place(changes: tuple[Change, ...]) -> int:
+    """Where the gain stands: behind shapes and dead time; `changes` has one for each of the three."""
+    return len(changes) - 1
 
 
 def _straightened(draws: FloatArray, at: int, size: float) -> FloatArray:

@@ -7,6 +7,8 @@ from typing import Literal
 import numpy as np
 from numpy.typing import NDArray
 
+from .law import Law
+
 FloatArray = NDArray[np.float64]
 Between = Literal["held", "interpolated", "auto"]
 Excitation = Literal["step", "sweep", "random", "frequency-table", "auto"]
@@ -38,6 +40,8 @@ class Run:
     command_late : float, s
         So long after its sample the command moves. Zero where the command itself was logged; a command worked out from
         what the controller saw is late by its computation.
+    law : Law or None
+        Of a closed loop, where the gains in force are known; without a clamp.
     """
 
     label: str
@@ -51,6 +55,7 @@ class Run:
     closed_loop: bool = False
     at_rest: bool = False
     command_late: float = 0.0
+    law: Law | None = None
 
     @cached_property
     def valid(self) -> NDArray[np.bool_]:

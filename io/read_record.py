@@ -9,7 +9,7 @@ from ..ident.errors import RecordError, RequestError
 from ..ident.health.copied import share_stretch
 from ..ident.health.fingerprint import Marks, fingerprint, same_origin
 from ..ident.run import Between, Run
-from .command_worked_out import work_out_command
+from .command_worked_out import law_in_force, work_out_command
 from .in_order import finding_of, in_order, raise_stops
 from .look_at_record import looked_at
 from .readers.parts import large
@@ -85,6 +85,7 @@ def _read(spec: RunSpec, rig: Rig) -> Record:
         excitation=spec.excitation,
         closed_loop=spec.loop == "closed",
         command_late=taken.late,
+        law=law_in_force(spec.in_force) if spec.in_force and spec.loop == "closed" else None,
     )
     return Record(spec, run, sha256_of(spec.file), _samples_sha256(windowed), tuple(findings), taken.marks)
 

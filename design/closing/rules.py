@@ -10,6 +10,7 @@ from typing import Literal
 from ...ident.causes import Explained
 from ...ident.confront import Confronted
 from ...ident.fitted import Fit
+from .unseen import Smallest, hidden_text, smallest_text, unseen
 from .words import Units, cause_text, change_text, level_text, seconds, with_unit
 
 Verdict = Literal["agrees", "disagrees", "not comparable"]
@@ -64,6 +65,8 @@ class Evidence:
         fitted runs make plausible together, if nothing has changed.
     wanted : float
         What is asked for (0: the gains fail anyway).
+    smallest : tuple of Smallest
+        The smallest changes that break something, and how well this record shows each.
     interval : float, s
         Of the log.
     units : Units
@@ -80,6 +83,7 @@ class Evidence:
     own: float
     together: float
     wanted: float
+    smallest: tuple[Smallest, ...]
     interval: float
     units: Units
     advise: Callable[[float], str]
@@ -122,6 +126,7 @@ def decide(evidence: Evidence) -> Finding:
         _at_odds,
         _fails,
         _undecided,
+        _could_not_see,
         _agrees,
     )
     for question in questions:
@@ -234,14 +239,31 @@ def _undecided(evidence: Evidence) -> Answer:
     )
 
 
+def _could_not_see(evidence: Evidence) -> Answer:
+    """A change that breaks something could have passed unseen, and the run's own plants don't rule it out either."""
+    hidden = unseen(evidence.smallest)
+    if evidence.real or evidence.own >= evidence.wanted or not hidden:
+        return None
+    return "not comparable", (
+        f"the run could not have shown (95 %) {hidden_text(hidden, evidence.units)}, and the gains meet everything on "
+        f"{100 * evidence.own:.0f} % only of the plants that it makes plausible by itself: "
+        f"{evidence.advise(1.0 / max(hidden[0].visible, 1e-3))}"
+    )
+
+
 def _agrees(evidence: Evidence) -> Answer:
     level = level_text(evidence.explained, evidence.fit, evidence.units, evidence.movement)
-    aside = f"; {level}" if level else ""
+    smallest = smallest_text(evidence.smallest, evidence.units)
+    if unseen(evidence.smallest) and not evidence.real:
+        smallest += (
+            f", yet the gains hold on {100 * evidence.own:.0f} % of the plants that it makes plausible by itself"
+        )
+    aside = "".join(f"; {text}" for text in (level, smallest) if text)
     if not evidence.real:
         return "agrees", f"no change of the plant is visible (p = {evidence.alone.p_value:.2g}){aside}"
     return "agrees", (
         f"the plant differs measurably ({evidence.shown}), yet the gains meet everything on "
-        f"{100 * evidence.share:.0f} % of the plants that this run makes plausible"
+        f"{100 * evidence.share:.0f} % of the plants that this run makes plausible{'; ' if smallest else ''}{smallest}"
     )
 
 

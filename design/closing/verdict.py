@@ -15,14 +15,17 @@ from ...ident.confront import Confronted, confront
 from ...ident.fitted import Fit, Plausible
 from ...ident.run import Run
 from ..designed import Design
-from ..judge import judge_plants
+from ..judge import PlantVerdicts, judge_plants
 from ..local_gain import at_local_gains
 from ..requirements import ControllerSetting, Limits, Requirements
+from .breaking import breaking_changes
 from .compared import Compared
+from .loop_run import predict_loop
 from .prediction import Prediction, predict
 from .rules import REAL, Evidence, Finding, decide
 from .run_to_take import run_to_take
 from .sight import see
+from .unseen import smallest_changes
 from .words import NO_UNITS, Units, with_unit
 
 # Where the loop works, in multiples of the chosen pole's distance from the origin.
@@ -64,7 +67,8 @@ def compare(
     if progress:
         progress(f"comparing with {run.label}", 0.0)
     logged, run = run, fit.through(run)
-    prediction = predict(run, fit)
+    looped, how = predict_loop(logged, fit, limits, setting)
+    prediction = looped or predict(run, fit)
     valid = run.valid
     spread = float(np.std(run.response[valid]))
     error = float(np.sqrt(np.mean((run.response - prediction.predicted)[valid] ** 2)))
@@ -82,7 +86,7 @@ def compare(
         noise_floor=fit.noise.std / spread if spread > 0 else float("inf"),
         coverage_95=float(np.mean(inside[valid])),
         verdict=found.verdict,
-        why=found.why,
+        why=f"{found.why}; {how}" if how else found.why,
         share_meeting=found.share,
         sight=see(run, fit, prediction.predicted, prediction.runs, _band(requirements)),
     )
@@ -117,23 +121,28 @@ def _judge(
         )
     alone = confront(run, fit)
 
-    def meets(plausible: Plausible) -> NDArray[np.bool_]:
+    def judged(plausible: Plausible, watched: float | None = None) -> PlantVerdicts:
+        some = plausible.take(slice(0, _JUDGED))
         return judge_plants(
             design.gains,
-            at_local_gains(plausible.take(slice(0, _JUDGED)), fit, requirements),
+            some if watched else at_local_gains(some, fit, requirements),
             operating_command=fit.operating_command,
             operating_response=fit.operating_response,
             noise=fit.noise,
             requirements=requirements,
             limits=limits,
             setting=setting,
-        ).meets_all
+            watched=watched,
+        )
 
-    own = float(np.mean(meets(alone.plausible)))
+    mine = judged(alone.plausible)
+    own = mine.share_meeting
     gap = _gap(alone, fit, abs(design.selection.pole))
     # Gains that fail on the fitted plants already say nothing about this run.
     wanted = requirements.confidence if design.share_meeting >= requirements.confidence else 0.0
-    together = own if own >= wanted or alone.p_value < REAL else _joint_share(alone, meets(alone.joint), own)
+    together = own if own >= wanted or alone.p_value < REAL else _joint_share(alone, judged(alone.joint).meets_all, own)
+    pace = 1.0 / max(abs(design.selection.pole), 1e-300)
+    breaking = breaking_changes(fit, lambda plants: judged(plants, mine.horizon).meets_all, pace)
     return decide(
         Evidence(
             fit=fit,
@@ -145,6 +154,7 @@ def _judge(
             own=own,
             together=together,
             wanted=wanted,
+            smallest=smallest_changes(breaking, alone),
             interval=float(np.median(np.diff(run.time))),
             units=units,
             advise=advise,

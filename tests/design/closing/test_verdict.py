@@ -227,3 +227,18 @@ def test_two_lags_with_a_zero_are_compared_with_their_zero():
     other = confront(log(2.0, 0.3, 62, step=with_zero(1.2), noise=0.01), fit)
     assert same.p_value > 0.005
     assert other.p_value < 0.005
+
+
+def test_agreement_says_what_the_run_would_have_shown(job):
+    """The smallest changes that break something, one parameter at a time, with their sizes."""
+    found = verdict(job, log(2.0, 0.3, 10))
+    assert found.verdict == "agrees"
+    assert re.search(r"would have shown \(95 %\)[^;]*(gain|dead time|time constant) [+-]", found.why), found.why
+
+
+def test_a_run_that_could_not_show_what_breaks_the_gains_confirms_nothing(job):
+    """Small steps in a run without a visible change: what would break something could have passed unseen."""
+    found = verdict(job, log(2.0, 0.3, 13, profile=((3.0, -0.12), (11.0, 0.06))))
+    assert found.verdict == "not comparable"
+    assert "could not have shown (95 %)" in found.why, found.why
+    assert "take a run with" in found.why
