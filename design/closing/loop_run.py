@@ -136,6 +136,7 @@ def _follow(
         points=1,
         stiction=plausible.stiction,
         valves=plausible.valves,
+        curves=plausible.curves,
     )
     low = -np.inf if limits.command_lowest is None else min(limits.command_lowest - rest, 0.0)
     high = np.inf if limits.command_highest is None else max(limits.command_highest - rest, 0.0)
