@@ -66,7 +66,24 @@ def _about_least_squares(fitted: Fitted, colour: Colour, freedom: float, count: 
     covariance = problem.least_squares_covariance(fitted.theta, fitted.solved.coefficients, colour)
     centre = np.concatenate([fitted.theta, fitted.solved.coefficients])
     draws = draw_normal(centre, covariance, freedom, count, seed)
+    if problem.structure.friction:
+        draws = _friction_evenly(fitted, draws)
     return _within_sample(fitted, draws) if problem.jumps else draws
+
+
+def _friction_evenly(fitted: Fitted, draws: FloatArray) -> FloatArray:
+    """Draws whose friction, not its logarithm, spreads evenly about the fitted one; none is below the fit's bound.
+
+    The response changes in proportion to the friction. Where a record hardly shows it, a normal law of the logarithm
+    would reach as far above it as below: to frictions that would have held the drive for half of the record.
+    """
+    shapes = fitted.problem.structure.shapes
+    at = [i for i, shape in enumerate(shapes) if shape.kind == "command"]
+    least = bounds_of(fitted.problem)[0][at]
+    share = 1.0 + draws[:, at] - fitted.theta[at]
+    out = draws.copy()
+    out[:, at] = np.maximum(fitted.theta[at] + np.log(np.maximum(share, 1e-300)), least)
+    return out
 
 
 def _within_sample(fitted: Fitted, draws: FloatArray) -> FloatArray:
