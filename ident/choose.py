@@ -42,6 +42,11 @@ _VISIBLY = 0.97
 # The same for a mode beside a resonance, the best of some hundred tries.
 _ANOTHER_MODE = 14.0
 
+# Two modes nearer than this (logarithm of their frequencies' ratio) are one; a mode above this share of half the
+# sampling frequency is hardly seen.
+_SAME_MODE = 0.15
+_FASTEST_MODE = 0.7
+
 # Steps down from each first guess before only the lowest goes on.
 _SCOUT = 9
 
@@ -194,20 +199,29 @@ def _distinct(fitted: list[Fitted]) -> list[Fitted]:
     """Without the candidates that pass for a simpler one.
 
     A lag shorter than the sampling can show would pass for dead time, one far longer than the record for an integrator,
-    a resonance far slower than the record for two. A resonance behind a lag that does not ring is no resonance.
+    a resonance far slower than the record for two. A resonance behind a lag that does not ring is no resonance, and a
+    second mode that stands on the first, or where the sampling shows no mode, is none.
     """
     kept = []
     for one in fitted:
         short = np.min(lags(one), initial=np.inf) < _SHORTEST * one.problem.interval
         slowest = np.min(np.abs(_moving_poles(one)), initial=np.inf)
         long = slowest * _LONGEST * one.problem.duration < 1
-        if not short and not long and not _three_lags(one):
+        if not short and not long and not _three_lags(one) and not _one_mode(one):
             kept.append(one)
     return kept or fitted
 
 
 def _three_lags(fitted: Fitted) -> bool:
     return fitted.name == RESONANCE_BEHIND_LAG.name and bool(fitted.theta[1] >= 0)
+
+
+def _one_mode(fitted: Fitted) -> bool:
+    if not fitted.problem.structure.beside:
+        return False
+    poles = _moving_poles(fitted)
+    apart = abs(float(fitted.theta[2]))  # of the two frequencies' logarithms
+    return apart < _SAME_MODE or bool(np.max(np.abs(poles)) > _FASTEST_MODE * np.pi / fitted.problem.interval)
 
 
 def lags(fitted: Fitted) -> FloatArray:

@@ -124,6 +124,8 @@ def _apart(poles: list[complex]) -> list[complex]:
     for i in range(len(moved)):
         for j in range(i):
             if abs(moved[i] - moved[j]) < _APART * abs(moved[i]):
-                middle = 0.5 * (moved[i] + moved[j]).real
-                moved[i], moved[j] = complex(middle * (1 + _APART / 2)), complex(middle * (1 - _APART / 2))
+                middle = 0.5 * (moved[i] + moved[j])
+                if moved[i].imag * moved[j].imag <= 0.0:  # about the real axis: both on it
+                    middle = complex(middle.real)
+                moved[i], moved[j] = middle * (1 + _APART / 2), middle * (1 - _APART / 2)
     return moved
