@@ -7,7 +7,10 @@ where the dead time is shorter than that: the error is of second order in the in
 
 from dataclasses import replace
 
+from ..ident.law import Law
 from ..ident.plant import Plant
+from .discretise import law_from_gains
+from .gains import Gains
 from .horizon import first_horizon
 from .requirements import ControllerSetting
 from .situation import Situation
@@ -23,6 +26,12 @@ def standing_in(situation: Situation, plant: Plant) -> Situation:
         return situation
     horizon = first_horizon(plant, situation) or _SCALE
     return replace(situation, setting=replace(setting, update_interval=horizon / _SAMPLES))
+
+
+def stand_in_law(gains: Gains, situation: Situation, plant: Plant) -> Law:
+    """The fine law that stands in for gains of a continuous controller around this plant."""
+    interval = standing_in(situation, plant).setting.update_interval
+    return law_from_gains(gains, interval, situation.clamp)
 
 
 def half_held(setting: ControllerSetting, interval: float) -> float:

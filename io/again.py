@@ -7,13 +7,16 @@ from typing import Any
 import h5py
 import numpy as np
 
+from ..design.continuous import stand_in_law
 from ..design.designed import Design, Selection
 from ..design.local_gain import with_local_gains
 from ..design.requirements import ControllerSetting, Limits, Requirements
+from ..design.situation import Situation, situation_of
 from ..ident.bend import Bend
 from ..ident.catalogue import CATALOGUE, Structure
 from ..ident.errors import RequestError
 from ..ident.fitted import Fit, Noise, Parameter, Plausible
+from ..ident.given import STRUCTURE as GIVEN
 from ..ident.known import plausible_of
 from ..ident.plant import Plant
 from ..ident.run import FloatArray
@@ -47,6 +50,11 @@ class Again:
     setting: ControllerSetting
     from_dossier: bool
 
+    @property
+    def given(self) -> bool:
+        """Whether the plant was given: nothing was fitted, and its tolerance made the plausible ones."""
+        return self.fit.structure == GIVEN
+
 
 def job_again(earlier: Earlier) -> Again:
     """Put an earlier job together again.
@@ -58,12 +66,15 @@ def job_again(earlier: Earlier) -> Again:
     """
     sheet = earlier.sheet
     structure = next((each for each in CATALOGUE if each.name == earlier.known.structure), None)
-    if structure is None or "asked" not in sheet or "noise" not in sheet["plant"]:
+    given = earlier.known.structure == GIVEN
+    if (structure is None and not given) or "asked" not in sheet or "noise" not in sheet["plant"]:
         raise RequestError(
             "this sheet can't be rechecked",
             where=str(earlier.file),
-            found=f'structure "{earlier.known.structure}"' if structure is None else "no `asked` or no `plant.noise`",
-            expected="a sheet of a fitted plant, written by this version",
+            found=f'structure "{earlier.known.structure}"'
+            if structure is None and not given
+            else "no `asked` or no `plant.noise`",
+            expected="a sheet of a fitted or given plant, written by this version",
             advice="process the rig file again and recheck the new sheet",
         )
     requirements, limits, setting = asked_again(sheet["asked"])
@@ -72,7 +83,15 @@ def job_again(earlier: Earlier) -> Again:
     fit = _fit(earlier, plausible, draws)
     if kept is None:
         fit = with_local_gains(fit, requirements)
-    return Again(fit, _design(earlier), requirements, limits, setting, kept is not None)
+    situation = situation_of(
+        operating_command=fit.operating_command,
+        operating_response=fit.operating_response,
+        noise=fit.noise,
+        requirements=requirements,
+        limits=limits,
+        setting=setting,
+    )
+    return Again(fit, _design(earlier, situation), requirements, limits, setting, kept is not None)
 
 
 def _fit(earlier: Earlier, plausible: Plausible, draws: FloatArray) -> Fit:
@@ -113,18 +132,13 @@ def _parameter(name: str, row: dict[str, Any]) -> Parameter:
     return Parameter(name, float(row["value"]), row["unit"], float(row["std_error"]), float(low), float(high))
 
 
-def _design(earlier: Earlier) -> Design:
+def _design(earlier: Earlier, situation: Situation) -> Design:
     sheet = earlier.sheet
     chosen = sheet["controller"] or sheet["candidate"]["controller"]
     part = sheet["selection"] or sheet["candidate"]["selection"]
     law = law_of_row(chosen["difference_equation"])
     if law is None:
-        raise RequestError(
-            "a continuous controller has no law to recheck",
-            where=str(earlier.file),
-            found="difference_equation null",
-            expected="a sampled controller",
-        )
+        law = stand_in_law(earlier.gains, situation, earlier.known.plant)
     pole = complex(*part["pole"])
     selection = Selection(
         float(part["loop_gain"]), part["loop_gain_unit"], pole, float(part["angle_residual"]), pole, (), (), ()
@@ -145,6 +159,7 @@ def _design(earlier: Earlier) -> Design:
         None,
         (),
         (),
+        continuous=situation.setting.continuous,
     )
 
 
@@ -155,7 +170,10 @@ def _from_dossier(earlier: Earlier) -> tuple[Plausible, FloatArray] | None:
             with h5py.File(file, "r") as dossier:
                 if dossier.attrs.get("created") != earlier.sheet["provenance"]["created"]:
                     continue
-                return _plausible(dossier["plausible"]), dossier["fit/draws"][()]
+                # of a given plant nothing was drawn
+                given = earlier.known.structure == GIVEN
+                draws = np.zeros((0, 0)) if given else dossier["fit/draws"][()]
+                return _plausible(dossier["plausible"]), draws
         except (OSError, KeyError):
             continue
     return None
@@ -181,10 +199,10 @@ def _trimmed(row: FloatArray) -> tuple[float, ...]:
     return tuple(float(c) for c in np.trim_zeros(row, "f"))
 
 
-def _drawn(earlier: Earlier, structure: Structure) -> tuple[Plausible, FloatArray]:
+def _drawn(earlier: Earlier, structure: Structure | None) -> tuple[Plausible, FloatArray]:
     """From the parameters and their covariance: log shapes, dead time and gain of each drawn plant."""
     order = np.trim_zeros(np.asarray(earlier.known.plant.denominator), "b").size - 1
-    if len(earlier.known.plant.numerator) > 1 or order > 2:
+    if structure is None or len(earlier.known.plant.numerator) > 1 or order > 2:
         raise RequestError(
             "a sheet of this structure can't be rechecked without its dossier",
             where=str(earlier.file),

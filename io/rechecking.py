@@ -11,19 +11,26 @@ from threadpoolctl import threadpool_limits
 
 from ..design.closing.compared import Compared
 from ..design.closing.first_move import OpeningAsked, judge_opening
+from ..design.closing.given import compare_given
 from ..design.closing.rung import RungAsked, RungRun, judge_rung
+from ..design.closing.table import compare_table
 from ..design.closing.verdict import compare
 from ..design.closing.words import Units
+from ..design.discretise import law_from_gains
 from ..ident.confront import confront
 from ..ident.errors import RecordError, RequestError
+from ..ident.fitted import Fit
+from ..ident.identify import identify
 from ..ident.trend import Trend, trends
 from .again import Again, job_again
-from .earlier import Earlier, law_of_row, read_earlier
+from .earlier import Earlier, gains_of_row, law_of_row, read_earlier
 from .progress import Progress, silent
 from .read_record import read_record
-from .record import Record
+from .read_table import read_table
+from .record import Record, Source, TableRecord
 from .rigfile.load import load_rig
 from .rigfile.rig import LogDialect, Rig, RunSpec, Signal
+from .rigfile.table_runs import KIND
 
 Verdict = Literal["valid", "drifting", "no longer valid", "not comparable"]
 
@@ -50,7 +57,7 @@ class Rechecked:
 
 
 def recheck_sheet(sheet: Path, runs: Sequence[Path], rig: Path | None = None, progress: Progress = silent) -> Rechecked:
-    """Hold an earlier sheet's model and gains against fresh open-loop runs.
+    """Hold an earlier sheet's model and gains against fresh runs; of frequency tables those that the rig file lists.
 
     Raises
     ------
@@ -62,7 +69,7 @@ def recheck_sheet(sheet: Path, runs: Sequence[Path], rig: Path | None = None, pr
         reader, notes = _rig_of(earlier, again, rig)
         if not again.from_dossier:
             notes += ("no dossier of that job beside the sheet: plausible plants were drawn from its covariance",)
-        records = [_read(path, reader, progress) for path in runs]
+        records = [_read_any(path, reader, progress) for path in runs]
         dated = sorted(((_taken(record), record) for record in records), key=lambda pair: pair[0])
         notes += _date_notes(records)
         compared = tuple((day, _compare(record, earlier, again, progress)) for day, record in dated)
@@ -130,7 +137,8 @@ def _judge(record: Record, row: dict[str, Any], again: Again, progress: Progress
     progress(f"running the rung's loop under the setpoint of {record.spec.shown}")
     law = law_of_row(row["difference_equation"])
     if law is None:
-        raise RequestError("this rung has no law", where=record.spec.shown, found="a continuous controller")
+        stand_in = again.design.law
+        law = law_from_gains(gains_of_row(row), stand_in.update_interval, stand_in.clamp)
     fit, expected = again.fit, row["expected"]
     step = expected["setpoint_to"]["value"] - expected["setpoint_from"]["value"] if expected else None
     asked = RungAsked(
@@ -152,8 +160,27 @@ def _judge(record: Record, row: dict[str, Any], again: Again, progress: Progress
     )
 
 
-def _compare(record: Record, earlier: Earlier, again: Again, progress: Progress) -> Compared:
+def _compare(record: Source, earlier: Earlier, again: Again, progress: Progress) -> Compared:
     plant = earlier.sheet["plant"]
+    if isinstance(record, TableRecord):
+        return compare_table(
+            record.table,
+            again.fit,
+            again.design,
+            requirements=again.requirements,
+            limits=again.limits,
+            setting=again.setting,
+        )
+    if again.given:
+        return compare_given(
+            record.run,
+            again.fit,
+            _fitted_alone(record, again, progress),
+            again.design,
+            requirements=again.requirements,
+            limits=again.limits,
+            setting=again.setting,
+        )
     return compare(
         record.run,
         again.fit,
@@ -166,15 +193,25 @@ def _compare(record: Record, earlier: Earlier, again: Again, progress: Progress)
     )
 
 
+def _fitted_alone(record: Record, again: Again, progress: Progress) -> Fit | None:
+    progress(f"fitting {record.spec.shown} by itself")
+    try:
+        return identify([record.run], operating_command=again.fit.operating_command, progress=progress)
+    except RecordError:
+        return None  # the comparison says so
+
+
 def _seen(compared: Compared) -> bool:
     return compared.verdict != "not comparable"
 
 
-def _trends(dated: Sequence[tuple[date, Record]], again: Again) -> tuple[Trend, ...]:
-    days = [float(day.toordinal()) for day, _ in dated]
-    if len(set(days)) < 3:
+def _trends(dated: Sequence[tuple[date, Source]], again: Again) -> tuple[Trend, ...]:
+    """Of the fitted parameters over three dates or more; frequency tables and plants that were given have none."""
+    runs = [(day, record.run) for day, record in dated if isinstance(record, Record)]
+    days = [float(day.toordinal()) for day, _ in runs]
+    if len(set(days)) < 3 or again.given:
         return ()
-    return trends(days, [confront(record.run, again.fit).changes for _, record in dated])
+    return trends(days, [confront(run, again.fit).changes for _, run in runs])
 
 
 def _verdict(compared: Sequence[tuple[date, Compared]], moving: Sequence[Trend]) -> Verdict:
@@ -186,6 +223,15 @@ def _verdict(compared: Sequence[tuple[date, Compared]], moving: Sequence[Trend])
     if any(each.verdict == "disagrees" for day, each in told if day == last):
         return "no longer valid"
     return "drifting" if any(trend.drifting for trend in moving) else "valid"
+
+
+def _read_any(path: Path, rig: Rig, progress: Progress) -> Source:
+    """A log, or a frequency table where the rig file lists the file as one."""
+    listed = next((spec for spec in rig.runs if spec.file == path.resolve()), None)
+    if listed is None or listed.excitation != KIND or not path.is_file():
+        return _read(path, rig, progress)
+    progress(f"reading {path}")
+    return read_table(listed, rig)
 
 
 def _read(path: Path, rig: Rig, progress: Progress, *, rung: bool = False) -> Record:
@@ -251,14 +297,14 @@ def _from_sheet(earlier: Earlier, again: Again) -> Rig:
     )
 
 
-def _taken(record: Record) -> date:
+def _taken(record: Source) -> date:
     """The date that the rig file states, else that of the file."""
     if record.spec.taken is not None:
         return date.fromisoformat(record.spec.taken[:10])
     return datetime.fromtimestamp(record.spec.file.stat().st_mtime, UTC).date()
 
 
-def _date_notes(records: Sequence[Record]) -> tuple[str, ...]:
+def _date_notes(records: Sequence[Source]) -> tuple[str, ...]:
     undated = sum(record.spec.taken is None for record in records)
     if len(records) < 3 or not undated:
         return ()

@@ -6,11 +6,13 @@ from typing import Literal
 
 import numpy as np
 from numpy.typing import NDArray
+from scipy.ndimage import maximum_filter1d, minimum_filter1d
 
 from ...ident.fitted import Plausible
 from ...ident.law import Law
 from ...ident.plant import Plant
 from ...ident.run import FloatArray, Run
+from ..continuous import half_held
 from ..discretise import columns_of_law
 from ..ladder.rung import RESPONSE_TIMES, SWINGS
 from ..requirements import ControllerSetting, Limits
@@ -63,6 +65,7 @@ class RungAsked:
     Attributes
     ----------
     law : Law
+        Of a continuous controller: the fine one that stands in for it.
     step : float or None, response unit
         Of the setpoint, as the ladder asks for it.
     response_time, settling_time : float or None, s
@@ -106,7 +109,10 @@ def judge_rung(
     middle = response.mean(axis=1)
     low = np.minimum(middle - _NORMAL_999 * spread, response.min(axis=1) - _NORMAL_999 * noise_std)
     high = np.maximum(middle + _NORMAL_999 * spread, response.max(axis=1) + _NORMAL_999 * noise_std)
-    low, high = _loosened(low, np.minimum), _loosened(high, np.maximum)
+    late = float(np.median(np.diff(run.time))) if setting.continuous else asked.law.update_interval
+    samples = max(int(np.ceil(late / asked.law.update_interval - 1e-6)), 1)
+    low, high = minimum_filter1d(low, 2 * samples + 1), maximum_filter1d(high, 2 * samples + 1)
+    # nobody logs at which instant the controller took the setpoint over: a sample either way
     predicted, lowest, highest = (np.interp(run.time - run.time[0], time, line) for line in (response[:, 0], low, high))
     outside = np.isfinite(run.response) & ((run.response < lowest) | (run.response > highest))
     advice, why = _advice(run, run.setpoint, asked, outside, predicted, noise_std, limits)
@@ -149,12 +155,13 @@ def _simulated(
     bank = build_bank(
         plausible.plants,
         interval,
-        computation_delay=setting.computation_delay,
+        computation_delay=half_held(setting, interval),
         filter_time=setting.response_filter_time,
         points=1,
         stiction=plausible.stiction,
         valves=plausible.valves,
         curves=plausible.curves,
+        predict=setting.continuous,
     )
     count = len(plausible.plants)
     columns = columns_of_law(law).take(np.zeros(count, dtype=int))
@@ -167,12 +174,6 @@ def _simulated(
     clamps = Clamps(low - rest.command, high - rest.command, change)
     response, _ = follow(bank, columns, goal - goal[0], clamps)
     return np.asarray(time, dtype=np.float64), response + rest.response + operating_response
-
-
-def _loosened(line: FloatArray, widest: np.ufunc) -> FloatArray:
-    """A sample either way: nobody logs at which instant the controller took the setpoint over."""
-    padded = np.concatenate([line[:1], line, line[-1:]])
-    return np.asarray(widest(widest(padded[:-2], padded[2:]), line))
 
 
 def _advice(

@@ -43,6 +43,12 @@ def test_a_plant_with_a_zero_needs_its_dossier(sheet) -> None:
 
 
 def test_an_unknown_structure_is_refused(sheet) -> None:
-    """A plant that was given can't be fitted to a fresh record."""
-    with pytest.raises(RequestError, match="can't be rechecked"):
+    """Nobody could fit it to a fresh record."""
+    with pytest.raises(RequestError, match="can't be rechecked\n"):
+        job_again(sheet(structure="a plant of another program"))
+
+
+def test_a_given_plant_needs_its_dossier(sheet) -> None:
+    """Its plausible plants came from its tolerance, which the covariance does not hold."""
+    with pytest.raises(RequestError, match="without its dossier"):
         job_again(sheet(structure="given plant"))

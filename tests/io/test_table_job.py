@@ -11,6 +11,7 @@ from gainwright.ident.errors import GainwrightError, RecordError, RequestError
 from gainwright.io.deliver import deliver
 from gainwright.io.job import process_rig
 from gainwright.io.read_table import read_table
+from gainwright.io.rechecking import recheck_sheet
 from gainwright.io.rigfile.load import load_rig
 
 GAIN, LAG, DEAD_TIME = 2.0, 1.0, 0.2
@@ -235,3 +236,16 @@ def test_a_phase_that_rises_is_asked_about(tmp_path: Path) -> None:
     write(tmp_path / "fit.csv", 1)
     read = one(tmp_path, ('"phase", unit = "deg"', '"phase", unit = "deg", scale = -1.0'))
     assert {finding.kind: finding.refuses for finding in read.findings}["phase rises"] == "holds"
+
+
+def test_a_fresh_table_is_held_against_an_earlier_sheet(tmp_path: Path) -> None:
+    """Listed as a table in a rig file: valid for the same rig, not for half as much gain again."""
+    for name, seed, gain in (("fit", 1, GAIN), ("held_out", 2, GAIN), ("again", 3, GAIN), ("other", 4, 1.5 * GAIN)):
+        write(tmp_path / f"{name}.csv", seed, gain)
+    deliver(rig(tmp_path), tmp_path / "out")
+    listed = rig(tmp_path, TWO + table("again", "held-out") + table("other", "held-out"))
+    verdicts = [
+        recheck_sheet(tmp_path / "out" / "gains.json", [tmp_path / f"{name}.csv"], listed).verdict
+        for name in ("again", "other")
+    ]
+    assert verdicts == ["valid", "no longer valid"]
