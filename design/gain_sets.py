@@ -78,6 +78,20 @@ def fitted_sets(bench: Bench, gains: GainColumns, chosen: float, loop: OpenLoop 
     return GainSets(rows, _scaled(together, chosen))
 
 
+def believed_up_to(bench: Bench, gains: GainColumns, chosen: float, loop: OpenLoop) -> float:
+    """Factor on the gain up to which the bench may stand in for a continuous loop; inf: without end.
+
+    Parameters
+    ----------
+    gains : GainColumns of one column
+    chosen : float
+        Their K.
+    loop : OpenLoop
+        The continuous loop.
+    """
+    return _believed(continuous_curve(loop, chosen), sampled_curve(bench, gains))
+
+
 def _believed(curve: Curve, stand_in: Curve) -> float:
     """Up to which factor the stand-in may be run: without end where it becomes unstable with the loop itself."""
     own, last = (max((high for _, high in each.stable), default=1.0) for each in (curve, stand_in))

@@ -51,6 +51,8 @@ class GainSweep:
         How many plausible plants were run.
     band_interval : float, s
         Update interval that their steps were run with.
+    capped : bool
+        Whether gains were left out above which the stand-in of a continuous controller is not believed.
     time : (t,) array, s
         Empty without a test step.
     response, command : Band of (t, g) arrays, absolute readings
@@ -69,6 +71,7 @@ class GainSweep:
     share_meeting: FloatArray
     plants: int
     band_interval: float
+    capped: bool
     time: FloatArray
     response: Band
     command: Band

@@ -8,9 +8,11 @@ import numpy as np
 from ..ident.fitted import Plausible
 from ..ident.plant import ComplexArray, Plant
 from ..ident.run import FloatArray
-from .compensator import open_loop
+from .compensator import loop_gain, open_loop
+from .continuous import standing_in
 from .designed import GainInterval, Selection
 from .discretise import GainColumns, columns_of
+from .gain_sets import believed_up_to
 from .gains import Gains
 from .horizon import SEARCHED, first_horizon
 from .locus.branches import locus_branches
@@ -29,6 +31,8 @@ _FEWEST, _MOST = 30, 100  # plausible plants
 _WORK, _ROUGH_WORK = 7.5e6, 2.4e6  # steps of single plants in all; friction is run in closed form, which costs more
 _STAND_IN = 360  # samples from which on a longer update interval may stand in
 _FEW = 100  # samples; where there are more, nothing is looked at between them
+_COARSER = (1000, 2000)  # samples of a coarser stand-in of a continuous controller for many plants
+_LEAST_REACH = 1.05
 _FINE = 12_000  # samples up to which the fitted plant is run with the very law
 _SHOWN = 72  # times of a band
 _AT_ONCE, _ROUGH_AT_ONCE = 800, 4000  # columns: few enough for the processor's cache, and many for long formulas
@@ -74,18 +78,22 @@ def sweep_gains(
     gains : Gains
         Their zeros stay.
     span : (low, high)
-        Ends of the gains.
+        Ends of the gains; of a continuous controller none above which its stand-in is not believed.
     shown : float, s
         How much of the test step is kept.
     """
-    plausible = replace(plausible, valves=None)  # the page runs no valve
-    grid = gain_grid(selection, span)
-    factors = grid / selection.loop_gain
-    asked = situation.without_floors()
+    asked = standing_in(situation, nominal).without_floors()
     fitted = _fitted_bench(nominal, plausible, asked)
+    low, high = span
+    if asked.setting.continuous:
+        loop = open_loop(gains, nominal, asked.setting)
+        reach = believed_up_to(fitted, columns_of([gains]), selection.loop_gain, loop)
+        high = min(high, max(reach, _LEAST_REACH) * selection.loop_gain)
+    grid = gain_grid(selection, (low, high))
+    factors = grid / selection.loop_gain
     zero = np.zeros(grid.size, dtype=int)
     found = values_of(fitted, zero, columns_of([gains]).take(zero).times(factors))
-    many = _Many(gains, nominal, plausible, asked, shown)
+    many = _Many(gains, nominal, plausible, asked, shown, float(factors[-1]))
     many.run(factors)
     return GainSweep(
         gains=grid,
@@ -100,6 +108,7 @@ def sweep_gains(
         share_meeting=many.share_meeting,
         plants=many.count,
         band_interval=many.bench.running.interval,
+        capped=high < span[1],
         time=many.time,
         response=many.response,
         command=many.command,
@@ -123,18 +132,23 @@ def _poles(gains: Gains, plant: Plant, situation: Situation, grid: FloatArray) -
 class _Many:
     """The plausible plants over all gains, a few gains at a time."""
 
-    def __init__(self, gains: Gains, nominal: Plant, plausible: Plausible, situation: Situation, shown: float) -> None:
-        self.columns, self.situation = columns_of([gains]), situation
+    def __init__(
+        self, gains: Gains, nominal: Plant, plausible: Plausible, situation: Situation, shown: float, most: float
+    ) -> None:
         total = len(plausible.plants)
         horizon = max(first_horizon(nominal, situation, SEARCHED), shown)
-        samples = min(horizon / situation.setting.update_interval, _STAND_IN)
+        continuous = situation.setting.continuous
+        situation = _coarser(gains, nominal, plausible, situation, horizon, most) if continuous else situation
+        self.columns, self.situation = columns_of([gains]), situation
+        samples = horizon / situation.setting.update_interval
+        samples = samples if continuous else min(samples, _STAND_IN)
         points = 1 if samples > _FEW else 2
         rough = bool(np.any(plausible.stiction > 0.0))
         work, self.at_once = (_ROUGH_WORK, _ROUGH_AT_ONCE) if rough else (_WORK, _AT_ONCE)
         self.count = min(total, int(np.clip(work / (_GAINS * samples * points), _FEWEST, _MOST)))
         index = np.linspace(0, total - 1, self.count).astype(int)
         some = plausible.take(index.tolist())
-        self.bench = bench_of(some, situation, horizon, stand_in=True, grid=60, points=points)
+        self.bench = bench_of(some, situation, horizon, stand_in=not continuous, grid=60, points=points)
         running = self.bench.running
         last = max(int(min(shown / running.interval, self.bench.samples - 1)), 1)
         places = np.linspace(0.0, 1.0, _SHOWN) ** 1.5 * last
@@ -191,6 +205,20 @@ class _Many:
         self.share_meeting = np.all([stable, *rows], axis=0).mean(axis=1)
         self.response = Band(self._low[0], self._high[0])
         self.command = Band(self._low[1], self._high[1])
+
+
+def _coarser(
+    gains: Gains, nominal: Plant, plausible: Plausible, situation: Situation, horizon: float, most: float
+) -> Situation:
+    """A longer interval of the stand-in, where that is believed up to `most` times the gain too."""
+    loop = open_loop(gains, nominal, situation.setting)
+    for samples in _COARSER:
+        interval = max(horizon / samples, situation.setting.update_interval)
+        longer = replace(situation, setting=replace(situation.setting, update_interval=interval))
+        alone = bench_of(with_nominal(nominal, plausible, longer).take([0]), longer, horizon, points=1)
+        if believed_up_to(alone, columns_of([gains]), abs(loop_gain(gains)), loop) >= most:
+            return longer
+    return situation
 
 
 def _common(parts: list[Values]) -> list[str]:

@@ -38,6 +38,8 @@ class Bank:
         Slope of the response at the sub-points and just after the command's arrival, response unit per s.
     seen : (n + 1, p) array
         What the controller sees at a sample: of [x, u[k-d-1]].
+    ahead : bool
+        Whether that is the response somewhat later, and not as it is.
     lag : (p,) array of int
         d.
     delay : (p,) array, s
@@ -82,6 +84,7 @@ class Bank:
     drives: Drives | None = None
     valves: FloatArray | None = None
     curves: FloatArray | None = None
+    ahead: bool = False
 
 
 def build_bank(
@@ -136,9 +139,11 @@ def build_bank(
         plants, interval, points, a, b, output, direct, phi, old, new, whole, delay, part, filter_time > 0.0, poles
     )
     drives = None if stiction is None else drives_of(plants, stiction, delay)
-    seen = _ahead(a, b, smooth.seen, np.maximum(-total, 0.0)) if predict and np.any(total < 0.0) else smooth.seen
+    ahead = predict and bool(np.any(total < 0.0))
+    seen = _ahead(a, b, smooth.seen, np.maximum(-total, 0.0)) if ahead else smooth.seen
     sticking, bends = None if valves is None else valves.T, None if curves is None else curves.T
-    return replace(smooth, filter_time=filter_time, drives=drives, seen=seen, valves=sticking, curves=bends)
+    kept = replace(smooth, filter_time=filter_time, drives=drives, seen=seen, ahead=ahead)
+    return replace(kept, valves=sticking, curves=bends)
 
 
 def _ahead(a: FloatArray, b: FloatArray, seen: FloatArray, time: FloatArray) -> FloatArray:

@@ -142,6 +142,7 @@ class _Columns:
         self.points, self.states, self.samples = bank.points, bank.states, samples
         self.step = np.ascontiguousarray(bank.step[:, :, which])
         self.filtered = bank.filtered
+        self.ahead = bank.seen[:, which] if bank.ahead else None
         self.valves = None if bank.valves is None else bank.valves[:, which]
         self.curves = None if bank.curves is None else bank.curves[:, which]
         self.straight = self.valves is None and self.curves is None
@@ -189,7 +190,10 @@ class _Columns:
                 second = r2 - y2 * seen_now + g2 * given - m2 * wanted
             state[:n] = out[m : m + n]
             before = given
-            seen_now = state[n - 1].copy() if self.filtered else self.response[k, m - 1]
+            if self.ahead is not None:
+                seen_now = np.einsum("ic,ic->c", self.ahead[:n], state[:n]) + self.ahead[n] * state[n + 1]
+            else:
+                seen_now = state[n - 1].copy() if self.filtered else self.response[k, m - 1]
         return None if slopes is None else np.asarray(steepest.max(axis=0))
 
     def _through(self, given: FloatArray) -> FloatArray:

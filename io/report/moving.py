@@ -15,6 +15,7 @@ from ...design.designed import Design, GainInterval
 from ...design.discretise import columns_of, law_columns
 from ...design.locus.condition import working
 from ...design.requirements import Requirement
+from ...design.sampled.bank import Bank
 from ...design.situation import DISTURBED, Situation, situation_of
 from ...design.sweep import Band, GainSweep
 from ...design.sweep_gains import sweep_gains
@@ -33,10 +34,10 @@ _LINE = 60  # points of a drawn line of the locus
 
 
 def moving_part(outcome: Outcome) -> dict[str, Any] | None:
-    """What the page's template needs; None without a fitted plant, a design and a sampled law."""
+    """What the page's template needs; None without a fitted plant and a design."""
     from markupsafe import Markup
 
-    if outcome.fit is None or outcome.design is None or outcome.rig.setting.continuous:
+    if outcome.fit is None or outcome.design is None:
         return None
     sweep = sweep_of(outcome, outcome.fit, outcome.design)
     data, text = moving_data(outcome, outcome.fit, outcome.design, sweep), script()
@@ -46,18 +47,26 @@ def moving_part(outcome: Outcome) -> dict[str, Any] | None:
         "source": Markup(script_source(text)),
         "stepped": bool(sweep.time.size),
         "limited": bool(data["limits"]),
-        **_guides(sweep, sticks=outcome.fit.sticking is not None),
+        **_guides(sweep),
     }
 
 
-def _guides(sweep: GainSweep, *, sticks: bool) -> dict[str, str]:
-    without = (
-        " The actuator that sticks is left out of this sheet: what hunts on the rig may look calm here. The "
-        "predicted step above and the check of the chosen K count it."
-    ) if sticks else ""  # fmt: skip
+def _guides(sweep: GainSweep) -> dict[str, str]:
+    sticks = sweep.fitted.running.valves is not None
+    stuck = " The actuator that sticks is run too: what hunts here hunts on the rig." if sticks else ""
     longer = "" if _as_shipped(sweep) else (
         f" The band is run with an update interval of {words.every(sweep.band_interval)} and the same total delay, to "
         "keep the sheet small."
+    )  # fmt: skip
+    law = "the very law with its clamp, run in this page"
+    if sweep.fitted.situation.setting.continuous:
+        law = (
+            "the continuous controller with its clamp, run in this page by a law that is updated every "
+            f"{words.every(sweep.fitted.running.interval)} and whose delay is taken off the dead time"
+        )
+    more = (
+        " The ribbon ends where that stand-in is no longer believed: far below the gain at which it becomes unstable."
+        if sweep.capped else ""
     )  # fmt: skip
     return {
         "ribbon_guide": (
@@ -66,7 +75,7 @@ def _guides(sweep: GainSweep, *, sticks: bool) -> dict[str, str]:
             "chosen K. Rows are filled where a requirement holds. On each row the bead shows the slack of the fitted "
             "plant: the bound is the upright line, room is to its right; the bar behind it holds 95 % of "
             f"{sweep.plants} plausible plants (at the chosen K: of all that the gains were checked on), and the figure "
-            f"is the worse of its end and the bead. A hollow bead misses its bound.{without}"
+            f"is the worse of its end and the bead. A hollow bead misses its bound.{stuck}{more}"
         ),
         "locus_guide": (
             "How to read it: filled diamonds are the closed-loop poles of the fitted plant at this K, dotted ones "
@@ -74,7 +83,7 @@ def _guides(sweep: GainSweep, *, sticks: bool) -> dict[str, str]:
             "real axis swings more, right of the upright axis is unstable."
         ),
         "step_guide": (
-            "How to read it: the full line is the fitted plant under the very law with its clamp, run in this page; "
+            f"How to read it: the full line is the fitted plant under {law}; "
             "the band holds 95 % of the plausible plants where all are stable; the dotted line is what the chosen K "
             f"does.{longer}"
         ),
@@ -247,12 +256,21 @@ def _plant(sweep: GainSweep) -> dict[str, Any]:
         "step": bank.step[:, :, 0].tolist(),
         "slope": bank.rate[:, :, 0].tolist(),
         "lag": int(bank.lag[0]),
+        "seen": bank.seen[:, 0].tolist() if bank.ahead else None,
         "filtered": bank.filtered,
         "filter_time": bank.filter_time,
         "integrators": int(bank.integrators[0]),
         "static_gain": float(bank.static_gain[0]),
         "drive": rough,
+        "valve": _valve(bank),
     }
+
+
+def _valve(bank: Bank) -> dict[str, float] | None:
+    """Of the fitted plant; a drive with friction is run without."""
+    if bank.valves is None or bank.valves[0, 0] <= 0.0:
+        return None
+    return dict(zip(("band", "short", "above"), bank.valves[:, 0].tolist(), strict=True))
 
 
 def _law(design: Design, sweep: GainSweep) -> dict[str, Any]:

@@ -70,6 +70,7 @@ function smoothPlant(plant, samples) {
       for (const row of plant.slope) steepest = Math.max(steepest, Math.abs(times(row)));
       for (let i = 0; i < m; i += 1) response[k * m + i] = out[i];
       for (let i = 0; i < n; i += 1) state[i] = out[m + i];
+      if (plant.seen) return plant.seen.reduce((total, share, i) => total + share * (i < n ? state[i] : state[n + 1]), 0);
       return plant.filtered ? state[n - 1] : out[m - 1];
     },
     steepest: () => steepest,
@@ -131,6 +132,17 @@ function roughPlant(plant, samples) {
   };
 }
 
+// A valve that sticks: its stem stays until the command is the band away, then comes to rest short of it.
+function through(valve) {
+  if (!valve) return (given) => given;
+  let stem = 0;
+  return (given) => {
+    const wanted = given + valve.above;
+    if (Math.abs(wanted - stem) > valve.band) stem = wanted - Math.sign(wanted - stem) * valve.short;
+    return stem;
+  };
+}
+
 // A setpoint step or a push on the command, both at the first sample, from rest; deviations from that rest.
 function runLoop(data, law, rest, step, push) {
   const { plant, run } = data;
@@ -145,12 +157,13 @@ function runLoop(data, law, rest, step, push) {
   const limited = new Uint8Array(run.samples);
   const rig = plant.drive ? roughPlant(plant, run.samples) : smoothPlant(plant, run.samples);
   const decide = controller(law, step, clamp);
+  const moved = through(plant.drive ? null : plant.valve);
   let seen = 0;
   for (let k = 0; k < run.samples; k += 1) {
     const [given, cut] = decide(seen);
     command[k] = given;
     limited[k] = cut ? 1 : 0;
-    seen = rig.advance(k, command[k] + push, response);
+    seen = rig.advance(k, moved(command[k]) + push, response);
   }
   return { response, command, limited, steepest: rig.steepest() };
 }
@@ -250,6 +263,7 @@ function fittedAt(data, index) {
     const { response } = history;
     let final = restAt(plant, law, run.start + step).response - before.response;
     if (plant.drive) final = response[response.length - 1];
+    if (plant.valve) final = middleOf(response, final, run.start + step - before.response);
     if (asked("overshoot")) worse("overshoot", Math.max(peakOf(response, 1 / final) - 1, 0));
     if (asked("rise_time")) {
       const late = firstReach(response, final, 0.9, spacing);
@@ -259,7 +273,8 @@ function fittedAt(data, index) {
       const distance = (i) => Math.abs(response[i] / final - 1);
       const held = restless(data, history, final);
       const time = lastEntry(distance, response.length, asked("settling_time").band ?? 0.02, spacing, 1);
-      worse("settling_time", held ? Infinity : time);
+      const hunts = plant.valve && time > 0.8 * (spacing * response.length);
+      worse("settling_time", held || hunts ? Infinity : time);
     }
   };
   let shown = null;
@@ -283,6 +298,13 @@ function fittedAt(data, index) {
     }
   }
   return { ...drawn(data, shown, before), values, extremes };
+}
+
+// Behind a valve that sticks it may hunt for ever: the middle of the last tenth is as steady as it gets.
+function middleOf(response, final, goal) {
+  const tail = response.slice(-Math.max(Math.trunc(response.length * 0.1), 1));
+  const middle = sum(tail) / tail.length;
+  return Math.abs(middle) > 0.1 * Math.abs(goal) ? middle : final;
 }
 
 // Whether the command is limited all through the last tenth, or friction leaves the response creeping.

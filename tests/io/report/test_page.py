@@ -9,7 +9,6 @@ from html.parser import HTMLParser
 import numpy as np
 import pytest
 from gainwright.ident.law import Law
-from gainwright.ident.play import Sticking, Valve
 from gainwright.io.report.page import law_text, report_html
 
 OWN_SCRIPTS = [{"type": "application/json", "id": "moving-data"}, {}]
@@ -249,10 +248,15 @@ def test_continuous_and_sampled_pole_stand_side_by_side_with_their_distance(make
     assert "Everything the locus offers on the same lines" in text
 
 
-def test_the_moving_sheet_says_that_it_leaves_a_sticking_actuator_out(made):
-    """Only where one was found: the page runs the plant without it."""
-    words = "left out of this sheet: what hunts on the rig may look calm here"
-    assert words not in Reader(report_html(made)).text
-    one = np.ones(1)
-    sticking = Sticking(Valve(0.2, 0.1), 0.02, 0.1 * one, 0.5 * one, one, 40.0)
-    assert words in Reader(report_html(replace(made, fit=replace(made.fit, sticking=sticking)))).text
+def test_the_moving_sheet_says_that_a_sticking_actuator_is_run(made):
+    """Only where one was found: then the page's plant has its band and how far short it rests."""
+    words = "The actuator that sticks is run too: what hunts here hunts on the rig"
+    text = report_html(made)
+    assert words not in Reader(text).text
+    assert '"valve":null' in text
+    plausible = made.fit.plausible
+    valves = np.tile([0.2, 0.1, 0.0], (len(plausible.plants), 1))
+    text = report_html(replace(made, fit=replace(made.fit, plausible=replace(plausible, valves=valves))))
+    assert words in Reader(text).text
+    assert '"valve":{"band":0.2,"short":0.1,"above":0.0}' in text
+
