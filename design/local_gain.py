@@ -33,7 +33,7 @@ def at_local_gains(plausible: Plausible, fit: Fit, requirements: Requirements) -
     place = np.arange(count)
     across = np.clip((place * _ACROSS) % 1.0, 0.5 / count, 1.0 - 0.5 / count)
     bends = fit.bend.bend + fit.bend.error * norm.ppf(across)
-    slopes = slope_at(bends, low + (high - low) * ((place * _ALONG) % 1.0))
+    slopes = slope_at(bends, np.asarray(low + (high - low) * ((place * _ALONG) % 1.0)))
     here = slope_at(bends, np.full(count, fit.operating_command - fit.bend.reference))
     return plausible.locally(slopes / here, bends / here)
 
