@@ -283,7 +283,7 @@ def _put_compared(group: h5py.Group, compared: Compared, rig: Rig) -> None:
             ("time", compared.time, "s", "from the record's first sample"),
             ("command", compared.command, "command", "as logged"),
             ("response", compared.response, "response", "as logged"),
-            ("predicted", compared.predicted, "response", "free run of the fitted plant"),
+            ("predicted", compared.predicted, "response", "free run of the fitted plant, or of its loop"),
             ("low", compared.low, "response", "lower end of the 95 % band, parameters and noise"),
             ("high", compared.high, "response", "upper end of the 95 % band, parameters and noise"),
         ],

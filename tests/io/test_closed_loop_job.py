@@ -94,6 +94,19 @@ def test_gains_come_from_logs_of_a_closed_loop(tmp_path: Path) -> None:
     assert (tmp_path / "out" / "report.html").exists()
 
 
+def test_a_held_out_loop_with_known_gains_is_run_from_its_setpoint(tmp_path: Path) -> None:
+    """Command logged and gains stated: the sheet says so, and the noise-free loop is what was foretold, to 3 %."""
+    write(tmp_path / "fit.csv", run_loop(1))
+    write(tmp_path / "held_out.csv", run_loop(2))
+    gains = 'current = { proportional = "0.8 V/mm", integral = "0.6 V/(mm s)" }'
+    (compared,) = process_rig(rig(tmp_path, current=gains)).closing
+    assert compared.verdict == "agrees"
+    assert "free run of the loop with the gains in force then" in compared.why
+    quiet = run_loop(2, noise=0.0).response
+    assert np.sqrt(np.mean((compared.predicted - quiet) ** 2)) < 0.03 * np.std(quiet)
+    assert compared.coverage_95 > 0.9
+
+
 def test_a_held_out_loop_around_another_plant_disagrees(tmp_path: Path) -> None:
     """Half as much gain again in the rig, seen in closed loop."""
     write(tmp_path / "fit.csv", run_loop(1))
