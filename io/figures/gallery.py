@@ -5,7 +5,7 @@ from collections.abc import Iterator
 from dataclasses import dataclass
 from typing import TYPE_CHECKING
 
-from ...design.compensator import open_loop
+from ...design.compensator import loop_gain, open_loop
 from ...design.designed import Design
 from ...design.locus.condition import working
 from ...ident.fitted import Fit
@@ -54,6 +54,8 @@ def gallery(outcome: Outcome) -> Iterator[Picture]:
         yield from [step] if step else []
         yield ribbon_picture(design)
     yield headroom_picture(outcome)
+    loci = two_loci_picture(outcome)
+    yield from [loci] if loci else []
     ladder = ladder_picture(outcome)
     yield from [ladder] if ladder else []
     if fit is not None:
@@ -165,6 +167,26 @@ def locus_picture(outcome: Outcome, fit: Fit, design: Design) -> Picture:
     others = [complex(s) for s in at_gain(loop, lines, found.loop_gain)]
     figure = locus(lines, found, sampled_pole=design.selection.sampled_pole, others=others)
     return Picture("locus", "Locus with the chosen point and the vectors of the magnitude condition", figure)
+
+
+def two_loci_picture(outcome: Outcome) -> Picture | None:
+    """The locus before a change and the one after it; None where no earlier sheet with a chosen pole stands beside."""
+    from .two_loci import Locus, two_loci
+
+    fit, design, found = outcome.fit, outcome.design, outcome.retuned
+    if fit is None or design is None or found is None:
+        return None
+    earlier, setting = found.earlier, outcome.rig.setting
+    part = earlier.sheet["selection"] or (earlier.sheet.get("candidate") or {}).get("selection")
+    if not part or part["pole"] is None:
+        return None
+    before = Locus(
+        open_loop(earlier.gains, earlier.known.plant, setting), abs(loop_gain(earlier.gains)), complex(*part["pole"])
+    )
+    after = Locus(
+        open_loop(design.gains, fit.plant, setting), abs(loop_gain(design.gains)), complex(design.selection.pole)
+    )
+    return Picture("two-loci", "Locus before and after the change, with the chosen poles", two_loci(before, after))
 
 
 def margins_picture(outcome: Outcome, fit: Fit, design: Design) -> Picture | None:

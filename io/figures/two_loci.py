@@ -77,8 +77,9 @@ def _draw(
     axes.plot(poles.real, poles.imag, linestyle="none", marker="D", markersize=6, zorder=7,
               markeredgecolor=colour(role), markerfacecolor=face)  # fmt: skip
     axes.annotate(
-        name, (locus.point.real, abs(locus.point.imag)), xytext=(-9, 7 if filled else -13), textcoords="offset points",
-        ha="right", fontsize=SMALL + 1, fontweight="bold", color=colour(role),
+        name, (locus.point.real, abs(locus.point.imag)), xytext=(10, -8 if filled else 5), textcoords="offset points",
+        ha="left", fontsize=SMALL + 1, fontweight="bold", color=colour(role), zorder=6,
+        bbox={"facecolor": colour("paper"), "edgecolor": "none", "pad": 1.0},
     )  # fmt: skip
 
 

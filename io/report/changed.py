@@ -2,7 +2,7 @@
 
 from typing import Any
 
-from ...design.compensator import loop_gain, open_loop
+from ..figures.gallery import two_loci_picture
 from ..figures.svg import inline_svg
 from ..figures.words import number, with_unit
 from ..outcome import Outcome
@@ -25,7 +25,7 @@ def changed_of(outcome: Outcome) -> dict[str, Any] | None:
         "verdict": verdict(found),
         "old": f"{found.old.verdict.upper()}: {found.old.why}.",
         "table": table(found),
-        "picture": _picture(outcome, found),
+        "picture": _picture(outcome),
         "guide": GUIDE,
         "trail": f"Compared with {found.earlier.file.name}, sha256 {found.earlier.sha256[:16]}…",
     }
@@ -60,21 +60,6 @@ def table(found: Retuned) -> Table:
     return Table(f"The plant before and after, both as {found.structure}", head, rows, marked)
 
 
-def _picture(outcome: Outcome, found: Retuned) -> str:
-    from ..figures.two_loci import Locus, two_loci
-
-    fit, design = outcome.fit, outcome.design
-    if fit is None or design is None:
-        return ""
-    earlier = found.earlier
-    part = earlier.sheet["selection"] or (earlier.sheet.get("candidate") or {}).get("selection")
-    if not part or part["pole"] is None:
-        return ""
-    setting = outcome.rig.setting
-    before = Locus(
-        open_loop(earlier.gains, earlier.known.plant, setting), abs(loop_gain(earlier.gains)), complex(*part["pole"])
-    )
-    after = Locus(
-        open_loop(design.gains, fit.plant, setting), abs(loop_gain(design.gains)), complex(design.selection.pole)
-    )
-    return inline_svg(two_loci(before, after), "two-loci", "Locus before and after the change, with the chosen poles")
+def _picture(outcome: Outcome) -> str:
+    picture = two_loci_picture(outcome)
+    return inline_svg(picture.figure, picture.name, picture.title) if picture else ""

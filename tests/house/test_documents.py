@@ -140,14 +140,18 @@ def test_the_readme_pictures_are_made_by_the_block_that_says_so(
     """Beside a copy of the sample it draws every SVG of the README; the README's own block draws all, from one job."""
     (example,) = fenced(developers, "<!-- pictures -->")
     (notebook,) = fenced(readme, "<!-- notebook -->")
-    shutil.copytree(checkout / "sample_runs" / "paddle", tmp_path / "sample_runs" / "paddle")
+    for name in ("paddle", "paddle_heavier"):
+        shutil.copytree(checkout / "sample_runs" / name, tmp_path / "sample_runs" / name)
     monkeypatch.chdir(tmp_path)
     monkeypatch.setattr(job, "process_rig", functools.cache(job.process_rig))
     exec(compile(example, "DEVELOPERS.md", "exec"), {})  # noqa: S102  (the document's own example)
     shown = [path for path in re.findall(r"!\[[^\]]*\]\(([^)]+)\)", readme) if path.endswith(".svg")]
-    assert len(shown) == 2
-    for path in shown:
-        picture = (tmp_path / path).read_text("utf-8")
+    made = sorted((tmp_path / "sample_runs" / "pictures").iterdir())
+    assert [path.name for path in made] == ["paddle_ribbon.svg", "paddle_step.svg", "paddle_two_loci.svg"]
+    assert len(shown) >= 2
+    assert {tmp_path / path for path in shown} <= set(made)
+    for path in made:
+        picture = path.read_text("utf-8")
         assert picture.startswith("<?xml")
         assert picture.count("<path") > 5
     exec(compile(notebook, "README.md", "exec"), {})  # noqa: S102  (the document's own example)
