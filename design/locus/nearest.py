@@ -141,7 +141,7 @@ def _foot(loop: OpenLoop, wished: complex, s: complex) -> complex | None:
         if nearer is None:
             break
         at = nearer
-    return at
+    return complex(at.real) if at is not None and abs(at.imag) <= 1e-9 * scale else at
 
 
 def _nearer(loop: OpenLoop, wished: complex, at: complex, step: complex) -> complex | None:

@@ -40,7 +40,7 @@ def _rest(table: Table) -> tuple[tuple[str, ...], tuple[tuple[str, ...], ...], t
 
 def wish_sentence(answer: Answer, unit: str) -> str:
     """One wish and its answer in one sentence; `unit` of K."""
-    head = f"Wished pole {wished_words(answer)} 1/s"
+    head = f"Wished pole {wished_words(answer, ' 1/s')}"
     found = answer.found
     if found is None:
         return f"{head}: {NOTHING}"
@@ -59,10 +59,10 @@ def wish_sentence(answer: Answer, unit: str) -> str:
     )
 
 
-def wished_words(answer: Answer) -> str:
+def wished_words(answer: Answer, unit: str = "") -> str:
     """The wished point, with what was typed where that was no point."""
     typed = one_line(answer.wish.text)
-    return tables.point(answer.wish.point) + (f" ({typed})" if typed[:1].isalpha() else "")
+    return tables.point(answer.wish.point) + unit + (f" ({typed})" if typed[:1].isalpha() else "")
 
 
 def _row(answer: Answer, unit: str) -> tuple[str, ...]:

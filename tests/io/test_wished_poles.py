@@ -59,6 +59,7 @@ def test_a_wish_on_the_locus_is_answered_by_its_gain_and_one_beside_it_by_the_ne
     assert max(len(line) for line in shown.splitlines()) <= 100
     flat = " ".join(shown.split())
     assert "Wished pole -1 + 2j 1/s is on the locus at K = 5" in flat
+    assert "Wished pole -1 + 1.732j 1/s (damping 0.5, frequency 2 rad/s) is on the locus at K = 4" in flat
     assert "Wished pole -1.5 + 4j 1/s is not on the locus of these zeros" in flat
     assert "the nearest point is -1 + 4j 1/s, 0.5 1/s away, at K = 17" in flat
 

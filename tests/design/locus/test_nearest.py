@@ -37,6 +37,7 @@ def test_a_locus_of_two_lines_is_answered_in_closed_form(wished: complex, neares
     assert found.on_locus == (abs(upper - nearest) < 1e-12)
     assert found.point.loop_gain == pytest.approx(abs(upper) * abs(upper + 2.0), rel=1e-12)
     assert found.distance == pytest.approx(abs(upper - nearest), abs=1e-12)
+    assert nearest.imag != 0.0 or found.nearest.point.imag == 0.0
 
 
 def test_dead_time_enters_gain_and_residual() -> None:
