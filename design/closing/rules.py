@@ -10,7 +10,7 @@ from typing import Literal
 from ...ident.causes import Explained
 from ...ident.confront import Confronted
 from ...ident.fitted import Fit
-from .unseen import Smallest, hidden_text, smallest_text, unseen
+from .unseen import Smallest, deciding, hidden_text, smallest_text, unseen
 from .words import Units, cause_text, change_text, level_text, seconds, with_unit
 
 Verdict = Literal["agrees", "disagrees", "not comparable"]
@@ -241,7 +241,7 @@ def _undecided(evidence: Evidence) -> Answer:
 
 def _could_not_see(evidence: Evidence) -> Answer:
     """A change that breaks something could have passed unseen, and the run's own plants don't rule it out either."""
-    hidden = unseen(evidence.smallest)
+    hidden = deciding(evidence.smallest)
     if evidence.real or evidence.own >= evidence.wanted or not hidden:
         return None
     return "not comparable", (

@@ -46,6 +46,14 @@ def unseen(changes: Sequence[Smallest]) -> tuple[Smallest, ...]:
     return tuple(each for each in changes if not each.visible >= 1.0)
 
 
+def deciding(changes: Sequence[Smallest]) -> tuple[Smallest, ...]:
+    """Of the hidden ones those that a verdict rests on.
+
+    All but friction, which differs from day to day and which few runs pin down: it is told only.
+    """
+    return tuple(each for each in unseen(changes) if not each.name.startswith("friction"))
+
+
 def smallest_text(changes: Sequence[Smallest], units: Units) -> str:
     """All of them by name, and whether they would have been seen; empty where there is none."""
     if not changes:

@@ -6,7 +6,7 @@ import numpy as np
 import pytest
 import step_sums
 from gainwright.design.closing.breaking import breaking_changes
-from gainwright.design.closing.unseen import Smallest, smallest_changes, smallest_text, unseen
+from gainwright.design.closing.unseen import Smallest, deciding, smallest_changes, smallest_text, unseen
 from gainwright.design.closing.words import Units
 from gainwright.ident.catalogue import LAG
 from gainwright.ident.confront import confront
@@ -105,3 +105,11 @@ def test_sizes_are_told_as_people_have_them(fit):
     (smallest,) = smallest_changes(found, alone)
     assert smallest.size == pytest.approx(np.expm1(found[0].size))
     assert smallest.visible > 1.0
+
+
+def test_friction_is_told_and_decides_nothing():
+    """A hidden change of friction stands in the text; alone it refuses no run."""
+    changes = (Smallest("friction forward", 0.49, 0.3), Smallest("gain", -0.25, 0.9), Smallest("gain", 0.5, 1.8))
+    assert [each.name for each in deciding(changes)] == ["gain"]
+    assert deciding(changes[:1]) == ()
+    assert "friction forward +49 %" in smallest_text(changes, Units("V", "mm"))
