@@ -76,7 +76,7 @@ def _row(answer: Answer, unit: str) -> tuple[str, ...]:
         f"{off}: on the locus" if found.on_locus else off,
         "itself" if found.on_locus else tables.point(found.nearest.point),
         "" if found.on_locus else _gain(found.nearest.loop_gain, unit),
-        _met(answer).removeprefix(", "),
+        _met(answer).removeprefix(", where "),
     )
 
 
