@@ -256,7 +256,7 @@ def _agrees(evidence: Evidence) -> Answer:
     smallest = smallest_text(evidence.smallest, evidence.units)
     if unseen(evidence.smallest) and not evidence.real:
         smallest += (
-            f", yet the gains hold on {100 * evidence.own:.0f} % of the plants that it makes plausible by itself"
+            f"; the gains hold on {100 * evidence.own:.0f} % of the plants that it makes plausible by itself"
         )
     aside = "".join(f"; {text}" for text in (level, smallest) if text)
     if not evidence.real:
