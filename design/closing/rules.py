@@ -255,9 +255,7 @@ def _agrees(evidence: Evidence) -> Answer:
     level = level_text(evidence.explained, evidence.fit, evidence.units, evidence.movement)
     smallest = smallest_text(evidence.smallest, evidence.units)
     if unseen(evidence.smallest) and not evidence.real:
-        smallest += (
-            f"; the gains hold on {100 * evidence.own:.0f} % of the plants that it makes plausible by itself"
-        )
+        smallest += f"; the gains hold on {100 * evidence.own:.0f} % of the plants that it makes plausible by itself"
     aside = "".join(f"; {text}" for text in (level, smallest) if text)
     if not evidence.real:
         return "agrees", f"no change of the plant is visible (p = {evidence.alone.p_value:.2g}){aside}"
