@@ -200,13 +200,15 @@ def _distinct(fitted: list[Fitted]) -> list[Fitted]:
 
     A lag shorter than the sampling can show would pass for dead time, one far longer than the record for an integrator,
     a resonance far slower than the record for two. A resonance behind a lag that does not ring is no resonance, and a
-    second mode that stands on the first, or where the sampling shows no mode, is none.
+    second mode that stands on the first, or where the sampling shows no mode, is none. With a zero near it, a lag longer
+    than the record is what a drift would look like.
     """
     kept = []
     for one in fitted:
         short = np.min(lags(one), initial=np.inf) < _SHORTEST * one.problem.interval
         slowest = np.min(np.abs(_moving_poles(one)), initial=np.inf)
-        long = slowest * _LONGEST * one.problem.duration < 1
+        longest = 1.0 if one.problem.structure.zero else _LONGEST
+        long = slowest * longest * one.problem.duration < 1
         if not short and not long and not _three_lags(one) and not _one_mode(one):
             kept.append(one)
     return kept or fitted
