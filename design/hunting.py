@@ -67,7 +67,7 @@ class Hunting:
 
 def hunting(gains: Gains, nominal: Plant, plausible: Plausible, situation: Situation) -> Hunting | None:
     """What the very law does on some of the plausible plants; None where no valve sticks or nothing is stepped."""
-    if plausible.valves is None or situation.step == 0.0:
+    if plausible.valves is None or situation.step == 0.0 or not plausible.valves.any():
         return None
     index = np.unique(np.linspace(0, len(plausible.plants) - 1, _PLANTS).astype(int))
     some = plausible.take(index.tolist())
@@ -82,7 +82,7 @@ def hunting(gains: Gains, nominal: Plant, plausible: Plausible, situation: Situa
     which = np.arange(index.size)
     values_of(bench, which, columns_of([gains]).take(np.zeros(which.size, dtype=int)), refine=False, watch=watch)
     away = found[0] if found and found[0].size else np.full(1, np.nan)
-    bands = plausible.valves[:, 0]
+    bands = plausible.valves[plausible.valves[:, 0] > 0.0, 0]
     return Hunting(
         (float(np.median(bands)), float(np.quantile(bands, 0.95))),
         (float(np.median(away)), float(np.quantile(away, 0.95))),

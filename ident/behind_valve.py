@@ -1,12 +1,12 @@
 """The choice of a plant once more, behind a valve that sticks, where the records show one."""
 
 from collections.abc import Callable, Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 from .choose import Fitted
 from .play import Sticking
 from .run import FloatArray, Run
-from .sticking import find_sticking, is_better, sized_behind
+from .sticking import chance_of, find_sticking, sized_behind
 from .whiten import Colour
 
 
@@ -31,7 +31,7 @@ Again = Callable[[Sequence[Run], bool], Choice]
 
 
 def behind_valve(runs: Sequence[Run], plain: Choice, again: Again) -> tuple[Choice, Sticking | None]:
-    """The choice behind the valve that the records show, and the valve; the plain choice where they show none.
+    """The choice behind the valve that the records show, and the valve; the plain choice where they show none for sure.
 
     Parameters
     ----------
@@ -51,8 +51,10 @@ def behind_valve(runs: Sequence[Run], plain: Choice, again: Again) -> tuple[Choi
         if sticking is None:
             continue
         through = again([sticking.valve.through(run) for run in runs], True)
-        if is_better(through.fitted[0], plain.fitted[0]):
+        chance = chance_of(sticking, through.fitted[0], plain.fitted[0])
+        if chance >= 1.0:
             break
+        return plain, replace(sticking, chance=chance)
     else:
         return plain, None
     sticking = sized_behind(sticking, through.fitted[0], runs, through.colour)

@@ -200,8 +200,8 @@ def _distinct(fitted: list[Fitted]) -> list[Fitted]:
 
     A lag shorter than the sampling can show would pass for dead time, one far longer than the record for an integrator,
     a resonance far slower than the record for two. A resonance behind a lag that does not ring is no resonance, and a
-    second mode that stands on the first, or where the sampling shows no mode, is none. With a zero near it, a lag longer
-    than the record is what a drift would look like.
+    second mode that stands on the first, or where the sampling shows no mode, is none. With a zero near it, a lag
+    longer than the record is what a drift would look like.
     """
     kept = []
     for one in fitted:

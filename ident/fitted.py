@@ -252,5 +252,5 @@ class Fit:
 
     @property
     def valve(self) -> Valve:
-        """The valve before the plant; one that follows where none was found."""
-        return Valve() if self.sticking is None else self.sticking.valve
+        """The valve before the plant; one that follows where none was found, or perhaps one."""
+        return self.sticking.valve if self.sticking is not None and self.sticking.sure else Valve()

@@ -19,6 +19,9 @@ from .run import FloatArray, Run
 # under a fifth of the static one (common practice, no source).
 LEAST_SHARE = 0.2
 
+# Step of a sequence that fills the unit interval evenly however many of its members are taken: the golden ratio.
+_TURN = 0.6180339887498949
+
 
 @dataclass(frozen=True)
 class Valve:
@@ -61,6 +64,9 @@ class Sticking:
         How likely each is; they sum to one. Large moves alone leave them equal.
     sureness : float
         Rise of twice the log likelihood over a plant without a valve.
+    chance : float
+        Share of the plausible plants that stand behind such a valve: below one, a plant without it, whose level drifts,
+        explains the records too.
     """
 
     valve: Valve
@@ -69,16 +75,27 @@ class Sticking:
     shares: FloatArray
     weights: FloatArray
     sureness: float
+    chance: float = 1.0
+
+    @property
+    def sure(self) -> bool:
+        """Whether the records need the valve."""
+        return self.chance >= 1.0
 
     def draws(self, count: int, seed: int) -> FloatArray:
-        """(count, 3) valves: band, short, and how far above the valve the command stands at rest, command unit."""
+        """(count, 3) valves: band, short, and how far above the valve the command stands at rest, command unit.
+
+        Rows of zeros where none stands.
+        """
         generator = np.random.default_rng(seed)
         rows = generator.choice(len(self.shares), count, p=self.weights)
         width = (1.0 - LEAST_SHARE) / len(self.shares)
         share = self.shares[rows] + width * generator.uniform(-0.5, 0.5, count)
         short = np.abs(self.shorts[rows] + self.short_error * generator.standard_normal(count))
         band = short / share
-        return np.column_stack([band, short, band * generator.uniform(-1.0, 1.0, count)])
+        valves = np.column_stack([band, short, band * generator.uniform(-1.0, 1.0, count)])
+        there = (np.arange(count) * _TURN) % 1.0 < self.chance
+        return np.asarray(valves * there[:, None])
 
 
 def through_valve(command: FloatArray, start: float, band: float, short: float) -> FloatArray:

@@ -8,6 +8,7 @@ from collections.abc import Sequence
 from dataclasses import dataclass, replace
 
 import numpy as np
+from scipy.special import expit
 
 from .choose import Fitted
 from .noise import colour_seen, estimate_colour, sampled
@@ -24,6 +25,10 @@ from .whiten import WHITE, Colour
 # Rise of twice the log likelihood that a valve must bring, and in white noise before anything dear is tried: four
 # standard errors (common practice, no source).
 _SURE = 16.0
+# The same for a valve that is there perhaps: with one degree of freedom noise alone gives more in 5 % of the records.
+_PERHAPS = 3.84
+# The greatest chance of a valve that is not sure.
+_ALMOST = 0.95
 # Half widths that are tried first, shares of the command's whole movement.
 _BANDS = (0.005, 0.01, 0.02, 0.04, 0.08)
 _SHARES = 8
@@ -59,7 +64,7 @@ def find_sticking(fitted: Fitted) -> Sticking | None:
         for columns in (look.base, np.column_stack([look.base, column]))
     )
     sureness, first, colour = look.gain(column, colours)
-    if sureness < _SURE:
+    if sureness < _PERHAPS:
         return None
     return look.sized(colour, sureness, first)
 
@@ -103,13 +108,16 @@ def likelihood_loss(fitted: Fitted) -> float:
     return min(losses)
 
 
-def is_better(through: Fitted, plain: Fitted) -> bool:
-    """Whether the plant behind a valve explains the records so much better that the valve is taken as there.
+def chance_of(sticking: Sticking, through: Fitted, plain: Fitted) -> float:
+    """How likely the valve is; one where the plant behind it explains the records so much better that it must be there.
 
-    It must bring what was asked of it to first order, and at least its price as one more parameter.
+    Then it brings what was asked of it to first order, and at least its price as one more parameter. Below that the two
+    stand beside each other by their likelihood, the valve paying for two parameters what they gain by chance (Akaike).
     """
     gained = likelihood_loss(plain) - likelihood_loss(through)
-    return bool(gained > max(_SURE, float(np.log(len(plain.problem.measured)))))
+    if min(gained, sticking.sureness) > max(_SURE, float(np.log(len(plain.problem.measured)))):
+        return 1.0
+    return float(min(expit(0.5 * (max(gained, sticking.sureness) - 4.0)), _ALMOST))
 
 
 @dataclass(frozen=True, eq=False)
@@ -200,7 +208,7 @@ class _Look:
                 shorts[i] = tries[int(np.argmin(values))]
                 losses[i] = min(values) - at_play
         # a plant that is not quite the fitted one weighs as much here: only what matters beside the whole rise counts
-        weights = np.exp(-0.5 * (losses - losses.min()) * _SURE / sureness)
+        weights = np.exp(-0.5 * (losses - losses.min()) * min(_SURE / sureness, 1.0))
         best = int(np.argmin(losses))
         plain = losses[best] > -1.0
         valve = Valve(short, short) if plain else Valve(float(shorts[best] / shares[best]), float(shorts[best]))

@@ -226,15 +226,25 @@ def sticking_caution(rig: Rig, fit: Fit) -> Iterator[str]:
     """The records show an actuator that sticks: how far short it rests, and what is open about its band."""
     if fit.sticking is None or fit.plausible.valves is None:
         return
-    unit, ordered = rig.command_unit, np.sort(fit.plausible.valves[:, :2], axis=0)
+    there = fit.plausible.valves[:, 0] > 0.0
+    if not there.any():
+        return
+    unit, ordered = rig.command_unit, np.sort(fit.plausible.valves[there, :2], axis=0)
     place = ordered.shape[0] - 1
+    sure = fit.sticking.sure
+    begins = (
+        "The actuator sticks"
+        if sure
+        else "The actuator may stick, or the level drifts: the records can't tell. If it does"
+    )
+    share = "" if sure else f" on {100.0 * np.mean(there):.0f} % of the plausible plants"
     low, middle, high = (ordered[round(share * place)] for share in (0.025, 0.5, 0.975))
     told = " and that is all that its moves show of the band" if np.ptp(fit.sticking.weights) < 0.01 else ""
     yield (
-        f"The actuator sticks: it comes to rest about {with_unit(middle[1], unit, 2)} short of the command (95 %: "
+        f"{begins}: it comes to rest about {with_unit(middle[1], unit, 2)} short of the command (95 %: "
         f"{number(low[1], 2)} to {with_unit(high[1], unit, 2)}){told}. A move within {with_unit(middle[0], unit, 2)} "
         f"of where it stands (95 %: {number(low[0], 2)} to {with_unit(high[0], unit, 2)}) moves nothing. The release "
-        "check simulates it."
+        f"check simulates it{share}."
     )
 
 
