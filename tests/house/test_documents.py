@@ -148,7 +148,7 @@ def test_the_readme_pictures_are_made_by_the_block_that_says_so(
     shown = [path for path in re.findall(r"!\[[^\]]*\]\(([^)]+)\)", readme) if path.endswith(".svg")]
     made = sorted((tmp_path / "sample_runs" / "pictures").iterdir())
     assert [path.name for path in made] == ["paddle_ribbon.svg", "paddle_step.svg", "paddle_two_loci.svg"]
-    assert len(shown) >= 2
+    assert len(shown) == 3
     assert {tmp_path / path for path in shown} <= set(made)
     for path in made:
         picture = path.read_text("utf-8")

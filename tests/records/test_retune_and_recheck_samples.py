@@ -41,15 +41,18 @@ def test_the_heavier_plate_is_seen_in_the_time_constant_alone(both) -> None:
     assert not rows["gain"]["changed"]
 
 
-def test_the_old_gains_are_replaced_and_the_new_ones_are_gentler(both) -> None:
-    """With the same gain the slower drive overshoots: the verdict names it."""
+def test_the_old_gains_are_replaced_and_the_new_ones_damp_the_slower_drive(both) -> None:
+    """With the same gain the slower drive overshoots: the verdict names it, and derivative action comes in."""
     before, after, *_ = both
     old = after["change"]["old_gains"]
     assert old["verdict"] == "replace"
     assert old["share_meeting"] < 0.5
-    assert {row["name"] for row in old["requirements"]} >= {"overshoot", "settling_time"}
-    gains = [sheet["controller"]["forms"]["parallel"]["proportional"]["value"] for sheet in (before, after)]
-    assert gains[1] < gains[0]
+    rows = {row["name"]: row for row in old["requirements"]}
+    assert set(rows) >= {"overshoot", "settling_time"}
+    derivative = [sheet["controller"]["forms"]["parallel"]["derivative"]["value"] for sheet in (before, after)]
+    assert abs(derivative[0]) < abs(derivative[1])
+    new = {row["name"]: row for row in after["requirements"]}
+    assert new["overshoot"]["predicted"] < new["overshoot"]["limit"] < rows["overshoot"]["predicted"]
     assert after["ladder"][-1]["forms"] == after["controller"]["forms"]
 
 
