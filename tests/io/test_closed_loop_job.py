@@ -13,7 +13,7 @@ from gainwright.io.read_record import read_record
 from gainwright.io.record import Record
 from gainwright.io.rigfile.load import load_rig
 
-from .loops import COMMAND, DEAD_TIME, GAIN, INTERVAL, LAG, RESPONSE, Made, run_loop, write
+from .known_loop import COMMAND, DEAD_TIME, GAIN, INTERVAL, LAG, RESPONSE, Made, run_loop, write
 
 RIG = """
 [rig]

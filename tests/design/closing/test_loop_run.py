@@ -11,7 +11,7 @@ from gainwright.design.requirements import ControllerSetting, Limits
 from gainwright.ident.catalogue import LAG
 from gainwright.ident.identify import identify
 from gainwright.ident.run import Run
-from loops import DEAD_TIME, GAIN, INTEGRAL, INTERVAL, PROPORTIONAL, run_loop
+from known_loop import DEAD_TIME, GAIN, INTEGRAL, INTERVAL, PROPORTIONAL, run_loop
 
 NOISE = 0.05
 SETTING = ControllerSetting(INTERVAL, 0.0, ("PI",))
