@@ -1,5 +1,7 @@
 """Two resonances side by side: K (G1 + r G2) / (1 + r), each G wn^2 / (s^2 + 2 z wn s + wn^2), in phase or opposed."""
 
+from collections.abc import Callable
+
 import numpy as np
 
 from .structure import Named, Polynomials, Shape, Structure
@@ -50,24 +52,18 @@ def _values(shape: tuple[float, ...]) -> tuple[float, ...]:
     return frequency, damping, ratio * frequency, second, share
 
 
-TWO_RESONANCES = Structure(
-    name="two resonances",
-    formula="K (G1 + r G2) / (1 + r), G = wn^2 / (s^2 + 2 z wn s + wn^2)",
-    shapes=_SHAPES,
-    polynomials=in_phase,
-    named=_NAMED,
-    values=_values,
-    further=True,
-    beside="resonance",
-)
+def _structure(name: str, sign: str, polynomials: Callable[[tuple[float, ...]], Polynomials]) -> Structure:
+    return Structure(
+        name=name,
+        formula=f"K (G1 {sign} r G2) / (1 {sign} r), G = wn^2 / (s^2 + 2 z wn s + wn^2)",
+        shapes=_SHAPES,
+        polynomials=polynomials,
+        named=_NAMED,
+        values=_values,
+        further=True,
+        beside="resonance",
+    )
 
-TWO_OPPOSED_RESONANCES = Structure(
-    name="two opposed resonances",
-    formula="K (G1 - r G2) / (1 - r), G = wn^2 / (s^2 + 2 z wn s + wn^2)",
-    shapes=_SHAPES,
-    polynomials=opposed,
-    named=_NAMED,
-    values=_values,
-    further=True,
-    beside="resonance",
-)
+
+TWO_RESONANCES = _structure("two resonances", "+", in_phase)
+TWO_OPPOSED_RESONANCES = _structure("two opposed resonances", "-", opposed)
