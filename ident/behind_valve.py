@@ -54,7 +54,8 @@ def behind_valve(runs: Sequence[Run], plain: Choice, again: Again) -> tuple[Choi
         chance = chance_of(sticking, through.fitted[0], plain.fitted[0])
         if chance >= 1.0:
             break
-        return plain, replace(sticking, chance=chance)
+        if plant is plain.fitted[0]:  # a plain plant that explains more than this one leaves no perhaps
+            return plain, replace(sticking, chance=chance)
     else:
         return plain, None
     sticking = sized_behind(sticking, through.fitted[0], runs, through.colour)
