@@ -16,6 +16,9 @@ class Pending(Protocol[Given]):
     def busy(self) -> bool:
         """Whether the work is being done aside at this moment: who asks for its result now has to wait."""
 
+    def drop(self) -> None:
+        """The result is not wanted any more: what has not begun is left undone."""
+
 
 class Aside(Protocol):
     """Where work can be handed to.
@@ -44,6 +47,9 @@ class Later(Generic[Result]):
     def busy(self) -> bool:
         """Never."""
         return False
+
+    def drop(self) -> None:
+        """Nothing has begun."""
 
 
 class Here:

@@ -11,13 +11,14 @@ from ..design.aside import HERE, Aside, Pending
 from ..design.closing.compared import Compared
 from ..design.closing.given import compare_given
 from ..design.closing.table import compare_table
-from ..design.closing.verdict import compare
+from ..design.closing.verdict import begin_comparing, compare
 from ..design.closing.words import Units
 from ..design.design import SETS, Begun, begin_design
 from ..design.designed import Design
 from ..design.ladder.build import build_ladder
 from ..design.ladder.rung import Ladder
 from ..design.local_gain import with_local_gains
+from ..ident.confront import Confronted
 from ..ident.errors import RecordError
 from ..ident.fitted import Fit
 from ..ident.given import fit_of_given
@@ -74,10 +75,11 @@ def process_rig(
         tables = tuple(source for source in sources if isinstance(source, TableRecord))
         alone = _alone(rig, records, progress)
         fit = _fit(rig, records, tables, alone, progress)
+        confronted = _begin_closing(records, fit, aside)
         begun = _design(rig, fit, progress, aside)
         rungs = _ladder(rig, fit, begun.design, aside)
         twins = _twins(records)
-        closing = _close(rig, records, fit, begun.design, twins, progress, alone)
+        closing = _close(rig, records, fit, begun.design, twins, progress, alone, confronted)
         closing += _close_tables(rig, tables, fit, begun.design, progress)
         progress("building the gain ladder")
         ladder = rungs.result()
@@ -226,6 +228,12 @@ def _twins(records: Sequence[Record]) -> tuple[tuple[Record, Record], ...]:
     return tuple((mine, other) for mine in held_out for other in fitted if shares_samples(mine, other))
 
 
+def _begin_closing(records: Sequence[Record], fit: Fit, aside: Aside) -> tuple[Pending[Confronted] | None, ...]:
+    """What each held-out record says by itself; it needs no gains."""
+    held_out = [record.run for record in records if record.spec.use == "held-out"]
+    return tuple(begin_comparing(run, fit, aside) if fit.runs else None for run in held_out)
+
+
 def _close(
     rig: Rig,
     records: Sequence[Record],
@@ -234,6 +242,7 @@ def _close(
     twins: Sequence[tuple[Record, Record]],
     progress: Progress,
     alone: Sequence[Fit | None],
+    confronted: Sequence[Pending[Confronted] | None],
 ) -> tuple[Compared, ...]:
     closing: list[Compared] = []
     for record in records:
@@ -241,7 +250,7 @@ def _close(
             continue
         progress(f"comparing with {record.spec.shown}")
         compared = (
-            _compare(rig, record, fit, design, progress)
+            _compare(rig, record, fit, design, progress, confronted[len(closing)])
             if fit.runs
             else compare_given(
                 record.run,
@@ -275,7 +284,9 @@ def _close_tables(
     return tuple(closing)
 
 
-def _compare(rig: Rig, record: Record, fit: Fit, design: Design, progress: Progress) -> Compared:
+def _compare(
+    rig: Rig, record: Record, fit: Fit, design: Design, progress: Progress, alone: Pending[Confronted] | None
+) -> Compared:
     return compare(
         record.run,
         fit,
@@ -285,6 +296,7 @@ def _compare(rig: Rig, record: Record, fit: Fit, design: Design, progress: Progr
         setting=rig.setting,
         progress=progress,
         units=Units(rig.command_unit, rig.response_unit),
+        alone=alone,
     )
 
 

@@ -43,6 +43,10 @@ class _Task(Generic[Result]):
         """Whether the other process has begun and not ended it."""
         return not self._settled.is_set() and not self._owner.holds(self)
 
+    def drop(self) -> None:
+        """Not wanted any more: it is not sent, if it is still waiting."""
+        self._owner.take_back(self)
+
 
 class SecondProcess:
     """The process and the pipes to it.

@@ -14,6 +14,7 @@ from ...ident.causes import explain
 from ...ident.confront import Confronted, confront
 from ...ident.fitted import Fit, Plausible
 from ...ident.run import Run
+from ..aside import Aside, Pending
 from ..designed import Design
 from ..judge import PlantVerdicts, judge_plants
 from ..local_gain import at_local_gains
@@ -46,6 +47,7 @@ def compare(
     setting: ControllerSetting,
     progress: Callable[[str, float], None] | None = None,
     units: Units = NO_UNITS,
+    alone: Pending[Confronted] | None = None,
 ) -> Compared:
     """Hold one fresh record against the fitted plant and the chosen gains.
 
@@ -59,6 +61,8 @@ def compare(
         As the gains were designed for.
     units : Units
         Of command and response, for the words.
+    alone : Pending of Confronted, optional
+        What the record says by itself, where that work was begun before.
 
     Returns
     -------
@@ -73,7 +77,7 @@ def compare(
     spread = float(np.std(run.response[valid]))
     error = float(np.sqrt(np.mean((run.response - prediction.predicted)[valid] ** 2)))
     inside = (run.response >= prediction.low) & (run.response <= prediction.high)
-    found = _judge(run, fit, design, prediction, requirements, limits, setting, units)
+    found = _judge(run, fit, design, prediction, requirements, limits, setting, units, alone)
     return Compared(
         label=run.label,
         time=run.time,
@@ -97,6 +101,14 @@ def _band(requirements: Requirements) -> float | None:
     return asked.band if asked else None
 
 
+def begin_comparing(run: Run, fit: Fit, aside: Aside) -> Pending[Confronted] | None:
+    """What a held-out record says by itself needs no gains: `aside` may begin with it; None where it says nothing."""
+    driven = fit.through(run)
+    if np.ptp(np.append(driven.command, driven.start_command)) == 0.0:
+        return None
+    return aside.start(confront, driven, fit)
+
+
 def _judge(
     run: Run,
     fit: Fit,
@@ -106,6 +118,7 @@ def _judge(
     limits: Limits,
     setting: ControllerSetting,
     units: Units,
+    pending: Pending[Confronted] | None,
 ) -> Finding:
     advise = partial(run_to_take, run, fit, limits, units)
     if np.ptp(run.command) == 0 and run.start_command == run.command[0]:
@@ -119,7 +132,7 @@ def _judge(
             f"{advise(_VISIBLE * fit.noise.std / max(moved, 1e-300))}",
             None,
         )
-    alone = confront(run, fit)
+    alone = confront(run, fit) if pending is None else pending.result()
 
     def judged(plausible: Plausible, watched: float | None = None) -> PlantVerdicts:
         some = plausible.take(slice(0, _JUDGED))

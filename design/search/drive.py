@@ -90,6 +90,7 @@ def search(
             best = found
         if best.slack >= ENOUGH:
             break
+    both.drop()
     if best is None:
         raise AssertionError("a plan holds at least one structure")
     if best.slack < 0.0 and smoothest is not None:
@@ -116,6 +117,11 @@ class _Both:
                 self._ahead[i + 1] = self._aside.start(best_of, *self._task(i + 1))
             self._here[i] = best_of(*self._task(i))
         return self._here[i]
+
+    def drop(self) -> None:
+        """No more is asked for."""
+        for pending in self._ahead.values():
+            pending.drop()
 
     def _task(self, i: int) -> tuple[StructureName, Plant, Bench]:
         structure = self._order[i]
