@@ -118,8 +118,13 @@ def sweep_gains(
 def _fitted_bench(nominal: Plant, plausible: Plausible, situation: Situation) -> Bench:
     horizon = first_horizon(nominal, situation)
     fine = horizon <= _FINE * situation.setting.update_interval
-    alone = with_nominal(nominal, plausible, situation).take([0])
+    alone = _straight(with_nominal(nominal, plausible, situation).take([0]))
     return bench_of(alone, situation, horizon, stand_in=not fine)
+
+
+def _straight(alone: Plausible) -> Plausible:
+    """The page runs the fitted plant as it is about its operating command."""
+    return replace(alone, curves=None)
 
 
 def _poles(gains: Gains, plant: Plant, situation: Situation, grid: FloatArray) -> tuple[ComplexArray, ...]:
@@ -215,7 +220,7 @@ def _coarser(
     for samples in _COARSER:
         interval = max(horizon / samples, situation.setting.update_interval)
         longer = replace(situation, setting=replace(situation.setting, update_interval=interval))
-        alone = bench_of(with_nominal(nominal, plausible, longer).take([0]), longer, horizon, points=1)
+        alone = bench_of(_straight(with_nominal(nominal, plausible, longer).take([0])), longer, horizon, points=1)
         if believed_up_to(alone, columns_of([gains]), abs(loop_gain(gains)), loop) >= most:
             return longer
     return situation

@@ -109,7 +109,8 @@ class Plausible:
         )
 
     def led_by(self, plant: Plant, operating_command: float) -> "Plausible":
-        """The same behind one plant more, which takes the median friction and the median valve, at rest amid its band.
+        """The same behind one plant more, which takes the median friction and the median valve, at rest amid its band,
+        and the median curve about the operating command.
 
         Parameters
         ----------
@@ -121,7 +122,9 @@ class Plausible:
         if valves is not None:
             middle = np.median(valves, axis=0) * [1.0, 1.0, 0.0] if len(valves) else np.zeros(3)
             valves = np.vstack([middle, valves])
-        curves = None if self.curves is None else np.vstack([[0.0, 1.0], self.curves])
+        curves = self.curves
+        if curves is not None:
+            curves = np.vstack([[np.median(curves[:, 0]) if len(curves) else 0.0, 1.0], curves])
         return Plausible(
             (plant, *self.plants),
             np.concatenate([[operating_command], self.operating_command]),
