@@ -294,12 +294,20 @@ def _cost_with_gain(problem: Regression, fitted: Fitted) -> float:
     return float(away @ away)
 
 
-def evidence(fitted: Sequence[Fitted], colour: Colour) -> FloatArray:
-    """(m,) shares of the evidence, exp(-criterion/2) normalised; the best comes first.
+def evidence(fitted: Sequence[Fitted]) -> FloatArray:
+    """(m,) shares of the evidence, exp(-criterion/2) normalised."""
+    criteria = np.array([f.criterion for f in fitted])
+    weight = np.exp(-0.5 * (criteria - criteria.min()))
+    return np.asarray(weight / weight.sum())
 
-    Beside a better structure a further parameter pays the price that rises with the record (Schwarz), but only what it
-    gains by chance (Akaike) where the record is no judge of it: dry friction that does not show is still there when
-    the gains run, and where the level wanders what the plant does slowly may have passed for the wandering.
+
+def not_ruled_out(fitted: Sequence[Fitted], colour: Colour) -> FloatArray:
+    """(m,) shares that structures have among the plausible plants; the best comes first.
+
+    They go by the evidence. Beside a better structure a further parameter pays the price that rises with the record
+    (Schwarz), but only what it gains by chance (Akaike) where the record is no judge of it: dry friction that does not
+    show is still there when the gains run, and where the level wanders what the plant does slowly may have passed for
+    the wandering.
     """
     fewest = min(_unknowns(f) for f in fitted)
     price = float(np.log(len(fitted[0].problem.measured))) - 2.0

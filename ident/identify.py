@@ -8,7 +8,7 @@ import numpy as np
 from .behind_valve import Choice, behind_valve
 from .between import Between, settle_between
 from .catalogue import CATALOGUE, Structure
-from .choose import Fitted, Progress, colour_of, evidence, fit_candidates, name_of, refit, steady_fit
+from .choose import Fitted, Progress, colour_of, evidence, fit_candidates, name_of, not_ruled_out, refit, steady_fit
 from .closed_loop import resting_response
 from .ends import interval_ends
 from .ensemble import Drawn, draw_structure, internal_draws, operating_commands, plant_of, plausible_plants
@@ -86,7 +86,7 @@ def identify(
         allowed = structures if further or not usual else usual
         fitted, colour = fit_candidates(through, reference, fixed, allowed, progress, weighed)
         chosen, own = _finished(fitted[0], colour)
-        return Choice([chosen, *fitted[1:]], evidence(fitted, colour), own)
+        return Choice([chosen, *fitted[1:]], not_ruled_out(fitted, colour), own)
 
     choice, sticking, bend = choose(runs, True), None, None
     driving = runs
@@ -142,11 +142,12 @@ def _assembled(
     parameters, covariance = _parameters(drawn[0], row)
     commands = operating_commands(drawn[0], response_there)
     noise = _noise(chosen, colour)
+    told = evidence(fitted)
     candidates = tuple(
-        Candidate(f.name, f.misfit, f.criterion, float(w), _note(i, float(w)))
-        for i, (f, w) in enumerate(zip(fitted, weights, strict=True))
+        Candidate(f.name, f.misfit, f.criterion, float(w), _note(i, float(w), float(share)))
+        for i, (f, w, share) in enumerate(zip(fitted, told, weights, strict=True))
     )
-    ties = tuple(f.name for f, w in zip(fitted[1:], weights[1:], strict=True) if w >= _TIED) + _equal_lags(drawn[0])
+    ties = tuple(f.name for f, w in zip(fitted[1:], told[1:], strict=True) if w >= _TIED) + _equal_lags(drawn[0])
     return Fit(
         structure=chosen.name,
         plant=plant_of(chosen, row),
@@ -244,10 +245,12 @@ def _equal_lags(drawn: Drawn) -> tuple[str, ...]:
     return (other[name],) if low < 0 < high else ()
 
 
-def _note(place: int, weight: float) -> str:
+def _note(place: int, weight: float, share: float) -> str:
     if place == 0:
         return "chosen"
-    return "tied: the records can't tell it apart" if weight >= _TIED else "less supported"
+    if weight >= _TIED:
+        return "tied: the records can't tell it apart"
+    return "less supported, yet not ruled out: plausible plants are of it too" if share >= _TIED else "less supported"
 
 
 def _explanation(candidates: tuple[Candidate, ...], ties: tuple[str, ...], between: str) -> str:
