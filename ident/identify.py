@@ -5,7 +5,8 @@ from dataclasses import replace
 
 import numpy as np
 
-from .behind_valve import Choice, behind_valve
+from .behind_valve import Again, Choice, behind_valve
+from .bend import Bend
 from .between import Between, settle_between
 from .catalogue import CATALOGUE, Structure
 from .choose import Fitted, Progress, colour_of, evidence, fit_candidates, name_of, not_ruled_out, refit, steady_fit
@@ -15,6 +16,7 @@ from .ensemble import Drawn, draw_structure, internal_draws, operating_commands,
 from .find_bend import find_bend
 from .fit import finish
 from .fitted import Candidate, Fit, FittedRun, Noise, Parameter
+from .play import Sticking
 from .run import FloatArray, Run
 from .table_fit import fitted_tables, require_tables, structures_for, table_cautions, weigh
 from .tables import Table
@@ -88,14 +90,7 @@ def identify(
         chosen, own = _finished(fitted[0], colour)
         return Choice([chosen, *fitted[1:]], not_ruled_out(fitted, colour), own)
 
-    choice, sticking, bend = choose(runs, True), None, None
-    driving = runs
-    if not tables:
-        bend = find_bend(choice.fitted[0], choice.colour)
-        if bend is not None:
-            driving = tuple(bend.through(run) for run in runs)
-            choice = choose(driving, True)
-        choice, sticking = behind_valve(driving, choice, choose)
+    choice, bend, sticking = (choose(runs, True), None, None) if tables else _behind_actuator(runs, choose)
     fitted, weights, colour = choice.fitted, choice.weights, choice.colour
     fitted = [fitted[0], *(f if fitted[0].whitened else steady_fit(f) for f in fitted[1:])]
     if progress:
@@ -111,6 +106,17 @@ def identify(
         return found
     valves = sticking.draws(len(found.plausible.plants), seed)  # in front of each plausible plant
     return replace(found, plausible=replace(found.plausible, valves=valves), sticking=sticking)
+
+
+def _behind_actuator(runs: Sequence[Run], choose: Again) -> tuple[Choice, Bend | None, Sticking | None]:
+    """The choice behind the curve and the valve that the records show, and both; None where they show none."""
+    choice = choose(runs, True)
+    bend = find_bend(choice.fitted[0], choice.colour)
+    if bend is not None:
+        runs = tuple(bend.through(run) for run in runs)
+        choice = choose(runs, True)
+    choice, sticking = behind_valve(runs, choice, choose)
+    return choice, bend, sticking
 
 
 def _finished(best: Fitted, colour: Colour) -> tuple[Fitted, Colour]:

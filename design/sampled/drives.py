@@ -36,22 +36,8 @@ class Drives:
         """What `length` seconds leave of a speed that nothing drives, a share."""
         return np.asarray(np.exp(-length / self.lag))
 
-    def advance(
-        self, speed: FloatArray, level: FloatArray, length: FloatArray, decay: FloatArray | None = None
-    ) -> tuple[FloatArray, FloatArray]:
-        """Speed after `length` seconds under a constant command, and how far the response moved.
-
-        A drive that comes to rest within the stretch stays or turns in what is left of it. `decay` is that of the
-        whole length, for those who walk it often.
-        """
-        speed, moved, left = self._phase(speed, level, length, self.decay(length) if decay is None else decay)
-        if np.any(left > 0.0):
-            speed, more, _ = self._phase(speed, level, left, self.decay(left))
-            moved = moved + more
-        return speed, moved
-
     def walked(self, speed: FloatArray, level: FloatArray, times: FloatArray) -> tuple[FloatArray, FloatArray]:
-        """(n, c) speeds, and how far the response moved, after each of `times` (n, c) under a constant command.
+        """Speeds, and how far the response moved, after `times`, (c,) or (n, c), s, under a constant command.
 
         The level does not change, so that a drive comes to rest once at most; it stays or turns from there.
         """
@@ -69,21 +55,6 @@ class Drives:
         turned = np.where(beyond, level - np.sign(level) * self.friction, 0.0)
         later, more = self._walked(np.zeros_like(speed), turned, rest, self.decay(rest))
         return np.where(times >= until, later, after), moved + more
-
-    def _phase(
-        self, speed: FloatArray, level: FloatArray, length: FloatArray, decay: FloatArray
-    ) -> tuple[FloatArray, FloatArray, FloatArray]:
-        moving = speed != 0.0
-        way = np.sign(np.where(moving, speed, level))
-        stuck = ~moving & (np.abs(level) <= self.friction)
-        final = np.where(stuck, 0.0, level - way * self.friction)
-        stops = moving & (final * way < 0.0)
-        if not stops.any():
-            return *self._walked(speed, final, length, decay), np.zeros_like(length)
-        until = np.where(stops, self.lag * np.log1p(np.where(stops, -speed / np.where(stops, final, 1.0), 0.0)), np.inf)
-        step = np.minimum(length, until)
-        after, moved = self._walked(speed, final, step, self.decay(step))
-        return np.where(until <= length, 0.0, after), moved, length - step
 
     def _walked(
         self, speed: FloatArray, final: FloatArray, length: FloatArray, decay: FloatArray

@@ -90,7 +90,7 @@ class _Follower:
 
     def _held(self, old: FloatArray, new: FloatArray) -> FloatArray:
         assert self.drives is not None
-        self.speed, moved = self.drives.advance(self.speed, old, self.old_share)
-        self.speed, more = self.drives.advance(self.speed, new, self.bank.interval - self.old_share)
+        self.speed, moved = self.drives.walked(self.speed, old, self.old_share)
+        self.speed, more = self.drives.walked(self.speed, new, self.bank.interval - self.old_share)
         self.place = self.place + moved + more
         return self.place
